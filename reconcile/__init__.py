@@ -1,0 +1,30 @@
+"""Audits pH readings against batch recipes by full chemical equilibrium.
+
+The doors, each loaded when first used: predict_ph, read, audit, fit_pka, write_report.
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from reconcile.chemistry.predict import predict_ph
+    from reconcile.pipeline import audit, read
+    from reconcile.reporter.write import write_report
+
+__version__ = "0.1.0"
+__all__ = ["__version__", "audit", "predict_ph", "read", "write_report"]
+
+_DOORS = {
+    "predict_ph": "reconcile.chemistry.predict",
+    "read": "reconcile.pipeline",
+    "audit": "reconcile.pipeline",
+    "write_report": "reconcile.reporter.write",
+}
+
+
+def __getattr__(name: str) -> Any:
+    if name in _DOORS:
+        return getattr(import_module(_DOORS[name]), name)
+    raise AttributeError(f"module 'reconcile' has no attribute {name!r}")

@@ -154,6 +154,55 @@ PROBLEMS: Mapping[str, Kind] = {
     "recipe-bad": Kind(
         L, "the recipe of batch {name} cannot be used: {read}", "a complete recipe", "See the recipe's cell."
     ),
+    # parts of a solution in words
+    "part-unreadable": Kind(
+        S,
+        "the part {read} cannot be read",
+        'an amount, a unit and a substance, such as "0.1 M acetic acid" or "25 mL of 0.1 M sodium hydroxide"',
+        "Write numbers with a decimal point.",
+    ),
+    "part-unit": Kind(
+        S,
+        "no known unit follows the number in {read}",
+        "a unit such as M, mM, mol/kg, g/L, g or mL",
+        "Units are never guessed, and capitals count.",
+    ),
+    "part-without-total": Kind(
+        S,
+        "{read} is a quantity taken, and what it was made up to is not said",
+        "a total volume or mass",
+        'Add it: --to "100 mL".',
+    ),
+    "part-strength-missing": Kind(
+        S,
+        "{read} is a volume of {name} of unsaid strength",
+        'a strength, as in "25 mL of 0.1 M sodium hydroxide"',
+        "{usual}",
+    ),
+    "part-density-missing": Kind(
+        S,
+        "a strength in {read} and this quantity are joined only by a density",
+        'a density at the end, as in "5 mL of 37 % w/w hydrochloric acid, 1.18 g/mL"',
+        "Add the density of the stock solution.",
+    ),
+    "parts-mixed-bases": Kind(
+        S,
+        "amounts per litre and per kilogram stand side by side: {read}",
+        "all amounts on one basis",
+        "State all of them per litre, or all of them per kilogram.",
+    ),
+    "parts-over-total": Kind(
+        S, "more was taken than the total of {read}", "a total not below what was taken", "Check the amounts."
+    ),
+    "total-unreadable": Kind(
+        S, "the total reads {read}", "a volume or a mass with its unit, such as 100 mL or 1 kg", "Check --to."
+    ),
+    "unit-percent": Kind(
+        S,
+        "{read} has % without w/v or w/w",
+        "% w/v (g in 100 mL of solution) or % w/w (g in 100 g of solution)",
+        "Say which it is; units are never guessed.",
+    ),
     # notices
     "number-as-text": Kind(
         N, "{count} numbers in column {name} are stored as text", "numbers", "They were read as numbers."

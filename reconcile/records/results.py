@@ -145,6 +145,22 @@ class Hazard:
 
 
 @dataclass(frozen=True)
+class Constant:
+    """One ionization constant met in the record, as the library holds it (25 °C, I = 0), for the report.
+
+    pka [-], u : standard uncertainty [-], enthalpy [kJ/mol] and heat_capacity [J/K/mol] of ionization, NaN when unknown
+    """
+
+    acid: str
+    step: int
+    pka: float
+    u: float
+    enthalpy: float
+    heat_capacity: float
+    source: str
+
+
+@dataclass(frozen=True)
 class Spreads:
     """Standard deviations of the clean record as the auditor judged them [pH unless said].
 
@@ -166,6 +182,7 @@ class Audit:
         not_solved
     explained_by : TextArray, ids of findings joined by a space
     evidence : True where the reading took part in the model
+    constants : the ionization constants met, with their sources
     """
 
     records: BatchRecords
@@ -182,6 +199,7 @@ class Audit:
     smallest_detectable: tuple[Silence, ...]
     hazards: tuple[Hazard, ...]
     spreads: Spreads
+    constants: tuple[Constant, ...] = ()
 
     @property
     def rows(self) -> dict[str, int]:

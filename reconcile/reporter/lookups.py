@@ -1,0 +1,136 @@
+"""Which readings belong to which meter, lot or finding: the look-ups that tables, figures and page share."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from reconcile.records.arrays import AnyArray, BoolArray, FloatArray, IntArray, TextArray
+from reconcile.records.results import Audit, Finding
+from reconcile.reporter.plain import plain
+
+FLAGGED = ("stands_out", "explained")
+METER_TYPES = ("meter", "probe", "calibration")
+
+
+def plain_all(texts: Iterable[object]) -> TextArray:
+    """An array of plain texts."""
+    return np.array([plain(str(t)) for t in texts], object)
+
+
+@dataclass(frozen=True)
+class Lookups:
+    """Look-ups on one audit, each made once when first asked for."""
+
+    audit: Audit
+
+    @cached_property
+    def batch(self) -> TextArray:
+        """(n,) what was read: the batch, or the known solution."""
+        readings = self.audit.records.readings
+        return plain_all(np.where(readings["batch"] == "", readings["known"], readings["batch"]))
+
+    @cached_property
+    def meter(self) -> TextArray:
+        """(n,) meter, "" where none is named."""
+        return plain_all(self.audit.records.readings["meter"])
+
+    @cached_property
+    def lot_names(self) -> TextArray:
+        """(l,) lot names."""
+        return plain_all(self.audit.records.lots.name)
+
+    @cached_property
+    def reading_lots(self) -> tuple[IntArray, IntArray]:
+        """Pairs (reading, lot): every lot that the solution of a reading rests on, sorted by reading, each once."""
+        records = self.audit.records
+        solutions, lots = records.solutions, max(len(records.lots), 1)
+        owner = solutions.solution[solutions.chain_contribution]
+        pairs = np.unique(owner.astype(np.int64) * lots + solutions.chain_lot)
+        owner, lot = pairs // lots, pairs % lots
+        first = np.searchsorted(owner, records.readings_solution, "left")
+        count = np.searchsorted(owner, records.readings_solution, "right") - first
+        reading = np.repeat(np.arange(len(records.readings)), count)
+        within = np.arange(len(reading)) - np.repeat(np.cumsum(count) - count, count)
+        return reading, lot[np.repeat(first, count) + within]
+
+    @cached_property
+    def usable(self) -> BoolArray:
+        """(n,) readings whose residual may enter a mean: evidence, with a residual."""
+        return self.audit.evidence & np.isfinite(self.audit.residual)
+
+    @cached_property
+    def flagged(self) -> BoolArray:
+        """(n,) readings that stand out or that a finding explains."""
+        return np.isin(self.audit.status, FLAGGED)
+
+    @cached_property
+    def decimals(self) -> IntArray:
+        """(n,) decimals of each meter's display, 2 where the resolution is unknown."""
+        resolution: FloatArray = self.audit.records.readings["resolution"]
+        known = np.isfinite(resolution) & (resolution > 0)
+        places = np.ceil(-np.log10(np.where(known, resolution, 0.01)) - 1e-9)
+        return np.clip(places, 0, 4).astype(np.intp)
+
+    @cached_property
+    def times(self) -> AnyArray:
+        """(n,) when each reading was made, datetime64[s]."""
+        return self.audit.records.readings["read_at"].astype("datetime64[s]")
+
+    @cached_property
+    def period(self) -> tuple[np.datetime64, np.datetime64] | None:
+        """First and last time of a reading; None when no reading has one."""
+        known = self.times[~np.isnat(self.times)]
+        return (known.min(), known.max()) if len(known) else None
+
+    def of_subject(self, finding: Finding) -> IntArray:
+        """Readings of a finding's subject: all of that meter, probe, lot or batch; else those it rests on."""
+        readings, kind = self.audit.records.readings, finding.subject_type
+        own = np.asarray(finding.readings, np.intp)
+        subject = finding.subject if isinstance(finding.subject, str) else finding.subject[0]
+        if kind in METER_TYPES:
+            name = "probe" if kind == "probe" else "meter"
+            chosen = np.flatnonzero(readings[name] == subject)
+        elif kind == "lot":
+            reading, lot = self.reading_lots
+            chosen = reading[np.isin(lot, np.flatnonzero(self.audit.records.lots.name == subject))]
+        elif kind in ("batch", "reading") and subject:
+            chosen = np.flatnonzero(readings["batch"] == subject)
+        else:
+            chosen = own
+        return np.union1d(chosen, own).astype(np.intp)
+
+    @cached_property
+    def findings_of_meter(self) -> dict[str, list[str]]:
+        """Meter name -> ids of findings about it."""
+        return self._by_subject(METER_TYPES)
+
+    @cached_property
+    def findings_of_lot(self) -> dict[str, list[str]]:
+        """Lot name -> ids of findings about it."""
+        return self._by_subject(("lot",))
+
+    def _by_subject(self, types: tuple[str, ...]) -> dict[str, list[str]]:
+        found: dict[str, list[str]] = {}
+        for finding in self.audit.findings:
+            if finding.subject_type in types:
+                subject = finding.subject if isinstance(finding.subject, str) else finding.subject[0]
+                found.setdefault(plain(subject), []).append(plain(finding.id))
+        return found
+
+    @cached_property
+    def shown_first(self) -> IntArray:
+        """Order in which rows are shown when not all are: those that stand out first, then file order."""
+        return np.argsort(~self.flagged, kind="stable")
+
+    def smallest(self, types: tuple[str, ...], kinds: tuple[str, ...]) -> dict[str, float]:
+        """Subject -> smallest detectable size of the first of the kinds that is stated for it."""
+        found: dict[str, float] = {}
+        for kind in kinds:
+            for silence in self.audit.smallest_detectable:
+                if silence.kind == kind and silence.subject_type in types and silence.size is not None:
+                    found.setdefault(plain(silence.subject), silence.size)
+        return found

@@ -1,0 +1,231 @@
+"""Words and figures for what the auditor returns as codes and numbers: one place for page, workbook and terminal."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping
+from datetime import datetime
+from decimal import ROUND_HALF_UP, Decimal
+from typing import Any
+
+import numpy as np
+
+from reconcile.records.results import Finding, Silence
+from reconcile.reporter.plain import plain
+
+KINDS: Mapping[str, str] = {
+    "meter_offset": "offset",
+    "meter_span": "span error",
+    "meter_drift": "drift",
+    "meter_step": "step",
+    "meter_temperature": "temperature fault",
+    "meter_stuck": "stuck display",
+    "probe_matrix": "error in one kind of solution",
+    "calibration_buffer": "wrong calibration buffer",
+    "lot_strength": "strength",
+    "lot_identity": "identity",
+    "batch_preparation": "preparation",
+    "recipe_slip": "recipe slip",
+    "reading_slip": "reading slip",
+    "acid_constant": "ionization constant",
+    "carbon_dioxide": "carbon dioxide",
+    "record_value": "calculated pH in the record",
+}
+STATUSES: Mapping[str, str] = {
+    "as_predicted": "as predicted",
+    "stands_out": "stands out",
+    "explained": "explained",
+    "adjusted": "adjusted",
+    "outside_model": "outside model",
+    "outside_electrode_range": "outside electrode range",
+    "unbuffered": "unbuffered",
+    "void": "void",
+    "not_solved": "not solved",
+}
+STATUS_MEANINGS: Mapping[str, str] = {
+    "as_predicted": "within the spread of a clean record",
+    "stands_out": "further from the prediction than the settings' multiple of the full spread of a clean record",
+    "explained": "would stand out, but a finding accounts for it",
+    "adjusted": "brought to target on this meter with an unwritten amount; no evidence by itself",
+    "outside_model": "ionic strength beyond the range of the activity model",
+    "outside_electrode_range": "outside the range in which the glass electrode is reliable",
+    "unbuffered": "too little buffer capacity for the reading to say anything about a meter or a lot",
+    "void": "marked void in the record; kept and shown, no evidence",
+    "not_solved": "no prediction was reached",
+}
+MINUS = "−"
+
+
+def half_up(value: float, decimals: int) -> str:
+    """The number with fixed decimals, halves away from zero; "" for NaN, and never "-0.00"."""
+    if not math.isfinite(value):
+        return ""
+    rounded = Decimal(repr(float(value))).quantize(Decimal(1).scaleb(-decimals), rounding=ROUND_HALF_UP)
+    return f"{abs(rounded) if rounded == 0 else rounded:f}"
+
+
+def significant(value: float, digits: int = 3) -> str:
+    """The number with so many significant digits, in plain notation where that is readable."""
+    if not math.isfinite(value):
+        return ""
+    if value == 0:
+        return "0"
+    exponent = math.floor(math.log10(abs(value)))
+    if -5 <= exponent < 7:
+        return half_up(value, max(digits - 1 - exponent, 0))
+    mantissa, _, power = f"{value:.{digits - 1}e}".partition("e")
+    return f"{mantissa}e{int(power)}"
+
+
+def signed(text: str) -> str:
+    """A number as shown for a difference: with its sign, and a true minus."""
+    if not text or not any(c in "123456789" for c in text):
+        return text
+    return MINUS + text[1:] if text.startswith("-") else f"+{text}"
+
+
+def minus(text: str) -> str:
+    """A number with a true minus sign."""
+    return MINUS + text[1:] if text.startswith("-") else text
+
+
+def moment(when: datetime | np.datetime64 | None, seconds: bool = False) -> str:
+    """A time as ISO date, with the time of day where there is one; "" for none."""
+    if when is None or (isinstance(when, np.datetime64) and np.isnat(when)):
+        return ""
+    text = str(when.astype("datetime64[s]")) if isinstance(when, np.datetime64) else when.isoformat(timespec="seconds")
+    if seconds:
+        return text
+    date, _, time = text.partition("T")
+    return date if time == "00:00:00" else f"{date} {time[:5]}"
+
+
+def kind_words(kind: str) -> str:
+    """A fault kind in words."""
+    return KINDS.get(kind, plain(kind).replace("_", " "))
+
+
+def subject_words(finding: Finding | Silence) -> str:
+    """What is concerned: "meter M-3", "lot A-17", "reading of batch B-9 on meter M-3, row 12"."""
+    subject, what = finding.subject, finding.subject_type
+    if isinstance(subject, str):
+        return f"{what} {plain(subject)}".strip()
+    parts = [plain(str(part)) for part in subject]
+    if what == "reading" and len(parts) == 3:
+        batch, meter, row = parts
+        return f"reading of batch {batch}" + (f" on meter {meter}" if meter else "") + f", row {row}"
+    return f"{what} {', '.join(parts)}".strip()
+
+
+def title(finding: Finding) -> str:
+    """Heading of a finding, without its id."""
+    words = f"{subject_words(finding)}: {kind_words(finding.kind)}"
+    return words[:1].upper() + words[1:]
+
+
+def unit_words(unit: str) -> str:
+    """A unit as it follows a number."""
+    return "" if unit in ("", "-", "1") else plain(unit)
+
+
+def quantity(value: float | None, unit: str) -> str:
+    """A size with its unit: differences in pH with sign and three decimals, factors with three."""
+    if value is None or not math.isfinite(value):
+        return "no size"
+    name = unit_words(unit)
+    if name == "factor" or not name:
+        return f"a factor of {half_up(value, 3)}"
+    digits = half_up(value, 3) if abs(value) >= 0.01 else significant(value, 2)
+    return f"{signed(digits) if name.startswith('pH') else minus(digits)} {name}"
+
+
+def interval(finding: Finding) -> str:
+    """The 95 % interval of an estimate; "" when there is none."""
+    if finding.interval95 is None or not all(math.isfinite(v) for v in finding.interval95):
+        return ""
+    low, high = finding.interval95
+    scale = max(abs(low), abs(high))
+    decimals = 3 if scale >= 0.01 else 6
+    ends = [half_up(v, decimals) for v in (low, high)]
+    if finding.unit.startswith("pH"):
+        ends = [signed(e) for e in ends]
+    return f"{minus(ends[0])} to {minus(ends[1])}"
+
+
+def size_words(finding: Finding) -> str:
+    """How large, with the interval."""
+    if finding.estimate is None:
+        return "no size is estimated for this kind"
+    between = interval(finding)
+    return quantity(finding.estimate, finding.unit) + (f" (95 % interval {between})" if between else "")
+
+
+def since_words(finding: Finding) -> str:
+    """Since when, until when."""
+    if finding.since is None and finding.until is None:
+        return "throughout the record"
+    words = []
+    if finding.since is not None:
+        words.append(f"since {moment(finding.since)}")
+        if finding.since_interval95 is not None:
+            low, high = finding.since_interval95
+            words.append(f"(95 % interval {moment(low)} to {moment(high)})")
+    if finding.until is not None:
+        words.append(f"until {moment(finding.until)}")
+    return " ".join(words)
+
+
+def chance(p: float) -> str:
+    """A small probability in words."""
+    if not math.isfinite(p):
+        return "not stated"
+    return "below 0.0001" if p < 1e-4 else significant(p, 2)
+
+
+def certainty_words(finding: Finding) -> str:
+    """How sure: what the gain and the family-wise p mean."""
+    sure = (
+        f"It raises the log likelihood of the record by {half_up(finding.log_likelihood_gain, 1)}; the chance of a "
+        f"signal this strong anywhere in a record without faults is {chance(finding.family_wise_p)}."
+    )
+    if finding.rivals:
+        number = len(finding.rivals)
+        sure += f" The record cannot tell it from {number} other explanation{'s' if number > 1 else ''}, listed below."
+    else:
+        sure += " No other explanation comes within reach of it."
+    return sure
+
+
+def explains_words(explains: Mapping[str, Any] | None) -> str:
+    """What would explain it, as "substance formic acid; factor 1.15"."""
+    if not explains:
+        return ""
+    return "; ".join(f"{plain(str(key)).replace('_', ' ')} {_value(value)}" for key, value in explains.items())
+
+
+def _value(value: Any) -> str:
+    if isinstance(value, bool) or not isinstance(value, (int, float)):
+        return plain(str(value))
+    return minus(significant(float(value), 4))
+
+
+def silence_words(silence: Silence) -> str:
+    """The smallest fault that would have been seen, as a size."""
+    if silence.size is None or not math.isfinite(silence.size):
+        return "none of any size"
+    name = unit_words(silence.unit)
+    if name in ("", "factor"):
+        return f"a factor of {half_up(silence.size, 3)}"
+    return f"{significant(silence.size, 2)} {name}"
+
+
+def counted(number: int, one: str, many: str = "") -> str:
+    """A count with its noun: "1 reading", "1,204 readings"."""
+    return f"{number:,} {one if number == 1 else many or one + 's'}"
+
+
+def listed(words: list[str], most: int = 6) -> str:
+    """A list in a sentence, cut when long: "a, b and c", "a, b, c and 4 more"."""
+    if len(words) > most:
+        return f"{', '.join(words[:most])} and {len(words) - most:,} more"
+    return " and ".join(filter(None, [", ".join(words[:-1]), words[-1]])) if words else ""

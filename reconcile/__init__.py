@@ -1,6 +1,6 @@
 """Audits pH readings against batch recipes by full chemical equilibrium.
 
-The doors, each loaded when first used: predict_ph, read, audit, fit_pka, write_report.
+The doors, each loaded when first used: predict_ph, read, audit, write_report.
 """
 
 from __future__ import annotations
@@ -28,3 +28,7 @@ def __getattr__(name: str) -> Any:
     if name in _DOORS:
         return getattr(import_module(_DOORS[name]), name)
     raise AttributeError(f"module 'reconcile' has no attribute {name!r}")
+
+
+def __dir__() -> list[str]:
+    return sorted([*globals(), *_DOORS])

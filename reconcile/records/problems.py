@@ -197,6 +197,8 @@ PROBLEMS: Mapping[str, Kind] = {
     "total-unreadable": Kind(
         S, "the total reads {read}", "a volume or a mass with its unit, such as 100 mL or 1 kg", "Check --to."
     ),
+    "at-out-of-range": Kind(S, "{name} is {read}", "a temperature from {low} to {high}", "Check --at."),
+    "at-unreadable": Kind(S, "the temperature reads {read}", "degrees Celsius, such as 20", "Check --at."),
     "unit-percent": Kind(
         S,
         "{read} has % without w/v or w/w",

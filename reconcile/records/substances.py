@@ -210,8 +210,15 @@ class Catalogue:
             return LookUp(next(iter(found.values())))
         if found:
             return LookUp(None, several=tuple(found.values()))
-        near = difflib.get_close_matches(name_key(text), list(self._spelled), n=3, cutoff=0.75)
-        return LookUp(None, near=tuple(dict.fromkeys(self._spelled[n] for n in near)))
+        return LookUp(None, near=self._near(name_key(text)))
+
+    def _near(self, key: str) -> tuple[str, ...]:
+        """Names that resemble a key as a whole, or else the names that hold the word most like it."""
+        near = difflib.get_close_matches(key, list(self._spelled), n=3, cutoff=0.75)
+        if not near:
+            words = difflib.get_close_matches(key, {word for name in self._spelled for word in name.split()}, n=1)
+            near = [name for name in self._spelled if words and words[0] in name.split()][:3]
+        return tuple(dict.fromkeys(self._spelled[n] for n in near))
 
 
 @cache

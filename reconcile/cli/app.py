@@ -1,0 +1,116 @@
+"""The command `reconcile`: its commands, and the one place where errors become plain messages and exit codes."""
+
+from __future__ import annotations
+
+import sys
+from collections.abc import Sequence
+from typing import Annotated, Any
+
+import typer
+from typer.core import TyperGroup
+
+from reconcile.cli import audit, predict, read, substances
+from reconcile.cli.exits import INTERRUPTED, REFUSED, USAGE
+from reconcile.cli.options import DEBUG
+from reconcile.records.problems import InputProblems, Problem
+from reconcile.records.settings import SettingsError
+
+SHOWN = 20
+"""Problems printed before the rest is only counted."""
+
+
+def _say(*lines: str) -> None:
+    for line in lines:
+        print(line, file=sys.stderr)
+
+
+def _refusal(problems: Sequence[Problem]) -> list[str]:
+    """Every problem as a message, the first SHOWN of them, and a count of the rest."""
+    lines = [problem.message() for problem in problems[:SHOWN]]
+    rest = len(problems) - SHOWN
+    if rest > 0:
+        lines.append(f"... and {rest} more problem{'s' if rest > 1 else ''} of this kind or another.")
+    return lines
+
+
+class Edge(TyperGroup):
+    """Runs a command; turns what the library raises into messages on standard error and an exit code."""
+
+    def invoke(self, ctx: Any) -> Any:
+        try:
+            return super().invoke(ctx)
+        except (typer.Exit, typer.Abort, BrokenPipeError):
+            raise
+        except KeyboardInterrupt:
+            _say("Interrupted; nothing was written.")
+            raise typer.Exit(INTERRUPTED) from None
+        except Exception as error:
+            if ctx.meta.get(DEBUG):
+                raise
+            code, lines = _explained(error)
+            if code is None:
+                raise
+            _say(*lines)
+            raise typer.Exit(code) from None
+
+
+def _explained(error: Exception) -> tuple[int | None, list[str]]:
+    """Exit code and message of an error; no code for the parser's own errors, which it prints itself."""
+    if isinstance(error, InputProblems):
+        return REFUSED, [*_refusal(error.problems), "Nothing was written."]
+    if isinstance(error, SettingsError):
+        return REFUSED, [f"{error}.", "Nothing was written."]
+    if isinstance(error, FileExistsError):
+        return USAGE, [str(error)]
+    if isinstance(error, MemoryError):
+        return REFUSED, ["There is not enough memory for this record.", "Nothing was written."]
+    if isinstance(error, OSError):
+        where = f"{error.filename}: " if error.filename else ""
+        return REFUSED, [f"{where}{error.strerror or error}", "Nothing was written."]
+    if hasattr(error, "exit_code"):
+        return None, []
+    return REFUSED, [
+        f"reconcile met an error of its own: {type(error).__name__}: {error}",
+        "Nothing was written. Run the same command with --debug to see where it arose.",
+    ]
+
+
+app = typer.Typer(
+    name="reconcile",
+    cls=Edge,
+    help="Audits pH readings against batch recipes by full chemical equilibrium.",
+    epilog="Every command has its own help: reconcile audit --help",
+    no_args_is_help=True,
+    add_completion=False,
+    rich_markup_mode=None,
+    pretty_exceptions_enable=False,
+)
+
+
+def _version(value: bool) -> None:
+    if value:
+        from reconcile import __version__
+
+        print(f"reconcile {__version__}")
+        raise typer.Exit
+
+
+@app.callback()
+def reconcile(
+    version: Annotated[
+        bool, typer.Option("--version", help="Print the version.", callback=_version, is_eager=True)
+    ] = False,
+) -> None:
+    """Audits pH readings against batch recipes by full chemical equilibrium."""
+
+
+for module in (read, predict, audit, substances):
+    module.add_to(app)
+
+
+def main() -> None:
+    """Entry point of the console script."""
+    for stream in (sys.stdout, sys.stderr):
+        if hasattr(stream, "reconfigure"):  # a terminal that lacks a character shows a mark in its place
+            stream.reconfigure(errors="replace")
+    app(prog_name="reconcile")

@@ -1,0 +1,31 @@
+"""The gist of an audit as terminal text."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from reconcile.cli.show import columns, heading, line
+from reconcile.records.completeness import shortfalls
+from reconcile.reporter.text import caution_lines, finding_lines, gist_lines, hazard_lines
+
+if TYPE_CHECKING:
+    from reconcile.records.results import Audit
+
+
+def show(audit: Audit, folder: Path) -> None:
+    """Gist, findings, what is incomplete, hazard words, cautions, and where the report is."""
+    columns([text.split(": ", 1) for text in gist_lines(audit)], indent=0)
+    if audit.findings:
+        heading("Findings")
+        columns([text.split("  ", 1) for text in finding_lines(audit)])
+    short = shortfalls(audit.records)
+    if short:
+        heading("Incomplete")
+        columns([(text,) for text in short])
+    heading("Hazard words")
+    columns([text.rsplit(": ", 1) for text in hazard_lines(audit)])
+    heading("Cautions")
+    columns([(text,) for text in caution_lines()])
+    line()
+    line(f"Report: {folder / 'report.html'}", bold=True)

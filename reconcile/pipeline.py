@@ -1,0 +1,288 @@
+"""From files or words to results, in one call each; every room is loaded only when it is needed."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, replace
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, TypeAlias
+
+from reconcile.records.settings import Settings
+
+if TYPE_CHECKING:
+    from reconcile.chemistry.acids import Ionization
+    from reconcile.records.book import BatchRecords
+    from reconcile.records.parts import Composition
+    from reconcile.records.results import Audit, Prediction
+    from reconcile.records.substances import Form
+
+FilePath: TypeAlias = str | Path
+SettingsLike: TypeAlias = Settings | FilePath | Mapping[str, Mapping[str, Any]] | None
+"""Settings, the path of a settings file, its sections as a dictionary, or None for the defaults."""
+ColumnsLike: TypeAlias = FilePath | Mapping[str, Mapping[str, Any]] | None
+"""Path of a column map, or its content: kind of sheet -> heading as written -> field name."""
+Progress: TypeAlias = Callable[[str, float], None]
+"""Told what is being done, and the share of the whole that is done, 0 to 1."""
+
+
+def settings_of(settings: SettingsLike = None) -> Settings:
+    """Settings from whatever a caller has; raises SettingsError or InputProblems for a file that is not one."""
+    if settings is None:
+        return Settings()
+    if isinstance(settings, Settings):
+        return settings
+    if isinstance(settings, Mapping):
+        return Settings.from_sections(settings)
+    from reconcile.importer.toml_files import read_settings
+
+    return read_settings(Path(settings))
+
+
+def read(*paths: FilePath, settings: SettingsLike = None, columns: ColumnsLike = None) -> BatchRecords:
+    """The record that files hold together, with the place of every value.
+
+    Parameters
+    ----------
+    *paths : str or Path
+        Workbooks (.xlsx, .xlsm) and CSV files of one record; the order changes nothing but the order of rows.
+    settings : Settings, path, mapping or None
+        What differs from the defaults.
+    columns : path, mapping or None
+        Which heading stands for which column, for headings that are not recognised.
+
+    Raises
+    ------
+    InputProblems
+        A file is refused; all that stops the import is in `problems`.
+    SettingsError
+        The settings name a key that does not exist, or a value that it cannot take.
+    """
+    from reconcile.importer.read import read_books
+    from reconcile.importer.toml_files import read_column_map
+
+    column_map = columns if columns is None or isinstance(columns, Mapping) else read_column_map(Path(columns))
+    return read_books([Path(p) for p in paths], settings_of(settings), column_map)
+
+
+def predict_records(records: BatchRecords, settings: SettingsLike = None) -> Prediction:
+    """Predicted pH of every used reading of a record, (n,), in the order of `records.readings`."""
+    from reconcile.chemistry.predict import predict_records as predict
+
+    return predict(records, settings_of(settings))
+
+
+def audit(
+    *source: FilePath | BatchRecords,
+    settings: SettingsLike = None,
+    columns: ColumnsLike = None,
+    progress: Progress | None = None,
+) -> Audit:
+    """The audit of a record: what was predicted, what stands out, what most likely caused it.
+
+    Parameters
+    ----------
+    *source : str or Path, or one BatchRecords
+        The files of the record, or the record as `read` gave it (then `columns` has been used already).
+    settings, columns
+        As for `read`.
+    progress : callable or None
+        Called with what is being done and the share of the whole that is done.
+
+    Raises
+    ------
+    InputProblems, SettingsError
+        As for `read`.
+    """
+    from reconcile.auditor.audit import audit as explain
+    from reconcile.chemistry.predict import predict_records as predict
+    from reconcile.chemistry.predict import repredictor
+    from reconcile.records.book import BatchRecords
+
+    say = progress or (lambda doing, share: None)
+    chosen = settings_of(settings)
+    say("reading the record", 0.0)
+    books = [one for one in source if isinstance(one, BatchRecords)]
+    paths = [one for one in source if not isinstance(one, BatchRecords)]
+    if books and (paths or len(books) > 1):
+        raise TypeError("audit takes files, or one BatchRecords")
+    records = books[0] if books else read(*paths, settings=chosen, columns=columns)
+    say("predicting every reading", 0.2)
+    prediction = predict(records, chosen)
+    say("searching for explanations", 0.3)
+    found = explain(
+        records,
+        prediction,
+        repredictor(records, chosen),
+        chosen,
+        progress=lambda doing, share: say(doing, 0.3 + 0.7 * share),
+    )
+    say("done", 1.0)
+    return found
+
+
+@dataclass(frozen=True)
+class PredictedParts:
+    """The prediction for one solution given in words.
+
+    composition : the parts once made up
+    prediction : Prediction of one row
+    settings : with which it was made
+    """
+
+    composition: Composition
+    prediction: Prediction
+    settings: Settings
+
+
+DEFAULT_TEMPERATURE_C = 25.0
+"""Temperature of a prediction that names none [°C]: that of the library's constants."""
+_TEMPERATURE = re.compile(r"([+-]?\d+(?:\.\d+)?)\s*(?:(?:°|º|deg)?\s*C)?")
+
+
+def predict_parts(
+    parts: Sequence[str],
+    to: str = "",
+    at: float = DEFAULT_TEMPERATURE_C,
+    settings: SettingsLike = None,
+    activity_model: str = "",
+) -> PredictedParts:
+    """The predicted pH of a solution given in words.
+
+    Parameters
+    ----------
+    parts : sequence of str
+        "0.1 M acetic acid" (a final concentration), "25 mL of 0.1 M sodium hydroxide" (a quantity taken).
+    to : str
+        What quantities are made up to: "100 mL", or "1 kg" of solution.
+    at : float
+        Temperature [°C].
+    settings : Settings, path, mapping or None
+        What differs from the defaults.
+    activity_model : str
+        Goes before the model in the settings; "" leaves it to them.
+
+    Raises
+    ------
+    InputProblems
+        A part cannot be read, its substance is unknown or ambiguous, or a total is missing.
+    SettingsError
+        The settings, or the activity model, are not among those allowed.
+    """
+    from reconcile.records.parts import compose, parse_part
+    from reconcile.records.problems import InputProblems
+
+    chosen = settings_of(settings)
+    if activity_model:
+        chosen = with_model(chosen, activity_model)
+    found, problems = [], []
+    for text in parts:
+        try:
+            found.append(parse_part(text))
+        except InputProblems as error:
+            problems.extend(error.problems)
+    if problems:
+        raise InputProblems(problems)
+    return predict_composition(compose(found, to), at, chosen)
+
+
+def with_model(settings: Settings, activity_model: str) -> Settings:
+    """The same settings with another activity model; raises SettingsError for one that does not exist."""
+    named = Settings.from_sections({"prediction": {"activity_model": activity_model}})
+    kept = {name: value for name, value in settings.changed.items() if name != "prediction.activity_model"}
+    return replace(settings, changed={**kept, **named.changed})
+
+
+def predict_composition(composition: Composition, at: float, settings: Settings) -> PredictedParts:
+    """The predicted pH of parts once made up, with the uncertainties that the settings give to their amounts."""
+    import numpy as np
+
+    from reconcile.chemistry.predict import predict_ph
+    from reconcile.chemistry.water import HIGH_C, LOW_C
+    from reconcile.records.places import Place
+    from reconcile.records.problems import InputProblems, Problem
+
+    if not LOW_C <= at <= HIGH_C:
+        words = (("name", "the temperature"), ("low", f"{LOW_C:g} °C"), ("high", f"{HIGH_C:g} °C"))
+        raise InputProblems([Problem("at-out-of-range", Place(""), f"{at:g} °C", words)])
+    strength = settings["uncertainty.lot_strength_percent"] / 100.0 / 3.0**0.5
+    taking = settings["uncertainty.preparation_percent"] / 100.0 / 3.0**0.5
+    prediction = predict_ph(
+        [part.form.name for part in composition.parts],
+        np.array([composition.amounts]),
+        at,
+        unit=composition.unit,
+        settings=settings,
+        u_amounts=np.full((1, len(composition.parts)), (strength**2 + taking**2) ** 0.5),
+    )
+    return PredictedParts(composition, prediction, settings)
+
+
+@dataclass(frozen=True)
+class LibraryEntry:
+    """One form of the library, with the ionization constants of every acid it brings."""
+
+    form: Form
+    constants: tuple[Ionization, ...]
+
+
+@dataclass(frozen=True)
+class LibraryAnswer:
+    """What the library holds on a word.
+
+    entries : the forms found, those of one acid side by side
+    several : True when the word itself may mean more than one of them
+    kin : names of the other forms of the same acid, where the word means one form
+    near : names that resemble a word on which nothing was found
+    """
+
+    entries: tuple[LibraryEntry, ...]
+    several: bool = False
+    kin: tuple[str, ...] = ()
+    near: tuple[str, ...] = ()
+
+
+def substances(word: str = "") -> LibraryAnswer:
+    """The library of substances, or what of it a word concerns.
+
+    word : a name, synonym or formula, or a part of a name; "" gives the whole library. The name of an acid brings
+        its salts along, after it.
+    """
+    from reconcile.chemistry.acids import acid_table
+    from reconcile.records.substances import catalogue, name_key
+
+    known, table = catalogue(), acid_table()
+    found = known.look_up(word) if word else None
+    key = name_key(word)
+    kin: list[Form] = []
+    if found is None:
+        forms = list(known.forms)
+    elif found.form:
+        own = found.form
+        kin = [f for f in known.forms if f is not own and own.acid and f.acid == own.acid]
+        forms = [own]
+        if name_key(own.acid) == key:
+            forms, kin = [own, *kin], []
+    elif found.several:
+        forms = list(found.several)
+    else:
+        forms = [f for f in known.forms if any(key in name_key(t) for t in (f.name, f.acid, *f.synonyms))]
+    return LibraryAnswer(
+        tuple(LibraryEntry(f, tuple(c for acid in f.acids for c in table.of(acid))) for f in forms),
+        several=bool(found and found.several),
+        kin=tuple(f.name for f in kin),
+        near=found.near if found and not forms else (),
+    )
+
+
+def temperature_of(text: str) -> float:
+    """A temperature in words, "20" or "20 °C", as a number [°C]; that of the library's constants for an empty text."""
+    from reconcile.records.places import Place
+    from reconcile.records.problems import InputProblems, Problem
+
+    if not text.strip():
+        return DEFAULT_TEMPERATURE_C
+    found = _TEMPERATURE.fullmatch(text.strip().replace("\u2212", "-"))
+    if not found:
+        raise InputProblems([Problem("at-unreadable", Place(""), text)])
+    return float(found.group(1))

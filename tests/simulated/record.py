@@ -11,6 +11,7 @@ from reconcile.records.arrays import AnyArray, FloatArray, IntArray
 from reconcile.records.book import BatchRecords, Lots, SheetSource, Solutions, Table
 from reconcile.records.columns import BY_SHEET, READING_EXTRA
 from reconcile.records.places import Place
+from tests.simulated.recipes import WEIGHED
 from tests.simulated.world import ROOT3, World
 
 FILE = "simulated.xlsx"
@@ -87,13 +88,13 @@ def to_records(world: World, shown: FloatArray) -> BatchRecords:
     forms = {name: i for i, name in enumerate(names)}
     solutions, which = _solutions(world, forms)
     size = len(world.lot_label)
-    stated = np.array([name not in world.label or bool(w) for name, w in _weighed_by_lot(world)], bool)
+    solid = np.array([label in WEIGHED for label in world.lot_label], bool)
     lots = Lots(
         name=_texts(world.lot_name),
         form=np.array([forms[label] for label in world.lot_label], np.intp),
         u_strength=np.full(size, room.lot_percent / 100.0 / ROOT3),
-        strength=np.where(stated, np.nan, 1.0),
-        unit=_texts(["" if solid else "mol/L" for solid in stated]),
+        strength=np.where(solid, np.nan, 1.0),
+        unit=_texts(["" if weighed else "mol/L" for weighed in solid]),
         row=np.arange(size, dtype=np.intp),
     )
     is_known = ~np.isnan(world.known)
@@ -115,7 +116,6 @@ def to_records(world: World, shown: FloatArray) -> BatchRecords:
             "read_at": _times(world.day),
             "meter": meters[world.meter],
             "temperature": world.celsius,
-            "target": np.where(is_known, np.nan, world.target[world.read_solution]),
             "ph_calculated": calculated,
             "standing": _texts(["original"] * n),
             "resolution": np.full(n, room.resolution),
@@ -171,11 +171,6 @@ def to_records(world: World, shown: FloatArray) -> BatchRecords:
         set_aside=(),
         notes=(),
     )
-
-
-def _weighed_by_lot(world: World) -> list[tuple[str, bool]]:
-    solid = dict(zip(world.label, world.weighed.tolist(), strict=True))
-    return [(label, solid[label]) for label in world.lot_label]
 
 
 def _known(world: World) -> Table:

@@ -87,6 +87,6 @@ def simulate(
         planted.append(FAULTS[name](built) if size is None else FAULTS[name](built, size))
     ph_true = built.true_ph()
     built.rng = np.random.default_rng([seed, 2])
-    shown = built.read()
+    shown = built.read(ph_true)
     truth = tuple(p() if callable(p) else p for p in planted)
     return Simulated(to_records(built, shown), truth, Settings(), built, ph_true)

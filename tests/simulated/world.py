@@ -30,7 +30,6 @@ class Room:
     same_meter_chance : chance that a second reading is on the meter of the first
     temperature_low, temperature_high : of the solutions when read [°C]
     single_use_lots : components taken from a lot used nowhere else; confined_lot : one lot only on one meter
-    adjusted : share of batches whose first reading is an adjustment to target
     checks_per_meter : readings of known solutions; calibrations : a calibration sheet, weekly
     shares : multiplies how often a kind of solution is made; dilute_bases : batches of dilute hydroxide
     hand_calculation : the record carries its own calculated pH
@@ -60,7 +59,6 @@ class Room:
     weeks: int = 8
     single_use_lots: int = 0
     confined_lot: bool = False
-    adjusted: float = 0.0
     checks_per_meter: int = 0
     calibrations: bool = False
     shares: tuple[tuple[str, float], ...] = ()
@@ -93,7 +91,6 @@ class World:
     factor: FloatArray = field(default_factory=lambda: np.zeros(0))
     """True over stated amount of each contribution, without its lot's factor."""
     co2: FloatArray = field(default_factory=lambda: np.zeros(0))
-    target: FloatArray = field(default_factory=lambda: np.zeros(0))
     read_solution: IntArray = field(default_factory=lambda: np.zeros(0, np.intp))
     meter: IntArray = field(default_factory=lambda: np.zeros(0, np.intp))
     day: FloatArray = field(default_factory=lambda: np.zeros(0))
@@ -160,10 +157,9 @@ class World:
         )
         return ph
 
-    def read(self) -> FloatArray:
-        """Displayed pH of every reading."""
+    def read(self, ph: FloatArray) -> FloatArray:
+        """Displayed pH of every reading, from the true pH of what it reads."""
         room, rng, n = self.room, self.rng, len(self.meter)
-        ph = self.true_ph()
         shown = ph + self.offset[self.meter] + self.span[self.meter] * (ph - 7.0)
         for error in self.errors:
             shown = shown + error(ph)
@@ -199,7 +195,6 @@ def build(room: Room, rng: np.random.Generator) -> World:
     u = room.spread / ROOT3 / 100.0
     world.factor = np.exp(rng.normal(0.0, room.preparation_percent * u, len(world.amount)))
     world.co2 = np.zeros(room.n_batches)
-    world.target = np.full(room.n_batches, np.nan)
     world.offset = rng.normal(0.0, room.accuracy * room.spread / ROOT3, room.n_meters)
     world.span = rng.normal(0.0, room.span_percent * u, room.n_meters)
     for acid in sorted({a for name in set(world.label) for a, _ in chemistry.brings(world.form(name)).acids}):

@@ -2,19 +2,27 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable
 from dataclasses import dataclass
 
-from reconcile.records.results import Audit
+import numpy as np
+
+from reconcile.records.results import Audit, Finding
 from reconcile.reporter.figures import PICTURES
+from reconcile.reporter.figures.finding import explained_part, finding_picture
 from reconcile.reporter.figures.style import styled
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.to_png import images
+from reconcile.reporter.words import counted, half_up, signed, subject_words
+
+MOST_FINDINGS = 24
+"""Findings that get a picture of their own, most supported first."""
 
 
 @dataclass(frozen=True)
 class Drawn:
-    """One picture: file stem, words, and its bytes. finding is the id of the finding it belongs to, "" for none."""
+    """One picture: file stem, words, and its bytes. finding is the place of its finding in the audit, -1 for none."""
 
     name: str
     heading: str
@@ -22,15 +30,47 @@ class Drawn:
     alt: str
     png: bytes
     svg: bytes
-    finding: str = ""
+    finding: int = -1
 
 
 def draw_all(audit: Audit, lookups: Lookups, progress: Callable[[str, float], None]) -> list[Drawn]:
-    """Every picture of the table, in its order."""
+    """Every picture of the table, then one for each finding."""
     found = []
+    findings = audit.findings[:MOST_FINDINGS]
+    steps = len(PICTURES) + len(findings)
     with styled():
         for i, (name, picture) in enumerate(PICTURES.items()):
-            progress(f"Drawing: {picture.heading.lower()}", i / len(PICTURES))
+            progress(f"Drawing: {picture.heading.lower()}", i / steps)
             png, svg = images(picture.draw(audit, lookups))
-            found.append(Drawn(name, picture.heading, picture.caption, picture.alt, png, svg))
+            caption = f"{picture.caption} {picture.rest(audit, lookups)}".strip()
+            found.append(Drawn(name, picture.heading, caption, picture.alt, png, svg))
+        for i, finding in enumerate(findings):
+            progress(f"Drawing: finding {i + 1} of {len(findings)}", (len(PICTURES) + i) / steps)
+            png, svg = images(finding_picture(audit, lookups, finding))
+            words = _alt(audit, lookups, finding)
+            found.append(Drawn(finding_stem(finding, i), "Evidence", _caption(finding), words, png, svg, i))
     return found
+
+
+def finding_stem(finding: Finding, index: int) -> str:
+    """File stem of a finding's picture, never anything that a cell held."""
+    return f"finding_{finding.id if re.fullmatch(r'F[0-9]{1,6}', finding.id) else f'F{index + 1}'}"
+
+
+def _caption(finding: Finding) -> str:
+    return (
+        f"Residuals of {subject_words(finding)}, as recorded and with what {finding.id} explains taken out. "
+        "The band is twice the spread of a clean record."
+    )
+
+
+def _alt(audit: Audit, lookups: Lookups, finding: Finding) -> str:
+    own = np.asarray(finding.readings, np.intp)
+    before = audit.residual[own]
+    after = before - explained_part(audit, finding)[own]
+    known = np.isfinite(before)
+    text = f"Residuals of {subject_words(finding)}, {counted(len(own), 'reading')}."
+    if known.any():
+        ends = [signed(half_up(float(np.median(v[known])), 3)) for v in (before, after)]
+        text += f" Their median is {ends[0]} pH as recorded and {ends[1]} pH with the finding taken out."
+    return text

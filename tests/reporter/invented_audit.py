@@ -102,9 +102,13 @@ def build(n: int = N, settings: Settings | None = None, with_findings: bool = Tr
         }
         for i in range(n)
     ]
-    rows[3].update(batch="", known="phosphate 6.86")
-    rows[5].update(standing="void")
-    rows[7].update(ph_calculated=5.12)
+    for i, change in (
+        (3, {"batch": "", "known": "phosphate 6.86"}),
+        (5, {"standing": "void"}),
+        (7, {"ph_calculated": 5.12}),
+    ):
+        if i < n:
+            rows[i].update(change)
     readings = table("readings", rows)
     sheets = (
         SheetSource(
@@ -152,7 +156,8 @@ def build(n: int = N, settings: Settings | None = None, with_findings: bool = Tr
     u_residual = np.full(n, 0.021)
     z = residual / u_residual
     status[np.abs(z) > 3] = "stands_out"
-    status[5], status[15], status[17], status[19] = "void", "outside_model", "adjusted", "unbuffered"
+    for i, word in ((5, "void"), (15, "outside_model"), (17, "adjusted"), (19, "unbuffered")):
+        status[i : i + 1] = word
     evidence = ~np.isin(status, ("void", "outside_model", "adjusted", "unbuffered"))
     explained_by = np.array([""] * n, object)
     findings: tuple[Finding, ...] = ()
@@ -192,9 +197,9 @@ def build(n: int = N, settings: Settings | None = None, with_findings: bool = Tr
     )
     nothing = Triplets(np.zeros(0, np.intp), np.zeros(0, np.intp), np.zeros(0), (n, 1))
     ph = predicted.copy()
-    ph[19] = np.nan
-    residual[19], z[19] = np.nan, np.nan
-    status[19] = "not_solved"
+    ph[19:20] = np.nan
+    residual[19:20], z[19:20] = np.nan, np.nan
+    status[19:20] = "not_solved"
     prediction = Prediction(
         ph,
         np.where(status == "outside_model", "outside_model", "ok").astype(object),

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterator
 from contextlib import contextmanager
 from typing import Any
 
@@ -14,23 +14,21 @@ from matplotlib.figure import Figure
 from reconcile.reporter.plain import plain
 
 INK = "#1a1a1a"
-GREY = "#6f6f6f"
-PALE = "#b9b9b9"
-FAINT = "#e4e4e4"
-BLUE = "#1f4e79"
-OCHRE = "#b06a00"
-RASTER_FROM = 2000
-"""Number of points from which a cloud is drawn as a picture inside the SVG."""
+GREY = "#6b6b6b"
+PALE = "#a8a8a8"
+BAND = "#ececec"
+OCHRE = "#b35f00"
+BLUE = "#2b5c8a"
 WIDTH = 6.9
 """Width of a full picture [in]."""
 
 SETTINGS: Any = {
     "font.family": ["DejaVu Sans"],
-    "font.size": 8.0,
-    "axes.titlesize": 8.0,
+    "font.size": 7.5,
+    "axes.titlesize": 7.5,
     "axes.titlelocation": "left",
     "axes.titlepad": 4.0,
-    "axes.labelsize": 8.0,
+    "axes.labelsize": 7.5,
     "axes.labelcolor": INK,
     "axes.edgecolor": GREY,
     "axes.linewidth": 0.6,
@@ -45,20 +43,22 @@ SETTINGS: Any = {
     "ytick.labelcolor": INK,
     "xtick.major.width": 0.6,
     "ytick.major.width": 0.6,
-    "xtick.major.size": 3.0,
-    "ytick.major.size": 3.0,
+    "xtick.major.size": 2.5,
+    "ytick.major.size": 2.5,
     "legend.fontsize": 7.0,
     "legend.frameon": False,
-    "legend.handletextpad": 0.4,
+    "legend.handletextpad": 0.2,
     "legend.borderaxespad": 0.0,
+    "legend.borderpad": 0.0,
     "text.color": INK,
     "text.parse_math": False,
     "figure.facecolor": "white",
+    "figure.constrained_layout.h_pad": 0.06,
+    "figure.constrained_layout.w_pad": 0.06,
     "savefig.facecolor": "white",
-    "savefig.dpi": 160,
+    "savefig.dpi": 180,
     "svg.hashsalt": "reconcile",
     "svg.fonttype": "path",
-    "path.simplify": True,
 }
 
 
@@ -76,62 +76,31 @@ def figure(width: float = WIDTH, height: float = 3.4) -> Figure:
     return Figure(figsize=(width, height), layout="constrained")
 
 
-MARKS: dict[str, dict[str, Any]] = {
-    "as_predicted": {"marker": "o", "s": 11, "facecolors": "none", "edgecolors": GREY, "linewidths": 0.6},
-    "stands_out": {"marker": "D", "s": 26, "facecolors": INK, "edgecolors": INK, "linewidths": 0.6},
-    "explained": {"marker": "^", "s": 28, "facecolors": OCHRE, "edgecolors": INK, "linewidths": 0.5},
-    "no_evidence": {"marker": "x", "s": 14, "color": PALE, "linewidths": 0.8},
-}
-"""How a reading is drawn, by what its status means here."""
-MARK_WORDS = {
-    "as_predicted": "as predicted",
-    "stands_out": "stands out",
-    "explained": "explained by a finding",
-    "no_evidence": "no evidence (adjusted, void, out of range)",
-}
+def empty(text: str) -> Figure:
+    """A picture that says why there is none."""
+    drawn = figure(WIDTH, 0.6)
+    drawn.text(0.01, 0.5, text, va="center", color=GREY)
+    return drawn
 
 
-def mark_of(status: np.ndarray[Any, Any]) -> np.ndarray[Any, Any]:
-    """Which mark each status is drawn with."""
-    known = np.isin(status, ("as_predicted", "stands_out", "explained"))
-    return np.where(known, status, "no_evidence")
-
-
-def cloud(axes: Axes, x: Any, y: Any, status: np.ndarray[Any, Any], total: int) -> None:
-    """Points by status, the remarkable ones on top; a picture inside the SVG when `total` points are many."""
-    marks = mark_of(status)
-    for layer, name in enumerate(("no_evidence", "as_predicted", "explained", "stands_out")):
-        chosen = (marks == name) & np.isfinite(y)
-        if chosen.any():
-            style = dict(MARKS[name])
-            if total > RASTER_FROM:
-                style["s"] = style["s"] * (0.35 if name in ("as_predicted", "no_evidence") else 0.6)
-            label = f"{MARK_WORDS[name]} ({int(chosen.sum()):,})"
-            axes.scatter(x[chosen], y[chosen], zorder=3 + layer, label=label, rasterized=total > RASTER_FROM, **style)
-
-
-def label(text: str, most: int = 24) -> str:
+def label(text: str, most: int = 22) -> str:
     """A name from the record as a label: plain, and cut when long."""
     text = plain(text)
     return text if len(text) <= most else f"{text[: most - 1]}…"
 
 
-def legend_above(axes: Axes, columns: int = 4) -> None:
-    """The legend in one line over the axes, out of the way of the points."""
-    handles, labels = axes.get_legend_handles_labels()
-    if handles:
-        axes.legend(handles, labels, loc="lower left", bbox_to_anchor=(0.0, 1.01), ncols=columns, columnspacing=1.4)
+def zero_line(axes: Axes, across: bool = True) -> None:
+    """Where observed and predicted agree."""
+    line = axes.axhline if across else axes.axvline
+    line(0.0, color=GREY, linewidth=0.7, zorder=1)
 
 
-def symmetric_limit(values: Iterable[float], least: float = 0.05) -> float:
-    """Half-height of an axis centred on zero that holds every finite value, with a little air."""
-    finite = np.abs(np.asarray(list(values), float))
-    finite = finite[np.isfinite(finite)]
-    return max(least, float(finite.max()) * 1.08) if len(finite) else least
+def band(axes: Axes, half: float) -> None:
+    """Twice the spread of a clean record to either side of agreement."""
+    if np.isfinite(half) and half > 0:
+        axes.axhspan(-2 * half, 2 * half, color=BAND, linewidth=0, zorder=0)
 
 
-def empty(text: str, width: float = WIDTH) -> Figure:
-    """A picture that says why there is none."""
-    drawn = figure(width, 1.0)
-    drawn.text(0.02, 0.5, text, va="center", color=GREY)
-    return drawn
+def whole_ticks(axes: Axes, count: int = 5) -> None:
+    """Few, round ticks up the side."""
+    axes.yaxis.set_major_locator(mpl.ticker.MaxNLocator(count, steps=[1, 2, 5, 10]))

@@ -1,0 +1,202 @@
+"""The table of acids: charges, ionization constants, their heats, uncertainties and sources (acids.csv)."""
+
+from __future__ import annotations
+
+import csv
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
+from functools import cache
+from pathlib import Path
+
+import numpy as np
+
+from reconcile.chemistry.temperature import U_KNOWN_DCP, U_KNOWN_DH, U_MISSING_DCP, U_MISSING_DH, van_t_hoff
+from reconcile.records.arrays import BoolArray, FloatArray, IntArray
+
+FOLDER = Path(__file__).parent
+WEAK_U = 0.1
+"""From this standard uncertainty on a constant is marked weak."""
+COLUMNS = (
+    "acid",
+    "formula",
+    "CAS",
+    "charge_of_fully_protonated_form",
+    "step",
+    "pKa_25C_I0",
+    "u_pKa",
+    "dH_kJ_mol",
+    "dCp_J_K_mol",
+    "source",
+    "verified",
+    "note",
+)
+
+
+@dataclass(frozen=True)
+class Ionization:
+    """One row of acids.csv: one proton lost by one acid. dh_kj_mol and dcp_j_k_mol are NaN where unknown."""
+
+    acid: str
+    formula: str
+    cas: str
+    charge: int
+    step: int
+    pka: float
+    u: float
+    dh_kj_mol: float
+    dcp_j_k_mol: float
+    source: str
+    verified: str
+    note: str
+
+    @property
+    def weak(self) -> bool:
+        """True where the value rests on little: a large uncertainty, or one estimated by analogy."""
+        return self.u >= WEAK_U or "estimate" in self.source
+
+
+@dataclass(frozen=True)
+class AcidTable:
+    """Acids as arrays for the engine: a acids, q ionization constants, those of one acid side by side in order.
+
+    names : (a,)
+    charge : FloatArray (a,)   charge of the fully protonated form
+    steps : IntArray (a,)      number of ionization steps
+    first : IntArray (a,)      index of the first constant
+    rows : (q,)                the table itself
+    pka, u, u_dh, u_dcp : FloatArray (q,)   at 25 °C and I = 0; u of enthalpy and heat capacity as temperature.py has it
+    p, q, r : FloatArray (q,)  pKa(T) = p + q/T + r ln T
+    size : FloatArray (a + q,) ion size [angstrom] of every protonation state; those of acid i start at first[i] + i
+    """
+
+    names: tuple[str, ...]
+    charge: FloatArray
+    steps: IntArray
+    first: IntArray
+    rows: tuple[Ionization, ...]
+    pka: FloatArray
+    u: FloatArray
+    u_dh: FloatArray
+    u_dcp: FloatArray
+    p: FloatArray
+    q: FloatArray
+    r: FloatArray
+    size: FloatArray
+
+    @property
+    def index(self) -> Mapping[str, int]:
+        return {name: i for i, name in enumerate(self.names)}
+
+    @property
+    def constant_names(self) -> tuple[tuple[str, int], ...]:
+        return tuple((row.acid, row.step) for row in self.rows)
+
+    @property
+    def weak(self) -> BoolArray:
+        """(q,) True for the constants marked weak."""
+        return np.array([row.weak for row in self.rows], bool)
+
+    def of(self, acid: str) -> tuple[Ionization, ...]:
+        """The steps of one acid, in order."""
+        i = self.index[acid]
+        return self.rows[self.first[i] : self.first[i] + self.steps[i]]
+
+
+def _number(text: str) -> float:
+    return float(text) if text.strip() else float("nan")
+
+
+def read_acids(path: Path) -> list[Ionization]:
+    """Rows of a table with the columns of acids.csv; raises ValueError for a table that is not one."""
+    with path.open(encoding="utf-8", newline="") as file:
+        reader = csv.DictReader(file)
+        missing = set(COLUMNS) - set(reader.fieldnames or ())
+        if missing:
+            raise ValueError(f"{path.name}: columns missing: {', '.join(sorted(missing))}")
+        return [
+            Ionization(
+                acid=r["acid"],
+                formula=r["formula"],
+                cas=r["CAS"],
+                charge=int(r["charge_of_fully_protonated_form"]),
+                step=int(r["step"]),
+                pka=float(r["pKa_25C_I0"]),
+                u=float(r["u_pKa"]),
+                dh_kj_mol=_number(r["dH_kJ_mol"]),
+                dcp_j_k_mol=_number(r["dCp_J_K_mol"]),
+                source=r["source"],
+                verified=r["verified"],
+                note=r["note"],
+            )
+            for r in reader
+        ]
+
+
+def _check(acid: str, rows: list[Ionization]) -> None:
+    if [r.step for r in rows] != list(range(1, len(rows) + 1)):
+        raise ValueError(f"acids: the steps of {acid} are not 1 to {len(rows)}, in order and side by side")
+    if len({r.charge for r in rows}) != 1:
+        raise ValueError(f"acids: {acid} has more than one charge of its fully protonated form")
+    pka = [r.pka for r in rows]
+    if sorted(pka) != pka:
+        raise ValueError(f"acids: the pKa of {acid} do not ascend")
+    for r in rows:
+        if not r.u > 0.0 or not np.isfinite(r.pka):
+            raise ValueError(f"acids: {acid}, step {r.step}: pKa and a positive uncertainty are needed")
+        if not r.source:
+            raise ValueError(f"acids: {acid}, step {r.step} has no source")
+
+
+def build(rows: Iterable[Ionization], sizes: Mapping[tuple[str, int], float] | None = None) -> AcidTable:
+    """An AcidTable from rows grouped by acid; raises ValueError for steps, charges or constants that cannot be."""
+    grouped: dict[str, list[Ionization]] = {}
+    for row in rows:
+        grouped.setdefault(row.acid, []).append(row)
+    for acid, steps in grouped.items():
+        _check(acid, steps)
+    flat = tuple(row for steps in grouped.values() for row in steps)
+    counts = np.array([len(steps) for steps in grouped.values()], np.intp)
+    pka = np.array([r.pka for r in flat], float)
+    dh = np.array([r.dh_kj_mol for r in flat], float)
+    dcp = np.array([r.dcp_j_k_mol for r in flat], float)
+    p, q, r = van_t_hoff(pka, dh, dcp)
+    sizes = sizes or {}
+    return AcidTable(
+        names=tuple(grouped),
+        charge=np.array([steps[0].charge for steps in grouped.values()], float),
+        steps=counts,
+        first=np.concatenate([[0], np.cumsum(counts)[:-1]]).astype(np.intp),
+        rows=flat,
+        pka=pka,
+        u=np.array([row.u for row in flat], float),
+        u_dh=np.where(np.isnan(dh), U_MISSING_DH, U_KNOWN_DH),
+        u_dcp=np.where(np.isnan(dcp), U_MISSING_DCP, U_KNOWN_DCP),
+        p=p,
+        q=q,
+        r=r,
+        size=np.array(
+            [
+                sizes.get((acid, lost), usual_size(steps[0].charge - lost))
+                for acid, steps in grouped.items()
+                for lost in range(len(steps) + 1)
+            ],
+            float,
+        ),
+    )
+
+
+def usual_size(charge: int) -> float:
+    """Ion size [angstrom] where none is published: the commonest of Kielland's organic ions of that charge."""
+    return {0: 4.5, 1: 4.5, 2: 5.0}.get(abs(charge), 5.0)
+
+
+def read_sizes(path: Path) -> dict[tuple[str, int], float]:
+    """Published ion sizes [angstrom], (acid, protons lost) -> size."""
+    with path.open(encoding="utf-8", newline="") as file:
+        return {(r["acid"], int(r["protons_lost"])): float(r["size_angstrom"]) for r in csv.DictReader(file)}
+
+
+@cache
+def acid_table() -> AcidTable:
+    """The acids that come with the package."""
+    return build(read_acids(FOLDER / "acids.csv"), read_sizes(FOLDER / "ion_sizes.csv"))

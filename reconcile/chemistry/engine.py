@@ -1,0 +1,147 @@
+"""Runs many solutions through the solver in chunks of alike shape, and gathers answers and slopes."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from reconcile.chemistry.acids import AcidTable
+from reconcile.chemistry.activity import ActivityModel
+from reconcile.chemistry.composition import Contents, FormTable, pad
+from reconcile.chemistry.sensitivities import slopes
+from reconcile.chemistry.solve import solve
+from reconcile.chemistry.temperature import Solvent, solvent
+from reconcile.records.arrays import BoolArray, FloatArray, IntArray
+
+CHUNK = 4096
+"""Rows solved together: enough to hide the cost of a call, few enough that their arrays stay in the cache."""
+
+
+@dataclass(frozen=True)
+class Ragged:
+    """A list of (column, value) for each of n rows: those of row i are start[i] to start[i + 1]."""
+
+    start: IntArray
+    column: IntArray
+    value: FloatArray
+
+
+@dataclass(frozen=True)
+class Answers:
+    """What the engine found for n solutions; arrays (n,) unless said; NaN where not solved.
+
+    ph, ionic_strength [mol/kg], solved
+    d_temperature [1/K], d_model, d_pkw, d_titrant [L/mol] : slopes of pH
+    entry : FloatArray (c,)      dpH/d ln(amount) of every contribution of the contents
+    constants : Ragged           dpH/dpKa, columns are constants of the AcidTable
+    degree : Ragged              protons lost over those that can be lost, columns are acids of the AcidTable
+    """
+
+    ph: FloatArray
+    ionic_strength: FloatArray
+    solved: BoolArray
+    d_temperature: FloatArray
+    d_model: FloatArray
+    d_pkw: FloatArray
+    d_titrant: FloatArray
+    entry: FloatArray
+    constants: Ragged
+    degree: Ragged
+
+
+def _order(contents: Contents, forms: FormTable, acids: AcidTable) -> IntArray:
+    """Rows in an order that puts alike shapes together: by most steps, then by number of acids brought."""
+    n = len(contents)
+    if n <= CHUNK:
+        return np.arange(n)
+    steps = np.where(forms.acid >= 0, acids.steps[forms.acid], 0)
+    most, several = steps.max(axis=0), np.count_nonzero(steps, axis=0)
+    key = np.zeros(n, np.uint16)
+    full = np.flatnonzero(np.diff(contents.start) > 0)
+    if len(full):
+        entries, starts = contents.form, contents.start[full]
+        key[full] = 256 * np.maximum.reduceat(most[entries], starts) + np.minimum(
+            np.add.reduceat(several[entries], starts), 255
+        )
+    return np.argsort(key, kind="stable")
+
+
+def _at(water: Solvent, rows: IntArray) -> Solvent:
+    return Solvent(*(getattr(water, name)[rows] for name in Solvent.__dataclass_fields__))
+
+
+class _Rows:
+    """Gathers (row, column, value) triplets chunk by chunk and lays them out row by row at the end."""
+
+    def __init__(self) -> None:
+        self._parts: list[tuple[IntArray, IntArray, IntArray, FloatArray]] = []
+
+    def add(self, rows: IntArray, column: IntArray, value: FloatArray) -> None:
+        """column, value : (m, cells) with -1 in column where a cell holds nothing."""
+        kept = column >= 0
+        self._parts.append((rows, np.count_nonzero(kept, axis=1), column[kept], value[kept]))
+
+    def ragged(self, n: int) -> Ragged:
+        counts = np.zeros(n, np.intp)
+        for rows, number, *_ in self._parts:
+            counts[rows] = number
+        start = np.concatenate([[0], np.cumsum(counts)]).astype(np.intp)
+        column, value = np.empty(start[-1], np.intp), np.empty(start[-1])
+        for rows, number, some, values in self._parts:
+            at = np.arange(len(some)) + np.repeat(start[rows] - np.cumsum(number) + number, number)
+            column[at], value[at] = some, values
+        return Ragged(start, column, value)
+
+
+def run(contents: Contents, forms: FormTable, acids: AcidTable, model: ActivityModel) -> Answers:
+    """pH, ionic strength and slopes of n solutions.
+
+    Parameters
+    ----------
+    contents : Contents
+        n solutions with c contributions in all.
+    forms : FormTable
+        Forms that the contributions name.
+    acids : AcidTable
+        Ionization constants.
+    model : ActivityModel
+        Activity model.
+
+    Returns
+    -------
+    Answers
+        Row i depends on the contents of row i alone; NaN amounts or temperatures leave that row unsolved.
+    """
+    n = len(contents)
+    temperatures, which = np.unique(contents.temperature_c, return_inverse=True)
+    water = solvent(temperatures)
+    order = _order(contents, forms, acids)
+    out = {name: np.full(n, np.nan) for name in ("ph", "ionic_strength", "temperature", "model", "pkw", "titrant")}
+    solved = np.zeros(n, bool)
+    entry = np.zeros(len(contents.form))
+    constants, degree = _Rows(), _Rows()
+    for begin in range(0, n, CHUNK):
+        rows = order[begin : begin + CHUNK]
+        here = _at(water, which[rows])
+        chunk, padding = pad(contents, rows, forms, acids, here, model.sized)
+        ph, strength, fine = solve(chunk, model)
+        some = slopes(chunk, padding, contents, forms, acids, here, model, ph, strength)
+        out["ph"][rows], out["ionic_strength"][rows], solved[rows] = ph, strength, fine
+        out["temperature"][rows], out["model"][rows] = some.d_temperature, some.d_model
+        out["pkw"][rows], out["titrant"][rows] = some.d_pkw, some.d_titrant
+        entry[padding.entry] = some.entry
+        constants.add(rows, some.constant, some.constant_value)
+        degree.add(rows, some.degree_acid, some.degree)
+    return Answers(
+        out["ph"],
+        out["ionic_strength"],
+        solved,
+        out["temperature"],
+        out["model"],
+        out["pkw"],
+        out["titrant"],
+        entry,
+        constants.ragged(n),
+        degree.ragged(n),
+    )

@@ -1,0 +1,271 @@
+"""Predictions for the readings of a record, and for supposed changes to what its solutions hold."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from reconcile.chemistry.acids import AcidTable, acid_table
+from reconcile.chemistry.activity import ActivityModel, activity_model
+from reconcile.chemistry.composition import CARBONIC, Contents, entries_at, form_table
+from reconcile.chemistry.engine import Answers, Ragged, run
+from reconcile.chemistry.prediction import assemble, regrouped, triplets
+from reconcile.chemistry.solve import rows_alike
+from reconcile.chemistry.uncertainty import ROOT3, of_independent, of_lots
+from reconcile.chemistry.water import DENSITY_20C, co2_solubility
+from reconcile.records.arrays import FloatArray, IntArray
+from reconcile.records.book import BatchRecords
+from reconcile.records.results import Change, Prediction
+from reconcile.records.settings import Settings
+from reconcile.records.substances import Form, catalogue
+
+U_CERTIFICATE = 0.01
+"""Standard uncertainty of a known solution's pH where none is stated [pH]; common practice, no source."""
+_CO2 = Form("carbon dioxide", (), "CO2", 44.009, CARBONIC, 0.0, 1.0, {}, "", "", "", "", "", "carbon dioxide taken up")
+
+
+@dataclass(frozen=True)
+class Record:
+    """What a record says, laid out for the engine.
+
+    temperature_c, u_temperature : FloatArray (n,)   of every reading
+    start : IntArray (s + 1,)                        contributions of solution i are start[i] to start[i + 1]
+    amount : FloatArray (c,)                         [mol/kg]
+    u_taking : FloatArray (c,)                       relative standard uncertainty of taking and preparing [-]
+    chain_start, chain_lot : IntArray (c + 1,), (k,) lots that each contribution rests on
+    u_lot : FloatArray (l + c,)                      lots, then one of its own for each contribution that names no lot
+    """
+
+    records: BatchRecords
+    settings: Settings
+    acids: AcidTable
+    model: ActivityModel
+    temperature_c: FloatArray
+    u_temperature: FloatArray
+    start: IntArray
+    amount: FloatArray
+    u_taking: FloatArray
+    chain_start: IntArray
+    chain_lot: IntArray
+    u_lot: FloatArray
+
+
+def reading_temperatures(records: BatchRecords, settings: Settings) -> tuple[FloatArray, FloatArray]:
+    """Temperature that each reading is predicted at [°C], and its standard uncertainty [K].
+
+    The reference temperature where the reading is stated at one, else its own, else the settings' room temperature.
+    """
+    table = records.readings
+    own, reference = np.asarray(table["temperature"], float), np.asarray(table["reference_temperature"], float)
+    given = np.where(np.isfinite(reference), reference, own)
+    known = np.isfinite(given)
+    u = np.where(known, settings["uncertainty.temperature_k"], settings["uncertainty.room_temperature_k"]) / ROOT3
+    return np.where(known, given, settings["prediction.room_temperature_c"]), u
+
+
+def laid_out(records: BatchRecords, settings: Settings) -> Record:
+    solutions, lots = records.solutions, records.lots
+    count, total = len(solutions.amount), len(lots)
+    temperature, u_temperature = reading_temperatures(records, settings)
+    molal = np.asarray(solutions.per_kg_water, bool)[solutions.solution]
+    default = settings["uncertainty.lot_strength_percent"] / 100.0 / ROOT3
+    named = np.bincount(solutions.chain_contribution, minlength=count) > 0
+    contribution = np.concatenate([solutions.chain_contribution, np.flatnonzero(~named)]).astype(np.intp)
+    lot = np.concatenate([solutions.chain_lot, total + np.flatnonzero(~named)]).astype(np.intp)
+    order = np.argsort(contribution, kind="stable")
+    preparation = settings["uncertainty.preparation_percent"] / 100.0 / ROOT3
+    u_strength = np.asarray(lots.u_strength, float)
+    return Record(
+        records,
+        settings,
+        acid_table(),
+        activity_model(settings["prediction.activity_model"]),
+        temperature,
+        u_temperature,
+        np.searchsorted(solutions.solution, np.arange(len(solutions) + 1)).astype(np.intp),
+        np.where(molal, solutions.amount, solutions.amount / DENSITY_20C),
+        np.sqrt(np.nan_to_num(solutions.u_amount) ** 2 + preparation**2),
+        np.concatenate([[0], np.cumsum(np.bincount(contribution, minlength=count))]).astype(np.intp),
+        lot[order],
+        np.concatenate([np.where(np.isfinite(u_strength), u_strength, default), np.full(count, default)]),
+    )
+
+
+@dataclass(frozen=True)
+class _Supposed:
+    """Contributions after the changes: those of u different solutions in order, with what each was in the record.
+
+    origin : IntArray (e,), index of the contribution in the record; -1 for carbon dioxide taken up
+    """
+
+    contents: Contents
+    origin: IntArray
+
+
+def _form_indices(records: BatchRecords, changes: Sequence[Change]) -> tuple[list[Form], list[int]]:
+    """Forms of the record and those supposed, and the index of each change's form (-1 where it keeps its own)."""
+    forms = [*records.forms, _CO2]
+    place = {form.name: i for i, form in enumerate(records.forms)}
+    indices = []
+    for change in changes:
+        if change.form and change.form not in place:
+            form = catalogue().by_name.get(change.form)
+            if form is None:
+                raise ValueError(f"no form of the library is called {change.form!r}")
+            place[change.form] = len(forms)
+            forms.append(form)
+        indices.append(place[change.form] if change.form else -1)
+    return forms, indices
+
+
+def _suppose(
+    record: Record, changes: Sequence[Change], change: IntArray, solution: IntArray, temperature_c: FloatArray
+) -> tuple[_Supposed, list[Form]]:
+    """Contents of u solutions, the i-th being `solution[i]` of the record under `change[i]` (-1 for none)."""
+    records, count = record.records, len(record.amount)
+    forms, supposed = _form_indices(records, changes)
+    origin, row = entries_at(record.start, solution)
+    form = np.asarray(records.solutions.form, np.intp)[origin]
+    amount = record.amount[origin]
+    touched = [i for i, c in enumerate(changes) if len(c.contributions)]
+    if touched:
+        key = np.concatenate([i * count + np.asarray(changes[i].contributions, np.intp) for i in touched])
+        factor = np.concatenate([_factors(changes[i]) for i in touched])
+        order = np.argsort(key, kind="stable")
+        key, factor = key[order], factor[order]
+        wanted = change[row] * count + origin
+        at = np.minimum(np.searchsorted(key, wanted), len(key) - 1)
+        hit = np.flatnonzero((key[at] == wanted) & (change[row] >= 0))
+        new = np.array(supposed, np.intp)[change[row[hit]]]
+        by_mass = np.array([c.at_equal_mass for c in changes], bool)[change[row[hit]]]
+        by_mass &= np.asarray(records.solutions.by_mass, bool)[origin[hit]] & (new >= 0)
+        mass = np.array([f.molar_mass for f in forms])
+        new = np.where(new >= 0, new, form[hit])
+        amount[hit] *= factor[at[hit]] * np.where(by_mass, mass[form[hit]] / mass[new], 1.0)
+        form[hit] = new
+    taken_up = np.array([c.dissolved_co2 for c in changes] + [0.0])[change]
+    extra = np.flatnonzero(taken_up != 0.0)
+    if len(extra):
+        row = np.concatenate([row, extra])
+        order = np.argsort(row, kind="stable")
+        origin = np.concatenate([origin, np.full(len(extra), -1, np.intp)])[order]
+        form = np.concatenate([form, np.full(len(extra), len(records.forms), np.intp)])[order]
+        amount = np.concatenate([amount, taken_up[extra]])[order]
+        row = row[order]
+    start = np.concatenate([[0], np.cumsum(np.bincount(row, minlength=len(solution)))]).astype(np.intp)
+    air = np.zeros(len(solution))
+    if record.settings["prediction.open_to_air"]:
+        pressure = record.settings["prediction.co2_partial_pressure_atm"]
+        air = np.nan_to_num(co2_solubility(temperature_c)[0] * pressure)
+    return _Supposed(Contents(start, form, amount, temperature_c, air), origin), forms
+
+
+def _factors(change: Change) -> FloatArray:
+    factor = np.asarray(change.factor, float)
+    return factor if len(factor) else np.ones(len(change.contributions))
+
+
+def predict_rows(record: Record, changes: Sequence[Change], change: IntArray, reading: IntArray) -> Prediction:
+    """Prediction of r rows, the i-th being reading[i] under change[i] (-1 for none)."""
+    records = record.records
+    solution = np.asarray(records.readings_solution, np.intp)[reading]
+    temperature = record.temperature_c[reading]
+    first, which = rows_alike(np.column_stack([change, solution, temperature]).astype(float))
+    supposed, forms = _suppose(record, changes, change[first], solution[first], temperature[first])
+    contents = supposed.contents
+    answers = run(contents, form_table(forms, record.acids), record.acids, record.model)
+    own = _own(answers, supposed)
+    part = regrouped(own, which)
+    shares = _shares(record, own, which)
+    prediction = assemble(
+        answers,
+        contents.temperature_c,
+        which,
+        record.u_temperature[reading],
+        shares,
+        triplets(part, len(record.amount)),
+        record.acids,
+        record.model,
+        record.settings,
+    )
+    return _certified(record, prediction, solution)
+
+
+def _own(answers: Answers, supposed: _Supposed) -> Ragged:
+    """Slopes of the record's own contributions, without carbon dioxide taken up."""
+    start, kept = supposed.contents.start, supposed.origin >= 0
+    if kept.all():
+        return Ragged(start, supposed.origin, answers.entry)
+    before = np.concatenate([[0], np.cumsum(kept)]).astype(np.intp)
+    return Ragged(before[start], supposed.origin[kept], answers.entry[kept])
+
+
+def _shares(record: Record, own: Ragged, which: IntArray) -> dict[str, FloatArray]:
+    """Shares of lots' strengths and of taking the amounts, for every row."""
+    u = len(own.start) - 1
+    link, entry = entries_at(record.chain_start, own.column)
+    row = np.repeat(np.arange(u), np.diff(own.start))
+    strength = of_lots(row[entry], record.chain_lot[link], own.value[entry], record.u_lot, u)
+    taking = of_independent(own.start, own.value, record.u_taking[own.column])
+    return {"strength": strength[which], "taking": taking[which]}
+
+
+def _certified(record: Record, prediction: Prediction, solution: IntArray) -> Prediction:
+    """The same, with known solutions at their certified pH."""
+    table = record.records.solutions
+    ph = np.asarray(table.known_ph, float)[solution]
+    known = np.isfinite(ph)
+    certificate = np.zeros(len(solution))
+    if not known.any():
+        return replace(prediction, budget={**prediction.budget, "certificate": certificate})
+    u = np.asarray(table.known_u, float)[solution]
+    certificate[known] = np.where(np.isfinite(u), u, U_CERTIFICATE)[known]
+    budget = {name: np.where(known, 0.0, share) for name, share in prediction.budget.items()}
+    status = prediction.status.copy()
+    status[known] = "ok"
+    return replace(
+        prediction,
+        ph=np.where(known, ph, prediction.ph),
+        status=status,
+        u=np.where(known, certificate, prediction.u),
+        budget={**budget, "certificate": certificate},
+        ionic_strength=np.where(known, np.nan, prediction.ionic_strength),
+        buffer_capacity=np.where(known, np.nan, prediction.buffer_capacity),
+        d_temperature=np.where(known, 0.0, prediction.d_temperature),
+        d_model=np.where(known, 0.0, prediction.d_model),
+        d_titrant=np.where(known, np.nan, prediction.d_titrant),
+    )
+
+
+def predict_records(records: BatchRecords, settings: Settings) -> Prediction:
+    """Predicted pH of every reading of a record.
+
+    Parameters
+    ----------
+    records : BatchRecords
+        n readings of solutions with c contributions in all.
+    settings : Settings
+        Activity model, room temperature, open to air, uncertainties, limits of the statuses.
+
+    Returns
+    -------
+    Prediction
+        Arrays (n,), in the order of records.readings; the columns of `contributions` are the c contributions. Readings
+        of a known solution get its certified pH and uncertainty, status ok, and no contributions.
+
+    Notes
+    -----
+    Each different (solution, temperature) is solved once. The share "strength" adds the effects of one lot within a
+    reading before squaring; a contribution that names no lot counts as a lot of its own with the settings' tolerance.
+    The share "taking" is each contribution's u_amount together with the settings' tolerance of preparation,
+    independent of one another.
+
+    References
+    ----------
+    JCGM 100:2008, equations 10 and 16.
+    """
+    record = laid_out(records, settings)
+    reading = np.arange(len(records.readings))
+    return predict_rows(record, (), np.full(len(reading), -1, np.intp), reading)

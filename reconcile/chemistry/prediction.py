@@ -1,0 +1,123 @@
+"""From the engine's answers to a Prediction: statuses, budget, and rows given back to everyone who asked for them."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+import numpy as np
+
+from reconcile.chemistry.acids import AcidTable
+from reconcile.chemistry.activity import ActivityModel
+from reconcile.chemistry.composition import entries_at
+from reconcile.chemistry.engine import Answers, Ragged
+from reconcile.chemistry.uncertainty import combined, of_constants, rows_of
+from reconcile.records.arrays import FloatArray, IntArray, TextArray, Triplets
+from reconcile.records.results import Prediction
+from reconcile.records.settings import Settings
+
+
+def u_of_model(model: ActivityModel, settings: Settings) -> float:
+    """Standard uncertainty of the model's uncertain coefficient."""
+    return float(settings["uncertainty.davies_coefficient"]) if model.u_coefficient is None else model.u_coefficient
+
+
+def regrouped(part: Ragged, which: IntArray) -> Ragged:
+    """The lists of rows `which`, in that order; a row asked for twice is given twice."""
+    entry, _ = entries_at(part.start, which)
+    start = np.concatenate([[0], np.cumsum(np.diff(part.start)[which])]).astype(np.intp)
+    return Ragged(start, part.column[entry], part.value[entry])
+
+
+def triplets(part: Ragged, columns: int) -> Triplets:
+    """The lists as a sparse matrix."""
+    return Triplets(rows_of(part.start), part.column, part.value, (len(part.start) - 1, columns))
+
+
+def statuses(
+    ph: FloatArray, strength: FloatArray, capacity: FloatArray, model: ActivityModel, settings: Settings
+) -> TextArray:
+    """Status of every row: not_solved before outside_model, outside_electrode_range, unbuffered and ok."""
+    highest = float(settings["status.outside_model_ionic_strength"])
+    if model.u_coefficient is not None or model.sized:
+        highest = min(highest, model.highest)
+    status = np.full(len(ph), "ok", object)
+    with np.errstate(invalid="ignore"):
+        status[capacity * 1000.0 < settings["status.unbuffered_mmol_per_ph"]] = "unbuffered"
+        outside = (ph < settings["status.electrode_low_ph"]) | (ph > settings["status.electrode_high_ph"])
+        status[outside | (strength < settings["status.electrode_low_ionic_strength"])] = "outside_electrode_range"
+        status[strength > highest] = "outside_model"
+    status[~np.isfinite(ph)] = "not_solved"
+    return status
+
+
+def assemble(
+    answers: Answers,
+    solved_at: FloatArray,
+    which: IntArray,
+    u_temperature: FloatArray,
+    shares: Mapping[str, FloatArray],
+    contributions: Triplets,
+    acids: AcidTable,
+    model: ActivityModel,
+    settings: Settings,
+) -> Prediction:
+    """A Prediction of n rows from the answers of u different solutions.
+
+    Parameters
+    ----------
+    answers : Answers
+        Of the u different solutions.
+    solved_at : ndarray (u,)
+        Their temperatures [°C].
+    which : ndarray of int (n,)
+        Solution of each row.
+    u_temperature : ndarray (n,)
+        Standard uncertainty of the temperature of each row [K].
+    shares : mapping of str to ndarray (n,)
+        Shares of the budget [pH] that rest on amounts: "strength", "taking".
+    contributions : Triplets (n, c)
+    acids, model, settings
+
+    Returns
+    -------
+    Prediction
+    """
+    u_model = u_of_model(model, settings)
+    d_temperature, d_model = answers.d_temperature[which], answers.d_model[which]
+    budget = {
+        "strength": shares["strength"],
+        "taking": shares["taking"],
+        "temperature": np.abs(d_temperature) * u_temperature,
+        "pKa": of_constants(answers, acids, solved_at)[which],
+        "activity model": np.abs(d_model) * u_model,
+    }
+    with np.errstate(divide="ignore", invalid="ignore"):
+        capacity = 1.0 / answers.d_titrant
+    met = np.unique(answers.constants.column)
+    place = np.zeros(len(acids.rows), np.intp)
+    place[met] = np.arange(len(met))
+    constants = regrouped(answers.constants, which)
+    acid_met = np.unique(answers.degree.column)
+    acid_place = np.zeros(len(acids.names), np.intp)
+    acid_place[acid_met] = np.arange(len(acid_met))
+    degree = regrouped(answers.degree, which)
+    names = acids.constant_names
+    return Prediction(
+        ph=answers.ph[which],
+        status=statuses(answers.ph, answers.ionic_strength, capacity, model, settings)[which],
+        u=combined(budget),
+        budget=budget,
+        ionic_strength=answers.ionic_strength[which],
+        buffer_capacity=capacity[which],
+        temperature_c=solved_at[which],
+        d_temperature=d_temperature,
+        d_model=d_model,
+        d_titrant=answers.d_titrant[which],
+        contributions=contributions,
+        constants=triplets(Ragged(constants.start, place[constants.column], constants.value), len(met)),
+        constant_names=tuple(names[q] for q in met),
+        constant_u=acids.u[met],
+        u_model=u_model,
+        degree=triplets(Ragged(degree.start, acid_place[degree.column], degree.value), len(acid_met)),
+        acid_names=tuple(acids.names[a] for a in acid_met),
+    )

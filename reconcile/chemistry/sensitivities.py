@@ -1,0 +1,267 @@
+"""Sensitivities of pH by implicit differentiation of the charge balance together with the ionic strength."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from reconcile.chemistry.acids import AcidTable
+from reconcile.chemistry.activity import SIZE_HYDROGEN, SIZE_HYDROXIDE, ActivityModel
+from reconcile.chemistry.balance import activity, weights
+from reconcile.chemistry.composition import Chunk, Contents, FormTable, Padding
+from reconcile.chemistry.temperature import LN10, Solvent
+from reconcile.chemistry.water import DENSITY_20C, ZERO_CELSIUS, co2_solubility
+from reconcile.records.arrays import BoolArray, FloatArray, IntArray
+
+
+@dataclass(frozen=True)
+class Slopes:
+    """Slopes of the pH of m solutions.
+
+    d_temperature [1/K], d_model, d_pkw, d_titrant [L/mol] : (m,)
+    entry : FloatArray (e,)           dpH/d ln(amount) of each contribution of the chunk
+    constant_value, constant : (m, cells), with `constant` -1 where a cell holds none
+    degree, degree_acid : (m, slots), with `degree_acid` -1 where a slot holds no acid
+    """
+
+    d_temperature: FloatArray
+    d_model: FloatArray
+    d_pkw: FloatArray
+    d_titrant: FloatArray
+    entry: FloatArray
+    constant_value: FloatArray
+    constant: IntArray
+    degree: FloatArray
+    degree_acid: IntArray
+
+
+@dataclass(frozen=True)
+class _Found:
+    """Fractions of the states of one slot at the answer, and their means."""
+
+    f: list[FloatArray]
+    closed: FloatArray
+    lost: FloatArray
+    squares: FloatArray
+
+
+def slopes(
+    chunk: Chunk,
+    padding: Padding,
+    contents: Contents,
+    forms: FormTable,
+    acids: AcidTable,
+    water: Solvent,
+    model: ActivityModel,
+    ph: FloatArray,
+    strength: FloatArray,
+) -> Slopes:
+    """Slopes of pH with respect to everything that the balance rests on, at its answer.
+
+    Parameters
+    ----------
+    chunk, padding, contents, forms, acids, water, model
+        As they were solved; `water` has one entry for each row of the chunk.
+    ph, strength : ndarray (m,)
+        The answer: pH [-] and ionic strength [mol/kg]; NaN rows give NaN slopes.
+
+    Returns
+    -------
+    Slopes
+
+    Notes
+    -----
+    With F the charge balance and G the ionic strength equation, both 0 at the answer, for any parameter p
+    dpH/dp = -(F_p G_I - F_I G_p) / (F_pH G_I - F_I G_pH).
+
+    References
+    ----------
+    JCGM 100:2008, section 5.1 (sensitivity coefficients); implicit function theorem.
+    """
+    act = activity(chunk, model, strength)
+    h = np.exp(LN10 * (act.hydrogen - ph))
+    oh = chunk.kw * np.exp(LN10 * (act.hydroxide + ph))
+    found = _fractions(chunk, act.states, ph, act.d)
+
+    by_i, by_t, by_c = _activity_slopes(chunk, model, water, strength, h, oh, found)
+    f_ph, s_ph = -(h + oh), oh - h
+    for slot, x in zip(chunk.slots, found, strict=True):
+        lost = [np.array(float(j)) for j in range(len(x.f))]
+        var = _spread(x, lost, lost)
+        cov = _spread(x, lost, [(slot.charge - j) ** 2 for j in range(len(x.f))])
+        f_ph = f_ph - slot.total * var
+        s_ph = s_ph + slot.total * cov
+    f_ph, g_ph = LN10 * f_ph, -0.5 * LN10 * s_ph
+    f_i, g_i = by_i[0], 1.0 - 0.5 * by_i[1]
+    with np.errstate(divide="ignore", invalid="ignore"):
+        inverse = 1.0 / (f_ph * g_i - f_i * g_ph)
+    on_charge, on_squares = -g_i * inverse, -0.5 * f_i * inverse  # dpH = on_charge F_p + on_squares (sum m z^2)_p
+
+    constant_value, constant, d_temperature = _constants(chunk, found, acids, water, on_charge, on_squares)
+    d_pkw = LN10 * oh * (on_charge - on_squares)
+    d_temperature = d_temperature + d_pkw * water.d_pkw + on_charge * by_t[0] + on_squares * by_t[1]
+    opened = contents.open_co2[padding.rows] > 0.0
+    if opened.any():
+        solubility, slope = co2_solubility(water.temperature_c)
+        for slot, x in zip(chunk.slots, found, strict=True):
+            air = np.where(slot.closed > 0.0, 0.0, slot.total * slope / solubility)
+            d_temperature = d_temperature + air * (on_charge * (slot.charge - x.lost) + on_squares * x.squares)
+
+    entry = _entries(chunk, padding, contents, forms, found, on_charge, on_squares)
+    degree = np.zeros((len(chunk), len(chunk.slots)))
+    degree_acid = np.full(degree.shape, -1, np.intp)
+    for number, (slot, x) in enumerate(zip(chunk.slots, found, strict=True)):
+        steps = np.where(slot.acid >= 0, acids.steps[slot.acid], 1)
+        whole = np.where(x.closed > 0.0, 1.0, sum(x.f, np.zeros_like(ph)))
+        degree[:, number] = x.lost / whole / steps
+        degree_acid[:, number] = slot.acid
+    return Slopes(
+        d_temperature,
+        on_charge * by_c[0] + on_squares * by_c[1],
+        d_pkw,
+        (on_charge + on_squares) / DENSITY_20C,
+        entry,
+        constant_value,
+        constant,
+        degree,
+        degree_acid,
+    )
+
+
+def _fractions(chunk: Chunk, states: list[FloatArray] | None, ph: FloatArray, d: FloatArray) -> list[_Found]:
+    g2 = np.exp((2.0 * LN10) * d)
+    out = []
+    for i, slot in enumerate(chunk.slots):
+        some = weights(slot, ph, d, g2, None if states is None else states[i])
+        whole = np.ones_like(ph)
+        for w in some:
+            whole = whole + w
+        whole = np.where(slot.closed > 0.0, 1.0 / whole, 1.0)
+        f = [whole, *(w * whole for w in some)]
+        lost, squares = np.zeros_like(ph), np.zeros_like(ph)
+        for j, share in enumerate(f):
+            lost = lost + j * share
+            squares = squares + (slot.charge - j) ** 2 * share
+        out.append(_Found(f, slot.closed, lost, squares))
+    return out
+
+
+def _spread(x: _Found, a: Sequence[FloatArray], b: Sequence[FloatArray]) -> FloatArray:
+    """Covariance of two quantities over the states; for an acid whose first state the air holds, the raw moment."""
+    mean_a, mean_b, both = (np.zeros_like(x.lost) for _ in range(3))
+    for share, p, q in zip(x.f, a, b, strict=True):
+        mean_a = mean_a + share * p
+        mean_b = mean_b + share * q
+        both = both + share * p * q
+    return both - x.closed * mean_a * mean_b
+
+
+Pair = tuple[FloatArray, FloatArray]
+
+
+def _response(chunk: Chunk, h: FloatArray, oh: FloatArray, found: list[_Found], e: list[list[FloatArray]]) -> Pair:
+    """Slopes of charge and of the sum of m z^2 when D changes by e: [hydrogen, hydroxide], then a list a slot."""
+    charge, squares = h * e[0][0] - oh * e[0][1], h * e[0][0] + oh * e[0][1]
+    for slot, x, d in zip(chunk.slots, found, e[1:], strict=True):
+        z = [slot.charge - j for j in range(len(x.f))]
+        moved = [c * c * slope for c, slope in zip(z, d, strict=True)]
+        charge = charge + slot.total * _spread(x, z, moved)
+        squares = squares + slot.total * _spread(x, [c * c for c in z], moved)
+    return LN10 * charge, LN10 * squares
+
+
+def _activity_slopes(
+    chunk: Chunk,
+    model: ActivityModel,
+    water: Solvent,
+    strength: FloatArray,
+    h: FloatArray,
+    oh: FloatArray,
+    found: list[_Found],
+) -> tuple[Pair, Pair, Pair]:
+    """Slopes of charge and sum of m z^2 in ionic strength, in temperature through A and B, in the coefficient."""
+
+    def three(size: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+        _, d_i, d_a, d_b, d_c = model.exponent(chunk.a, chunk.b, strength, size)
+        return d_i, d_a * water.d_a + d_b * water.d_b, d_c
+
+    if not model.sized:
+        one = np.ones_like(h)
+        charge, squares = _response(chunk, h, oh, found, [[one, one], *([one] * len(x.f) for x in found)])
+        d_i, d_t, d_c = three(np.array(0.0))
+        return (charge * d_i, squares * d_i), (charge * d_t, squares * d_t), (charge * d_c, squares * d_c)
+    hydrogen, hydroxide = three(np.array(SIZE_HYDROGEN)), three(np.array(SIZE_HYDROXIDE))
+    states = [three(slot.size) for slot in chunk.slots]
+    i, t, c = (
+        _response(chunk, h, oh, found, [[hydrogen[n], hydroxide[n]], *(list(s[n]) for s in states)]) for n in range(3)
+    )
+    return i, t, c
+
+
+def _constants(
+    chunk: Chunk,
+    found: list[_Found],
+    acids: AcidTable,
+    water: Solvent,
+    on_charge: FloatArray,
+    on_squares: FloatArray,
+) -> tuple[FloatArray, IntArray, FloatArray]:
+    """dpH/dpKa of every cell, which constant each cell holds, and their part of dpH/dT."""
+    cells = sum(len(slot.k) for slot in chunk.slots)
+    value = np.zeros((len(chunk), cells))
+    which = np.full(value.shape, -1, np.intp)
+    d_temperature = np.zeros(len(chunk))
+    kelvin = water.temperature_c + ZERO_CELSIUS
+    cell = 0
+    for slot, x in zip(chunk.slots, found, strict=True):
+        tail, tail_lost, tail_squares = (np.zeros(len(chunk)) for _ in range(3))
+        for step in range(len(slot.k), 0, -1):
+            share = x.f[step]
+            tail = tail + share
+            tail_lost = tail_lost + step * share
+            tail_squares = tail_squares + (slot.charge - step) ** 2 * share
+            slope = (
+                LN10
+                * slot.total
+                * (
+                    on_charge * (tail_lost - x.closed * x.lost * tail)
+                    - on_squares * (tail_squares - x.closed * x.squares * tail)
+                )
+            )
+            has = slot.k[step - 1] > 0.0
+            q = np.where(has, acids.first[slot.acid] + step - 1, -1)
+            value[:, cell + step - 1] = slope
+            which[:, cell + step - 1] = q
+            d_temperature += np.where(has, slope * (acids.r[q] / kelvin - acids.q[q] / kelvin**2), 0.0)
+        cell += len(slot.k)
+    return value, which, d_temperature
+
+
+def _entries(
+    chunk: Chunk,
+    padding: Padding,
+    contents: Contents,
+    forms: FormTable,
+    found: list[_Found],
+    on_charge: FloatArray,
+    on_squares: FloatArray,
+) -> FloatArray:
+    """dpH/d ln(amount) of every contribution, through its strong ions and its acids."""
+    m = len(chunk)
+    effect = np.zeros((m, len(padding.columns) + 1))  # of one mol/kg of each acid; the last column is for none
+    everyone = np.arange(m)
+    for slot, x in zip(chunk.slots, found, strict=True):
+        column = np.where(slot.acid >= 0, padding.place[slot.acid], len(padding.columns))
+        free: BoolArray = x.closed > 0.0
+        effect[everyone, column] = np.where(free, on_charge * (slot.charge - x.lost) + on_squares * x.squares, 0.0)
+    effect[:, -1] = 0.0
+    row, entry = padding.row, padding.entry
+    form = contents.form[entry]
+    per_mole = on_charge[row] * forms.charge[form] + on_squares[row] * forms.square[form]
+    for w in range(len(forms.acid)):
+        acid = forms.acid[w][form]
+        column = np.where(acid >= 0, padding.place[acid], len(padding.columns))
+        per_mole = per_mole + forms.units[w][form] * effect[row, column]
+    return contents.amount[entry] * per_mole

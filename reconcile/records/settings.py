@@ -59,9 +59,9 @@ SETTINGS: tuple[Setting, ...] = (
     Setting(
         "uncertainty",
         "session",
-        0.005,
+        0.0,
         "pH, standard deviation",
-        "floor of the spread between calibration sessions; common practice, no source",
+        "least spread between calibration sessions; the record's own estimate is used above it",
     ),
     Setting("uncertainty", "lot_strength_percent", 1.0, "%, half-width", "common practice, no source"),
     Setting("uncertainty", "preparation_percent", 0.3, "%, half-width", "common practice, no source"),

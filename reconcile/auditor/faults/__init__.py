@@ -1,0 +1,36 @@
+"""The table of fault kinds: one small file each. To add one, write its file and name it here."""
+
+from __future__ import annotations
+
+from reconcile.auditor.faults import (
+    acid_constant,
+    batch_preparation,
+    lot_identity,
+    lot_strength,
+    meter_drift,
+    meter_offset,
+    meter_span,
+    meter_step,
+    meter_stuck,
+    meter_temperature,
+    probe_matrix,
+    reading_slip,
+    recipe_slip,
+)
+from reconcile.auditor.proposals import FaultKind
+
+KINDS: tuple[FaultKind, ...] = (
+    meter_offset.KIND,
+    meter_span.KIND,
+    meter_drift.KIND,
+    meter_step.KIND,
+    meter_temperature.KIND,
+    meter_stuck.KIND,
+    probe_matrix.KIND,
+    lot_strength.KIND,
+    lot_identity.KIND,
+    batch_preparation.KIND,
+    recipe_slip.KIND,
+    reading_slip.KIND,
+    acid_constant.KIND,
+)

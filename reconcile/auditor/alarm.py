@@ -1,0 +1,112 @@
+"""How likely a score as large as the one seen is in a clean record, with everything that was tried."""
+
+from __future__ import annotations
+
+import zlib
+
+import numpy as np
+from scipy import linalg, sparse, special, stats
+
+from reconcile.auditor.mixed import Model
+from reconcile.auditor.scoring import Candidate, Pool
+from reconcile.records.arrays import BoolArray, FloatArray
+
+PRIOR_DF = 14.0
+"""Degrees of freedom behind a stated accuracy or tolerance: reliable to about 19 % (JCGM 100:2008, G.4.2, eq. G.3)."""
+ESTIMATED_DF = 14.0
+"""Degrees of freedom taken for session and preparation spreads, which few readings settle."""
+DRAWS = 1000
+
+
+def single_p(model: Model, x: sparse.csc_array, z: FloatArray) -> FloatArray:
+    """Two-sided probability of a score as large as z, for each of k columns, in a clean record.
+
+    The score is normal only if the spreads are known and the noise is normal. Spreads known with limited degrees of
+    freedom and heavy-tailed noise are met by a t law of the same kurtosis, their contributions weighted by their shares
+    of the score's variance (Welch-Satterthwaite, JCGM 100:2008, G.4.1, for the first).
+    """
+    layout = model.layout
+    px = model.project(x.toarray())
+    size = np.einsum("ij,ij->j", px, x.toarray())
+    a = px / np.sqrt(np.maximum(size, 1e-12))
+    noise = a**2 * model.noise[:, None]
+    share = noise.sum(axis=0)
+    concentration = (noise**2).sum(axis=0) / np.maximum(share, 1e-12) ** 2
+    known = np.asarray(layout.z.T @ a) ** 2 * model.g[:, None]
+    kurtosis = 6.0 * share**2 / max(model.components.noise_df - 4.0, 2.0)
+    kurtosis += 6.0 * (known**2).sum(axis=0) / (PRIOR_DF - 4.0)
+    if np.isfinite(model.components.tail):
+        kurtosis += 6.0 / max(model.components.tail - 4.0, 0.25) * share**2 * concentration
+    df = 4.0 + 6.0 / np.maximum(kurtosis, 1e-6)
+    return np.asarray(2.0 * stats.t.sf(np.abs(z), df), float)
+
+
+def equivalent_z(p: float) -> float:
+    """Normal score with the same two-sided probability."""
+    return float(stats.norm.isf(max(p, 1e-300) / 2.0))
+
+
+def block_p(correlation: FloatArray, one_sided: BoolArray, threshold: float, seed: int) -> float:
+    """Probability that any of j correlated normal scores passes a threshold, by importance sampling.
+
+    One score is drawn beyond the threshold, the others given it; the mean of 1/(number beyond) times the sum of the
+    single probabilities is unbiased for the probability of the union (Naiman and Priebe 2001, J. Comput. Graph. Stat.
+    10:296; Adler, Blanchet and Liu 2012, Ann. Appl. Probab. 22:1167; from memory).
+
+    Parameters
+    ----------
+    correlation : ndarray (j, j)
+    one_sided : ndarray (j,)      True where only positive scores count
+    """
+    weight = np.where(one_sided, 0.5, 1.0)
+    single = 2.0 * float(special.ndtr(-threshold))
+    j = len(correlation)
+    if j == 1 or single < 1e-290:
+        return min(1.0, single * float(weight.sum()))
+    values, vectors = linalg.eigh(correlation)
+    root = vectors * np.sqrt(np.maximum(values, 0.0))
+    rng = np.random.default_rng(seed)
+    pick = rng.choice(j, size=DRAWS, p=weight / weight.sum())
+    size = -special.ndtri(special.ndtr(-threshold) * rng.uniform(size=DRAWS))
+    sign = np.where(one_sided[pick] | (rng.uniform(size=DRAWS) < 0.5), 1.0, -1.0)
+    free = root @ rng.standard_normal((j, DRAWS))
+    at = np.arange(DRAWS)
+    z = free + correlation[:, pick] * (sign * size - free[pick, at])
+    beyond = np.where(one_sided[:, None], z, np.abs(z)) >= threshold - 1e-9
+    return float(min(1.0, single * weight.sum() * np.mean(1.0 / np.maximum(beyond.sum(axis=0), 1))))
+
+
+class Alarm:
+    """Family-wise probabilities of one pool's candidates under one model; what was worked out is kept."""
+
+    def __init__(self, pool: Pool, model: Model) -> None:
+        self.pool, self.model = pool, model
+        self._correlation: dict[int, tuple[FloatArray, BoolArray]] = {}
+
+    def block(self, block: int) -> tuple[FloatArray, BoolArray]:
+        """Correlation of the scores of one block, and which of them count on one side only."""
+        if block not in self._correlation:
+            members = np.flatnonzero((self.pool.block == block) & (self.pool.df == 1))
+            x = self.pool.x[:, members]
+            covariance = np.asarray(x.T @ self.model.project(x.toarray()))
+            sd = np.sqrt(np.maximum(np.diag(covariance), 1e-12))
+            good = np.diag(covariance) > 1e-9
+            correlation = covariance / np.outer(sd, sd)
+            self._correlation[block] = (correlation[np.ix_(good, good)], self.pool.point[members][good])
+        return self._correlation[block]
+
+    def family_wise(self, candidate: Candidate, k: int, gain: float, p_single: float, limit: float = 1.0) -> float:
+        """Probability that a clean record shows anything as striking anywhere; above `limit` a bound is enough.
+
+        The maximum within the candidate's block is simulated, blocks and classes are charged by Bonferroni.
+        """
+        trials = self.pool.trials(k)
+        if candidate.df > 1:
+            return min(1.0, trials * float(stats.chi2.sf(2.0 * gain, candidate.df)))
+        if p_single * trials > limit:
+            return min(1.0, p_single * trials)
+        correlation, one_sided = self.block(int(self.pool.block[k]))
+        if not len(correlation):
+            return min(1.0, p_single * trials)
+        seed = zlib.crc32(candidate.alarm_class.encode())
+        return min(1.0, trials * block_p(correlation, one_sided, equivalent_z(p_single), seed))

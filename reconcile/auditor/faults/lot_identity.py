@@ -1,0 +1,83 @@
+"""A stock lot that holds another substance than its label says: another acid, another salt form, another hydrate."""
+
+from __future__ import annotations
+
+import numpy as np
+from scipy import sparse
+
+from reconcile.auditor.alternatives import Alternative, alternatives
+from reconcile.auditor.exact import points
+from reconcile.auditor.proposals import Context, Proposal, Told
+from reconcile.auditor.retrial import Supposed
+
+ROOM = 2.5
+"""Score of a lot's common shift from which other contents are computed."""
+
+
+def known_acids(context: Context) -> frozenset[str]:
+    """Acids of the forms that the record names."""
+    return frozenset(acid for form in context.layout.records.forms for acid in form.acids)
+
+
+def lots_with_room(context: Context) -> list[int]:
+    """Lots (positions in lots_used) whose readings share a shift of any common shape."""
+    layout = context.layout
+    x = sparse.csc_array(layout.lot_columns)
+    touched = sparse.csc_array((np.ones(len(x.data)), x.indices, x.indptr), shape=x.shape)
+    sign = sparse.csc_array((np.sign(x.data), x.indices, x.indptr), shape=x.shape)
+    tilt = sparse.csc_array(sparse.diags_array(layout.ph - 7.0) @ touched)
+    room = np.zeros(x.shape[1], bool)
+    for shape in (x, touched, sign, tilt):
+        room |= np.abs(context.screen(sparse.csc_array(shape))) > ROOM
+    return [int(i) for i in np.flatnonzero(room)]
+
+
+class LotIdentity:
+    name, alarm_class = "lot_identity", "lot"
+
+    def propose(self, context: Context) -> Proposal | None:
+        layout = context.layout
+        records = layout.records
+        odds = float(np.exp(context.settings["audit.known_acid_log_odds"]))
+        acids = known_acids(context)
+        supposed: list[Supposed] = []
+        meant: list[tuple[int, Alternative, float, float]] = []
+        for position in lots_with_room(context):
+            lot = int(layout.lots_used[position])
+            label = records.forms[int(records.lots.form[lot])]
+            contributions = context.retrial.contributions_of_lot(lot)
+            weighed = bool(np.all(records.solutions.by_mass[list(contributions)]))
+            choices = alternatives(label, weighed, acids, odds)
+            total = sum(c.weight for c in choices)
+            for choice in choices:
+                supposed.append(Supposed(contributions, form=choice.form.name, at_equal_mass=weighed))
+                factor = label.molar_mass / choice.form.molar_mass if weighed else 1.0
+                meant.append((lot, choice, float(np.log(choice.weight / total)), factor))
+        kept, x = points(context, supposed)
+        if not kept:
+            return None
+
+        def tell(k: int, a: float) -> Told:
+            _, choice, _, factor = meant[kept[k]]
+            explains: dict[str, object] = {"substance": choice.form.name}
+            if choice.relation == "hydrate":
+                explains["factor"] = factor
+            return Told(None, "", explains, also=choice.also, detail=choice.relation)
+
+        subject = [str(records.lots.name[meant[i][0]]) for i in kept]
+        return Proposal(
+            self.name,
+            self.alarm_class,
+            "lot",
+            x,
+            subject,
+            subject,
+            np.ones(len(kept)),
+            np.array([meant[i][2] for i in kept]),
+            np.ones(len(kept), bool),
+            tell,
+            same=[meant[i][1].form.name for i in kept],
+        )
+
+
+KIND = LotIdentity()

@@ -1,0 +1,84 @@
+"""One batch whose recipe was misread: unit, normality, hydrate, form, % w/w for % w/v, or a decimal point."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from reconcile.auditor.alternatives import alternatives
+from reconcile.auditor.exact import points
+from reconcile.auditor.faults.batch_preparation import batches_with_room, component_name, components
+from reconcile.auditor.faults.lot_identity import known_acids
+from reconcile.auditor.proposals import Context, Proposal, Told
+from reconcile.auditor.retrial import Supposed
+
+FACTORS = ((10.0, "decimal point"), (0.1, "decimal point"), (1000.0, "unit"), (0.001, "unit"))
+
+
+def misreadings(context: Context, contribution: int) -> list[tuple[Supposed, str]]:
+    """Every slip of one component with an exact effect: factors, normality, density, hydrates and other forms."""
+    records = context.layout.records
+    solutions = records.solutions
+    label = records.forms[int(solutions.form[contribution])]
+    weighed = bool(solutions.by_mass[contribution])
+    only = (contribution,)
+    slips = [(Supposed(only, factor=f), how) for f, how in FACTORS]
+    if label.equivalents > 1:
+        slips += [(Supposed(only, factor=f), "normality") for f in (label.equivalents, 1.0 / label.equivalents)]
+    lot = int(solutions.lot[contribution])
+    density = np.nan
+    if lot >= 0 and records.lots.row[lot] >= 0:
+        stock = np.flatnonzero(records.stocks.row == records.lots.row[lot])
+        density = float(records.stocks["density"][stock[0]]) if len(stock) else np.nan
+    if np.isfinite(density) and abs(density - 1.0) > 0.02:
+        slips += [(Supposed(only, factor=f), "% w/w for % w/v") for f in (density, 1.0 / density)]
+    for choice in alternatives(label, weighed, known_acids(context), 1.0):
+        if choice.relation in ("hydrate", "form"):
+            slips.append((Supposed(only, form=choice.form.name, at_equal_mass=weighed), choice.relation))
+    return slips
+
+
+class RecipeSlip:
+    name, alarm_class = "recipe_slip", "batch"
+
+    def propose(self, context: Context) -> Proposal | None:
+        layout = context.layout
+        room = batches_with_room(context)
+        meant = [
+            (batch, contribution, supposed, how)
+            for batch, contribution, _, _ in components(context)
+            if batch in room
+            for supposed, how in misreadings(context, contribution)
+        ]
+        kept, x = points(context, [m[2] for m in meant])
+        if not kept:
+            return None
+        count = np.bincount([meant[i][0] for i in kept], minlength=len(layout.batches))
+
+        def tell(k: int, a: float) -> Told:
+            _, contribution, supposed, how = meant[kept[k]]
+            name = component_name(context, contribution)
+            explains: dict[str, object] = {"component": name, "slip": how}
+            if supposed.form:
+                explains["substance"] = supposed.form
+            else:
+                explains["factor"] = supposed.factor
+            return Told(supposed.factor if not supposed.form else None, "factor", explains, detail=f"{name}: {how}")
+
+        batch = np.array([meant[i][0] for i in kept])
+        subject = [layout.batches[b] for b in batch]
+        return Proposal(
+            self.name,
+            self.alarm_class,
+            "batch",
+            x,
+            subject,
+            subject,
+            np.ones(len(kept)),
+            -np.log(count[batch]) - np.log(2.0),
+            np.ones(len(kept), bool),
+            tell,
+            same=[f"{component_name(context, meant[i][1])} {meant[i][3]} {meant[i][2].form}" for i in kept],
+        )
+
+
+KIND = RecipeSlip()

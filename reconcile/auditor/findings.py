@@ -1,0 +1,204 @@
+"""From the search's choice to findings: estimate, interval, onset, rivals, and the words."""
+
+from __future__ import annotations
+
+import zlib
+from collections.abc import Sequence
+from dataclasses import replace
+from datetime import datetime
+
+import numpy as np
+from scipy import stats
+
+from reconcile.auditor.alarm import Alarm
+from reconcile.auditor.estimates import critical_score, given_selected
+from reconcile.auditor.layout import Layout
+from reconcile.auditor.mixed import Model
+from reconcile.auditor.scoring import Candidate, Pool, Scores
+from reconcile.auditor.search import Chosen, Search, State
+from reconcile.auditor.wording import sentence, short_name, since_words, support_words
+from reconcile.records.arrays import IntArray
+from reconcile.records.results import Finding
+
+MOST_RIVALS = 8
+ONSET_DROP = 1.92
+"""Half the 95 % point of chi-squared with one degree of freedom: dates closer than this to the best."""
+READING_ERRORS = ("meter", "probe", "reading", "calibration", "buffer")
+"""Subjects that make a reading wrong, so that its place against limits may change."""
+
+
+def rows_of(candidate: Candidate) -> IntArray:
+    """Evidence rows a candidate touches."""
+    return np.sort(candidate.x.indices.astype(np.intp))
+
+
+def distinct(pool: Pool, scores: Scores, best: Chosen, reach: float) -> list[tuple[int, Candidate]]:
+    """Other explanations within reach of the best, one for each kind, subject and substance, best first."""
+    near = np.flatnonzero((scores.gain > best.gain - reach) & (scores.gain > 1.0) & np.isfinite(scores.marginal))
+    near = near[np.argsort(-scores.marginal[near], kind="stable")]
+    mine = best.candidate
+    taken = {(mine.kind, mine.subject, mine.same if mine.kind == "lot_identity" else None)}
+    found: list[tuple[int, Candidate]] = []
+    for k in near.tolist():
+        other = pool.candidate(k)
+        key = (other.kind, other.subject, other.same if other.kind == "lot_identity" else None)
+        if key not in taken:
+            taken.add(key)
+            found.append((k, other))
+        if len(found) == MOST_RIVALS:
+            break
+    return found
+
+
+def onset_interval(
+    layout: Layout, pool: Pool, scores: Scores, best: Candidate, gain: float
+) -> tuple[datetime, datetime] | None:
+    """Earliest and latest onset nearly as good as the best, among candidates of the same kind and subject."""
+    times = []
+    for k in np.flatnonzero(scores.gain > gain - ONSET_DROP).tolist():
+        other = pool.candidate(k)
+        if (other.kind, other.subject) == (best.kind, best.subject):
+            since = other.tell(float(scores.amplitude[k])).since
+            if since is not None:
+                times.append(since)
+    return (min(times), max(times)) if times else None
+
+
+def described(
+    search: Search,
+    layout: Layout,
+    candidate: Candidate,
+    amplitude: float,
+    interval: tuple[float, float] | None,
+    gain: float,
+    p: float,
+    between: tuple[datetime, datetime] | None = None,
+) -> Finding:
+    """A candidate as a finding, without rivals yet."""
+    told = candidate.tell(amplitude)
+    ends: tuple[float, float] | None = None
+    if interval is not None and told.estimate is not None and not candidate.point:
+        scale = told.scale or float
+        low, high = sorted((scale(interval[0]), scale(interval[1])))
+        ends = (low, high)
+    rows = rows_of(candidate)
+    total = told.would_explain.get("total") if told.would_explain else None
+    detail = told.detail
+    if candidate.kind == "lot_identity" and told.would_explain:
+        detail = str(told.would_explain["substance"])
+    text = sentence(
+        candidate.kind,
+        candidate.subject,
+        told.estimate,
+        ends,
+        since_words(told.since, told.until, between) if candidate.alarm_class == "meter" else "",
+        detail,
+        float(total) if total is not None else None,
+    )
+    return Finding(
+        kind=candidate.kind,
+        subject=candidate.subject,
+        subject_type=candidate.subject_type,
+        estimate=told.estimate,
+        unit=told.unit,
+        interval95=ends,
+        log_likelihood_gain=gain,
+        family_wise_p=p,
+        readings=layout.reading[rows],
+        text=text,
+        since=told.since,
+        until=told.until,
+        since_interval95=between if told.since is not None else None,
+        would_explain=told.would_explain,
+        also=told.also,
+        shift=np.asarray(candidate.x[rows].toarray()).ravel() * amplitude,
+    )
+
+
+def interval_of(
+    search: Search, candidate: Candidate, pool: Pool, model: Model, bare: Model, k: int | None
+) -> tuple[float, tuple[float, float]] | None:
+    """Estimate of the total deviation and its 95 % interval, given that it was selected; None for a point.
+
+    `model` lacks the candidate, `bare` lacks the subject's own prior too: the estimate is of the whole deviation, so
+    its uncertainty is that of `bare`, while the selection was made by the score under `model`.
+    """
+    if candidate.point:
+        return None
+    info_bare = float(bare.quadratic(candidate.x)[0])
+    info = float(model.quadratic(candidate.x)[0])
+    if info_bare <= 0 or info <= 0:
+        return None
+    amplitude = float((candidate.x.T @ bare.pr)[0] / info_bare)
+    u = info_bare**-0.5
+    u *= float(stats.t.ppf(0.975, max(bare.components.noise_df, 3.0)) / stats.norm.ppf(0.975))
+    cut = 0.0
+    if k is not None:
+        seed = zlib.crc32(candidate.alarm_class.encode())
+        cut = critical_score(Alarm(pool, model), k, search.rate, seed) * info**-0.5
+    low, middle, high = given_selected(amplitude, u, cut, (0.025, 0.5, 0.975))
+    return middle, (low, high)
+
+
+def build(search: Search, state: State, layout: Layout, reach: float) -> list[tuple[Finding, list[Candidate]]]:
+    """Findings with their rivals, best first, and beside each the candidates (its own first) for the next check."""
+    result = []
+    for j, one in enumerate(state.chosen):
+        others = [c.candidate for i, c in enumerate(state.chosen) if i != j]
+        pool, model, scores = search.scored(state.components, others)
+        bare = search.model(state.components, others, one.candidate.own)
+        member = search.member(one.candidate, pool)
+        estimated = interval_of(search, one.candidate, pool, model, bare, member)
+        amplitude, interval = (one.amplitude, None) if estimated is None else estimated
+        between = onset_interval(layout, pool, scores, one.candidate, one.gain)
+        finding = described(search, layout, one.candidate, amplitude, interval, one.gain, one.p, between)
+        rivals = distinct(pool, scores, one, reach)
+        told = []
+        for k, other in rivals:
+            support = search.support(other, pool, model)
+            own = search.model(state.components, others, other.own)
+            own_estimate = interval_of(search, other, pool, model, own, None)
+            size, ends = (float(scores.amplitude[k]), None) if own_estimate is None else own_estimate
+            between = onset_interval(layout, pool, scores, other, float(scores.gain[k]))
+            told.append(described(search, layout, other, size, ends, support.gain, support.p, between))
+        batches = len({int(b) for b in layout.batch[rows_of(one.candidate)]})
+        words = [finding.text, support_words(one.p, len(finding.readings), batches, len(told))]
+        if told:
+            names = "; ".join(short_name(r.kind, r.subject, _detail(r)) for r in told[:3])
+            words.append(f"It could also be: {names}.")
+        result.append(
+            (
+                replace(finding, id=f"F{j + 1}", rivals=tuple(told), text=" ".join(words)),
+                [one.candidate, *(c for _, c in rivals)],
+            )
+        )
+    return result
+
+
+def _detail(finding: Finding) -> str:
+    explains = finding.would_explain or {}
+    for name in ("substance", "component", "solutions", "slip"):
+        if explains.get(name):
+            return str(explains[name])
+    return ""
+
+
+def impact_of(layout: Layout, finding: Finding) -> IntArray:
+    """Readings whose place inside or outside their limits would change if the finding holds."""
+    if finding.subject_type not in READING_ERRORS:
+        return np.zeros(0, np.intp)
+    table = layout.records.readings
+    observed = table["ph"][finding.readings]
+    true = observed - finding.shift
+    low, high = table["low_limit"][finding.readings], table["high_limit"][finding.readings]
+
+    def inside(value: np.ndarray) -> np.ndarray:
+        return ~((value < low) | (value > high))
+
+    limited = np.isfinite(low) | np.isfinite(high)
+    return np.asarray(finding.readings[limited & (inside(observed) != inside(true))], np.intp)
+
+
+def with_impact(layout: Layout, findings: Sequence[Finding]) -> list[Finding]:
+    """Findings with the readings whose place against their limits hangs on them."""
+    return [replace(f, impact=impact_of(layout, f)) for f in findings]

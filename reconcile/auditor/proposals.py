@@ -1,0 +1,145 @@
+"""What a fault kind hands to the search: columns of effect, who they concern, and how likely they are beforehand."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, field
+from datetime import datetime
+from typing import Any, Protocol
+
+import numpy as np
+from scipy import sparse
+
+from reconcile.auditor.layout import Layout
+from reconcile.auditor.mixed import Model
+from reconcile.auditor.retrial import Retrial
+from reconcile.records.arrays import BoolArray, FloatArray, IntArray
+from reconcile.records.settings import Settings
+
+CLASSES = ("meter", "lot", "batch", "reading", "chemistry")
+"""Classes between which the alarm rate is split equally."""
+
+
+@dataclass(frozen=True)
+class Context:
+    """Everything a fault kind may look at: the evidence, the settings, the present model and the retrial of recipes."""
+
+    layout: Layout
+    settings: Settings
+    model: Model
+    retrial: Retrial
+
+    def screen(self, x: sparse.csc_array) -> FloatArray:
+        """Score z of linear columns under the present model; 0 where a column says nothing."""
+        information = self.model.quadratic(x)
+        score = np.asarray(x.T @ self.model.pr).ravel()
+        return np.where(information > 1e-9, score / np.sqrt(np.maximum(information, 1e-9)), 0.0)
+
+
+@dataclass(frozen=True)
+class Told:
+    """One candidate in words and numbers, once its amplitude is known.
+
+    estimate, unit : as in findings.json; scale : estimate = scale(amplitude), for both ends of an interval too
+    """
+
+    estimate: float | None
+    unit: str
+    would_explain: Mapping[str, Any] | None
+    since: datetime | None = None
+    until: datetime | None = None
+    also: tuple[str, ...] = ()
+    detail: str = ""
+    scale: Callable[[float], float] | None = None
+
+
+@dataclass(frozen=True)
+class Proposal:
+    """Candidates of one kind, k of them.
+
+    x : sparse (n, k)             effect on the residuals at amplitude 1
+    subject : k names             (batch, meter, row) for one reading
+    subject_type : str
+    block : k names               candidates of one block share subjects: one meter's, one lot's, one batch's
+    prior_sd : FloatArray (k,)    how large such faults are beforehand, in amplitudes
+    log_prior : FloatArray (k,)   log prior odds among the candidates of the kind and subject
+    point : BoolArray (k,)        True: the amplitude is exactly 1 (another substance, a doubled amount)
+    own : k tuples                columns of the design that hold the subject's own prior for this very effect
+    tell : (index, amplitude) -> Told
+    """
+
+    kind: str
+    alarm_class: str
+    subject_type: str
+    x: sparse.csc_array
+    subject: Sequence[str | tuple[str, ...]]
+    block: Sequence[str]
+    prior_sd: FloatArray
+    log_prior: FloatArray
+    point: BoolArray
+    tell: Callable[[int, float], Told]
+    own: Sequence[tuple[int, ...]] = ()
+    same: Sequence[object] = field(default_factory=tuple)
+    """What tells apart candidates of one kind and subject in a list of rivals (a substance); () when nothing does."""
+    df: IntArray | None = None
+    """Degrees of freedom of a candidate drawn from the readings themselves; None: one each."""
+
+    def __len__(self) -> int:
+        return len(self.subject)
+
+
+class FaultKind(Protocol):
+    """One kind of fault: a module-level object in its own small file under faults/."""
+
+    name: str
+    alarm_class: str
+
+    def propose(self, context: Context) -> Proposal | None:
+        """Candidates of this kind for the record, or None when it cannot be tested."""
+
+
+def stack(columns: Sequence[tuple[IntArray, FloatArray]], n: int) -> sparse.csc_array:
+    """Columns given as (rows, values) side by side."""
+    if not columns:
+        return sparse.csc_array((n, 0))
+    sizes = [len(rows) for rows, _ in columns]
+    return sparse.csc_array(
+        (
+            np.concatenate([values for _, values in columns]),
+            np.concatenate([rows for rows, _ in columns]),
+            np.r_[0, np.cumsum(sizes)],
+        ),
+        shape=(n, len(columns)),
+    )
+
+
+def linear(
+    kind: str,
+    alarm_class: str,
+    subject_type: str,
+    x: sparse.csc_array,
+    subject: Sequence[str | tuple[str, ...]],
+    tell: Callable[[int, float], Told],
+    prior_sd: float,
+    *,
+    block: Sequence[str] | None = None,
+    log_prior: FloatArray | None = None,
+    own: Sequence[tuple[int, ...]] = (),
+) -> Proposal | None:
+    """A proposal whose candidates all have a free amplitude; None when there is no candidate."""
+    k = len(subject)
+    if not k:
+        return None
+    return Proposal(
+        kind,
+        alarm_class,
+        subject_type,
+        x,
+        subject,
+        [str(s) for s in subject] if block is None else block,
+        np.full(k, prior_sd),
+        np.zeros(k) if log_prior is None else log_prior,
+        np.zeros(k, bool),
+        tell,
+        own,
+    )

@@ -1,0 +1,150 @@
+"""All candidates of all kinds side by side, scored under one model."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from scipy import sparse
+
+from reconcile.auditor.mixed import Model
+from reconcile.auditor.proposals import CLASSES, Context, FaultKind, Proposal, Told
+from reconcile.records.arrays import BoolArray, FloatArray, IntArray
+
+LEAST_INFORMATION = 1e-6
+
+
+@dataclass(frozen=True)
+class Candidate:
+    """One explanation, taken out of the pool: its effect, and how to tell it.
+
+    x : sparse (n, 1), effect at amplitude 1
+    """
+
+    kind: str
+    alarm_class: str
+    block: str
+    subject: str | tuple[str, ...]
+    subject_type: str
+    same: object
+    x: sparse.csc_array
+    prior_sd: float
+    log_prior: float
+    point: bool
+    df: int
+    own: tuple[int, ...]
+    proposal: Proposal
+    index: int
+
+    @property
+    def key(self) -> tuple[object, ...]:
+        """What makes it the same explanation as another: kind, subject, and the substance or component."""
+        return (self.kind, self.subject, self.same)
+
+    def tell(self, amplitude: float) -> Told:
+        return self.proposal.tell(self.index, amplitude)
+
+
+class Pool:
+    """Candidates of several proposals, with arrays over all k of them."""
+
+    def __init__(self, proposals: Sequence[Proposal], n: int) -> None:
+        self.proposals = [p for p in proposals if len(p)]
+        self.offsets = np.cumsum([0, *(len(p) for p in self.proposals)])
+        self.x = (
+            sparse.csc_array(sparse.hstack([p.x for p in self.proposals]))
+            if self.proposals
+            else sparse.csc_array((n, 0))
+        )
+        self.prior_sd = self._joined([p.prior_sd for p in self.proposals])
+        self.log_prior = self._joined([p.log_prior for p in self.proposals])
+        self.point: BoolArray = self._joined([p.point.astype(float) for p in self.proposals]) > 0
+        self.df: IntArray = self._joined(
+            [np.ones(len(p)) if p.df is None else p.df.astype(float) for p in self.proposals]
+        ).astype(np.intp)
+        names = [(p.alarm_class, str(b)) for p in self.proposals for b in p.block]
+        distinct = sorted(set(names))
+        place = {name: i for i, name in enumerate(distinct)}
+        self.block: IntArray = np.array([place[name] for name in names], np.intp)
+        self.block_class = [c for c, _ in distinct]
+        self.blocks_in_class = {c: self.block_class.count(c) for c in CLASSES}
+
+    @staticmethod
+    def _joined(parts: Sequence[FloatArray]) -> FloatArray:
+        return np.concatenate(parts) if parts else np.zeros(0)
+
+    def __len__(self) -> int:
+        return int(self.offsets[-1])
+
+    @property
+    def classes(self) -> int:
+        """Classes with any candidate: one that cannot be tested returns its share of the alarm rate."""
+        return max(1, sum(count > 0 for count in self.blocks_in_class.values()))
+
+    def trials(self, k: int) -> int:
+        """Number of blocks times classes by which a candidate's block probability is charged."""
+        return self.classes * self.blocks_in_class[self.block_class[int(self.block[k])]]
+
+    def candidate(self, k: int) -> Candidate:
+        which = int(np.searchsorted(self.offsets, k, side="right")) - 1
+        p, i = self.proposals[which], int(k - self.offsets[which])
+        return Candidate(
+            kind=p.kind,
+            alarm_class=p.alarm_class,
+            block=str(p.block[i]),
+            subject=p.subject[i],
+            subject_type=p.subject_type,
+            same=p.same[i] if len(p.same) else None,
+            x=sparse.csc_array(self.x[:, [k]]),
+            prior_sd=float(p.prior_sd[i]),
+            log_prior=float(p.log_prior[i]),
+            point=bool(p.point[i]),
+            df=int(self.df[k]),
+            own=p.own[i] if len(p.own) else (),
+            proposal=p,
+            index=i,
+        )
+
+
+def pool_of(context: Context, kinds: Sequence[FaultKind]) -> Pool:
+    """Candidates of all kinds under the present model."""
+    found = [kind.propose(context) for kind in kinds]
+    return Pool([p for p in found if p is not None], len(context.layout))
+
+
+@dataclass(frozen=True)
+class Scores:
+    """Scores of k candidates.
+
+    information : x'Px; amplitude : its estimate (1 for a point); z : score over its standard deviation
+    gain : log-likelihood gain at the best amplitude (at 1 for a point), never negative
+    marginal : gain averaged over the prior of the amplitude, with the prior odds: what candidates are ranked by
+    """
+
+    information: FloatArray
+    amplitude: FloatArray
+    z: FloatArray
+    gain: FloatArray
+    marginal: FloatArray
+
+
+def score(model: Model, x: sparse.csc_array, point: BoolArray, prior_sd: FloatArray, log_prior: FloatArray) -> Scores:
+    """Scores of sparse columns under a model; columns that say nothing score nothing."""
+    information = model.quadratic(x)
+    slope = np.asarray(x.T @ model.pr).ravel()
+    good = information > LEAST_INFORMATION
+    safe = np.where(good, information, 1.0)
+    z = np.where(good, slope / np.sqrt(safe), 0.0)
+    at_one = np.where(good, slope - 0.5 * information, 0.0)
+    ratio = prior_sd**2 * safe
+    gain = np.where(point, np.maximum(at_one, 0.0), 0.5 * z**2)
+    free = 0.5 * z**2 * ratio / (1.0 + ratio) - 0.5 * np.log1p(ratio)
+    marginal = np.where(point, at_one, free) + log_prior
+    return Scores(
+        information,
+        np.where(point, 1.0, np.where(good, slope / safe, 0.0)),
+        z,
+        gain,
+        np.where(good, marginal, -np.inf),
+    )

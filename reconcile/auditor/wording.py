@@ -1,0 +1,144 @@
+"""One table of sentences: how each kind of finding is told. Consistent with, never proves."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from datetime import datetime
+
+# {subject}, {size}, {interval}, {since}, {detail}, {direction} are filled; each sentence says what and how large
+SENTENCES: Mapping[str, str] = {
+    "meter_offset": "Meter {subject} reads {size} pH {direction}{interval}.",
+    "meter_span": "Meter {subject} has an error of {size} pH per pH about a {detail}{interval}: it {direction} "
+    "differences in pH.",
+    "meter_drift": "Meter {subject} drifts by {size} pH a day{interval}{since}, {total} pH in all.",
+    "meter_step": "Meter {subject} jumped by {size} pH{interval}{since}.",
+    "meter_temperature": "Meter {subject} behaves as if its temperature compensation were {detail}.",
+    "meter_stuck": "The display of meter {subject} stood at {size}{since} while the solutions changed.",
+    "probe_matrix": "Meter {subject} reads {size} pH {direction}{interval} in one kind of solution only: {detail}.",
+    "calibration_buffer": "Calibration buffer {subject} differs from its certified pH by {size}{interval}; every "
+    "calibration made with it carries that error.",
+    "lot_strength": "Lot {subject} has {size} times its stated strength{interval}.",
+    "lot_identity": "Lot {subject} acts as {detail} would, not as its label says.",
+    "batch_preparation": "Batch {subject} holds {size} times the stated amount of {detail}{interval}.",
+    "recipe_slip": "The recipe of batch {subject} was probably misread: {detail}.",
+    "reading_slip": "One reading of batch {batch} on meter {meter} (row {row}) is {size} pH {direction}{interval}"
+    "{detail}.",
+    "acid_constant": "The library's pKa of {subject} is off by {size}{interval} for every lot and meter here.",
+    "carbon_dioxide": "{subject} holds carbon dioxide that its recipe does not: {detail}.",
+    "record_value": "The record's own calculated pH of batch {subject} is off by {size}: {detail}.",
+}
+NAMES: Mapping[str, str] = {
+    "meter_offset": "offset of meter {subject}",
+    "meter_span": "span error of meter {subject}",
+    "meter_drift": "drift of meter {subject}",
+    "meter_step": "step of meter {subject}",
+    "meter_temperature": "temperature compensation of meter {subject}",
+    "meter_stuck": "stuck display of meter {subject}",
+    "probe_matrix": "meter {subject} off in {detail} only",
+    "calibration_buffer": "calibration buffer {subject} off its certified value",
+    "lot_strength": "wrong strength of lot {subject}",
+    "lot_identity": "{detail} in lot {subject}",
+    "batch_preparation": "batch {subject} prepared with too much or too little {detail}",
+    "recipe_slip": "misread recipe of batch {subject} ({detail})",
+    "reading_slip": "one mistyped reading of batch {batch} on meter {meter} (row {row})",
+    "acid_constant": "library constant of {subject} off",
+    "carbon_dioxide": "carbon dioxide in {subject}",
+    "record_value": "calculated pH of batch {subject} wrong",
+}
+
+
+def number(value: float, digits: int = 3) -> str:
+    """A size with three significant digits and no superfluous zeros; never a sign for zero."""
+    if value == 0:
+        return "0"
+    return f"{value:.{digits}g}"
+
+
+def date_words(moment: datetime) -> str:
+    return moment.strftime("%Y-%m-%d")
+
+
+def since_words(since: datetime | None, until: datetime | None, between: tuple[datetime, datetime] | None) -> str:
+    """From when to when, with the interval of the onset."""
+    if since is None:
+        return " over the whole record"
+    words = f" from {date_words(since)}"
+    if until is not None:
+        words += f" to {date_words(until)}"
+    if between is not None and date_words(between[0]) != date_words(between[1]):
+        words += f" (onset between {date_words(between[0])} and {date_words(between[1])})"
+    return words
+
+
+def fields_of(subject: str | tuple[str, ...]) -> dict[str, str]:
+    """The subject as the templates name it."""
+    if isinstance(subject, tuple):
+        batch, meter, row = (*subject, "", "", "")[:3]
+        return {
+            "subject": f"batch {batch}, meter {meter or 'not named'}, row {row}",
+            "batch": batch,
+            "meter": meter or "not named",
+            "row": row,
+        }
+    return {"subject": subject, "batch": subject, "meter": subject, "row": ""}
+
+
+def short_name(kind: str, subject: str | tuple[str, ...], detail: str) -> str:
+    """An explanation in a few words, for lists of rivals."""
+    return _fill(NAMES[kind], {**fields_of(subject), "detail": detail})
+
+
+def sentence(
+    kind: str,
+    subject: str | tuple[str, ...],
+    estimate: float | None,
+    interval: tuple[float, float] | None,
+    since: str,
+    detail: str,
+    total: float | None,
+) -> str:
+    """What a finding says, and how large with its interval."""
+    signed = kind in ("meter_drift", "meter_step", "calibration_buffer", "acid_constant", "meter_span", "record_value")
+    size = "" if estimate is None else number(estimate if signed else abs(estimate))
+    direction = "" if estimate is None else ("high" if estimate > 0 else "low")
+    if kind == "meter_span" and estimate is not None:
+        direction = "exaggerates" if estimate > 0 else "flattens"
+    between = ""
+    if interval is not None:
+        low, high = interval if signed or interval[0] > 0 else (-interval[1], -interval[0])
+        between = f" (95 % interval {number(low)} to {number(high)})"
+    if kind == "reading_slip":
+        detail = f", consistent with {detail}" if detail else ", unexplained"
+    return _fill(
+        SENTENCES[kind],
+        {
+            **fields_of(subject),
+            "size": size,
+            "direction": direction,
+            "interval": between,
+            "since": since,
+            "detail": detail,
+            "total": "" if total is None else number(total),
+        },
+    )
+
+
+def _fill(template: str, values: Mapping[str, str]) -> str:
+    for key, value in values.items():
+        template = template.replace("{" + key + "}", value)
+    return template
+
+
+def support_words(p: float, readings: int, batches: int, rivals: int) -> str:
+    """How sure, on what, and whether the data can decide."""
+    chance = "less than 1 in 10,000" if p < 1e-4 else f"about {number(p, 2)}"
+    words = (
+        f"It rests on {readings} reading{'s' * (readings != 1)} of {batches} batch{'es' * (batches != 1)}. "
+        f"The chance that a clean record of this size shows anything as striking is {chance}."
+    )
+    if rivals:
+        words += (
+            f" The readings are consistent with {rivals} other explanation{'s' * (rivals != 1)} too, "
+            "which this record cannot tell from it."
+        )
+    return words

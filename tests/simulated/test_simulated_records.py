@@ -1,4 +1,4 @@
-"""Simulated records are what they claim: the same for a seed, whole, with the spread and the faults they should have."""
+"""Simulated records are what they claim: repeatable, whole, with the spread and the faults they should have."""
 
 import dataclasses
 

@@ -4,8 +4,8 @@ from __future__ import annotations
 
 import sys
 from collections.abc import Iterable, Sequence
-from functools import cache
-from typing import TYPE_CHECKING
+from functools import lru_cache
+from typing import TYPE_CHECKING, TextIO
 
 from rich.console import Console, RenderableType
 from rich.padding import Padding
@@ -23,11 +23,15 @@ PIPED_WIDTH = 100_000
 INDENT = 2
 
 
-@cache
+@lru_cache(maxsize=1)
+def _console_on(stream: TextIO) -> Console:
+    width = None if stream.isatty() else PIPED_WIDTH
+    return Console(file=stream, width=width, markup=False, highlight=False, emoji=False)
+
+
 def console() -> Console:
-    """Standard output."""
-    width = None if sys.stdout.isatty() else PIPED_WIDTH
-    return Console(file=sys.stdout, width=width, markup=False, highlight=False, emoji=False)
+    """Standard output, as it is now."""
+    return _console_on(sys.stdout)
 
 
 def _put(thing: RenderableType) -> None:

@@ -71,7 +71,7 @@ def show(predicted: PredictedParts) -> None:
     heading(f"Made up to {composition.total}" if composition.total else "Parts")
     columns(
         [
-            (part.text, f"{significant(amount, 5)} {composition.unit}")
+            (part.text, f"{amount:.5g} {composition.unit}")
             for part, amount in zip(composition.parts, composition.amounts, strict=True)
         ]
     )

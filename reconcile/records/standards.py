@@ -47,8 +47,10 @@ def standards() -> Mapping[str, StandardBuffer]:
             name,
             tuple(some[0]["synonyms"].split("|")),
             some[0]["formula"],
-            *(np.array([float(r[column]) for r in some]) for column in ("temperature_c", "ph", "u")),
-            sources=tuple(r["source"] for r in some),
+            np.array([float(r["temperature_c"]) for r in some]),
+            np.array([float(r["ph"]) for r in some]),
+            np.array([float(r["u"]) for r in some]),
+            tuple(r["source"] for r in some),
         )
         for name, some in grouped.items()
     }

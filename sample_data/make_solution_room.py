@@ -1,7 +1,7 @@
 """Makes solution_room.xlsx, eight weeks of an invented solution room with planted faults, and the truth beside it.
 
 Run from anywhere: python sample_data/make_solution_room.py. Every name, number and event is invented. The pH values
-come from the simulator's own chemistry (tests/simulated), not from the engine that audits them. The same bytes each time.
+come from the simulator's own chemistry (tests/simulated), not from the engine that audits them. Same bytes each time.
 """
 
 from __future__ import annotations
@@ -18,78 +18,13 @@ HERE = Path(__file__).resolve().parent
 sys.path.insert(0, str(HERE.parent))
 from reconcile.records.substances import catalogue  # noqa: E402
 from sample_data.solution_room_sheets import FIRST_DAY, untidy_rows, write_truth, write_workbook  # noqa: E402
+from sample_data.solution_room_stock import ACETIC, KINDS, LOTS, REMARKS, Lot  # noqa: E402
 from tests.simulated import chemistry_of_truth as chemistry  # noqa: E402
 
 DAYS = 54.0
 METERS = ("Bench 1", "Bench 2", "Bench 3", "Bench 4", "Bench 5", "Hatch")
 STEP_AT, DRIFT_FROM = datetime(2025, 4, 2, 12), datetime(2025, 3, 31, 8)
 STEP, DRIFT, OFFSET = 0.10, 0.18, -0.09
-ACETIC, ACETATE = "acetic acid", "sodium acetate"
-CITRIC, CITRATE = "citric acid monohydrate", "trisodium citrate dihydrate"
-PRIMARY, SECONDARY = "sodium dihydrogen phosphate monohydrate", "disodium hydrogen phosphate"
-TRIS, TRIS_HCL = "Tris base", "Tris hydrochloride"
-LACTIC, LACTATE = "lactic acid", "sodium lactate"
-BASE, STRONG = "sodium hydroxide", "hydrochloric acid"
-
-
-@dataclass
-class Lot:
-    """One bottle: what its label says, what is in it, and how strong it really is."""
-
-    name: str
-    label: str
-    opened: int
-    strength: float = 0.0
-    """mol/L of a stock solution; 0 for a solid"""
-    content: str = ""
-    factor: float = 1.0
-    tolerance: float = 1.0
-
-
-LOTS = [
-    Lot("AC-0412", ACETIC, 0, 1.0),
-    Lot("AC-0427", ACETIC, 17, 1.0, factor=1.22),
-    Lot("SA-1105", ACETATE, 0),
-    Lot("SA-1131", ACETATE, 28),
-    Lot("CI-2209", CITRIC, 0),
-    Lot("CI-2218", CITRIC, 25),
-    Lot("TC-2301", CITRATE, 0),
-    Lot("PM-3014", PRIMARY, 0),
-    Lot("PM-3020", PRIMARY, 30),
-    Lot("PD-3107", SECONDARY, 0),
-    Lot("PD-3112", SECONDARY, 20, content="disodium hydrogen phosphate heptahydrate"),
-    Lot("TR-4001", TRIS, 0),
-    Lot("TR-4009", TRIS, 27),
-    Lot("TH-4103", TRIS_HCL, 0, 0.5),
-    Lot("LA-5016", LACTIC, 0, 1.0),
-    Lot("LA-5023", LACTIC, 22, 1.0, content=ACETIC),
-    Lot("SL-5101", LACTATE, 0, 1.0),
-    Lot("HC-6102", STRONG, 0, 1.0, tolerance=0.5),
-    Lot("HC-6109", STRONG, 19, 1.0, tolerance=0.5),
-    Lot("HC-6115", STRONG, 38, 1.0, tolerance=0.5),
-    Lot("NH-7001", BASE, 0, 1.0, tolerance=0.5),
-    Lot("NH-7006", BASE, 16, 1.0, tolerance=0.5),
-    Lot("NH-7010", BASE, 35, 1.0, tolerance=0.5),
-]
-KINDS: tuple[tuple[str, tuple[str, ...], int, float, float], ...] = (
-    # title, substances, batches, and the least and greatest amount of the second per mole of the first
-    ("acetate", (ACETIC, ACETATE), 13, 0.5, 2.0),
-    ("acetate", (ACETIC, BASE), 10, 0.25, 0.75),
-    ("acetate", (ACETATE, STRONG), 5, 0.25, 0.75),
-    ("citrate", (CITRIC, CITRATE), 10, 0.4, 2.5),
-    ("citrate", (CITRIC, BASE), 8, 0.5, 2.4),
-    ("phosphate", (PRIMARY, SECONDARY), 16, 0.4, 2.5),
-    ("phosphate", (PRIMARY, BASE), 6, 0.25, 0.75),
-    ("phosphate", (SECONDARY, STRONG), 6, 0.25, 0.75),
-    ("Tris", (TRIS, STRONG), 12, 0.25, 0.75),
-    ("Tris", (TRIS, TRIS_HCL), 6, 0.5, 2.0),
-    ("lactate", (LACTIC, BASE), 10, 0.3, 0.75),
-    ("lactate", (LACTIC, LACTATE), 6, 0.5, 2.0),
-    ("acetic acid", (ACETIC,), 4, 0.0, 0.0),
-    ("citric acid", (CITRIC,), 4, 0.0, 0.0),
-    ("lactic acid", (LACTIC,), 4, 0.0, 0.0),
-)
-REMARKS = ("stirred", "second operator", "after filtration", "re-read once, same value", "read at the hatch counter")
 
 
 @dataclass
@@ -143,7 +78,7 @@ def make_batches(rng: np.random.Generator) -> list[Batch]:
         title, substances, _, low, high = kinds[index]
         day -= max(0.0, day % 7 - 4.9)  # nobody prepares at the weekend
         batch = Batch(f"S25-{number + 1:03d}", title, float(day))
-        first = float(np.exp(rng.uniform(np.log(0.02), np.log(0.10))))
+        first = float(np.exp(rng.uniform(np.log(0.02), np.log(0.10)))) if high else float(rng.uniform(0.06, 0.2))
         wanted = [first, first * float(np.exp(rng.uniform(np.log(low), np.log(high))))] if high else [first]
         style, litres = int(rng.integers(3)), float(rng.choice([0.5, 1.0, 2.0]))
         for substance, concentration in zip(substances, wanted, strict=True):
@@ -208,11 +143,11 @@ def transpose_one(rows: list[dict[str, Any]], batches: list[Batch]) -> int:
     """Exchange two neighbouring digits of one reading of a sound batch on a sound meter; its index."""
     sound = {lot.name for lot in LOTS if lot.factor < 1.1 and not lot.content}
     for index, row in enumerate(rows[100:], start=100):
-        text = f"{row['ph']:.2f}"
-        if METERS[row["meter"]] in ("Bench 1", "Bench 4", "Hatch") and abs(int(text[2]) - int(text[3])) >= 6:
-            if {part.lot.name for part in batches[row["batch"]].parts} <= sound:
-                row["slip_from"], row["ph"] = row["ph"], float(f"{text[:2]}{text[3]}{text[2]}")
-                return index
+        text, lots = f"{row['ph']:.2f}", {part.lot.name for part in batches[row["batch"]].parts}
+        far_apart = abs(int(text[2]) - int(text[3])) >= 5
+        if METERS[row["meter"]] in ("Bench 1", "Bench 4", "Hatch") and far_apart and lots <= sound:
+            row["slip_from"], row["ph"] = row["ph"], float(f"{text[:2]}{text[3]}{text[2]}")
+            return index
     raise LookupError("no reading to transpose")
 
 

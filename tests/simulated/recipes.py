@@ -16,21 +16,24 @@ def _between(rng: np.random.Generator, low: float, high: float) -> float:
     return float(np.exp(rng.uniform(np.log(low), np.log(high))))
 
 
-def _pair(rng: np.random.Generator) -> Amounts:
-    total, part = _between(rng, 0.02, 0.15), rng.uniform(0.25, 0.75)
-    return total * (1 - part), total * part
-
-
-def _neutralised(low: float, high: float) -> Draw:
+def _pair(most: float) -> Draw:
     def draw(rng: np.random.Generator) -> Amounts:
-        total = _between(rng, 0.02, 0.12)
+        total, part = _between(rng, 0.02, most), rng.uniform(0.25, 0.75)
+        return total * (1 - part), total * part
+
+    return draw
+
+
+def _neutralised(low: float, high: float, most: float = 0.12) -> Draw:
+    def draw(rng: np.random.Generator) -> Amounts:
+        total = _between(rng, 0.02, most)
         return total, total * rng.uniform(low, high)
 
     return draw
 
 
-def _alone(rng: np.random.Generator) -> Amounts:
-    return (_between(rng, 0.01, 0.2),)
+def _alone(least: float) -> Draw:
+    return lambda rng: (_between(rng, least, 0.2),)
 
 
 def _dilute_base(rng: np.random.Generator) -> Amounts:
@@ -51,24 +54,25 @@ ACETIC, ACETATE = "acetic acid", "sodium acetate"
 CITRIC, CITRATE = "citric acid", "trisodium citrate"
 PRIMARY, SECONDARY = "sodium dihydrogen phosphate", "disodium hydrogen phosphate"
 BASE, STRONG = "sodium hydroxide", "hydrochloric acid"
+# amounts keep every ionic strength between 0.001 mol/kg (slow electrodes) and 0.5 mol/kg (the Davies equation)
 TEMPLATES: tuple[Template, ...] = (
-    Template("acetate", (ACETIC, ACETATE), _pair, 3),
+    Template("acetate", (ACETIC, ACETATE), _pair(0.15), 3),
     Template("acetate", (ACETIC, BASE), _neutralised(0.2, 0.8), 3),
     Template("acetate", (ACETATE, STRONG), _neutralised(0.2, 0.8), 2),
-    Template("citrate", (CITRIC, CITRATE), _pair, 3),
+    Template("citrate", (CITRIC, CITRATE), _pair(0.09), 3),
     Template("citrate", (CITRIC, BASE), _neutralised(0.4, 2.5), 3),
-    Template("citrate", (CITRATE, STRONG), _neutralised(0.4, 2.5), 2),
-    Template("citrate phosphate", (CITRIC, SECONDARY), _pair, 1),
-    Template("phosphate", (PRIMARY, SECONDARY), _pair, 4),
+    Template("citrate", (CITRATE, STRONG), _neutralised(0.4, 2.5, 0.07), 2),
+    Template("citrate phosphate", (CITRIC, SECONDARY), _pair(0.15), 1),
+    Template("phosphate", (PRIMARY, SECONDARY), _pair(0.15), 4),
     Template("phosphate", (PRIMARY, BASE), _neutralised(0.2, 0.8), 2),
     Template("phosphate", (SECONDARY, STRONG), _neutralised(0.2, 0.8), 2),
     Template("Tris", ("Tris base", STRONG), _neutralised(0.2, 0.8), 4),
     Template("lactate", ("lactic acid", BASE), _neutralised(0.25, 0.75), 3),
     Template("MES", ("MES", BASE), _neutralised(0.2, 0.8), 3),
     Template("borate", ("boric acid", BASE), _neutralised(0.15, 0.6), 3),
-    Template("acetic acid", (ACETIC,), _alone, 1),
-    Template("citric acid", (CITRIC,), _alone, 1),
-    Template("lactic acid", ("lactic acid",), _alone, 1),
+    Template("acetic acid", (ACETIC,), _alone(0.06), 1),
+    Template("citric acid", (CITRIC,), _alone(0.01), 1),
+    Template("lactic acid", ("lactic acid",), _alone(0.01), 1),
 )
 DILUTE_BASE = Template("dilute base", (BASE,), _dilute_base, 0)
 BOTTLES: dict[str, int] = {

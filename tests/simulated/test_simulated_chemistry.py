@@ -3,8 +3,10 @@
 import numpy as np
 import pytest
 
+from reconcile.chemistry.predict import predict_records
 from reconcile.records.substances import catalogue
 from tests.simulated import chemistry_of_truth as chemistry
+from tests.simulated.simulator import simulate
 
 
 def ph_of(celsius=25.0, davies=0.3, **molality):
@@ -70,3 +72,12 @@ def test_each_temperature_of_a_batch_of_rows_is_its_own():
         one = slice(i, i + 1)
         alone = chemistry.solve_ph(totals[one], ["acetic acid"], charge[one], np.abs(charge[one]), celsius[one])
         assert together[i] == pytest.approx(float(alone[0]), abs=1e-9)
+
+
+def test_the_package_engine_predicts_what_the_simulator_prepares():
+    """Two programs, one table of constants: they differ only by their equations for water and temperature."""
+    for seed in range(15):
+        simulated = simulate(seed)
+        prediction = predict_records(simulated.records, simulated.settings)
+        assert set(prediction.status) == {"ok"}
+        assert prediction.ph == pytest.approx(simulated.world.true_ph(nominal=True), abs=0.002)

@@ -65,6 +65,56 @@ PROBLEMS: Mapping[str, Kind] = {
         "no more than the limit in the settings",
         "Raise [limits] inflated_mib, or split the file.",
     ),
+    "file-lock": Kind(
+        S,
+        "this is the lock file of a workbook that is open elsewhere",
+        "the workbook itself",
+        "Close the workbook, or name the file without ~$.",
+    ),
+    "file-encrypted": Kind(
+        S, "the workbook is protected by a password", "an unprotected workbook", "Save an unprotected copy."
+    ),
+    "file-entities": Kind(
+        S,
+        "part {read} declares entities",
+        "a workbook as spreadsheet programs write it",
+        "Save it again from a spreadsheet program.",
+    ),
+    "file-nul": Kind(
+        S,
+        "the text holds NUL bytes; it may be UTF-16",
+        "UTF-8, or a named encoding",
+        'Name it in the settings: [reading] encoding = "utf-16".',
+    ),
+    "sheet-too-wide": Kind(
+        S,
+        "the cells span {read} rows and columns",
+        "a sheet without stray cells far outside its table",
+        "Delete the empty rows and columns beyond the table and save it again.",
+    ),
+    "delimiter-unclear": Kind(
+        S,
+        "the lines can be split by {read}",
+        "one delimiter",
+        'Name it in the settings: [reading] delimiter = ";" (or "," or "tab").',
+    ),
+    "csv-quote": Kind(
+        S,
+        "a quotation mark is not closed, or stands inside a field: {read}",
+        "quoted fields that end with a quotation mark",
+        "Correct the quotation marks, or export the record again.",
+    ),
+    "no-readings": Kind(
+        S,
+        "there is no sheet of readings or calibrations; recognised: {read}",
+        "a sheet with a column pH and a column Batch or Known solution",
+        "Name the file with the readings too, or map its headings with --columns FILE.toml.",
+    ),
+    "toml-bad": Kind(S, "the file is not valid TOML: {read}", 'lines such as key = "value"', "Correct the line."),
+    "map-section": Kind(S, "{read} is no kind of sheet", "a section named {known}", "Correct the map of columns."),
+    "map-field": Kind(
+        S, "{heading} is mapped to {read}", "one of {known}, or a table with substance", "Correct the map of columns."
+    ),
     "column-twice": Kind(
         S,
         "two columns are headed as {name}: {read}",
@@ -93,6 +143,61 @@ PROBLEMS: Mapping[str, Kind] = {
         "known solution {read} is neither in the record nor built in",
         "a name of the Known solutions sheet or a published standard buffer",
         "Add it to a Known solutions sheet with its certified pH.",
+    ),
+    "cell-error": Kind(L, "{name} holds the error {read}", "a value", _ORIGINAL),
+    "formula-uncalculated": Kind(
+        L,
+        "{name} holds a formula without a saved value: {read}",
+        "a calculated value",
+        "Open the workbook in a spreadsheet program, save it, and try again.",
+    ),
+    "superscript-digits": Kind(L, "{name} reads {read} with raised digits", "a plain number", _ORIGINAL),
+    "cell-too-long": Kind(L, "{name} holds more text than a cell can: {read}", "a short text", _ORIGINAL),
+    "number-censored": Kind(
+        L,
+        "{name} reads {read}, a limit or a range",
+        "a single number such as 7.41",
+        "A limit or a range is not a reading; enter the reading itself if the original entry has it.",
+    ),
+    "number-turned-date": Kind(
+        L,
+        "{name} reads {read}, a date",
+        "a number such as 7.41",
+        "The spreadsheet may have turned a number into a date. " + _ORIGINAL,
+    ),
+    "decimal-unclear": Kind(
+        L,
+        "{name} reads {read}: decimal mark or thousands separator",
+        "a number such as 7.41",
+        'Say it in the settings: [reading] decimal = "," or decimal = ".".',
+    ),
+    "id-destroyed": Kind(
+        L,
+        "{name} reads {read}; the spreadsheet has changed the name into a date or a number",
+        "a name, stored as text",
+        "The original spelling cannot be recovered from the file. " + _ORIGINAL,
+    ),
+    "time-without-date": Kind(L, "{name} reads {read}, a time without a date", "a date and a time", _ORIGINAL),
+    "time-zone": Kind(
+        L,
+        "{name} reads {read}, with a time zone",
+        "local wall time without a zone",
+        "Write all times as local wall time.",
+    ),
+    "date-order-unclear": Kind(
+        L,
+        "{name} reads {read}: day or month first",
+        "a date such as 2026-03-05",
+        'Say it in the settings: [reading] date_order = "day-month" or "month-day".',
+    ),
+    "year-short": Kind(
+        L, "{name} reads {read}, a year of two digits", "a date such as 2026-03-05", "Write the year in full."
+    ),
+    "known-temperature": Kind(
+        L,
+        "known solution {read} has no certified pH at {temperature} °C",
+        "a temperature within the certified ones",
+        "Add the value at this temperature to the Known solutions sheet.",
     ),
     "summary-row": Kind(L, "this is a summary row: {read}", "a reading", "None needed; it is no reading."),
     "row-width": Kind(
@@ -151,6 +256,46 @@ PROBLEMS: Mapping[str, Kind] = {
         "the amount of titrant added",
         "Write the amount that was added, if the original entry gives it.",
     ),
+    "percent-unclear": Kind(
+        L, "the amount {read} does not say % of what", "% w/v or % w/w", "Write % w/v or % w/w in the sheet."
+    ),
+    "strength-unit": Kind(
+        L, "the strength reads {read}", "a concentration such as 0.1 mol/L", "Write a unit of concentration."
+    ),
+    "volume-of-what": Kind(
+        L,
+        "a volume of {name} is taken, but of no lot and no strength",
+        "the lot, or the strength in the name (0.1 M)",
+        "Name the lot, with its strength in the Stocks sheet.",
+    ),
+    "times-unclear": Kind(
+        L, "{read} cannot be a dilution of this stock", "1x of a stock of 10x, or 10x of a stock", _ORIGINAL
+    ),
+    "batch-stock-amount": Kind(
+        L,
+        "the amount {read} of a stock that is itself a batch",
+        "a volume, a mass (with the density of the lot), a multiple such as 10x, or mol/L of a substance in it",
+        _ORIGINAL,
+    ),
+    "stock-cycle": Kind(
+        L, "this stock is made from itself: {read}", "stocks made from other stocks", "Correct the Stocks sheet."
+    ),
+    "stock-without-recipe": Kind(
+        L, "the stock is made as batch {read}, which has no recipe", "a recipe for that batch", "Add the recipe."
+    ),
+    "fill-not-water": Kind(
+        L,
+        "the solution is filled up with {read}",
+        "water as what is filled up with",
+        "Write the amount of it that was added, if the original entry gives it.",
+    ),
+    "litre-and-kilogram": Kind(
+        L,
+        "amounts per litre and per kilogram meet in one recipe: {read}",
+        "amounts by one measure, or the density of the lots",
+        _ORIGINAL,
+    ),
+    "no-water-left": Kind(L, "the solutes weigh more than the solution: {read}", "a smaller amount", _ORIGINAL),
     "recipe-bad": Kind(
         L, "the recipe of batch {name} cannot be used: {read}", "a complete recipe", "See the recipe's cell."
     ),
@@ -212,6 +357,52 @@ PROBLEMS: Mapping[str, Kind] = {
     "decimal-comma": Kind(
         N, "{count} cells of column {name} use a decimal comma", "a decimal point", "They were read as decimals."
     ),
+    "missing-mark": Kind(
+        N, "{count} cells of column {name} hold {read} or the like", "a value", "They count as missing."
+    ),
+    "look-alike-characters": Kind(
+        N,
+        "{count} cells of column {name} hold look-alike characters: {read}",
+        "plain digits and signs",
+        "They were read as numbers.",
+    ),
+    "number-with-unit": Kind(
+        N, "{count} cells of column {name} carry a unit: {read}", "numbers alone", "They were read in that unit."
+    ),
+    "id-number": Kind(
+        N, "{count} names in column {name} are stored as numbers", "text", "They were read as written out: {read}."
+    ),
+    "id-padded": Kind(
+        N,
+        "{count} names in column {name} are numbers shown with leading zeros: {read}",
+        "text",
+        "They were read as shown.",
+    ),
+    "serial-date": Kind(
+        N, "{count} cells of column {name} hold a date as a plain number: {read}", "dates", "They were read as dates."
+    ),
+    "cell-not-used": Kind(
+        N,
+        "{count} cells of column {name} cannot be read, the first is {read}",
+        "values as in the rest of the column",
+        "These cells are left empty; nothing else in the row changes.",
+    ),
+    "file-name-differs": Kind(
+        N, "the name ends in {read}, but the content is a {kind}", "a name that fits", "It was read by its content."
+    ),
+    "file-macros": Kind(N, "the workbook may hold macros", "a workbook", "They were not run; saved values were read."),
+    "file-maybe-cut": Kind(
+        N,
+        "the sheet has exactly {read} rows",
+        "fewer",
+        "Another program may have cut it off there; compare with the original record.",
+    ),
+    "beside-the-cells": Kind(N, "the sheet also carries {read}", "values in cells", "These were not read."),
+    "epoch-1904": Kind(N, "dates count from 1904 in this workbook", "1900 or 1904", "They were read so."),
+    "rows-hidden": Kind(N, "{count} rows are hidden", "visible rows", "They were read like any other."),
+    "sheet-hidden": Kind(N, "sheet {read} is hidden", "a visible sheet", "It was read like any other."),
+    "cells-computed": Kind(N, "{count} cells are computed by formulas", "entries", "Their saved values were read."),
+    "delimiter-declared": Kind(N, "the first line says {read}", "a heading row", "The file was split as it says."),
     "column-ignored": Kind(
         N,
         "column {read} matches no column of the table and is not read",

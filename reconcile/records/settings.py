@@ -64,6 +64,10 @@ SETTINGS: tuple[Setting, ...] = (
         "least spread between calibration sessions; the record's own estimate is used above it",
     ),
     Setting("uncertainty", "lot_strength_percent", 1.0, "%, half-width", "common practice, no source"),
+    Setting("uncertainty", "weighing_percent", 0.1, "%, half-width", "balance, as used; common practice, no source"),
+    Setting(
+        "uncertainty", "volume_percent", 0.2, "%, half-width", "pipette or volumetric flask; common practice, no source"
+    ),
     Setting("uncertainty", "preparation_percent", 0.3, "%, half-width", "common practice, no source"),
     Setting("uncertainty", "temperature_k", 0.5, "K, half-width", "common practice, no source"),
     Setting("uncertainty", "room_temperature_k", 2.0, "K, half-width", "common practice, no source"),

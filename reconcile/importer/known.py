@@ -1,0 +1,48 @@
+"""Known solutions: certified pH at the temperature of the reading, from the record or the published standards."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from reconcile.importer.lines import text_column
+from reconcile.importer.tables import TableCells
+from reconcile.records.columns import heading_key
+
+_BEYOND = 2.0
+"""K outside the tabulated temperatures within which the nearest value still stands; common practice, no source."""
+
+
+@dataclass
+class KnownSolutions:
+    """Certified values by name: rows of (lot, temperature [°C], pH, u)."""
+
+    by_name: dict[str, list[tuple[str, float, float, float]]] = field(default_factory=dict)
+
+    def add(self, table: TableCells) -> None:
+        """Take the rows of one Known solutions sheet."""
+        names, lots = text_column(table, "name"), text_column(table, "lot")
+        numbers = [
+            table.columns[c].values if c in table.columns else np.full(len(table), np.nan)
+            for c in ("temperature", "ph", "u")
+        ]
+        for i in range(len(table)):
+            if names[i] and not table.summary[i] and not np.isnan(numbers[1][i]):
+                row = (lots[i], float(numbers[0][i]), float(numbers[1][i]), float(numbers[2][i]))
+                self.by_name.setdefault(heading_key(names[i]), []).append(row)
+
+    def certified(self, name: str, lot: str, temperature: float) -> tuple[float, float] | None:
+        """(pH, u) at a temperature, linear between the certified ones; None where the record does not say."""
+        rows = self.by_name.get(heading_key(name), [])
+        if lot and any(r[0] == lot for r in rows):
+            rows = [r for r in rows if r[0] == lot]
+        if not rows:
+            return None
+        stated = sorted((t, ph, u) for _, t, ph, u in rows if not np.isnan(t))
+        if not stated:
+            return rows[0][2], rows[0][3]
+        t, ph, u = (np.array(x) for x in zip(*stated, strict=True))
+        if temperature < t[0] - _BEYOND or temperature > t[-1] + _BEYOND:
+            return None
+        return float(np.interp(temperature, t, ph)), float(np.interp(temperature, t, u))

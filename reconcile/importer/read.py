@@ -1,0 +1,263 @@
+"""Files to BatchRecords: the importer's one door."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass, field
+from pathlib import Path
+
+import numpy as np
+
+from reconcile.importer.blocks import find_blocks, label_of, nearest_headings
+from reconcile.importer.compose import Composer
+from reconcile.importer.files import read_file
+from reconcile.importer.headings import Block, ColumnMap
+from reconcile.importer.known import KnownSolutions
+from reconcile.importer.ledger import ask_where_many, set_aside
+from reconcile.importer.lines import Recipes, long_lines, wide_lines
+from reconcile.importer.raw import RawSheet
+from reconcile.importer.readings import ReadingRows, missing_column, read_readings
+from reconcile.importer.resolve import Resolver
+from reconcile.importer.solutions import assign, lots_of, solutions_of
+from reconcile.importer.stocks import StockRoom, read_stocks
+from reconcile.importer.tables import TableCells, read_cells
+from reconcile.records.book import BatchRecords, SheetSource, Table
+from reconcile.records.columns import BY_SHEET, READING_EXTRA, column
+from reconcile.records.places import Place
+from reconcile.records.problems import InputProblems, Problem, shown
+from reconcile.records.settings import Settings
+from reconcile.records.substances import Catalogue, catalogue
+
+_NO_SETTINGS = Settings()
+
+
+@dataclass
+class Book:
+    """Everything read so far: parsed tables, their sheet sources, notices, and what stops the import."""
+
+    tables: list[TableCells] = field(default_factory=list)
+    sources: list[SheetSource] = field(default_factory=list)
+    notes: list[Problem] = field(default_factory=list)
+    stops: list[Problem] = field(default_factory=list)
+
+    def of_kind(self, kind: str) -> Iterable[tuple[int, TableCells]]:
+        return ((i, t) for i, t in enumerate(self.tables) if t.block.kind == kind)
+
+
+def read_books(
+    paths: Sequence[Path | str],
+    settings: Settings = _NO_SETTINGS,
+    column_map: ColumnMap | None = None,
+    catalogue: Catalogue | None = None,
+) -> BatchRecords:
+    """Read workbooks and CSV files into one record.
+
+    paths : files, read together: recipes may stand in one and readings in another
+    column_map : what `read_column_map` gives; catalogue : the substances known, the library's own by default
+    Raises InputProblems, with every problem found, where the input is refused.
+    """
+    book = Book()
+    names = catalogue if catalogue is not None else _library()
+    sheets: list[RawSheet] = []
+    for path in paths:
+        try:
+            sheets.extend(read_file(Path(path), settings))
+        except InputProblems as refused:
+            book.stops.extend(refused.problems)
+    for sheet in sheets:
+        _read_sheet(sheet, settings, column_map or {}, names, book)
+    _refuse_without_readings(sheets, book)
+    if book.stops:
+        raise InputProblems(book.stops)
+    return _understood(book, settings, names)
+
+
+def _library() -> Catalogue:
+    return catalogue()
+
+
+def _read_sheet(sheet: RawSheet, settings: Settings, column_map: ColumnMap, names: Catalogue, book: Book) -> None:
+    book.notes.extend(sheet.notes)
+    blocks = find_blocks(sheet, column_map, names)
+    if not blocks:
+        book.notes.append(Problem("sheet-ignored", sheet.place(), sheet.sheet or sheet.file))
+        return
+    for block in blocks:
+        if sheet.text_cells:
+            sheet.names = [label_of(sheet, block, i) for i in range(len(sheet.columns))]
+        for name, indices in block.twice:
+            title = next((c.title for c in BY_SHEET[block.kind] if c.name == name), name)
+            headed = " and ".join(f"{label_of(sheet, block, i)} in column {sheet.names[i]}" for i in indices)
+            words = (("name", title),)
+            book.stops.append(Problem("column-twice", sheet.place(block.heading, indices[1]), headed, words))
+        if block.twice:
+            continue
+        table = read_cells(sheet, block, settings)
+        book.tables.append(table)
+        book.sources.append(_source(sheet, block, table))
+        book.notes.extend(table.notes)
+        for index in block.ignored:
+            book.notes.append(
+                Problem("column-ignored", sheet.place(block.heading, index), label_of(sheet, block, index))
+            )
+
+
+def _source(sheet: RawSheet, block: Block, table: TableCells) -> SheetSource:
+    columns = {}
+    for name, index in block.columns.items():
+        known = next((c for c in BY_SHEET[block.kind] if c.name == name), None)
+        unit = block.units.get(name, "") or (known.unit if known else "")
+        columns[name] = (sheet.names[index], label_of(sheet, block, index), unit)
+    for index, number in block.repeats:
+        name = f"ph {number}" if number else f"ph {label_of(sheet, block, index)}"
+        columns[name] = (sheet.names[index], label_of(sheet, block, index), "")
+        columns.setdefault("ph", columns[name])
+    for index, name, unit, lot in block.wide:
+        columns[f"amount of {name}"] = (sheet.names[index], label_of(sheet, block, index), unit)
+        if lot >= 0:
+            columns[f"lot of {name}"] = (sheet.names[lot], label_of(sheet, block, lot), "")
+    return SheetSource(
+        sheet.file,
+        sheet.sheet,
+        block.kind,
+        int(sheet.row_numbers[block.heading]),
+        columns,
+        tuple(label_of(sheet, block, i) for i in block.ignored),
+        sheet.sha256,
+        {k: v for k, v in table.counts.items() if v},
+    )
+
+
+def _refuse_without_readings(sheets: list[RawSheet], book: Book) -> None:
+    if book.stops or any(t.block.kind in ("readings", "calibrations") for t in book.tables):
+        return
+    for sheet in sheets:
+        if not any(t.sheet is sheet for t in book.tables):
+            nearest = nearest_headings(sheet)
+            read = ", ".join(shown(t, 30) for t in nearest[:12]) or "no text"
+            book.stops.append(Problem("file-no-table", sheet.place(), read))
+    if not book.stops:
+        first = sheets[0].file if sheets else ""
+        kinds = ", ".join(dict.fromkeys(t.block.kind for t in book.tables)) or "nothing"
+        book.stops.append(Problem("no-readings", Place(first), kinds))
+
+
+def _understood(book: Book, settings: Settings, names: Catalogue) -> BatchRecords:
+    recipes, room, known = Recipes(), StockRoom(), KnownSolutions()
+    long_groups: dict[str, int] = {}
+    counts = {"recipes": 0, "stocks": 0}
+    own_groups = {}
+    for i, table in book.of_kind("recipes"):
+        if "substance" in table.block.columns:
+            recipes.parts.append(long_lines(table, i, counts["recipes"], recipes, long_groups))
+        counts["recipes"] += len(table)
+        if table.block.wide:
+            recipes.parts.append(wide_lines(table, i, recipes, settings)[0])
+    for _, table in book.of_kind("stocks"):
+        read_stocks(table, counts["stocks"], names, room)
+        counts["stocks"] += len(table)
+    for i, table in book.of_kind("readings"):
+        if table.block.wide:
+            lines, own_groups[i] = wide_lines(table, i, recipes, settings)
+            recipes.parts.append(lines)
+    for _, table in book.of_kind("known"):
+        known.add(table)
+    rows: list[tuple[int, ReadingRows]] = []
+    for i, table in book.of_kind("readings"):
+        groups = own_groups.get(i, np.full(len(table), -1, np.intp))
+        found, notes = read_readings(table, groups, settings)
+        rows.append((i, found))
+        book.notes.extend(notes)
+    stops = ask_where_many(book.tables)
+    if stops:
+        raise InputProblems(stops)
+    resolver = Resolver(names, room, tuple(settings["substances.without_effect"]))
+    files = [(s.file, s.sheet) for s in book.sources]
+    composer = Composer(recipes.lines(), resolver, settings, files)
+    composer.group_of_batch = {b: groups[0] for b, groups in recipes.by_batch.items()}
+    return _records(book, rows, recipes, composer, known, settings)
+
+
+def _records(
+    book: Book,
+    rows: list[tuple[int, ReadingRows]],
+    recipes: Recipes,
+    composer: Composer,
+    known: KnownSolutions,
+    settings: Settings,
+) -> BatchRecords:
+    fields = [c.name for c in BY_SHEET["readings"]] + list(READING_EXTRA)
+    columns = {
+        f: _joined(
+            [r.columns[f] for _, r in rows], missing_column("readings", f, 0) if f not in READING_EXTRA else np.zeros(0)
+        )
+        for f in fields
+    }
+    number = _joined([r.row for _, r in rows], np.zeros(0, np.intp))
+    source = _joined([np.full(len(r), i, np.intp) for i, r in rows], np.zeros(0, np.intp))
+    ph_column = _joined([r.ph_column for _, r in rows], np.zeros(0, object))
+    group = _joined([r.group for _, r in rows], np.zeros(0, np.intp))
+    problem = _joined([r.problem for _, r in rows], np.zeros(0, object))
+    summary = _joined([r.summary for _, r in rows], np.zeros(0, bool))
+    repeated = _joined([np.full(len(r), r.repeated) for _, r in rows], np.zeros(0, bool))
+    usable = np.fromiter((p is None for p in problem), bool, len(problem))
+    places = _places(book, source, number)
+    assigned, made = assign(columns, group, usable, recipes, composer, known, settings, places)
+    for i, why in assigned.problem.items():
+        problem[i] = why
+    used = assigned.solution >= 0
+    aside = []
+    for i in np.flatnonzero(~used).tolist():
+        sheet = book.sources[int(source[i])]
+        place = Place(sheet.file, sheet.sheet, int(number[i]), ph_column[i] if repeated[i] else "")
+        aside.append(set_aside(problem[i], place, columns, i, bool(summary[i]), composer, recipes, int(group[i])))
+    solutions, forms, used_lots = solutions_of(made, composer)
+    lots, forms = lots_of(composer.resolver.lots, used_lots, forms, settings)
+    readings = Table("readings", {k: v[used] for k, v in columns.items()}, source[used], number[used])
+    return BatchRecords(
+        sheets=tuple(book.sources),
+        readings=readings,
+        readings_solution=assigned.solution[used],
+        **{kind: _table(book, kind) for kind in BY_SHEET if kind != "readings"},
+        forms=forms,
+        lots=lots,
+        solutions=solutions,
+        rows_read=len(number),
+        set_aside=tuple(aside),
+        notes=tuple(book.notes),
+        without_effect=tuple(composer.resolver.used_without_effect),
+    )
+
+
+def _joined(parts: list[np.ndarray], empty: np.ndarray) -> np.ndarray:
+    return np.concatenate(parts) if parts else empty
+
+
+def _places(book: Book, source: np.ndarray, number: np.ndarray) -> dict[str, np.ndarray]:
+    """File, sheet, row and the names of the batch and known columns of every reading."""
+    out = {"row": number}
+    for name, value in (
+        ("file", [s.file for s in book.sources]),
+        ("sheet", [s.sheet for s in book.sources]),
+        ("batch", [s.columns.get("batch", ("",))[0] for s in book.sources]),
+        ("known", [s.columns.get("known", ("",))[0] for s in book.sources]),
+    ):
+        out[name] = np.array([*value, ""], object)[source] if len(source) else np.zeros(0, object)
+    return out
+
+
+def _table(book: Book, kind: str) -> Table:
+    """All rows of one kind, in file order, summary rows included."""
+    tables = list(book.of_kind(kind))
+    columns = {}
+    for c in BY_SHEET[kind]:
+        parts = [
+            t.columns[c.name].values if c.name in t.columns else missing_column(kind, c.name, len(t)) for _, t in tables
+        ]
+        columns[c.name] = _joined(parts, missing_column(kind, c.name, 0))
+    source = _joined([np.full(len(t), i, np.intp) for i, t in tables], np.zeros(0, np.intp))
+    row = _joined([t.sheet.row_numbers[t.rows] for _, t in tables], np.zeros(0, np.intp))
+    return Table(kind, columns, source, row)
+
+
+__all__ = ["column", "read_books"]

@@ -1,0 +1,162 @@
+"""Stock lots: what a bottle holds per litre or per gram, from strength, density, assay and factor."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from reconcile.importer.cells import Fault
+from reconcile.importer.lines import CONCENTRATIONS, known_units, settle_units, text_column
+from reconcile.importer.tables import TableCells
+from reconcile.records.places import Place
+from reconcile.records.problems import Problem
+from reconcile.records.substances import Catalogue, Form
+from reconcile.records.units import UNITS, Unit
+
+
+@dataclass
+class Stock:
+    """One row of a Stocks sheet, understood.
+
+    form : what the label says, None for a lot that is named by the batch it was made as
+    strength : as written, in `unit`. density [g/mL], assay [%], factor, tolerance [%]; NaN when unstated
+    row : row of the stocks table; problem : why the lot cannot be used, or None
+    """
+
+    lot: str
+    form: Form | None
+    batch: str
+    strength: float
+    unit: Unit | None
+    density: float
+    assay: float
+    factor: float
+    tolerance: float
+    row: int
+    place: Place
+    problem: Problem | None = None
+
+    @property
+    def is_solution(self) -> bool:
+        return self.unit is not None and not np.isnan(self.strength)
+
+    def molarity(self, form: Form) -> tuple[float, str]:
+        """Amount of substance in a litre of the stock [mol/L], or NaN and the name of what is missing.
+
+        molar c; normal N/equivalents; g/L over M; g/kg times density over M; mol/kg of water b: c = b rho / (1 + b M)
+        with rho in kg/L and M in kg/mol; a neat liquid: density times assay over M.
+        """
+        factor = 1.0 if np.isnan(self.factor) else self.factor
+        if not self.is_solution:
+            if np.isnan(self.density):
+                return np.nan, "a strength"
+            assay = 100.0 if np.isnan(self.assay) else self.assay
+            return self.density * 10.0 * assay / form.molar_mass * factor, ""
+        assert self.unit is not None
+        x = self.strength * self.unit.factor * factor
+        measures = self.unit.measures
+        if measures == "molar":
+            return x, ""
+        if measures == "normal":
+            return (x / form.equivalents, "") if form.equivalents else (np.nan, "the equivalents of this substance")
+        if measures == "mass_volume":
+            return x / form.molar_mass, ""
+        if np.isnan(self.density):
+            return np.nan, "the density of the lot"
+        if measures == "mass_mass":
+            return x * self.density / form.molar_mass, ""
+        return x * self.density / (1.0 + x * form.molar_mass / 1000.0), ""
+
+    def mol_per_gram(self, form: Form) -> tuple[float, str]:
+        """Amount of substance in a gram of the lot [mol/g], or NaN and the name of what is missing."""
+        factor = 1.0 if np.isnan(self.factor) else self.factor
+        if not self.is_solution:
+            assay = 100.0 if np.isnan(self.assay) else self.assay
+            return assay / 100.0 * factor / form.molar_mass, ""
+        assert self.unit is not None
+        x = self.strength * self.unit.factor * factor
+        if self.unit.measures == "mass_mass":
+            return x / 1000.0 / form.molar_mass, ""
+        if self.unit.measures == "molal":
+            return x / 1000.0 / (1.0 + x * form.molar_mass / 1000.0), ""
+        molarity, missing = self.molarity(form)
+        if missing or np.isnan(self.density):
+            return np.nan, missing or "the density of the lot"
+        return molarity / self.density / 1000.0, ""
+
+
+@dataclass
+class StockRoom:
+    """Every stock, by lot name; `alike` keeps the spelling of each lot."""
+
+    by_lot: dict[str, list[Stock]] = field(default_factory=dict)
+
+    def add(self, stock: Stock) -> None:
+        """Add one; the same lot again with other content is that lot's problem."""
+        rows = self.by_lot.setdefault(stock.lot, [])
+        for other in rows:
+            if other.form == stock.form and other.batch == stock.batch:
+                if _content(other) != _content(stock) and stock.problem is None:
+                    other.problem = Problem("lot-twice", stock.place, stock.lot)
+                return
+        rows.append(stock)
+
+
+def _content(stock: Stock) -> tuple[object, ...]:
+    numbers = (stock.strength, stock.density, stock.assay, stock.factor)
+    return (stock.unit, *(None if np.isnan(x) else x for x in numbers))
+
+
+def read_stocks(table: TableCells, first_table_row: int, catalogue: Catalogue, room: StockRoom) -> None:
+    """Add every lot of one Stocks sheet."""
+    n = len(table)
+    lot, substance, batch = (text_column(table, name) for name in ("lot", "substance", "batch"))
+    strength, units = np.full(n, np.nan), np.full(n, "", object)
+    faults: dict[int, Fault] = {}
+    if "strength" in table.amounts:
+        amounts = table.amounts["strength"]
+        strength = amounts.parsed.values
+        units, faults = settle_units(amounts, text_column(table, "unit"), table.block.units.get("strength", ""))
+    found = {text: catalogue.look_up(text) for text in set(substance.tolist()) if text}
+
+    def number(name: str, i: int) -> float:
+        return float(table.columns[name].values[i]) if name in table.columns else np.nan
+
+    known_units(units.tolist())
+    for i in range(n):
+        if table.summary[i] or not lot[i]:
+            continue
+        problem: Problem | None = None
+        for name in ("lot", "strength", "density", "assay", "factor", "tolerance", "substance", "batch"):
+            if name in table.columns and i in table.columns[name].bad:
+                problem = problem or table.problem(i, name, table.columns[name].bad[i])
+        if i in faults and problem is None:
+            problem = table.problem(i, "strength", faults[i])
+        unit = UNITS.get(units[i])
+        if not np.isnan(strength[i]) and problem is None:
+            if unit is None:
+                problem = table.problem(i, "strength", Fault("unit-missing", f"{strength[i]:g}"))
+            elif unit.measures not in (*CONCENTRATIONS, "times"):
+                problem = table.problem(i, "strength", Fault("strength-unit", f"{strength[i]:g} {unit.name}"))
+        look_up = found.get(substance[i])
+        form = look_up.form if look_up else None
+        if substance[i] and form is None and not batch[i] and problem is None and look_up is not None:
+            problem = table.problem(i, "substance", substance_fault(substance[i], look_up.near, look_up.several))
+        room.add(
+            Stock(
+                lot[i], form, batch[i], float(strength[i]), unit if not np.isnan(strength[i]) else None,
+                number("density", i), number("assay", i), number("factor", i), number("tolerance", i),
+                first_table_row + i, table.place(i, "lot"), problem,
+            )
+        )  # fmt: skip
+
+
+def substance_fault(text: str, near: tuple[str, ...], several: tuple[Form, ...]) -> Fault:
+    """Why a name means no substance: unknown, with names that resemble it, or several."""
+    if several:
+        names = [f.name for f in several]
+        listed = ", ".join(names[:6]) + (f" and {len(names) - 6} more" if len(names) > 6 else "")
+        return Fault("substance-ambiguous", text, (("several", listed),))
+    suggestion = f"; did you mean {' or '.join(near)}?" if near else ""
+    return Fault("substance-unknown", text, (("near", suggestion), ("bare", text)))

@@ -1,0 +1,161 @@
+"""Workbooks: inflated once under a cap, values through python-calamine, the rest from the sheets' own XML."""
+
+from __future__ import annotations
+
+import io
+import posixpath
+import re
+import zipfile
+import zlib
+from typing import Any
+
+import python_calamine as calamine
+
+from reconcile.importer.raw import RawSheet, sheet_of_rows
+from reconcile.importer.sheet_xml import add_what_values_hide, bounds
+from reconcile.importer.styles import Styles
+from reconcile.records.places import Place
+from reconcile.records.problems import InputProblems, Problem
+from reconcile.records.settings import Settings
+
+_CHUNK = 1 << 20
+_FULL_SHEETS = (65536, 1048576)
+_WIDEST = 30_000_000
+"""Cells of the rectangle that a sheet spans; beyond this a reader that lays out the rectangle takes gigabytes."""
+
+
+def read_workbook(content: bytes, file: str, sha256: str, settings: Settings) -> list[RawSheet]:
+    """Every worksheet of an .xlsx or .xlsm file; raises InputProblems where the file is refused."""
+    parts = _inflate(content, file, int(settings["limits.inflated_mib"]) << 20)
+    if "xl/workbook.xml" not in parts and not any(p.endswith("workbook.xml") for p in parts):
+        raise _refused("file-type", file, "a zip archive without a workbook")
+    for name, data in parts.items():
+        if name.endswith((".xml", ".rels")) and (b"<!DOCTYPE" in data[:65536] or b"<!ENTITY" in data):
+            raise _refused("file-entities", file, name)
+    styles = Styles(parts.get("xl/styles.xml", b""))
+    book = parts.get("xl/workbook.xml", b"")
+    epoch_1904 = re.search(rb'date1904\s*=\s*"(1|true)"', book) is not None
+    sheets: list[RawSheet] = []
+    for position, (name, part) in enumerate(_sheets(book, parts.get("xl/_rels/workbook.xml.rels", b""))):
+        data = parts.get(part, b"")
+        if b"worksheet" not in data[:2048]:
+            continue  # a chart or dialogue sheet holds no cells
+        last_row, last_column = bounds(data)
+        if last_row * last_column > _WIDEST:
+            raise InputProblems([Problem("sheet-too-wide", Place(file, name), f"{last_row} x {last_column}")])
+        sheet = sheet_of_rows(file, name, _values(content, file, name, position), sha256)
+        sheet.epoch_1904 = epoch_1904
+        sheet.hidden = (
+            re.search(
+                rb'<sheet [^>]*name="' + re.escape(_escaped(name)) + rb'"[^>]*state="(?:hidden|veryHidden)"', book
+            )
+            is not None
+        )
+        add_what_values_hide(sheet, data, styles, parts.get("xl/sharedStrings.xml", b""))
+        if len(sheet) in _FULL_SHEETS:
+            sheet.notes.append(Problem("file-maybe-cut", Place(file, name), str(len(sheet))))
+        extras = _beside_the_cells(part, parts)
+        if extras:
+            sheet.notes.append(Problem("beside-the-cells", Place(file, name), extras))
+        sheets.append(sheet)
+    if epoch_1904 and sheets:
+        sheets[0].notes.append(Problem("epoch-1904", Place(file)))
+    return sheets
+
+
+def _refused(code: str, file: str, read: str = "") -> InputProblems:
+    return InputProblems([Problem(code, Place(file), read)])
+
+
+def _inflate(content: bytes, file: str, cap: int) -> dict[str, bytes]:
+    """Every part, inflated; stops as soon as more comes out than the cap, whatever sizes the archive declares."""
+    parts: dict[str, bytes] = {}
+    total = 0
+    try:
+        with zipfile.ZipFile(io.BytesIO(content)) as archive:
+            declared = sum(info.file_size for info in archive.infolist())
+            if declared > cap:
+                raise _refused("file-too-large", file, f"{declared >> 20} MiB")
+            for info in archive.infolist():
+                if info.flag_bits & 1:
+                    raise _refused("file-encrypted", file)
+                kept = info.filename.endswith((".xml", ".rels"))
+                pieces: list[bytes] = []
+                with archive.open(info) as part:
+                    while piece := part.read(_CHUNK):
+                        total += len(piece)
+                        if total > cap:
+                            raise _refused("file-too-large", file, f"over {cap >> 20} MiB")
+                        if kept:
+                            pieces.append(piece)
+                parts[info.filename.lstrip("/")] = b"".join(pieces)
+    except (zipfile.BadZipFile, zlib.error, EOFError, OSError, NotImplementedError, ValueError, RuntimeError) as error:
+        raise _refused("file-damaged", file, str(error) or type(error).__name__) from None
+    return parts
+
+
+def _values(content: bytes, file: str, sheet: str, position: int) -> list[list[Any]]:
+    try:
+        book = calamine.CalamineWorkbook.from_filelike(io.BytesIO(content))
+        return book.get_sheet_by_name(sheet).to_python(skip_empty_area=False)
+    except Exception as error:  # the reader has no common base for its errors; all mean the same to the user
+        raise InputProblems([Problem("file-damaged", Place(file, sheet), f"{type(error).__name__}: {error}")]) from None
+
+
+def _sheets(book: bytes, relations: bytes) -> list[tuple[str, str]]:
+    """(name, part) of every sheet, in the order of the workbook."""
+    targets: dict[bytes, str] = {}
+    for tag in re.findall(rb"<(?:\w+:)?Relationship\b[^>]*>", relations):
+        identity, target = _attribute(tag, rb"Id"), _attribute(tag, rb"Target")
+        path = target.decode("utf-8", "replace")
+        targets[identity] = path.lstrip("/") if path.startswith("/") else posixpath.normpath(posixpath.join("xl", path))
+    found = []
+    for tag in re.findall(rb"<(?:\w+:)?sheet\b[^>]*>", book):
+        found_id = re.search(rb'\br?:?id="([^"]*)"', tag)
+        name = _unescaped(_attribute(tag, rb"name"))
+        if found_id and name:
+            found.append((name, targets.get(found_id.group(1), "")))
+    return found
+
+
+def _attribute(tag: bytes, name: bytes) -> bytes:
+    match = re.search(rb"\b" + name + rb"\s*=\s*\"([^\"]*)\"", tag)
+    return match.group(1) if match else b""
+
+
+_ENTITIES = (("&lt;", "<"), ("&gt;", ">"), ("&quot;", '"'), ("&apos;", "'"))
+
+
+def _unescaped(data: bytes) -> str:
+    text = data.decode("utf-8", "replace")
+    for entity, character in _ENTITIES:
+        text = text.replace(entity, character)
+    text = re.sub(r"&#(\d+);", lambda m: chr(int(m.group(1))), text)
+    return text.replace("&amp;", "&")
+
+
+def _escaped(name: str) -> bytes:
+    text = name.replace("&", "&amp;")
+    for entity, character in _ENTITIES[:3]:
+        text = text.replace(character, entity)
+    return text.encode()
+
+
+def _beside_the_cells(part: str, parts: dict[str, bytes]) -> str:
+    """What a sheet carries that is not read: comments, pictures, charts, text boxes, external links."""
+    folder, _, base = part.rpartition("/")
+    relations = parts.get(f"{folder}/_rels/{base}.rels", b"")
+    counts: dict[str, int] = {}
+    for tag in re.findall(rb"<(?:\w+:)?Relationship\b[^>]*>", relations):
+        kind = _attribute(tag, rb"Type").decode("utf-8", "replace").rpartition("/")[2]
+        path = posixpath.normpath(posixpath.join(folder, _attribute(tag, rb"Target").decode("utf-8", "replace")))
+        data = parts.get(path.lstrip("/"), b"")
+        if kind == "comments":
+            counts["comments"] = counts.get("comments", 0) + len(re.findall(rb"<(?:\w+:)?comment\b", data))
+        elif kind == "drawing":
+            number = len(re.findall(rb"<xdr:(?:pic|graphicFrame|sp)\b", data))
+            counts["pictures, charts or text boxes"] = counts.get("pictures, charts or text boxes", 0) + number
+    links = sum(1 for p in parts if p.startswith("xl/externalLinks/externalLink"))
+    if links:
+        counts["links to other workbooks"] = links
+    return ", ".join(f"{number} {kind}" for kind, number in counts.items() if number)

@@ -40,12 +40,12 @@ def draw_all(audit: Audit, lookups: Lookups, progress: Callable[[str, float], No
     steps = len(PICTURES) + len(findings)
     with styled():
         for i, (name, picture) in enumerate(PICTURES.items()):
-            progress(f"Drawing: {picture.heading.lower()}", i / steps)
+            progress(f"drawing {picture.heading.lower()}", i / steps)
             png, svg = images(picture.draw(audit, lookups))
             caption = f"{picture.caption} {picture.rest(audit, lookups)}".strip()
             found.append(Drawn(name, picture.heading, caption, picture.alt, png, svg))
         for i, finding in enumerate(findings):
-            progress(f"Drawing: finding {i + 1} of {len(findings)}", (len(PICTURES) + i) / steps)
+            progress(f"drawing finding {i + 1} of {len(findings)}", (len(PICTURES) + i) / steps)
             png, svg = images(finding_picture(audit, lookups, finding))
             words = _alt(audit, lookups, finding)
             found.append(Drawn(finding_stem(finding, i), "Evidence", _caption(finding), words, png, svg, i))

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Any, Literal
 
@@ -173,8 +173,3 @@ def set_aside(audit: Audit) -> Table:
             for s in audit.records.set_aside
         ],
     )
-
-
-Builder = Callable[[Audit], Table]
-CSV_TABLES: tuple[Builder, ...] = (residuals, set_aside)
-"""Tables written as CSV, each to <name>.csv."""

@@ -1,33 +1,101 @@
-"""report.html: one file that works offline."""
+"""report.html: one file that works offline, is readable without script and loads nothing."""
 
 from __future__ import annotations
 
 import base64
+import hashlib
+from functools import cache
+from importlib.resources import files
 
 from jinja2 import Environment, PackageLoader, StrictUndefined
+from markupsafe import Markup
 
 from reconcile import __version__
 from reconcile.records.results import Audit
-from reconcile.reporter.cautions import CAUTIONS
+from reconcile.reporter import method, page_findings, page_scope, summaries
+from reconcile.reporter.cautions import CAUTIONS, SHORT_CAUTION, UNSIGNED
 from reconcile.reporter.drawn import Drawn
 from reconcile.reporter.gist import gist
 from reconcile.reporter.lookups import Lookups
-from reconcile.reporter.manifest import report_id
+from reconcile.reporter.manifest import inputs, report_id
+from reconcile.reporter.page_tables import anchor, capped, residual_view, set_aside_view, view
+from reconcile.reporter.plain import plain
+from reconcile.reporter.tables import Table
+from reconcile.reporter.words import STATUS_MEANINGS, STATUSES
 
 
-def page(audit: Audit, lookups: Lookups, drawn: list[Drawn]) -> bytes:
-    """The page as bytes."""
-    environment = Environment(
-        loader=PackageLoader("reconcile.reporter"), autoescape=True, undefined=StrictUndefined, trim_blocks=True
+@cache
+def _environment() -> Environment:
+    return Environment(
+        loader=PackageLoader("reconcile.reporter"),
+        autoescape=True,
+        undefined=StrictUndefined,
+        trim_blocks=True,
+        lstrip_blocks=True,
+        keep_trailing_newline=True,
     )
-    text = environment.get_template("report.html").render(
-        report_id=report_id(audit),
+
+
+def _asset(name: str) -> str:
+    return (files("reconcile.reporter") / "templates" / name).read_text(encoding="utf-8")
+
+
+def _digest(text: str) -> str:
+    return "sha256-" + base64.b64encode(hashlib.sha256(text.encode("utf-8")).digest()).decode("ascii")
+
+
+def page(audit: Audit, lookups: Lookups, residuals: Table, drawn: list[Drawn]) -> bytes:
+    """The page as bytes.
+
+    residuals : the table that residuals.csv holds
+    drawn : pictures, whose SVG goes into the page
+    """
+    identity = report_id(audit)
+    style = _asset("report.css").replace("REPORT-ID", identity)
+    script = _asset("report.js")
+    targets = {plain(f.id): anchor(f, i) for i, f in enumerate(audit.findings)}
+    messages, more_messages = page_scope.notes(audit)
+    pictures = {d.name: page_findings.picture(d) for d in drawn if d.finding < 0}
+    text = _environment().get_template("report.html").render(
+        report_id=identity,
         version=__version__,
+        policy=f"default-src 'none'; img-src data:; style-src '{_digest(style)}'; script-src '{_digest(script)}'; "
+        "base-uri 'none'; form-action 'none'",
+        style=Markup(style),  # our own files, nothing of the record
+        script=Markup(script),
+        short_caution=SHORT_CAUTION,
         gist=gist(audit, lookups),
+        scope=page_scope.scope(audit, lookups),
+        overview=page_findings.overview(audit),
+        sections=page_findings.sections(audit, lookups, drawn),
+        findings_left=max(len(audit.findings) - page_findings.MOST_SECTIONS, 0),
+        pictures=[p for name, p in pictures.items() if name != "smallest_detectable"],
+        detectable_picture=pictures["smallest_detectable"] if audit.smallest_detectable else None,
+        residuals=residual_view(audit, lookups, residuals, targets),
+        statuses=[(STATUSES[s], meaning) for s, meaning in STATUS_MEANINGS.items() if (audit.status == s).any()],
+        set_aside=set_aside_view(audit) if audit.records.set_aside else None,
+        not_testable=capped(
+            summaries.not_testable(audit), "not-testable", "Not testable in this record", "findings.json holds all."
+        ),
+        detectable=capped(
+            summaries.detectable(audit), "detectable", "Smallest detectable faults", "findings.json holds all."
+        ),
+        meters=capped(summaries.meters(audit, lookups), "meters", "Meters", "residuals.xlsx holds all."),
+        stocks=capped(
+            summaries.stock_table(audit, lookups),
+            "stocks",
+            "Stocks, with the hazard words recorded for them",
+            "residuals.xlsx holds all, with their hazard words.",
+        ),
+        method=method.paragraphs(audit),
+        settings=view(summaries.settings(audit), "settings", "Settings", tool=False),
+        spreads=view(summaries.spreads(audit), "spreads", "Spreads the record was judged by", tool=False),
+        constants=view(summaries.constants(audit), "constants", "Ionization constants met", tool=False),
+        inputs=inputs(audit),
+        sheets=page_scope.sheets_view(audit),
+        messages=messages,
+        more_messages=more_messages,
         cautions=CAUTIONS,
-        pictures=[
-            {"uri": "data:image/svg+xml;base64," + base64.b64encode(d.svg).decode(), "alt": d.alt, "caption": d.caption}
-            for d in drawn
-        ],
-    )
+        unsigned=UNSIGNED,
+    )  # fmt: skip
     return text.encode("utf-8")

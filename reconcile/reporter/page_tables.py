@@ -1,0 +1,177 @@
+"""Tables as the page shows them: cells already set, numbers with true minus signs, links between rows and findings."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from reconcile.records.arrays import IntArray
+from reconcile.records.results import Audit, Finding
+from reconcile.reporter import tables
+from reconcile.reporter.lookups import Lookups
+from reconcile.reporter.tables import Column, Table
+from reconcile.reporter.words import STATUSES, half_up, minus, moment, signed, significant
+
+MOST_RESIDUALS = 2000
+MOST_SET_ASIDE = 500
+MOST_OTHER = 400
+LONGEST_CELL = 400
+
+
+@dataclass(frozen=True)
+class Cell:
+    """One cell: its text, how it is set, and links (text, target) that stand in place of the text."""
+
+    text: str
+    css: str = ""
+    links: tuple[tuple[str, str], ...] = ()
+
+
+@dataclass(frozen=True)
+class Row:
+    """One row, with the id that links lead to ("" for none)."""
+
+    id: str
+    flagged: bool
+    cells: Sequence[Cell]
+
+
+@dataclass(frozen=True)
+class View:
+    """A table of the page. note says what is left out, "" when nothing is; tool: worth sorting and filtering."""
+
+    id: str
+    caption: str
+    headings: Sequence[tuple[str, str]]
+    rows: Sequence[Row]
+    note: str = ""
+    tool: bool = True
+
+
+def anchor(finding: Finding, index: int) -> str:
+    """Id of a finding's section, never anything that a cell held."""
+    return finding.id if re.fullmatch(r"F[0-9]{1,6}", finding.id) else f"F{index + 1}"
+
+
+def row_id(reading: int) -> str:
+    """Id of a reading's row."""
+    return f"r{reading + 1}"
+
+
+def cell_text(column: Column, value: Any, decimals: int | None) -> str:
+    """One value as the page sets it."""
+    if column.kind == "text":
+        return value if len(value) <= LONGEST_CELL else f"{value[:LONGEST_CELL]}…"
+    if column.kind == "time":
+        return moment(np.datetime64(value, "s"))
+    if value is None:
+        return ""
+    if column.kind == "integer":
+        return f"{int(value):,}" if column.key != "row" else str(int(value))
+    text = significant(value, 4) if decimals is None else half_up(value, decimals)
+    return signed(text) if column.signed else minus(text)
+
+
+def css_of(column: Column) -> str:
+    """How a column is set: numbers to the right, long prose in a wider cell, times unbroken."""
+    if column.kind in ("number", "integer"):
+        return "n"
+    if column.kind == "time":
+        return "t"
+    return "long" if column.width >= 40 else ""
+
+
+def view(
+    table: Table,
+    table_id: str,
+    caption: str,
+    *,
+    keys: Sequence[str] | None = None,
+    ids: Callable[[int], str] = lambda _row: "",
+    cells: Callable[[Column, int, str], Cell | None] = lambda _column, _row, _text: None,
+    note: str = "",
+    tool: bool = True,
+) -> View:
+    """A table as a view.
+
+    keys : columns to show, all when None
+    cells : called with column, row and text; may give another cell for it
+    """
+    columns = [c for c in table.columns if keys is None or c.key in keys]
+    values = {c.key: table.data[c.key] for c in columns}
+    rows = []
+    for i in range(len(table)):
+        line = []
+        for column in columns:
+            text = cell_text(column, values[column.key][i], table.places(column, i))
+            line.append(cells(column, i, text) or Cell(text, css_of(column)))
+        rows.append(Row(ids(i), table.is_flagged(i), line))
+    return View(table_id, caption, [(c.heading, css_of(c)) for c in columns], rows, note, tool)
+
+
+def capped(table: Table, table_id: str, caption: str, rest: str, most: int = MOST_OTHER) -> View:
+    """A table cut to its first rows; the note says where the rest is."""
+    if len(table) <= most:
+        return view(table, table_id, caption, tool=len(table) > 8)
+    note = f"Shown are the first {most:,} of {len(table):,} rows; {rest}"
+    return view(table.rows(np.arange(most)), table_id, caption, note=note)
+
+
+ALWAYS = (
+    "row", "batch", "read_at", "meter", "temperature_C", "pH_observed", "pH_predicted", "u_residual", "residual", "z",
+    "status", "explained_by",
+)  # fmt: skip
+WHERE_SAID = ("source", "sheet", "probe", "stage", "low_limit", "high_limit", "pH_calculated", "standing")
+"""Shown on the page only where they tell rows apart; residuals.csv holds every column."""
+
+
+def shown_rows(lookups: Lookups) -> IntArray:
+    """Readings on the page: those that stand out first; file order again when all fit."""
+    n = len(lookups.audit.residual)
+    return np.arange(n) if n <= MOST_RESIDUALS else lookups.shown_first[:MOST_RESIDUALS]
+
+
+def residual_view(audit: Audit, lookups: Lookups, residuals: Table, targets: dict[str, str]) -> View:
+    """The residual table, its rows reached from the findings, its finding ids leading back.
+
+    targets : finding id as written -> anchor
+    """
+    order = shown_rows(lookups)
+    table = residuals.rows(order)
+    keys = [k for k in (c.key for c in table.columns) if k in ALWAYS or (k in WHERE_SAID and _tells(table, k))]
+
+    def cell(column: Column, _row: int, text: str) -> Cell | None:
+        if column.key == "status":
+            return Cell(STATUSES.get(text, text), "status")
+        if column.key == "explained_by" and text:
+            ids = [i for i in text.split() if i in targets]
+            return Cell("" if ids else text, "", tuple((i, targets[i]) for i in ids))
+        return None
+
+    total = len(residuals)
+    note = (
+        f"Shown are {len(order):,} of {total:,} readings, those that stand out or are explained by a finding first. "
+        "residuals.csv holds all readings and all columns."
+        if total > len(order)
+        else "residuals.csv holds the same readings with all columns."
+    )
+    return view(table, "residuals", "Residuals", keys=keys, ids=lambda i: row_id(int(order[i])), cells=cell, note=note)
+
+
+def _tells(table: Table, key: str) -> bool:
+    values = table.data[key]
+    array = np.asarray(values)
+    if array.dtype.kind == "f":
+        return bool(np.isfinite(array).any())
+    different = set(array.tolist())
+    return len(different) > 1 or (key in ("probe", "stage") and bool(different - {""}))
+
+
+def set_aside_view(audit: Audit) -> View:
+    """Rows set aside, each with its reason."""
+    table = tables.set_aside(audit)
+    return capped(table, "set-aside", "Rows set aside", "set_aside.csv holds all.", MOST_SET_ASIDE)

@@ -5,7 +5,7 @@ from __future__ import annotations
 import csv
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
-from functools import cache
+from functools import cache, cached_property
 from pathlib import Path
 
 import numpy as np
@@ -83,9 +83,24 @@ class AcidTable:
     r: FloatArray
     size: FloatArray
 
-    @property
+    @cached_property
     def index(self) -> Mapping[str, int]:
         return {name: i for i, name in enumerate(self.names)}
+
+    @cached_property
+    def by_step(self) -> tuple[FloatArray, FloatArray, FloatArray, IntArray]:
+        """p, q, r of pKa(T) and the index of the constant, (steps, a + 1): one row a step, the last column for no acid.
+
+        A step that an acid does not have gets an infinite pKa (its constant is then 0) and the index -1.
+        """
+        shape = (int(self.steps.max(initial=1)), len(self.names) + 1)
+        p, q, r = np.full(shape, np.inf), np.zeros(shape), np.zeros(shape)
+        which = np.full(shape, -1, np.intp)
+        for step in range(shape[0]):
+            has = np.flatnonzero(self.steps > step)
+            at = self.first[has] + step
+            p[step, has], q[step, has], r[step, has], which[step, has] = self.p[at], self.q[at], self.r[at], at
+        return p, q, r, which
 
     @property
     def constant_names(self) -> tuple[tuple[str, int], ...]:

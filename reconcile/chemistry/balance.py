@@ -29,32 +29,12 @@ class Balance:
     strength_i: FloatArray
 
 
-def weights(slot: Slot, ph: FloatArray, d: FloatArray, g2: FloatArray, state_d: FloatArray | None) -> list[FloatArray]:
-    """Molality of every later state of an acid over that of its fully protonated state.
-
-    m_j / m_0 = prod K_i / a_H^j * 10^(z_j^2 D_j - z_0^2 D_0), as activities are molalities times 10^(-z^2 D).
-    """
-    out: list[FloatArray] = []
-    if state_d is None:
-        ratio = np.exp(LN10 * (ph + d * (1.0 - 2.0 * slot.charge)))
-        for j, k in enumerate(slot.k):
-            step = k * ratio
-            out.append(step if j == 0 else out[-1] * step)
-            ratio = ratio * g2
-        return out
-    for j, k in enumerate(slot.k):
-        before, after = (slot.charge - j) ** 2 * state_d[j], (slot.charge - j - 1) ** 2 * state_d[j + 1]
-        step = k * np.exp(LN10 * (ph + after - before))
-        out.append(step if j == 0 else out[-1] * step)
-    return out
-
-
 @dataclass(frozen=True)
 class Activity:
     """What the activity model gives at an ionic strength.
 
     d, d_i : D and dD/dI of ions with no size of their own; hydrogen, hydroxide : D of these; states : D of the states
-    of each slot, None where the model knows no sizes.
+    of each slot, None where the model knows no sizes; g2 : 10^(2 D).
     """
 
     d: FloatArray
@@ -62,35 +42,61 @@ class Activity:
     hydrogen: FloatArray
     hydroxide: FloatArray
     states: list[FloatArray] | None
+    g2: FloatArray
 
 
 def activity(chunk: Chunk, model: ActivityModel, strength: FloatArray) -> Activity:
     """D of every ion of a chunk at its ionic strength [mol/kg]."""
-    usual = np.array(4.5)
-    d, d_i, *_ = model.exponent(chunk.a, chunk.b, strength, usual)
+    d, d_i, *_ = model.exponent(chunk.a, chunk.b, strength, np.array(4.5))
+    g2 = np.exp((2.0 * LN10) * d)
     if not model.sized:
-        return Activity(d, d_i, d, d, None)
+        return Activity(d, d_i, d, d, None, g2)
     h = model.exponent(chunk.a, chunk.b, strength, np.array(SIZE_HYDROGEN))[0]
     oh = model.exponent(chunk.a, chunk.b, strength, np.array(SIZE_HYDROXIDE))[0]
-    return Activity(d, d_i, h, oh, [model.exponent(chunk.a, chunk.b, strength, s.size)[0] for s in chunk.slots])
+    return Activity(d, d_i, h, oh, [model.exponent(chunk.a, chunk.b, strength, s.size)[0] for s in chunk.slots], g2)
+
+
+def weights(slot: Slot, ph: FloatArray, act: Activity, number: int) -> list[FloatArray]:
+    """Molality of every later state of an acid over that of its fully protonated state; slot `number` of its chunk.
+
+    m_j / m_0 = prod K_i / a_H^j * 10^(z_j^2 D_j - z_0^2 D_0), as activities are molalities times 10^(-z^2 D).
+    """
+    out: list[FloatArray] = []
+    if act.states is None:
+        ratio = np.exp(LN10 * (ph + act.d if slot.neutral else ph + act.d * (1.0 - 2.0 * slot.charge)))
+        for j, k in enumerate(slot.k):
+            if j:
+                ratio *= act.g2
+                step = k * ratio
+                step *= out[-1]
+            else:
+                step = k * ratio
+            out.append(step)
+        return out
+    state_d = act.states[number]
+    for j, k in enumerate(slot.k):
+        before, after = (slot.charge - j) ** 2 * state_d[j], (slot.charge - j - 1) ** 2 * state_d[j + 1]
+        step = k * np.exp(LN10 * (ph + after - before))
+        out.append(step if j == 0 else out[-1] * step)
+    return out
 
 
 def charge_only(chunk: Chunk, act: Activity, ph: FloatArray) -> FloatArray:
     """Positive minus negative charge [mol/kg] at a trial pH; falls steadily as pH rises."""
     excess = chunk.charge + np.exp(LN10 * (act.hydrogen - ph)) - chunk.kw * np.exp(LN10 * (act.hydroxide + ph))
-    g2 = np.exp(LN10 * 2.0 * act.d)
     for i, slot in enumerate(chunk.slots):
-        some = weights(slot, ph, act.d, g2, None if act.states is None else act.states[i])
-        s0 = np.ones_like(ph)
-        s1 = np.zeros_like(ph)
-        for j, w in enumerate(some, start=1):
+        some = weights(slot, ph, act, i)
+        s0, s1 = 1.0 + some[0], some[0]
+        for j, w in enumerate(some[1:], start=2):
             s0 += w
-            s1 += w if j == 1 else j * w
-        if slot.closed.all():
-            excess += slot.total * (slot.charge - s1 / s0)
-        else:
-            excess += slot.total * (slot.charge - s1 / np.where(slot.closed > 0.0, s0, 1.0))
+            s1 = s1 + j * w
+        excess -= slot.total * s1 / _whole(slot, s0)
     return excess
+
+
+def _whole(slot: Slot, s0: FloatArray) -> FloatArray:
+    """What molality is divided by: the sum over states, or 1 where the air holds the first state."""
+    return s0 if slot.closed is None else np.where(slot.closed > 0.0, s0, 1.0)
 
 
 def balance(chunk: Chunk, model: ActivityModel, ph: FloatArray, strength: FloatArray) -> Balance:
@@ -124,56 +130,63 @@ def balance(chunk: Chunk, model: ActivityModel, ph: FloatArray, strength: FloatA
     act = activity(chunk, model, strength)
     h = np.exp(LN10 * (act.hydrogen - ph))
     oh = chunk.kw * np.exp(LN10 * (act.hydroxide + ph))
-    g2 = np.exp((2.0 * LN10) * act.d)
-    excess = chunk.charge + (h - oh)
-    squares = chunk.square + (h + oh)
-    excess_ph = -(h + oh)
-    excess_d = h - oh
-    squares_ph = oh - h
-    squares_d = h + oh
+    both, difference = h + oh, h - oh
+    excess = chunk.charge + difference
+    squares = chunk.square + both
+    excess_ph = -both
+    excess_d = difference.copy()
+    squares_ph = -difference
+    squares_d = both
     for i, slot in enumerate(chunk.slots):
-        some = weights(slot, ph, act.d, g2, None if act.states is None else act.states[i])
-        s0 = np.ones_like(h)
-        s1, s2, s3, s4 = (np.zeros_like(h) for _ in range(4))
-        for j, w in enumerate(some, start=1):
-            s0 += w
-            if j > 1:
-                w = w * j
-            s1 += w
-            if j > 1:
-                w = w * j
-            s2 += w
-            if j > 1:
-                w = w * j
-            s3 += w
-            if j > 1:
-                w = w * j
-            s4 += w
-        closed = slot.closed
-        if not closed.all():
-            s0 = np.where(closed > 0.0, s0, 1.0)
-        s0 = 1.0 / s0
-        s1 *= s0
-        s2 *= s0
-        s3 *= s0
-        s4 *= s0
-        z, total = slot.charge, slot.total
-        away = closed * s1
-        var = s2 - away * s1
-        mixed = s3 - away * s2
-        cov = mixed - 2.0 * z * var  # of j with z_j^2
-        excess += total * (z - s1)
-        squares += total * (z * (z - 2.0 * s1) + s2)
+        n1, n2, var, mixed, wide = _moments(slot, weights(slot, ph, act, i))
+        total = slot.total
+        if slot.neutral:
+            cov, spread, second = mixed, wide, n2
+        else:
+            z = slot.charge
+            at = z * var
+            spread = wide - 4.0 * z * (mixed - at)
+            cov = mixed - 2.0 * at
+            second = n2 + z * (z - 2.0 * n1)
+        excess -= total * n1
+        squares += total * second
         excess_ph -= total * var
-        excess_d -= total * cov
-        squares_ph += total * cov
-        squares_d += total * (s4 - closed * s2 * s2 - 4.0 * z * (mixed - z * var))
+        cov = total * cov
+        excess_d -= cov
+        squares_ph += cov
+        squares_d += total * spread
     d_i = LN10 * act.d_i
+    excess_d *= d_i
+    squares_d *= d_i
     return Balance(
-        excess,
-        strength - 0.5 * squares,
-        LN10 * excess_ph,
-        excess_d * d_i,
-        (-0.5 * LN10) * squares_ph,
-        1.0 - 0.5 * squares_d * d_i,
+        excess, strength - 0.5 * squares, LN10 * excess_ph, excess_d, (-0.5 * LN10) * squares_ph, 1.0 - 0.5 * squares_d
     )
+
+
+Five = tuple[FloatArray, FloatArray, FloatArray, FloatArray, FloatArray]
+
+
+def _moments(slot: Slot, some: list[FloatArray]) -> Five:
+    """Of the number j of protons lost: mean, mean square, variance, covariance with j^2, variance of j^2."""
+    s0 = 1.0 + some[0]
+    for w in some[1:]:
+        s0 += w
+    share = 1.0 / _whole(slot, s0)
+    n1 = some[0] * share
+    if len(some) == 1:
+        var = n1 * (1.0 - n1) if slot.closed is None else n1 - slot.closed * n1 * n1
+        return n1, n1, var, var, var
+    n2, n3, n4 = n1.copy(), n1.copy(), n1.copy()
+    for j, w in enumerate(some[1:], start=2):
+        part = w * share
+        part *= j
+        n1 += part
+        part *= j
+        n2 += part
+        part *= j
+        n3 += part
+        part *= j
+        n4 += part
+    away = n1 if slot.closed is None else slot.closed * n1
+    square = n2 if slot.closed is None else slot.closed * n2
+    return n1, n2, n2 - away * n1, n3 - away * n2, n4 - square * n2

@@ -76,27 +76,30 @@ class Slot:
 
     k : FloatArray (s, m)        thermodynamic ionization constants; 0 for steps an acid does not have
     charge : FloatArray (m,)     of the fully protonated form
+    neutral : bool               True where that charge is 0 in every row
     total : FloatArray (m,)      molality [mol/kg]; of an open row, that of its neutral first state
-    closed : FloatArray (m,)     1; 0 where the air holds the first state's molality
+    closed : FloatArray (m,)     1; 0 where the air holds the first state's molality. None where all are closed
     acid : IntArray (m,)         index of the acid; -1 where the row has none here
     size : FloatArray (s + 1, m) ion size of each state [angstrom]; empty unless the model asks for it
     """
 
     k: FloatArray
     charge: FloatArray
+    neutral: bool
     total: FloatArray
-    closed: FloatArray
+    closed: FloatArray | None
     acid: IntArray
     size: FloatArray
 
     def take(self, keep: IntArray) -> Slot:
         return Slot(
-            self.k[:, keep],
-            self.charge[keep],
-            self.total[keep],
-            self.closed[keep],
-            self.acid[keep],
-            self.size[:, keep] if self.size.size else self.size,
+            self.k.take(keep, axis=1),
+            self.charge.take(keep),
+            self.neutral,
+            self.total.take(keep),
+            None if self.closed is None else self.closed.take(keep),
+            self.acid.take(keep),
+            self.size.take(keep, axis=1) if self.size.size else self.size,
         )
 
 
@@ -104,11 +107,13 @@ class Slot:
 class Chunk:
     """m solutions in the padded layout: per row the strong ions and the solvent, and a list of slots of one acid each.
 
-    charge : net charge of the strong ions [mol/kg]; square : their sum of molality times charge squared
+    charge : net charge of the strong ions and of every acid if fully protonated [mol/kg]
+    strong : net charge of the strong ions alone; square : their sum of molality times charge squared
     a, b : Debye-Hueckel coefficients; kw : ionization constant of water. All (m,).
     """
 
     charge: FloatArray
+    strong: FloatArray
     square: FloatArray
     a: FloatArray
     b: FloatArray
@@ -120,11 +125,12 @@ class Chunk:
 
     def take(self, keep: IntArray) -> Chunk:
         return Chunk(
-            self.charge[keep],
-            self.square[keep],
-            self.a[keep],
-            self.b[keep],
-            self.kw[keep],
+            self.charge.take(keep),
+            self.strong.take(keep),
+            self.square.take(keep),
+            self.a.take(keep),
+            self.b.take(keep),
+            self.kw.take(keep),
             [slot.take(keep) for slot in self.slots],
         )
 
@@ -163,73 +169,85 @@ def pad(
     """The padded layout of some solutions; `water` has one entry for each of the rows."""
     m = len(rows)
     entry, row = entries_at(contents.start, rows)
-    form, amount = contents.form[entry], contents.amount[entry]
-    charge = np.bincount(row, amount * forms.charge[form], m).astype(float)
-    square = np.bincount(row, amount * forms.square[form], m).astype(float)
-    brought = [(forms.acid[w][form], forms.units[w][form]) for w in range(len(forms.acid))]
-    present = np.zeros(len(acids.names), bool)
+    form, amount = contents.form.take(entry), contents.amount.take(entry)
+    strong = np.bincount(row, amount * forms.charge.take(form), m).astype(float)
+    square = np.bincount(row, amount * forms.square.take(form), m).astype(float)
+    brought = [(forms.acid[w].take(form), forms.units[w].take(form)) for w in range(len(forms.acid))]
+    present = np.zeros(len(acids.names) + 1, bool)
     for acid, _ in brought:
-        present[acid[acid >= 0]] = True
-    opened = contents.open_co2[rows]
+        present[acid] = True
+    opened = contents.open_co2.take(rows)
+    air = bool(np.any(opened > 0.0))
     carbonic = acids.index[CARBONIC]
-    present[carbonic] |= bool(np.any(opened > 0.0))
-    columns = np.flatnonzero(present)
-    columns = columns[np.argsort(-acids.steps[columns], kind="stable")]  # the longest acids share the first slots
-    place = np.zeros(len(acids.names), np.intp)
-    place[columns] = np.arange(len(columns))
-    totals = np.zeros((m, len(columns)))
+    present[carbonic] |= air
+    columns = np.flatnonzero(present[:-1])
+    # the longest acids share the first slots, those of one charge stand together
+    columns = columns[np.lexsort([columns, acids.charge[columns], -acids.steps[columns]])]
+    count = len(columns)
+    place = np.full(len(acids.names) + 1, count, np.intp)
+    place[columns] = np.arange(count)
+    cells = np.zeros(m * (count + 1))
     for acid, units in brought:
-        has = acid >= 0 if np.any(acid < 0) else slice(None)
-        cell = row[has] * len(columns) + place[acid[has]]
-        totals += np.bincount(cell, amount[has] * units[has], totals.size).reshape(totals.shape)
-    if np.any(opened > 0.0):
+        if np.any(units):
+            cells += np.bincount(row * (count + 1) + place[acid], amount * units, len(cells))
+    totals = cells.reshape(m, count + 1)[:, :count]
+    if air:
         totals[:, place[carbonic]] = np.where(opened > 0.0, opened, totals[:, place[carbonic]])
-    slots = _slots(totals, columns, opened, carbonic, acids, water, sized)
-    chunk = Chunk(charge, square, water.a, water.b, np.exp(-LN10 * water.pkw), slots)
+    slots = _slots(totals, columns, opened if air else None, carbonic, acids, water, sized)
+    charge = strong
+    for slot in slots:
+        if not slot.neutral:
+            charge = charge + slot.total * slot.charge
+    chunk = Chunk(charge, strong, square, water.a, water.b, np.exp(-LN10 * water.pkw), slots)
     return chunk, Padding(rows, entry, row, columns, place)
 
 
 def _slots(
     totals: FloatArray,
     columns: IntArray,
-    opened: FloatArray,
+    opened: FloatArray | None,
     carbonic: int,
     acids: AcidTable,
     water: Solvent,
     sized: bool,
 ) -> list[Slot]:
     m = len(totals)
-    row, column = np.nonzero(totals)
+    row, column = np.nonzero(totals != 0.0)
     counts = np.bincount(row, minlength=m)
-    slot_of = np.arange(len(row)) - np.repeat(np.cumsum(counts) - counts, counts)
+    number = np.arange(len(row)) - np.repeat(np.cumsum(counts) - counts, counts)
+    most = int(counts.max(initial=0))
+    acid, total = np.full((most, m), -1, np.intp), np.zeros((most, m))
+    acid[number, row] = columns[column]
+    total[number, row] = totals[row, column]
     kelvin = water.temperature_c + ZERO_CELSIUS
-    same = bool(m) and bool(np.all(kelvin == kelvin[0]))
+    same = m > 0 and bool(np.all(kelvin == kelvin[0]))
+    p, q, r, _ = acids.by_step
     if same:
-        at = np.exp(-LN10 * (acids.p + acids.q / kelvin[0] + acids.r * np.log(kelvin[0])))
+        at = np.exp(-LN10 * (p + q / kelvin[0] + r * np.log(kelvin[0])))
     inverse, log = 1.0 / kelvin, np.log(kelvin)
+    # the entry for no acid (-1) is the last of each of these
+    charges, counted = np.append(acids.charge, 0.0), np.append(acids.steps, 0)
     slots = []
-    for number in range(int(counts.max(initial=0))):
-        here = slot_of == number
-        rows = row[here]
-        acid = np.full(m, -1, np.intp)
-        acid[rows] = columns[column[here]]
-        has = acid >= 0
-        safe = np.where(has, acid, 0)
-        steps = np.where(has, acids.steps[safe], 0)
-        total = np.zeros(m)
-        total[rows] = totals[rows, column[here]]
-        k = np.zeros((int(steps.max(initial=0)), m))
+    for which, amount in zip(acid, total, strict=True):
+        steps = counted[which]
+        k = np.empty((int(steps.max(initial=0)), m))
         for j in range(len(k)):
-            deep = np.flatnonzero(steps > j)
-            q = acids.first[safe[deep]] + j
             if same:
-                k[j, deep] = at[q]
-            else:
-                k[j, deep] = np.exp(-LN10 * (acids.p[q] + acids.q[q] * inverse[deep] + acids.r[q] * log[deep]))
-        closed = np.where((opened > 0.0) & (acid == carbonic), 0.0, 1.0)
+                k[j] = at[j].take(which, mode="wrap")
+                continue
+            pka = q[j].take(which, mode="wrap")
+            pka *= inverse
+            pka += p[j].take(which, mode="wrap")
+            pka += r[j].take(which, mode="wrap") * log
+            pka *= -LN10
+            np.exp(pka, out=k[j])
         size = np.zeros((0, m))
         if sized:
-            states = np.minimum(np.arange(len(k) + 1)[:, None], steps)
-            size = acids.size[acids.first[safe] + safe + states]
-        slots.append(Slot(k, np.where(has, acids.charge[safe], 0.0), total, closed, acid, size))
+            safe = np.maximum(which, 0)
+            size = acids.size[acids.first[safe] + safe + np.minimum(np.arange(len(k) + 1)[:, None], steps)]
+        charge = charges[which]
+        closed = None
+        if opened is not None:
+            closed = np.where((opened > 0.0) & (which == carbonic), 0.0, 1.0)
+        slots.append(Slot(k, charge, not charge.any(), amount, closed, which, size))
     return slots

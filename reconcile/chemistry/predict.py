@@ -69,10 +69,8 @@ def forms_named(substances: Sequence[str | Form]) -> list[Form]:
 
 
 def _per_amount(given: Any, default: float, shape: tuple[int, int], name: str) -> FloatArray:
-    if given is None:
-        return np.full(shape, default)
     try:
-        return np.broadcast_to(np.asarray(given, float), shape)
+        return np.broadcast_to(np.asarray(default if given is None else given, float), shape)
     except ValueError:
         raise ValueError(f"{name} must be one number, {shape[1]} numbers, or an array {shape}") from None
 
@@ -170,7 +168,7 @@ def predict_ph(
     cells = contributions.row, contributions.column
     shares = {
         "strength": of_independent(part.start, part.value, strength[cells]),
-        "taking": of_independent(part.start, part.value, np.full(len(part.value), taking)),
+        "taking": of_independent(part.start, part.value, np.array(taking)),
     }
     u_t = settings["uncertainty.temperature_k"] / ROOT3 if u_temperature is None else u_temperature
     return assemble(

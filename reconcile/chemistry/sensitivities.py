@@ -9,7 +9,7 @@ import numpy as np
 
 from reconcile.chemistry.acids import AcidTable
 from reconcile.chemistry.activity import SIZE_HYDROGEN, SIZE_HYDROXIDE, ActivityModel
-from reconcile.chemistry.balance import activity, weights
+from reconcile.chemistry.balance import Activity, activity, weights
 from reconcile.chemistry.composition import Chunk, Contents, FormTable, Padding
 from reconcile.chemistry.temperature import LN10, Solvent
 from reconcile.chemistry.water import DENSITY_20C, ZERO_CELSIUS, co2_solubility
@@ -83,7 +83,7 @@ def slopes(
     act = activity(chunk, model, strength)
     h = np.exp(LN10 * (act.hydrogen - ph))
     oh = chunk.kw * np.exp(LN10 * (act.hydroxide + ph))
-    found = _fractions(chunk, act.states, ph, act.d)
+    found = _fractions(chunk, act, ph)
 
     by_i, by_t, by_c = _activity_slopes(chunk, model, water, strength, h, oh, found)
     f_ph, s_ph = -(h + oh), oh - h
@@ -106,7 +106,7 @@ def slopes(
     if opened.any():
         solubility, slope = co2_solubility(water.temperature_c)
         for slot, x in zip(chunk.slots, found, strict=True):
-            air = np.where(slot.closed > 0.0, 0.0, slot.total * slope / solubility)
+            air = np.where(x.closed > 0.0, 0.0, slot.total * slope / solubility)
             d_temperature = d_temperature + air * (on_charge * (slot.charge - x.lost) + on_squares * x.squares)
 
     entry = _entries(chunk, padding, contents, forms, found, on_charge, on_squares)
@@ -130,21 +130,24 @@ def slopes(
     )
 
 
-def _fractions(chunk: Chunk, states: list[FloatArray] | None, ph: FloatArray, d: FloatArray) -> list[_Found]:
-    g2 = np.exp((2.0 * LN10) * d)
+def _fractions(chunk: Chunk, act: Activity, ph: FloatArray) -> list[_Found]:
     out = []
     for i, slot in enumerate(chunk.slots):
-        some = weights(slot, ph, d, g2, None if states is None else states[i])
+        some = weights(slot, ph, act, i)
         whole = np.ones_like(ph)
         for w in some:
-            whole = whole + w
-        whole = np.where(slot.closed > 0.0, 1.0 / whole, 1.0)
+            whole += w
+        whole = 1.0 / whole
+        closed = np.array(1.0)
+        if slot.closed is not None:
+            closed = slot.closed
+            whole = np.where(closed > 0.0, whole, 1.0)
         f = [whole, *(w * whole for w in some)]
-        lost, squares = np.zeros_like(ph), np.zeros_like(ph)
-        for j, share in enumerate(f):
-            lost = lost + j * share
-            squares = squares + (slot.charge - j) ** 2 * share
-        out.append(_Found(f, slot.closed, lost, squares))
+        lost, squares = np.zeros_like(ph), slot.charge**2 * whole
+        for j, share in enumerate(f[1:], start=1):
+            lost += j * share
+            squares += (slot.charge - j) ** 2 * share
+        out.append(_Found(f, closed, lost, squares))
     return out
 
 

@@ -13,7 +13,8 @@ PH_LOW, PH_HIGH = -1.0, 15.0  # first bracket; the last resort searches further
 WIDE_LOW, WIDE_HIGH = -4.0, 19.0
 HALVINGS = 4
 STEPS = 30
-TOLERANCE = 1e-8  # of the last step: Newton doubles the digits, so what is left is far below
+TOLERANCE = 1e-6  # of the last step: Newton doubles the digits, so that what is left is about 1e-12
+TOLERANCE_SIZED = 1e-10  # where the slopes are only nearly exact, each step gains two digits or so
 LEAST_STRENGTH = 1e-9  # mol/kg; pure water at 0 °C has 3e-8
 
 
@@ -50,13 +51,14 @@ def solve(chunk: Chunk, model: ActivityModel) -> tuple[FloatArray, FloatArray, B
         return ph, strength, usable
     part = chunk if len(row) == m else chunk.take(row)
     x, i = _start(part, model)
+    tolerance = TOLERANCE_SIZED if model.sized else TOLERANCE
     for _ in range(STEPS):
         b = balance(part, model, x, i)
         det = b.excess_ph * b.strength_i - b.excess_i * b.strength_ph
         with np.errstate(divide="ignore", invalid="ignore"):
             step = (b.excess_i * b.strength - b.excess * b.strength_i) / det
             rise = (b.strength_ph * b.excess - b.excess_ph * b.strength) / det
-        done = (np.abs(step) < TOLERANCE) & (np.abs(rise) < TOLERANCE * i)
+        done = (np.abs(step) < tolerance) & (np.abs(rise) < tolerance * i)
         x = x + np.clip(step, -1.0, 1.0)
         i = np.clip(i + rise, 0.2 * i, 5.0 * i + 1e-3)
         np.maximum(i, LEAST_STRENGTH, out=i)
@@ -74,7 +76,7 @@ def solve(chunk: Chunk, model: ActivityModel) -> tuple[FloatArray, FloatArray, B
 
 def _start(chunk: Chunk, model: ActivityModel) -> tuple[FloatArray, FloatArray]:
     """A pH within half a unit, at the ionic strength that the strong ions and their counter-ions alone would give."""
-    strength = 0.5 * (chunk.square + np.abs(chunk.charge)) + 1e-7
+    strength = 0.5 * (chunk.square + np.abs(chunk.strong)) + 1e-7
     act = activity(chunk, model, strength)
     low, width = np.full(len(chunk), PH_LOW), PH_HIGH - PH_LOW
     for _ in range(HALVINGS):
@@ -98,7 +100,7 @@ def _ph_at(chunk: Chunk, model: ActivityModel, strength: FloatArray) -> FloatArr
 
 def _nested(chunk: Chunk, model: ActivityModel) -> tuple[FloatArray, FloatArray]:
     """The last resort: halving in ionic strength around halving in pH."""
-    most = 0.5 * chunk.square + np.abs(chunk.charge) + 1.0
+    most = 0.5 * chunk.square + np.abs(chunk.strong) + 1.0
     for slot in chunk.slots:
         charges = np.abs(slot.charge - np.arange(len(slot.k) + 1)[:, None]).max(axis=0)
         most += slot.total * charges**2
@@ -112,23 +114,34 @@ def _nested(chunk: Chunk, model: ActivityModel) -> tuple[FloatArray, FloatArray]
     return _ph_at(chunk, model, middle), middle
 
 
+_HASH_SEED = 20240229
+_BLOCK = 1 << 20  # cells looked at together, so that a wide table needs no second copy
+
+
 def rows_alike(keys: FloatArray) -> tuple[IntArray, IntArray]:
     """First row of each set of identical rows, and for every row the index of its set.
 
     keys : ndarray (n, k), compared bit for bit. Rows are grouped by a 64-bit hash and checked against their group's
     first row; a row that merely shares the hash is kept as a set of its own.
     """
-    n = len(keys)
-    bits = np.ascontiguousarray(keys, float).view(np.uint64).reshape(n, -1)
-    mixed = np.zeros(n, np.uint64)
+    n, k = keys.shape
+    bits = np.ascontiguousarray(keys, float).view(np.uint64).reshape(n, k)
+    odd = np.random.default_rng(_HASH_SEED).integers(0, 2**63, k, np.uint64) * np.uint64(2) + np.uint64(1)
+    mixed = np.empty(n, np.uint64)
+    rows = max(1, _BLOCK // max(k, 1))
     with np.errstate(over="ignore"):
-        for column in range(bits.shape[1]):
-            mixed ^= bits[:, column]
-            mixed *= np.uint64(0x9E3779B97F4A7C15)
-            mixed ^= mixed >> np.uint64(29)
+        for begin in range(0, n, rows):
+            part = bits[begin : begin + rows]
+            mixed[begin : begin + rows] = ((part ^ (part >> np.uint64(31))) * odd).sum(axis=1, dtype=np.uint64)
     _, first, inverse = np.unique(mixed, return_index=True, return_inverse=True)
-    apart = np.flatnonzero(np.any(bits != bits[first[inverse]], axis=1))
-    if len(apart):
-        inverse[apart] = len(first) + np.arange(len(apart))
-        first = np.concatenate([first, apart])
+    if len(first) == n:
+        return first, inverse
+    apart = [
+        begin + np.flatnonzero(np.any(bits[begin : begin + rows] != bits[first[inverse[begin : begin + rows]]], axis=1))
+        for begin in range(0, n, rows)
+    ]
+    others = np.concatenate(apart)
+    if len(others):
+        inverse[others] = len(first) + np.arange(len(others))
+        first = np.concatenate([first, others])
     return first, inverse

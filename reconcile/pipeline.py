@@ -13,8 +13,9 @@ from reconcile.records.settings import Settings
 if TYPE_CHECKING:
     from reconcile.chemistry.acids import Ionization
     from reconcile.records.book import BatchRecords
-    from reconcile.records.parts import Composition
-    from reconcile.records.results import Audit, Prediction
+    from reconcile.records.parts import Composition, Part
+    from reconcile.records.problems import Problem
+    from reconcile.records.results import Audit, Constant, Prediction
     from reconcile.records.substances import Form
 
 FilePath: TypeAlias = str | Path
@@ -22,8 +23,8 @@ SettingsLike: TypeAlias = Settings | FilePath | Mapping[str, Mapping[str, Any]] 
 """Settings, the path of a settings file, its sections as a dictionary, or None for the defaults."""
 ColumnsLike: TypeAlias = FilePath | Mapping[str, Mapping[str, Any]] | None
 """Path of a column map, or its content: kind of sheet -> heading as written -> field name."""
-Progress: TypeAlias = Callable[[str, float], None]
-"""Told what is being done, and the share of the whole that is done, 0 to 1."""
+Progress: TypeAlias = Callable[[str, float | None], None]
+"""Told what is being done, and the share of the whole that is done, 0 to 1; None where no share can be told."""
 
 
 def settings_of(settings: SettingsLike = None) -> Settings:
@@ -65,6 +66,13 @@ def read(*paths: FilePath, settings: SettingsLike = None, columns: ColumnsLike =
     return read_books([Path(p) for p in paths], settings_of(settings), column_map)
 
 
+def write_columns(records: BatchRecords, path: FilePath) -> None:
+    """Write the beginning of a column map for a record; raises FileExistsError rather than replace a file."""
+    from reconcile.importer.toml_files import write_column_map
+
+    write_column_map(records, Path(path))
+
+
 def predict_records(records: BatchRecords, settings: SettingsLike = None) -> Prediction:
     """Predicted pH of every used reading of a record, (n,), in the order of `records.readings`."""
     from reconcile.chemistry.predict import predict_records as predict
@@ -87,7 +95,7 @@ def audit(
     settings, columns
         As for `read`.
     progress : callable or None
-        Called with what is being done and the share of the whole that is done.
+        Called with what is being done and the share of the whole that is done, None where no share can be told.
 
     Raises
     ------
@@ -110,15 +118,20 @@ def audit(
     say("predicting every reading", 0.2)
     prediction = predict(records, chosen)
     say("searching for explanations", 0.3)
-    found = explain(
-        records,
-        prediction,
-        repredictor(records, chosen),
-        chosen,
-        progress=lambda doing, share: say(doing, 0.3 + 0.7 * share),
+    found = explain(records, prediction, repredictor(records, chosen), chosen, progress=lambda doing: say(doing, None))
+    return replace(found, constants=_constants(prediction))
+
+
+def _constants(prediction: Prediction) -> tuple[Constant, ...]:
+    """The ionization constants that a prediction met, as the library holds them."""
+    from reconcile.chemistry.acids import acid_table
+    from reconcile.records.results import Constant
+
+    rows = {(row.acid, row.step): row for row in acid_table().rows}
+    return tuple(
+        Constant(row.acid, row.step, row.pka, row.u, row.dh_kj_mol, row.dcp_j_k_mol, row.source)
+        for row in (rows[name] for name in prediction.constant_names)
     )
-    say("done", 1.0)
-    return found
 
 
 @dataclass(frozen=True)
@@ -175,7 +188,8 @@ def predict_parts(
     chosen = settings_of(settings)
     if activity_model:
         chosen = with_model(chosen, activity_model)
-    found, problems = [], []
+    found: list[Part] = []
+    problems: list[Problem] = []
     for text in parts:
         try:
             found.append(parse_part(text))

@@ -61,7 +61,8 @@ def _explained(error: Exception) -> tuple[int | None, list[str]]:
     if isinstance(error, SettingsError):
         return REFUSED, [f"{error}.", "Nothing was written."]
     if isinstance(error, FileExistsError):
-        return USAGE, [str(error)]
+        there = f"{error.filename} already exists; name another file" if error.filename else str(error)
+        return USAGE, [f"{there}."]
     if isinstance(error, MemoryError):
         return REFUSED, ["There is not enough memory for this record.", "Nothing was written."]
     if isinstance(error, OSError):

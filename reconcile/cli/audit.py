@@ -47,10 +47,8 @@ def audit(
     folder = out or DEFAULT_FOLDER / files[0].stem
     check_place(folder, replace)
     with progress_bar(quiet) as progress:
-        found = pipeline.audit(
-            *files, settings=settings, columns=columns, progress=lambda doing, share: progress(doing, 0.8 * share)
-        )
-        write_report(found, folder, replace=replace, progress=lambda doing, share: progress(doing, 0.8 + 0.2 * share))
+        found = pipeline.audit(*files, settings=settings, columns=columns, progress=progress)
+        write_report(found, folder, replace=replace, progress=progress)
     if json:
         from reconcile.reporter.to_json import gist_json
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import sys
-import time
+import threading
 from collections.abc import Iterator
 from contextlib import contextmanager
 
@@ -30,14 +30,15 @@ def progress_bar(quiet: bool) -> Iterator[Progress]:
         transient=True,
     )
     task = bar.add_task("", total=1.0)
-    began = time.monotonic()
 
-    def report(doing: str, share: float) -> None:
-        bar.update(task, description=doing, completed=share)
-        if time.monotonic() - began > PATIENCE and not bar.live.is_started:
-            bar.start()
+    def report(doing: str, share: float | None) -> None:
+        bar.update(task, description=doing, total=None if share is None else 1.0, completed=share or 0.0)
 
+    wait = threading.Timer(PATIENCE, bar.start)
+    wait.daemon = True
+    wait.start()
     try:
         yield report
     finally:
+        wait.cancel()
         bar.stop()

@@ -38,15 +38,15 @@ def read(
     from reconcile import pipeline
     from reconcile.cli import show_record
     from reconcile.cli.progress import progress_bar
+    from reconcile.cli.show import say
     from reconcile.records.completeness import shortfalls
 
-    if write_columns:
-        pipeline.write_columns(write_columns, files, settings=settings)
-        if not quiet:
-            show_record.say(f"Column map written to {write_columns}.")
     with progress_bar(quiet) as progress:
         progress("reading the record", 0.0)
         records = pipeline.read(*files, settings=settings, columns=columns)
+    if write_columns:
+        pipeline.write_columns(records, write_columns)
+        say(f"Column map written to {write_columns}.", quiet)
     if json:
         from reconcile.cli.print_json import print_json
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 from typing import TYPE_CHECKING, Any
 
-from reconcile.cli.show import columns, heading, line, say
+from reconcile.cli.show import columns, heading, line
 from reconcile.records.columns import BY_SHEET
 from reconcile.records.completeness import shortfalls
 from reconcile.reporter.words import counted
@@ -13,7 +13,6 @@ from reconcile.reporter.words import counted
 if TYPE_CHECKING:
     from reconcile.records.book import BatchRecords, SheetSource
 
-__all__ = ["document", "say", "show"]
 SHOWN = 20
 """Rows set aside, and notes, that are shown before the rest is only counted."""
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from collections.abc import Sequence
 from typing import Any
 
 import numpy as np
@@ -70,11 +71,19 @@ def _candidates(sheet: RawSheet, column_map: ColumnMap) -> list[int]:
     hits = np.zeros(len(sheet), np.intp)
     for column in sheet.columns:
         texts = {v for v in set(column) if isinstance(v, str) and v and len(v) <= 80}
-        known = {t for t in texts if t.strip() in mapped or (not _DIGIT.search(t) and known_heading(t))}
-        if known:
-            hits += np.fromiter((v in known for v in column), bool, len(sheet))
+        known = [t for t in texts if t.strip() in mapped or (not _DIGIT.search(t) and known_heading(t))]
+        for text in known:
+            hits[_where(column, text)] += 1
     rows = np.flatnonzero((hits >= 2) | ((hits >= 1) & (np.arange(len(sheet)) < _TOP)))
     return rows.tolist()
+
+
+def _where(column: Sequence[Any], text: str) -> list[int]:
+    """Rows in which a column holds a text."""
+    rows: list[int] = []
+    for _ in range(column.count(text) if len(column) else 0):
+        rows.append(column.index(text, rows[-1] + 1 if rows else 0))
+    return rows
 
 
 def _like_headings(cells: list[Any]) -> bool:

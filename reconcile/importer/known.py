@@ -9,6 +9,7 @@ import numpy as np
 from reconcile.importer.lines import text_column
 from reconcile.importer.tables import TableCells
 from reconcile.records.columns import heading_key
+from reconcile.records.standards import find_standard, standard_ph
 
 _BEYOND = 2.0
 """K outside the tabulated temperatures within which the nearest value still stands; common practice, no source."""
@@ -16,9 +17,10 @@ _BEYOND = 2.0
 
 @dataclass
 class KnownSolutions:
-    """Certified values by name: rows of (lot, temperature [°C], pH, u)."""
+    """Certified values by name: rows of (lot, temperature [°C], pH, u); and the solutions already made of them."""
 
     by_name: dict[str, list[tuple[str, float, float, float]]] = field(default_factory=dict)
+    solutions: dict[tuple[str, str, float], int] = field(default_factory=dict)
 
     def add(self, table: TableCells) -> None:
         """Take the rows of one Known solutions sheet."""
@@ -33,12 +35,12 @@ class KnownSolutions:
                 self.by_name.setdefault(heading_key(names[i]), []).append(row)
 
     def certified(self, name: str, lot: str, temperature: float) -> tuple[float, float] | None:
-        """(pH, u) at a temperature, linear between the certified ones; None where the record does not say."""
+        """(pH, u) at a temperature, linear between certified ones; published standards where the record has none."""
         rows = self.by_name.get(heading_key(name), [])
         if lot and any(r[0] == lot for r in rows):
             rows = [r for r in rows if r[0] == lot]
         if not rows:
-            return None
+            return standard_ph(name, temperature)
         stated = sorted((t, ph, u) for _, t, ph, u in rows if not np.isnan(t))
         if not stated:
             return rows[0][2], rows[0][3]
@@ -46,3 +48,7 @@ class KnownSolutions:
         if temperature < t[0] - _BEYOND or temperature > t[-1] + _BEYOND:
             return None
         return float(np.interp(temperature, t, ph)), float(np.interp(temperature, t, u))
+
+    def is_listed(self, name: str) -> bool:
+        """Whether the record or the published standards know the name, at any temperature."""
+        return heading_key(name) in self.by_name or find_standard(name) is not None

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 
 from reconcile.importer.compose import Composer
 from reconcile.importer.lines import Recipes
@@ -67,11 +68,7 @@ def _lot_of(problem: Problem, composer: Composer, group: int) -> str:
     """Lot of the recipe line that caused it; where the cause is the reading itself, the lots of its whole recipe."""
     lines = composer.by_group.get(group, [])
     L = composer.lines
-    mine = [
-        i
-        for i in lines
-        if composer.place(i, "").row == problem.place.row and composer.place(i, "").sheet == problem.place.sheet
-    ]
+    mine = [i for i in lines if composer.reader.place(i, "") == replace(problem.place, column="")]
     named = [L.lot[i] for i in (mine or lines) if L.lot[i]]
     return "; ".join(dict.fromkeys(named))
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field
-from typing import Any
+from typing import Any, Protocol
 
 import numpy as np
 
@@ -29,6 +29,19 @@ class Marker:
     value: Any = None
 
 
+class ColumnFormats(Protocol):
+    """What the number formats of a workbook say, a column at a time."""
+
+    def decimals(self, sheet: RawSheet, column: int) -> IntArray | None:
+        """Decimals shown by each cell, -1 where its format does not say."""
+
+    def prepare(self, sheet: RawSheet, column: int) -> None:
+        """Mark the cells whose format changes what they say."""
+
+    def struck(self, sheet: RawSheet, column: int) -> list[int]:
+        """Rows of struck-through cells."""
+
+
 @dataclass
 class RawSheet:
     """One sheet, column by column; an empty cell is "".
@@ -38,7 +51,8 @@ class RawSheet:
     names : names of the columns for a Place: letters in a workbook; filled in from the heading row in a CSV file
     text_cells : True for a CSV file, where every cell is text
     widths : fields of every line of a CSV file, None for a workbook
-    decimals : column index -> decimals shown by the number formats, IntArray (n,), -1 where unknown
+    formats : what number formats say of a column's cells, None for a CSV file
+    summary_formulas : cells, (row, column) from 0, that hold a SUM, an AVERAGE and the like
     merges : (first row, first column, last row, last column), counted from 0 in `columns`
     epoch_1904 : serial numbers of dates count from 1904
     """
@@ -51,7 +65,8 @@ class RawSheet:
     sha256: str = ""
     text_cells: bool = False
     widths: IntArray | None = None
-    decimals: dict[int, IntArray] = field(default_factory=dict)
+    formats: ColumnFormats | None = None
+    summary_formulas: set[tuple[int, int]] = field(default_factory=set)
     merges: list[tuple[int, int, int, int]] = field(default_factory=list)
     epoch_1904: bool = False
     hidden: bool = False

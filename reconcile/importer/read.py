@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+import gc
+from collections.abc import Iterable, Iterator, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass, field
 from pathlib import Path
 
@@ -10,15 +12,17 @@ import numpy as np
 
 from reconcile.importer.blocks import find_blocks, label_of, nearest_headings
 from reconcile.importer.compose import Composer
+from reconcile.importer.contributions import lots_of, solutions_of
 from reconcile.importer.files import read_file
 from reconcile.importer.headings import Block, ColumnMap
 from reconcile.importer.known import KnownSolutions
 from reconcile.importer.ledger import ask_where_many, set_aside
+from reconcile.importer.line_parts import LineReader
 from reconcile.importer.lines import Recipes, long_lines, wide_lines
 from reconcile.importer.raw import RawSheet
 from reconcile.importer.readings import ReadingRows, missing_column, read_readings
 from reconcile.importer.resolve import Resolver
-from reconcile.importer.solutions import assign, lots_of, solutions_of
+from reconcile.importer.solutions import Assigner
 from reconcile.importer.stocks import StockRoom, read_stocks
 from reconcile.importer.tables import TableCells, read_cells
 from reconcile.records.book import BatchRecords, SheetSource, Table
@@ -56,8 +60,24 @@ def read_books(
     column_map : what `read_column_map` gives; catalogue : the substances known, the library's own by default
     Raises InputProblems, with every problem found, where the input is refused.
     """
+    with _without_collection():
+        return _read(paths, settings, column_map or {}, catalogue if catalogue is not None else _library())
+
+
+@contextmanager
+def _without_collection() -> Iterator[None]:
+    """Leave the cycle collector off: millions of cells make it run often, and none of them is in a cycle."""
+    was_on = gc.isenabled()
+    gc.disable()
+    try:
+        yield
+    finally:
+        if was_on:
+            gc.enable()
+
+
+def _read(paths: Sequence[Path | str], settings: Settings, column_map: ColumnMap, names: Catalogue) -> BatchRecords:
     book = Book()
-    names = catalogue if catalogue is not None else _library()
     sheets: list[RawSheet] = []
     for path in paths:
         try:
@@ -65,7 +85,7 @@ def read_books(
         except InputProblems as refused:
             book.stops.extend(refused.problems)
     for sheet in sheets:
-        _read_sheet(sheet, settings, column_map or {}, names, book)
+        _read_sheet(sheet, settings, column_map, names, book)
     _refuse_without_readings(sheets, book)
     if book.stops:
         raise InputProblems(book.stops)
@@ -173,7 +193,7 @@ def _understood(book: Book, settings: Settings, names: Catalogue) -> BatchRecord
         raise InputProblems(stops)
     resolver = Resolver(names, room, tuple(settings["substances.without_effect"]))
     files = [(s.file, s.sheet) for s in book.sources]
-    composer = Composer(recipes.lines(), resolver, settings, files)
+    composer = Composer(LineReader(recipes.lines(), resolver, settings, files))
     composer.group_of_batch = {b: groups[0] for b, groups in recipes.by_batch.items()}
     return _records(book, rows, recipes, composer, known, settings)
 
@@ -202,22 +222,23 @@ def _records(
     repeated = _joined([np.full(len(r), r.repeated) for _, r in rows], np.zeros(0, bool))
     usable = np.fromiter((p is None for p in problem), bool, len(problem))
     places = _places(book, source, number)
-    assigned, made = assign(columns, group, usable, recipes, composer, known, settings, places)
-    for i, why in assigned.problem.items():
+    assigner = Assigner(recipes, composer, known, settings)
+    solution, problems = assigner.assign(columns, group, usable, places)
+    for i, why in problems.items():
         problem[i] = why
-    used = assigned.solution >= 0
+    used = solution >= 0
     aside = []
     for i in np.flatnonzero(~used).tolist():
         sheet = book.sources[int(source[i])]
         place = Place(sheet.file, sheet.sheet, int(number[i]), ph_column[i] if repeated[i] else "")
         aside.append(set_aside(problem[i], place, columns, i, bool(summary[i]), composer, recipes, int(group[i])))
-    solutions, forms, used_lots = solutions_of(made, composer)
+    solutions, forms, used_lots = solutions_of(assigner)
     lots, forms = lots_of(composer.resolver.lots, used_lots, forms, settings)
     readings = Table("readings", {k: v[used] for k, v in columns.items()}, source[used], number[used])
     return BatchRecords(
         sheets=tuple(book.sources),
         readings=readings,
-        readings_solution=assigned.solution[used],
+        readings_solution=solution[used],
         **{kind: _table(book, kind) for kind in BY_SHEET if kind != "readings"},
         forms=forms,
         lots=lots,

@@ -147,7 +147,8 @@ def _settle_standing(table: TableCells, columns: dict[str, AnyArray], problem: T
 def _resolution(table: TableCells, column_index: int, parsed: Parsed | None, n: int) -> AnyArray:
     """Resolution of the display [pH] from the decimals of the number format or of the text; NaN where unknown."""
     resolution = np.full(n, np.nan)
-    shown = table.sheet.decimals.get(column_index)
+    formats = table.sheet.formats
+    shown = formats.decimals(table.sheet, column_index) if formats is not None and column_index >= 0 else None
     if shown is not None:
         decimals = shown[table.rows]
         resolution = np.where(decimals >= 0, 10.0 ** -decimals.astype(float), resolution)

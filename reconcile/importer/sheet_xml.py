@@ -2,120 +2,157 @@
 
 from __future__ import annotations
 
+import html
 import re
+from dataclasses import dataclass
 
 import numpy as np
 
-from reconcile.importer.raw import Marker, RawSheet, mark
-from reconcile.importer.styles import Styles
+from reconcile.records.arrays import IntArray
 from reconcile.records.places import column_letters
-from reconcile.records.problems import Problem
 
-_CELL = rb'<(?:\w+:)?c r="([A-Z]+)(\d+)"'
+_ROW = re.compile(rb"<(?:\w+:)?row\b([^>]*)>")
+_ANY_CELL = re.compile(
+    rb"<(?:\w+:)?row\b([^>]*?)/?>|<(?:\w+:)?c\b((?:[^>\"]|\"[^\"]*\")*?)(?:/>|>(.*?)</(?:\w+:)?c>)", re.DOTALL
+)
+_ATTRIBUTE = re.compile(rb"([\w:]+)\s*=\s*[\"']([^\"']*)[\"']")
 
 
-def column_index(letters: str | bytes) -> int:
+@dataclass(frozen=True)
+class Formula:
+    """A formula cell: place counted from 0, its text, and whether a value was saved with it."""
+
+    row: int
+    column: int
+    text: str
+    saved: bool
+
+
+def column_index(letters: bytes) -> int:
     """Index from 0 of a column's letters: A is 0, AA is 26."""
     index = 0
-    for letter in letters.encode() if isinstance(letters, str) else letters:
+    for letter in letters:
         index = index * 26 + letter - 64
     return index - 1
 
 
-def bounds(data: bytes) -> tuple[int, int]:
-    """Last row and last column that hold a cell, from the cells themselves and never from the declared dimension."""
-    rows = re.findall(rb'<(?:\w+:)?row [^>]*?\br="(\d+)"', data[data.rfind(b"<row ", 0, len(data)) :] or data)
-    last_row = max(map(int, rows), default=0)
-    last_column = 0
-    for width in (3, 2, 1):
-        letters = set(re.findall(rb'<(?:\w+:)?c r="([A-Z]{%d})\d' % width, data))
-        if letters:
-            last_column = max(column_index(x) for x in letters) + 1
-            break
-    return last_row, last_column
+class SheetXml:
+    """The XML of one sheet. A sheet whose cells are written in an unusual way is first written out in the usual one."""
+
+    def __init__(self, data: bytes) -> None:
+        usual = data.count(b'<c r="')
+        self.data = data if usual == _cells(data) else _usual(data)
+
+    def bounds(self, many: int) -> tuple[int, int]:
+        """Last row and a bound on the last column that hold a cell, from the cells and never the declared dimension.
+
+        The bound on the columns is exact where rows times 702 exceeds `many`, or three letters occur.
+        """
+        data = self.data
+        last = _ROW.search(data, max(data.rfind(b"<row"), 0))
+        number = re.search(rb'\br="(\d+)"', last.group(1)) if last else None
+        at = data.rfind(b'<c r="')
+        cell = re.match(rb'<c r="[A-Z]+(\d+)"', data[at : at + 30]) if at >= 0 else None
+        rows = max(int(m.group(1)) if m else 0 for m in (number, cell))
+        if rows * 702 <= many and not re.search(rb'<c r="[A-Z]{3}', data):
+            return rows, 702
+        for letters in (3, 2, 1):
+            found = set(re.findall(rb'<c r="([A-Z]{%d})\d' % letters, data))
+            if found:
+                return rows, max(map(column_index, found)) + 1
+        return rows, 0
+
+    def errors(self) -> list[tuple[int, int, str]]:
+        """(row, column, text) of every error cell."""
+        if b't="e"' not in self.data:
+            return []
+        cells = re.finditer(rb'<c r="([A-Z]+)(\d+)"([^>]*\bt="e"[^>]*)>(.*?)</c>', self.data, re.DOTALL)
+        found = []
+        for match in cells:
+            letters, row, _, inside = match.groups()
+            value = re.search(rb"<v>([^<]*)</v>", inside)
+            found.append((int(row) - 1, column_index(letters), _plain(value.group(1)) if value else "#ERROR"))
+        return found
+
+    def formulas(self) -> list[Formula]:
+        """Every formula cell."""
+        if b"<f" not in self.data:
+            return []
+        found = []
+        for match in re.finditer(rb'<c r="([A-Z]+)(\d+)"([^>]*)>(<f\b.*?)</c>', self.data, re.DOTALL):
+            letters, row, attributes, inside = match.groups()
+            value = re.search(rb"<v[^>]*>([^<]*)</v>", inside)
+            saved = value is not None and (value.group(1) != b"" or b't="str"' in attributes)
+            formula = re.search(rb"<f\b[^>]*>([^<]*)</f>", inside)
+            text = "=" + _plain(formula.group(1)) if formula else "a formula"
+            found.append(Formula(int(row) - 1, column_index(letters), text, saved))
+        return found
+
+    def uses_style(self, index: int) -> bool:
+        """Whether any cell has a style."""
+        return b's="%d"' % index in self.data
+
+    def styles_of(self, column: int) -> tuple[IntArray, IntArray]:
+        """Rows (from 0) and style indices of the styled cells of one column."""
+        letters = column_letters(column).encode()
+        found = re.findall(rb'<c r="' + letters + rb'(\d+)"(?: t="\w+")? s="(\d+)"', self.data)
+        table = np.array(found, dtype=np.bytes_).astype(np.intp) if found else np.zeros((0, 2), np.intp)
+        return table[:, 0] - 1, table[:, 1]
+
+    def merges(self) -> list[tuple[int, int, int, int]]:
+        """(first row, first column, last row, last column) of every merged range."""
+        at = self.data.find(b"mergeCells")
+        if at < 0:
+            return []
+        found = re.findall(rb'mergeCell [^>]*?ref="([A-Z]+)(\d+):([A-Z]+)(\d+)"', self.data[at:])
+        return [(int(b) - 1, column_index(a), int(d) - 1, column_index(c)) for a, b, c, d in found]
+
+    def hidden_rows(self) -> int:
+        """Number of hidden rows, filtered ones among them."""
+        if b"hidden=" not in self.data:
+            return 0
+        return len(re.findall(rb'<(?:\w+:)?row\b[^>]*\bhidden="(?:1|true)"', self.data))
+
+    def hidden_columns(self) -> list[tuple[int, int]]:
+        """(first, last) index of every run of hidden columns."""
+        head = self.data[: max(self.data.find(b"<sheetData"), 0)]
+        found = []
+        for tag in re.findall(rb"<(?:\w+:)?col\b[^>]*>", head):
+            a = dict(_ATTRIBUTE.findall(tag))
+            if a.get(b"hidden") in (b"1", b"true") and b"min" in a and b"max" in a:
+                found.append((int(a[b"min"]) - 1, int(a[b"max"]) - 1))
+        return found
 
 
-def add_what_values_hide(sheet: RawSheet, data: bytes, styles: Styles, strings: bytes) -> None:
-    """Put markers in the cells, and formats, merges and notes on the sheet."""
-    if b't="e"' in data:
-        for letters, row, text in re.findall(_CELL + rb'[^>]*\bt="e"[^>]*>.*?<(?:\w+:)?v>([^<]*)</', data, re.DOTALL):
-            mark(sheet, int(row) - 1, column_index(letters), Marker("error", text.decode("utf-8", "replace")))
-    if b"<f" in data:
-        _formulas(sheet, data)
-    _formats(sheet, data, styles)
-    _merges(sheet, data)
-    hidden = len(re.findall(rb'<(?:\w+:)?row [^>]*\bhidden="(?:1|true)"', data)) if b"hidden=" in data else 0
-    if hidden:
-        sheet.notes.append(Problem("rows-hidden", sheet.place(), words=(("count", str(hidden)),)))
-    if sheet.hidden:
-        sheet.notes.append(Problem("sheet-hidden", sheet.place(), sheet.sheet))
+def _cells(data: bytes) -> int:
+    """Number of cell elements, however they are written."""
+    return data.count(b"<c ") + data.count(b":c ") + data.count(b"<c>") + data.count(b"<c/>") + data.count(b":c>")
 
 
-def _formulas(sheet: RawSheet, data: bytes) -> None:
-    """Mark formulas with no saved value; note how many cells were computed by the spreadsheet."""
-    computed = 0
-    for match in re.finditer(_CELL + rb"([^>]*)>(<(?:\w+:)?f\b.*?)</(?:\w+:)?c>", data, re.DOTALL):
-        letters, row, attributes, inside = match.groups()
-        if b"</c>" in inside:
+def _usual(data: bytes) -> bytes:
+    """The sheet with every cell as <c r="A1" s="1" t="s">, references filled in where they were left out."""
+    out, row, column, end = [], 0, 0, 0
+    for match in _ANY_CELL.finditer(data):
+        out.append(data[end : match.start()])
+        end = match.end()
+        if match.group(1) is not None:
+            attributes = dict(_ATTRIBUTE.findall(match.group(1)))
+            number = attributes.get(b"r", b"")
+            row, column = int(number) if number.isdigit() else row + 1, 0
+            others = b"".join(b' %s="%s"' % (k, v) for k, v in attributes.items() if k != b"r")
+            out.append(b'<row r="%d"%s>' % (row, others))
             continue
-        value = re.search(rb"<(?:\w+:)?v>([^<]*)</", inside)
-        if value is None or (not value.group(1) and b't="str"' not in attributes):
-            formula = re.search(rb"<(?:\w+:)?f\b[^>]*>([^<]*)<", inside)
-            text = "=" + formula.group(1).decode("utf-8", "replace") if formula else "a formula"
-            mark(sheet, int(row) - 1, column_index(letters), Marker("uncalculated", text))
-        else:
-            computed += 1
-    if computed:
-        sheet.notes.append(Problem("cells-computed", sheet.place(), words=(("count", str(computed)),)))
+        attributes = dict(_ATTRIBUTE.findall(match.group(2)))
+        named = re.fullmatch(rb"([A-Z]+)(\d+)", attributes.get(b"r", b""))
+        column = column_index(named.group(1)) if named else column
+        here = b"%s%d" % (column_letters(column).encode(), int(named.group(2)) if named else row)
+        kept = b"".join(b' %s="%s"' % (k, attributes[k]) for k in (b"s", b"t") if k in attributes)
+        inside = re.sub(rb"<(/?)\w+:(\w)", rb"<\1\2", match.group(3) or b"")
+        out.append(b'<c r="%s"%s>%s</c>' % (here, kept, inside))
+        column += 1
+    out.append(data[end:])
+    return b"".join(out)
 
 
-def _formats(sheet: RawSheet, data: bytes, styles: Styles) -> None:
-    """Decimals by column, and markers for percent, padded numbers and durations."""
-    telling = (
-        {i for i, d in enumerate(styles.decimals) if d >= 0} | styles.percent | set(styles.padded) | styles.duration
-    )
-    telling = {i for i in telling if b's="%d"' % i in data}
-    if not telling:
-        return
-    wanted = b"|".join(b"%d" % i for i in sorted(telling))
-    decimals = np.array([*styles.decimals, -1])
-    found = re.findall(_CELL + rb'(?: t="n")? s="(' + wanted + rb')"', data)
-    by_letters: dict[bytes, list[tuple[int, int]]] = {}
-    for letters, row, style in found:
-        by_letters.setdefault(letters, []).append((int(row), int(style)))
-    for letters, cells in by_letters.items():
-        column = column_index(letters)
-        if column >= len(sheet.columns):
-            continue
-        table = np.array(cells)
-        rows, kinds = table[:, 0] - 1, table[:, 1]
-        inside = rows < len(sheet)
-        rows, kinds = rows[inside], kinds[inside]
-        shown = np.full(len(sheet), -1, np.intp)
-        shown[rows] = decimals[kinds]
-        sheet.decimals[column] = shown
-        odd = np.isin(kinds, [*styles.percent, *styles.padded, *styles.duration])
-        for row, kind in zip(rows[odd].tolist(), kinds[odd].tolist(), strict=True):
-            value = sheet.columns[column][row]
-            if isinstance(value, Marker) or value == "" or isinstance(value, str):
-                continue
-            if kind in styles.percent:
-                mark(sheet, row, column, Marker("percent", f"{value * 100:.12g}%", float(value) * 100))
-            elif kind in styles.padded and float(value) == int(value):
-                mark(sheet, row, column, Marker("padded", f"{int(value):0{styles.padded[kind]}d}", value))
-            elif kind in styles.duration:
-                mark(sheet, row, column, Marker("duration", str(value), value))
-
-
-def _merges(sheet: RawSheet, data: bytes) -> None:
-    at = data.find(b"mergeCell ")
-    if at < 0:
-        return
-    for a, b, c, d in re.findall(rb'<(?:\w+:)?mergeCell [^>]*ref="([A-Z]+)(\d+):([A-Z]+)(\d+)"', data[at - 20 :]):
-        first, last = (int(b) - 1, column_index(a)), (int(d) - 1, column_index(c))
-        sheet.merges.append((*first, *last))
-
-
-def cell_name(row: int, column: int) -> str:
-    """A1 name of a cell counted from 0."""
-    return f"{column_letters(column)}{row + 1}"
+def _plain(data: bytes) -> str:
+    return html.unescape(data.decode("utf-8", "replace"))

@@ -85,6 +85,8 @@ def read_cells(sheet: RawSheet, block: Block, settings: Settings) -> TableCells:
         if column.name not in block.columns:
             continue
         index = block.columns[column.name]
+        if sheet.formats is not None and column.kind != "time":
+            sheet.formats.prepare(sheet, index)
         cells = table.cells(index)
         parsed = _parse(table, column, cells, decimal, settings)
         table.columns[column.name] = parsed
@@ -183,8 +185,13 @@ def _heading_repeats(sheet: RawSheet, block: Block, rows: IntArray) -> IntArray:
     headings = {c: heading_key(str(sheet.columns[c][block.heading])) for c in used}
     probe = used[0]
     raw = sheet.columns[probe]
+    first = headings[probe][:1]
     same = (
-        {v for v in set(raw[block.first : block.last]) if isinstance(v, str) and heading_key(v) == headings[probe]}
+        {
+            v
+            for v in set(raw[block.first : block.last])
+            if isinstance(v, str) and v.strip()[:1].casefold() == first and heading_key(v) == headings[probe]
+        }
         if headings[probe]
         else set()
     )

@@ -11,8 +11,9 @@ from typing import Any
 
 import python_calamine as calamine
 
+from reconcile.importer.hidden import add_what_values_hide
 from reconcile.importer.raw import RawSheet, sheet_of_rows
-from reconcile.importer.sheet_xml import add_what_values_hide, bounds
+from reconcile.importer.sheet_xml import SheetXml
 from reconcile.importer.styles import Styles
 from reconcile.records.places import Place
 from reconcile.records.problems import InputProblems, Problem
@@ -20,7 +21,7 @@ from reconcile.records.settings import Settings
 
 _CHUNK = 1 << 20
 _FULL_SHEETS = (65536, 1048576)
-_WIDEST = 30_000_000
+_WIDEST = 20_000_000
 """Cells of the rectangle that a sheet spans; beyond this a reader that lays out the rectangle takes gigabytes."""
 
 
@@ -36,22 +37,19 @@ def read_workbook(content: bytes, file: str, sha256: str, settings: Settings) ->
     book = parts.get("xl/workbook.xml", b"")
     epoch_1904 = re.search(rb'date1904\s*=\s*"(1|true)"', book) is not None
     sheets: list[RawSheet] = []
-    for position, (name, part) in enumerate(_sheets(book, parts.get("xl/_rels/workbook.xml.rels", b""))):
-        data = parts.get(part, b"")
-        if b"worksheet" not in data[:2048]:
+    values = _opened(content, file)
+    for name, part in _sheets(book, parts.get("xl/_rels/workbook.xml.rels", b"")):
+        if b"worksheet" not in parts.get(part, b"")[:2048]:
             continue  # a chart or dialogue sheet holds no cells
-        last_row, last_column = bounds(data)
+        xml = SheetXml(parts[part])
+        last_row, last_column = xml.bounds(_WIDEST)
         if last_row * last_column > _WIDEST:
             raise InputProblems([Problem("sheet-too-wide", Place(file, name), f"{last_row} x {last_column}")])
-        sheet = sheet_of_rows(file, name, _values(content, file, name, position), sha256)
+        sheet = sheet_of_rows(file, name, _values(values, file, name), sha256)
         sheet.epoch_1904 = epoch_1904
-        sheet.hidden = (
-            re.search(
-                rb'<sheet [^>]*name="' + re.escape(_escaped(name)) + rb'"[^>]*state="(?:hidden|veryHidden)"', book
-            )
-            is not None
-        )
-        add_what_values_hide(sheet, data, styles, parts.get("xl/sharedStrings.xml", b""))
+        state = rb'"[^>]*state="(?:hidden|veryHidden)"'
+        sheet.hidden = re.search(rb'<sheet [^>]*name="' + re.escape(_escaped(name)) + state, book) is not None
+        add_what_values_hide(sheet, xml, styles)
         if len(sheet) in _FULL_SHEETS:
             sheet.notes.append(Problem("file-maybe-cut", Place(file, name), str(len(sheet))))
         extras = _beside_the_cells(part, parts)
@@ -94,12 +92,19 @@ def _inflate(content: bytes, file: str, cap: int) -> dict[str, bytes]:
     return parts
 
 
-def _values(content: bytes, file: str, sheet: str, position: int) -> list[list[Any]]:
+def _opened(content: bytes, file: str) -> calamine.CalamineWorkbook:
     try:
-        book = calamine.CalamineWorkbook.from_filelike(io.BytesIO(content))
+        return calamine.CalamineWorkbook.from_filelike(io.BytesIO(content))
+    except Exception as error:  # the reader's errors have no common base; all mean the same to the user
+        raise _refused("file-damaged", file, f"{type(error).__name__}: {error}") from None
+
+
+def _values(book: calamine.CalamineWorkbook, file: str, sheet: str) -> list[list[Any]]:
+    try:
         return book.get_sheet_by_name(sheet).to_python(skip_empty_area=False)
-    except Exception as error:  # the reader has no common base for its errors; all mean the same to the user
-        raise InputProblems([Problem("file-damaged", Place(file, sheet), f"{type(error).__name__}: {error}")]) from None
+    except Exception as error:  # as above
+        message = f"{type(error).__name__}: {error}"
+        raise InputProblems([Problem("file-damaged", Place(file, sheet), message)]) from None
 
 
 def _sheets(book: bytes, relations: bytes) -> list[tuple[str, str]]:

@@ -62,6 +62,8 @@ class Problem:
         values.setdefault("read", shown(self.read) if self.read else "nothing")
         values.setdefault("bare", self.read)
         for _ in range(2):
+            if "{" not in template:
+                break
             for key, value in values.items():
                 template = template.replace("{" + key + "}", value)
         return template
@@ -84,7 +86,7 @@ class Problem:
 
 def shown(text: str, most: int = 60) -> str:
     """A cell's text for a message: quoted, hidden characters made visible, cut when long."""
-    visible = "".join(c if c.isprintable() else f"\\u{ord(c):04x}" for c in text)
+    visible = text if text.isprintable() else "".join(c if c.isprintable() else f"\\u{ord(c):04x}" for c in text)
     return f'"{visible}"' if len(visible) <= most else f'"{visible[:most]}…"'
 
 

@@ -60,7 +60,7 @@ KINDS: tuple[tuple[str, tuple[str, ...], int, float, float], ...] = (
     ("citrate", (CITRIC, BASE), 8, 0.5, 2.4),
     ("phosphate", (PRIMARY, SECONDARY), 16, 0.4, 2.5),
     ("phosphate", (PRIMARY, BASE), 6, 0.25, 0.75),
-    ("phosphate", (SECONDARY, STRONG), 6, 0.25, 0.75),
+    ("phosphate", (SECONDARY, STRONG), 6, 0.15, 0.42),
     ("Tris", (TRIS, STRONG), 12, 0.25, 0.75),
     ("Tris", (TRIS, TRIS_HCL), 6, 0.5, 2.0),
     ("lactate", (LACTIC, BASE), 10, 0.3, 0.75),

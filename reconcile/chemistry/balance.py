@@ -56,17 +56,25 @@ def activity(chunk: Chunk, model: ActivityModel, strength: FloatArray) -> Activi
     return Activity(d, d_i, h, oh, [model.exponent(chunk.a, chunk.b, strength, s.size)[0] for s in chunk.slots], g2)
 
 
-def weights(slot: Slot, ph: FloatArray, act: Activity, number: int) -> list[FloatArray]:
+def free_ions(chunk: Chunk, act: Activity, ph: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Molality of H+ and of OH-, and 10^(pH + D), from which the weights of the states are made."""
+    raised = np.exp(LN10 * (ph + act.d))
+    if act.states is None:
+        return act.g2 / raised, chunk.kw * raised, raised
+    return np.exp(LN10 * (act.hydrogen - ph)), chunk.kw * np.exp(LN10 * (act.hydroxide + ph)), raised
+
+
+def weights(slot: Slot, ph: FloatArray, act: Activity, raised: FloatArray, number: int) -> list[FloatArray]:
     """Molality of every later state of an acid over that of its fully protonated state; slot `number` of its chunk.
 
     m_j / m_0 = prod K_i / a_H^j * 10^(z_j^2 D_j - z_0^2 D_0), as activities are molalities times 10^(-z^2 D).
     """
     out: list[FloatArray] = []
     if act.states is None:
-        ratio = np.exp(LN10 * (ph + act.d if slot.neutral else ph + act.d * (1.0 - 2.0 * slot.charge)))
+        ratio = raised if slot.neutral else raised * np.exp(act.d * ((-2.0 * LN10) * slot.charge))
         for j, k in enumerate(slot.k):
             if j:
-                ratio *= act.g2
+                ratio = ratio * act.g2
                 step = k * ratio
                 step *= out[-1]
             else:
@@ -81,17 +89,62 @@ def weights(slot: Slot, ph: FloatArray, act: Activity, number: int) -> list[Floa
     return out
 
 
-def charge_only(chunk: Chunk, act: Activity, ph: FloatArray) -> FloatArray:
-    """Positive minus negative charge [mol/kg] at a trial pH; falls steadily as pH rises."""
-    excess = chunk.charge + np.exp(LN10 * (act.hydrogen - ph)) - chunk.kw * np.exp(LN10 * (act.hydroxide + ph))
-    for i, slot in enumerate(chunk.slots):
-        some = weights(slot, ph, act, i)
-        s0, s1 = 1.0 + some[0], some[0]
-        for j, w in enumerate(some[1:], start=2):
-            s0 += w
-            s1 = s1 + j * w
-        excess -= slot.total * s1 / _whole(slot, s0)
-    return excess
+class AtStrength:
+    """The charge balance of a chunk at a fixed ionic strength: apparent constants are formed once for many trial pH."""
+
+    def __init__(self, chunk: Chunk, model: ActivityModel, strength: FloatArray) -> None:
+        act = activity(chunk, model, strength)
+        self._charge, self._square = chunk.charge, chunk.square
+        zero = np.zeros(len(chunk))  # at pH 0 the weights are the products of apparent constants
+        self._hydrogen, self._hydroxide, raised = free_ions(chunk, act, zero)
+        self._slots = [(slot, weights(slot, zero, act, raised, i)) for i, slot in enumerate(chunk.slots)]
+
+    def excess(self, ph: FloatArray) -> FloatArray:
+        """Positive minus negative charge [mol/kg] at a trial pH; falls steadily as pH rises."""
+        ratio = np.exp(LN10 * ph)
+        excess = self._charge + (self._hydrogen / ratio - self._hydroxide * ratio)
+        for slot, products in self._slots:
+            power = ratio
+            s1 = products[0] * power
+            s0 = 1.0 + s1
+            for j, product in enumerate(products[1:], start=2):
+                power = power * ratio
+                w = product * power
+                s0 += w
+                w *= j
+                s1 += w
+            s1 *= slot.total
+            s1 /= _whole(slot, s0)
+            excess -= s1
+        return excess
+
+    def newton(self, ph: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Newton's step in pH at this ionic strength, and the ionic strength that the species at the trial pH make."""
+        ratio = np.exp(LN10 * ph)
+        h, oh = self._hydrogen / ratio, self._hydroxide * ratio
+        excess, falling = self._charge + (h - oh), h + oh
+        squares = self._square + falling
+        for slot, products in self._slots:
+            power = ratio
+            w = products[0] * power
+            s0, s1, s2 = 1.0 + w, w.copy(), w.copy()
+            for j, product in enumerate(products[1:], start=2):
+                power = power * ratio
+                w = product * power
+                s0 += w
+                w *= j
+                s1 += w
+                w *= j
+                s2 += w
+            share = 1.0 / _whole(slot, s0)
+            s1 *= share
+            s2 *= share
+            second = s2 if slot.neutral else s2 + slot.charge * (slot.charge - 2.0 * s1)
+            squares += slot.total * second
+            excess -= slot.total * s1
+            s1 *= s1
+            falling += slot.total * (s2 - (s1 if slot.closed is None else slot.closed * s1))
+        return excess / (LN10 * falling), 0.5 * squares
 
 
 def _whole(slot: Slot, s0: FloatArray) -> FloatArray:
@@ -128,8 +181,7 @@ def balance(chunk: Chunk, model: ActivityModel, ph: FloatArray, strength: FloatA
     chapter 4 (buffer capacity as the slope of the charge balance).
     """
     act = activity(chunk, model, strength)
-    h = np.exp(LN10 * (act.hydrogen - ph))
-    oh = chunk.kw * np.exp(LN10 * (act.hydroxide + ph))
+    h, oh, raised = free_ions(chunk, act, ph)
     both, difference = h + oh, h - oh
     excess = chunk.charge + difference
     squares = chunk.square + both
@@ -138,7 +190,7 @@ def balance(chunk: Chunk, model: ActivityModel, ph: FloatArray, strength: FloatA
     squares_ph = -difference
     squares_d = both
     for i, slot in enumerate(chunk.slots):
-        n1, n2, var, mixed, wide = _moments(slot, weights(slot, ph, act, i))
+        n1, n2, var, mixed, wide = _moments(slot, weights(slot, ph, act, raised, i))
         total = slot.total
         if slot.neutral:
             cov, spread, second = mixed, wide, n2

@@ -79,7 +79,7 @@ class Slot:
     neutral : bool               True where that charge is 0 in every row
     total : FloatArray (m,)      molality [mol/kg]; of an open row, that of its neutral first state
     closed : FloatArray (m,)     1; 0 where the air holds the first state's molality. None where all are closed
-    acid : IntArray (m,)         index of the acid; -1 where the row has none here
+    acid : IntArray (m,)         index of the acid; the number of acids where the row has none here
     size : FloatArray (s + 1, m) ion size of each state [angstrom]; empty unless the model asks for it
     """
 
@@ -190,10 +190,10 @@ def pad(
     for acid, units in brought:
         if np.any(units):
             cells += np.bincount(row * (count + 1) + place[acid], amount * units, len(cells))
-    totals = cells.reshape(m, count + 1)[:, :count]
     if air:
-        totals[:, place[carbonic]] = np.where(opened > 0.0, opened, totals[:, place[carbonic]])
-    slots = _slots(totals, columns, opened if air else None, carbonic, acids, water, sized)
+        column = cells.reshape(m, count + 1)[:, place[carbonic]]
+        column[:] = np.where(opened > 0.0, opened, column)
+    slots = _slots(cells, m, columns, opened if air else None, carbonic, acids, water, sized)
     charge = strong
     for slot in slots:
         if not slot.neutral:
@@ -204,6 +204,7 @@ def pad(
 
 def _slots(
     totals: FloatArray,
+    m: int,
     columns: IntArray,
     opened: FloatArray | None,
     carbonic: int,
@@ -211,41 +212,47 @@ def _slots(
     water: Solvent,
     sized: bool,
 ) -> list[Slot]:
-    m = len(totals)
-    row, column = np.nonzero(totals != 0.0)
+    width = len(columns) + 1
+    held = np.flatnonzero(totals != 0.0)  # over one axis and as truth values: several times faster
+    row = held // max(width, 1)
+    column = held - row * width
+    has = column < len(columns)
+    if not has.all():
+        held, row, column = held[has], row[has], column[has]
     counts = np.bincount(row, minlength=m)
     number = np.arange(len(row)) - np.repeat(np.cumsum(counts) - counts, counts)
     most = int(counts.max(initial=0))
-    acid, total = np.full((most, m), -1, np.intp), np.zeros((most, m))
-    acid[number, row] = columns[column]
-    total[number, row] = totals[row, column]
+    acid, total = np.full((most, m), len(acids.names), np.intp), np.zeros((most, m))
+    cell = number * m + row
+    acid.ravel()[cell] = columns.take(column)
+    total.ravel()[cell] = totals.take(held)
     kelvin = water.temperature_c + ZERO_CELSIUS
     same = m > 0 and bool(np.all(kelvin == kelvin[0]))
     p, q, r, _ = acids.by_step
     if same:
         at = np.exp(-LN10 * (p + q / kelvin[0] + r * np.log(kelvin[0])))
     inverse, log = 1.0 / kelvin, np.log(kelvin)
-    # the entry for no acid (-1) is the last of each of these
+    # the entry for no acid is the last of each of these, and of the columns of by_step
     charges, counted = np.append(acids.charge, 0.0), np.append(acids.steps, 0)
     slots = []
     for which, amount in zip(acid, total, strict=True):
-        steps = counted[which]
+        steps = counted.take(which)
         k = np.empty((int(steps.max(initial=0)), m))
         for j in range(len(k)):
             if same:
-                k[j] = at[j].take(which, mode="wrap")
+                k[j] = at[j].take(which)
                 continue
-            pka = q[j].take(which, mode="wrap")
+            pka = q[j].take(which)
             pka *= inverse
-            pka += p[j].take(which, mode="wrap")
-            pka += r[j].take(which, mode="wrap") * log
+            pka += p[j].take(which)
+            pka += r[j].take(which) * log
             pka *= -LN10
             np.exp(pka, out=k[j])
         size = np.zeros((0, m))
         if sized:
-            safe = np.maximum(which, 0)
+            safe = np.minimum(which, len(acids.names) - 1)
             size = acids.size[acids.first[safe] + safe + np.minimum(np.arange(len(k) + 1)[:, None], steps)]
-        charge = charges[which]
+        charge = charges.take(which)
         closed = None
         if opened is not None:
             closed = np.where((opened > 0.0) & (which == carbonic), 0.0, 1.0)

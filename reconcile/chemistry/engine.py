@@ -14,7 +14,7 @@ from reconcile.chemistry.solve import solve
 from reconcile.chemistry.temperature import Solvent, solvent
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 
-CHUNK = 4096
+CHUNK = 8192
 """Rows solved together: enough to hide the cost of a call, few enough that their arrays stay in the cache."""
 
 

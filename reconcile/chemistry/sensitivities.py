@@ -9,7 +9,7 @@ import numpy as np
 
 from reconcile.chemistry.acids import AcidTable
 from reconcile.chemistry.activity import SIZE_HYDROGEN, SIZE_HYDROXIDE, ActivityModel
-from reconcile.chemistry.balance import Activity, activity, weights
+from reconcile.chemistry.balance import Activity, activity, free_ions, weights
 from reconcile.chemistry.composition import Chunk, Contents, FormTable, Padding
 from reconcile.chemistry.temperature import LN10, Solvent
 from reconcile.chemistry.water import DENSITY_20C, ZERO_CELSIUS, co2_solubility
@@ -81,9 +81,8 @@ def slopes(
     JCGM 100:2008, section 5.1 (sensitivity coefficients); implicit function theorem.
     """
     act = activity(chunk, model, strength)
-    h = np.exp(LN10 * (act.hydrogen - ph))
-    oh = chunk.kw * np.exp(LN10 * (act.hydroxide + ph))
-    found = _fractions(chunk, act, ph)
+    h, oh, raised = free_ions(chunk, act, ph)
+    found = _fractions(chunk, act, ph, raised)
 
     by_i, by_t, by_c = _activity_slopes(chunk, model, water, strength, h, oh, found)
     f_ph, s_ph = -(h + oh), oh - h
@@ -113,10 +112,11 @@ def slopes(
     degree = np.zeros((len(chunk), len(chunk.slots)))
     degree_acid = np.full(degree.shape, -1, np.intp)
     for number, (slot, x) in enumerate(zip(chunk.slots, found, strict=True)):
-        steps = np.where(slot.acid >= 0, acids.steps[slot.acid], 1)
+        has = slot.acid < len(acids.names)
+        steps = np.append(acids.steps, 1).take(slot.acid)
         whole = np.where(x.closed > 0.0, 1.0, sum(x.f, np.zeros_like(ph)))
         degree[:, number] = x.lost / whole / steps
-        degree_acid[:, number] = slot.acid
+        degree_acid[:, number] = np.where(has, slot.acid, -1)
     return Slopes(
         d_temperature,
         on_charge * by_c[0] + on_squares * by_c[1],
@@ -130,10 +130,10 @@ def slopes(
     )
 
 
-def _fractions(chunk: Chunk, act: Activity, ph: FloatArray) -> list[_Found]:
+def _fractions(chunk: Chunk, act: Activity, ph: FloatArray, raised: FloatArray) -> list[_Found]:
     out = []
     for i, slot in enumerate(chunk.slots):
-        some = weights(slot, ph, act, i)
+        some = weights(slot, ph, act, raised, i)
         whole = np.ones_like(ph)
         for w in some:
             whole += w
@@ -218,6 +218,7 @@ def _constants(
     d_temperature = np.zeros(len(chunk))
     kelvin = water.temperature_c + ZERO_CELSIUS
     cell = 0
+    which_constant = acids.by_step[3]
     for slot, x in zip(chunk.slots, found, strict=True):
         tail, tail_lost, tail_squares = (np.zeros(len(chunk)) for _ in range(3))
         for step in range(len(slot.k), 0, -1):
@@ -234,7 +235,7 @@ def _constants(
                 )
             )
             has = slot.k[step - 1] > 0.0
-            q = np.where(has, acids.first[slot.acid] + step - 1, -1)
+            q = which_constant[step - 1].take(slot.acid)
             value[:, cell + step - 1] = slope
             which[:, cell + step - 1] = q
             d_temperature += np.where(has, slope * (acids.r[q] / kelvin - acids.q[q] / kelvin**2), 0.0)
@@ -256,7 +257,7 @@ def _entries(
     effect = np.zeros((m, len(padding.columns) + 1))  # of one mol/kg of each acid; the last column is for none
     everyone = np.arange(m)
     for slot, x in zip(chunk.slots, found, strict=True):
-        column = np.where(slot.acid >= 0, padding.place[slot.acid], len(padding.columns))
+        column = padding.place.take(slot.acid)
         free: BoolArray = x.closed > 0.0
         effect[everyone, column] = np.where(free, on_charge * (slot.charge - x.lost) + on_squares * x.squares, 0.0)
     effect[:, -1] = 0.0
@@ -265,6 +266,6 @@ def _entries(
     per_mole = on_charge[row] * forms.charge[form] + on_squares[row] * forms.square[form]
     for w in range(len(forms.acid)):
         acid = forms.acid[w][form]
-        column = np.where(acid >= 0, padding.place[acid], len(padding.columns))
+        column = padding.place[acid]  # -1, for none, finds the last place, which is that of none
         per_mole = per_mole + forms.units[w][form] * effect[row, column]
     return contents.amount[entry] * per_mole

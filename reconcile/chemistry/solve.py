@@ -5,15 +5,17 @@ from __future__ import annotations
 import numpy as np
 
 from reconcile.chemistry.activity import ActivityModel
-from reconcile.chemistry.balance import activity, balance, charge_only
+from reconcile.chemistry.balance import AtStrength, balance
 from reconcile.chemistry.composition import Chunk
+from reconcile.chemistry.temperature import LN10
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 
 PH_LOW, PH_HIGH = -1.0, 15.0  # first bracket; the last resort searches further
 WIDE_LOW, WIDE_HIGH = -4.0, 19.0
-HALVINGS = 4
+HALVINGS = 5
+FIXED_STEPS = 1
 STEPS = 30
-TOLERANCE = 1e-6  # of the last step: Newton doubles the digits, so that what is left is about 1e-12
+TOLERANCE = 3e-6  # of the last step: Newton doubles the digits, so that what is left is about 1e-11
 TOLERANCE_SIZED = 1e-10  # where the slopes are only nearly exact, each step gains two digits or so
 LEAST_STRENGTH = 1e-9  # mol/kg; pure water at 0 °C has 3e-8
 
@@ -75,25 +77,27 @@ def solve(chunk: Chunk, model: ActivityModel) -> tuple[FloatArray, FloatArray, B
 
 
 def _start(chunk: Chunk, model: ActivityModel) -> tuple[FloatArray, FloatArray]:
-    """A pH within half a unit, at the ionic strength that the strong ions and their counter-ions alone would give."""
+    """A pH near the answer, at the ionic strength that the strong ions and their counter-ions alone would give."""
     strength = 0.5 * (chunk.square + np.abs(chunk.strong)) + 1e-7
-    act = activity(chunk, model, strength)
-    low, width = np.full(len(chunk), PH_LOW), PH_HIGH - PH_LOW
+    fixed = AtStrength(chunk, model, strength)
+    width = 0.5 * (PH_HIGH - PH_LOW)
+    middle = np.full(len(chunk), PH_LOW + width)
     for _ in range(HALVINGS):
         width *= 0.5
-        low = np.where(charge_only(chunk, act, low + width) > 0.0, low + width, low)
-    ph = low + 0.5 * width
-    found = strength - balance(chunk, model, ph, strength).strength
-    return ph, np.maximum(found, LEAST_STRENGTH)
+        middle += np.copysign(width, fixed.excess(middle))
+    for _ in range(FIXED_STEPS):
+        step, strength = fixed.newton(middle)
+        middle += np.clip(step, -width, width)
+    return middle, np.maximum(strength, LEAST_STRENGTH)
 
 
 def _ph_at(chunk: Chunk, model: ActivityModel, strength: FloatArray) -> FloatArray:
     """pH that closes the charge balance at a given ionic strength, by halving."""
-    act = activity(chunk, model, strength)
+    fixed = AtStrength(chunk, model, strength)
     low, high = np.full(len(chunk), WIDE_LOW), np.full(len(chunk), WIDE_HIGH)
     for _ in range(56):
         middle = 0.5 * (low + high)
-        above = charge_only(chunk, act, middle) > 0.0
+        above = fixed.excess(middle) > 0.0
         low, high = np.where(above, middle, low), np.where(above, high, middle)
     return np.asarray(0.5 * (low + high))
 

@@ -1,7 +1,6 @@
-"""Liquid water at 0.1 MPa: density, static permittivity and ionization constant, each with its slope in temperature.
+"""Liquid water at one atmosphere: density, permittivity and ionization constant, each with its slope in temperature.
 
-Kelvin appears here and in temperature.py alone; every function takes °C. The difference between 0.1 MPa and one
-atmosphere (0.101325 MPa) changes the density by 6e-7 of itself and is neglected.
+Kelvin appears here and in temperature.py alone; every function takes °C.
 """
 
 from __future__ import annotations
@@ -12,9 +11,6 @@ from reconcile.records.arrays import FloatArray
 
 ZERO_CELSIUS = 273.15
 LOW_C, HIGH_C = 0.0, 100.0  # range in which every equation of this file holds
-DENSITY_20C = 0.9982071505706533
-"""Density of water at 20 °C [kg/L], by `density`; amounts by volume are at 20 °C unless the record says otherwise."""
-
 # IAPWS SR6-08, table 3: volume at 0.1 MPa
 _A5 = 1.93763157e-2
 _A = ((4, 6.74458446e3), (5, -2.22521604e5), (7, 1.00231247e8), (8, -1.63552118e9), (9, 8.32299658e9))
@@ -26,6 +22,7 @@ _B = (
     (5, 3.38713507e-2),
     (6, -1.19946761e-2),
 )
+_COMPRESSIBILITY = 4.59e-4  # 1/MPa, at 20 °C by SR6-08; 4.1e-4 to 5.1e-4 between 0 and 100 °C
 _GAS_CONSTANT_WATER = 0.46151805  # kJ/(kg K)
 _E = ((-43.7527, -0.05), (299.504, -1.47), (-399.364, -2.11), (221.327, -2.31))
 
@@ -38,7 +35,7 @@ _SITES = 6
 
 
 def density(temperature_c: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Density of liquid water at 0.1 MPa and its slope.
+    """Density of liquid water at 0.101325 MPa and its slope.
 
     Parameters
     ----------
@@ -53,7 +50,7 @@ def density(temperature_c: FloatArray) -> tuple[FloatArray, FloatArray]:
     Notes
     -----
     v = R T_R / p0 (a5 + sum a_i alpha^n_i + sum b_i beta^m_i), alpha = 10 K / (593 K - T), beta = 10 K / (T - 232 K).
-    Valid from -20 to 110 °C; within 1e-6 of IAPWS-95.
+    Valid from -20 to 110 °C; the step from p0 = 0.1 MPa to one atmosphere is made with the compressibility at 20 °C.
 
     References
     ----------
@@ -64,18 +61,23 @@ def density(temperature_c: FloatArray) -> tuple[FloatArray, FloatArray]:
     beta = 10.0 / (kelvin - 232.0)
     volume = np.full_like(kelvin, _A5)
     slope = np.zeros_like(kelvin)
-    for n, a in _A:
-        term = a * alpha**n
-        volume += term
-        slope += n * alpha * term
-    for m, b in _B:
-        term = b * beta**m
-        volume += term
-        slope -= m * beta * term
+    for base, terms, sign in ((alpha, _A, 1.0), (beta, _B, -1.0)):
+        power, reached = base, 1
+        for n, coefficient in terms:
+            while reached < n:  # by multiplication: a fraction of the cost of a power, for many temperatures
+                power, reached = power * base, reached + 1
+            term = coefficient * power
+            volume += term
+            slope += sign * n * base * term
     scale = _GAS_CONSTANT_WATER * 10.0 / 0.1 / 1000.0 * 1000.0  # L/kg
     volume *= scale
     slope *= scale / 10.0
-    return 1.0 / volume, -slope / volume**2
+    squeezed = 1.0 + _COMPRESSIBILITY * (0.101325 - 0.1)
+    return squeezed / volume, -squeezed * slope / volume**2
+
+
+DENSITY_20C = float(density(np.array(20.0))[0])
+"""Density of water at 20 °C [kg/L]; amounts by volume are at 20 °C unless the record says otherwise."""
 
 
 def permittivity(temperature_c: FloatArray) -> tuple[FloatArray, FloatArray]:
@@ -100,7 +102,8 @@ def permittivity(temperature_c: FloatArray) -> tuple[FloatArray, FloatArray]:
     IAPWS SR6-08(2011), equation 9 and table 8.
     """
     ratio = (np.asarray(temperature_c, float) + ZERO_CELSIUS) / 300.0
-    terms = [(a * ratio**b, b) for a, b in _E]
+    log = np.log(ratio)
+    terms = [(a * np.exp(b * log), b) for a, b in _E]
     value = sum((t for t, _ in terms), np.zeros_like(ratio))
     slope = sum((t * b for t, b in terms), np.zeros_like(ratio)) / (300.0 * ratio)
     return value, slope
@@ -132,7 +135,7 @@ def pkw(temperature_c: FloatArray) -> tuple[FloatArray, FloatArray]:
     d, d_slope = density(temperature_c)
     kelvin = np.asarray(temperature_c, float) + ZERO_CELSIUS
     inverse = 1.0 / kelvin
-    cube = d ** (2.0 / 3.0)
+    cube = np.cbrt(d) ** 2
     q = d * np.exp(_ALPHA[0] + _ALPHA[1] * inverse + _ALPHA[2] * cube * inverse**2)
     q_slope = q * (
         d_slope / d - _ALPHA[1] * inverse**2 + _ALPHA[2] * inverse**2 * cube * (2.0 / 3.0 * d_slope / d - 2.0 * inverse)

@@ -5,17 +5,18 @@ from __future__ import annotations
 from collections import Counter
 from dataclasses import dataclass
 
-from reconcile.records.results import Audit
+from reconcile.records.results import Audit, Finding
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.plain import plain
 from reconcile.reporter.words import (
     STATUSES,
+    brief_since,
     counted,
+    interval,
     kind_words,
     listed,
     moment,
-    since_words,
-    size_words,
+    quantity,
     subject_words,
     title,
 )
@@ -78,15 +79,22 @@ def _stands_out(audit: Audit) -> str:
         silence = "No fault is supported by the readings; smaller ones than the smallest detectable would not be seen."
         return f"{silence} {left}" if outstanding else silence
     named = [
-        f"{plain(f.id)} {title(f)[0].lower()}{title(f)[1:]}"
-        + (f", {size_words(f)}" if f.estimate is not None else "")
-        + (f", {since_words(f)}" if f.since is not None else "")
+        ", ".join(filter(None, (f"{plain(f.id)} {_lower(title(f))}", _size(f), brief_since(f))))
         for f in audit.findings[:MOST_NAMED]
     ]
     more = len(audit.findings) - MOST_NAMED
     text = f"{counted(len(audit.findings), 'finding')}. {'; '.join(named)}"
     text += f"; and {more} more." if more > 0 else "."
     return f"{text} {left}" if outstanding else text
+
+
+def _lower(text: str) -> str:
+    return text[:1].lower() + text[1:]
+
+
+def _size(finding: Finding) -> str:
+    between = interval(finding)
+    return quantity(finding) + (f" ({between})" if between else "")
 
 
 def _read_next(audit: Audit) -> str:
@@ -132,5 +140,9 @@ def _complete(audit: Audit) -> str:
         return f"{text}. Nothing was left out."
     share = 100 * rows["set_aside"] / max(rows["read"], 1)
     causes = Counter(s.code for s in audit.records.set_aside)
-    words = [f"{code.replace('-', ' ')} ({n:,})" for code, n in causes.most_common()]
+    words = [f"{_cause(code)} ({n:,})" for code, n in causes.most_common()]
     return f"{text} ({share:.1f} %): {listed(words, 5)}. Each is listed with its reason."
+
+
+def _cause(code: str) -> str:
+    return " ".join("pH" if word == "ph" else word for word in code.split("-"))

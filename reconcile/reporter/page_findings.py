@@ -13,10 +13,12 @@ from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.page_tables import Cell, Row, View, anchor, row_id, shown_rows
 from reconcile.reporter.plain import plain
 from reconcile.reporter.words import (
+    brief_since,
     certainty_words,
     counted,
     explains_words,
     half_up,
+    interval,
     listed,
     minus,
     quantity,
@@ -79,9 +81,12 @@ def sections(audit: Audit, lookups: Lookups, drawn: list[Drawn]) -> list[Section
 def _section(
     audit: Audit, lookups: Lookups, finding: Finding, index: int, own: Picture | None, on_page: set[int]
 ) -> Section:
-    facts = [("How large", size_words(finding)), ("Since when", since_words(finding))]
-    explains = explains_words(finding.would_explain)
-    if explains:
+    facts = [("How large", size_words(finding))]
+    when = since_words(finding)
+    if when:
+        facts.append(("Since when", when))
+    explains = explains_words(finding)
+    if explains and finding.estimate is not None:
         facts.append(("Would explain it", explains))
     if finding.also:
         facts.append(("The same for pH", listed([plain(a) for a in finding.also], 8)))
@@ -107,7 +112,8 @@ def _section(
 
 def _row_words(audit: Audit, lookups: Lookups, i: int) -> str:
     place = audit.records.readings.row[i]
-    return f"row {int(place)}" + (f" ({lookups.batch[i]})" if lookups.batch[i] else "")
+    name = str(lookups.batch[i])
+    return f"row {int(place)}" + (f" ({name if len(name) <= 24 else name[:23] + '…'})" if name else "")
 
 
 def _rivals(finding: Finding, name: str) -> View | None:
@@ -116,9 +122,9 @@ def _rivals(finding: Finding, name: str) -> View | None:
     rows = []
     for rival in finding.rivals[:8]:
         behind = finding.log_likelihood_gain - rival.log_likelihood_gain
-        explains = explains_words(rival.would_explain)
+        explains = explains_words(rival)
         also = f" (the same for pH: {listed([plain(a) for a in rival.also], 4)})" if rival.also else ""
-        size = quantity(rival.estimate, rival.unit) if rival.estimate is not None else "–"
+        size = quantity(rival) if rival.estimate is not None else "–"
         rows.append(
             Row(
                 "",
@@ -127,7 +133,7 @@ def _rivals(finding: Finding, name: str) -> View | None:
                     Cell(title(rival)),
                     Cell(size, "n"),
                     Cell(f"{explains}{also}" or "–"),
-                    Cell(since_words(rival)),
+                    Cell(since_words(rival) or "–"),
                     Cell(minus(half_up(behind, 1)), "n"),
                 ],
             )
@@ -200,8 +206,9 @@ def overview(audit: Audit) -> View | None:
                 [
                     Cell(ident, "", link),
                     Cell(title(finding)),
-                    Cell(size_words(finding) if finding.estimate is not None else "–"),
-                    Cell(since_words(finding)),
+                    Cell(quantity(finding) or "–", "s"),
+                    Cell(interval(finding) or "–", "s"),
+                    Cell(brief_since(finding) or "–", "s"),
                     Cell(f"{len(finding.readings):,}", "n"),
                     Cell(f"{len(finding.impact):,}", "n"),
                     Cell(listed([title(r) for r in finding.rivals], 3) or "–"),
@@ -212,9 +219,10 @@ def overview(audit: Audit) -> View | None:
         ("Finding", ""),
         ("What", ""),
         ("How large", ""),
+        ("95 % interval", ""),
         ("When", ""),
         ("Readings", "n"),
         ("Limits concerned", "n"),
         ("What else it could be", ""),
     ]
-    return View("findings-table", "Findings, most supported first", headings, rows, tool=len(rows) > 8)
+    return View("findings-table", "Findings, most supported first", headings, rows, tool=len(rows) > 8, captioned=True)

@@ -97,7 +97,7 @@ def sheets_view(audit: Audit) -> View:
         ("Rows", ""),
         ("Headings not read", ""),
     ]
-    return View("sheets", "How the files were understood", headings, rows, tool=False)
+    return View("sheets", "How the files were understood", headings, rows, tool=False, captioned=True)
 
 
 def notes(audit: Audit) -> tuple[list[str], int]:

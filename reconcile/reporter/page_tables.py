@@ -11,8 +11,8 @@ import numpy as np
 
 from reconcile.records.arrays import IntArray
 from reconcile.records.results import Audit, Finding
-from reconcile.reporter import tables
 from reconcile.reporter.lookups import Lookups
+from reconcile.reporter.plain import plain
 from reconcile.reporter.tables import Column, Table
 from reconcile.reporter.words import STATUSES, half_up, minus, moment, signed, significant
 
@@ -20,6 +20,7 @@ MOST_RESIDUALS = 2000
 MOST_SET_ASIDE = 500
 MOST_OTHER = 400
 LONGEST_CELL = 400
+SHORT = 18
 
 
 @dataclass(frozen=True)
@@ -42,7 +43,12 @@ class Row:
 
 @dataclass(frozen=True)
 class View:
-    """A table of the page. note says what is left out, "" when nothing is; tool: worth sorting and filtering."""
+    """A table of the page.
+
+    note : says what is left out, "" when nothing is
+    tool : worth sorting and filtering
+    captioned : its caption is shown; otherwise the heading above says it, and the caption is for those who listen
+    """
 
     id: str
     caption: str
@@ -50,6 +56,7 @@ class View:
     rows: Sequence[Row]
     note: str = ""
     tool: bool = True
+    captioned: bool = False
 
 
 def anchor(finding: Finding, index: int) -> str:
@@ -85,6 +92,11 @@ def css_of(column: Column) -> str:
     return "long" if column.width >= 40 else ""
 
 
+def short(text: str) -> str:
+    """Class of a text cell that is not broken over lines."""
+    return "s" if len(text) <= SHORT else ""
+
+
 def view(
     table: Table,
     table_id: str,
@@ -98,17 +110,18 @@ def view(
 ) -> View:
     """A table as a view.
 
-    keys : columns to show, all when None
+    keys : columns to show, in this order; all when None
     cells : called with column, row and text; may give another cell for it
     """
-    columns = [c for c in table.columns if keys is None or c.key in keys]
+    by_key = {c.key: c for c in table.columns}
+    columns = [by_key[k] for k in (by_key if keys is None else keys)]
     values = {c.key: table.data[c.key] for c in columns}
     rows = []
     for i in range(len(table)):
         line = []
         for column in columns:
             text = cell_text(column, values[column.key][i], table.places(column, i))
-            line.append(cells(column, i, text) or Cell(text, css_of(column)))
+            line.append(cells(column, i, text) or Cell(text, css_of(column) or short(text)))
         rows.append(Row(ids(i), table.is_flagged(i), line))
     return View(table_id, caption, [(c.heading, css_of(c)) for c in columns], rows, note, tool)
 
@@ -121,9 +134,10 @@ def capped(table: Table, table_id: str, caption: str, rest: str, most: int = MOS
     return view(table.rows(np.arange(most)), table_id, caption, note=note)
 
 
-ALWAYS = (
-    "row", "batch", "read_at", "meter", "temperature_C", "pH_observed", "pH_predicted", "u_residual", "residual", "z",
-    "status", "explained_by",
+ORDER = (
+    "source", "sheet", "row", "batch", "status", "explained_by", "read_at", "meter", "probe", "stage", "temperature_C",
+    "pH_observed", "pH_predicted", "residual", "u_residual", "z", "low_limit", "high_limit", "pH_calculated",
+    "standing",
 )  # fmt: skip
 WHERE_SAID = ("source", "sheet", "probe", "stage", "low_limit", "high_limit", "pH_calculated", "standing")
 """Shown on the page only where they tell rows apart; residuals.csv holds every column."""
@@ -142,7 +156,7 @@ def residual_view(audit: Audit, lookups: Lookups, residuals: Table, targets: dic
     """
     order = shown_rows(lookups)
     table = residuals.rows(order)
-    keys = [k for k in (c.key for c in table.columns) if k in ALWAYS or (k in WHERE_SAID and _tells(table, k))]
+    keys = [k for k in ORDER if k not in WHERE_SAID or _tells(table, k)]
 
     def cell(column: Column, _row: int, text: str) -> Cell | None:
         if column.key == "status":
@@ -163,15 +177,37 @@ def residual_view(audit: Audit, lookups: Lookups, residuals: Table, targets: dic
 
 
 def _tells(table: Table, key: str) -> bool:
-    values = table.data[key]
-    array = np.asarray(values)
-    if array.dtype.kind == "f":
-        return bool(np.isfinite(array).any())
-    different = set(array.tolist())
-    return len(different) > 1 or (key in ("probe", "stage") and bool(different - {""}))
+    values = np.asarray(table.data[key])
+    if values.dtype.kind == "f":
+        return bool(np.isfinite(values).any())
+    return len(set(values.tolist())) > 1
 
 
 def set_aside_view(audit: Audit) -> View:
-    """Rows set aside, each with its reason."""
-    table = tables.set_aside(audit)
-    return capped(table, "set-aside", "Rows set aside", "set_aside.csv holds all.", MOST_SET_ASIDE)
+    """Rows set aside: where, why, and what to do; the cell that caused it where that is another place."""
+    aside = audit.records.set_aside
+    rows = []
+    for one in aside[:MOST_SET_ASIDE]:
+        elsewhere = (one.cause.file, one.cause.sheet, one.cause.row) != (one.place.file, one.place.sheet, one.place.row)
+        names = [
+            f"{what} {plain(n)}" for what, n in (("batch", one.batch), ("meter", one.meter), ("lot", one.lot)) if n
+        ]
+        rows.append(
+            Row(
+                "",
+                False,
+                [
+                    Cell(plain(one.place.words())),
+                    Cell(", ".join(names)),
+                    Cell(plain(one.cause.words() if elsewhere else f"cell {one.cause.cell}")),
+                    Cell(plain(one.read)[:LONGEST_CELL]),
+                    Cell(plain(one.reason), "long"),
+                    Cell(plain(one.advice), "long"),
+                ],
+            )
+        )
+    headings = [("Row", ""), ("Names", ""), ("Cause", ""), ("What was read", ""), ("Reason", "long"),
+                ("What to do", "long")]  # fmt: skip
+    left = len(aside) - len(rows)
+    note = f"Shown are the first {len(rows):,} of {len(aside):,} rows; set_aside.csv holds all." if left else ""
+    return View("set-aside", "Rows set aside", headings, rows, note, tool=len(rows) > 8)

@@ -42,6 +42,7 @@ def stocks(audit: Audit) -> list[Stock]:
         form = records.forms[form_index]
         hazard = by_lot.get((lot, form.name)) or by_substance.get(form.name)
         words, gas = (hazard.words, hazard.gas_with_acid) if hazard else (form.hazard, form.gas_with_acid)
+        words = "" if words == NO_HAZARD_WORD else words
         found.append(Stock(plain(lot), plain(form.name), index, plain(words), plain(gas)))
 
     for index, (lot, form) in enumerate(zip(records.lots.name.tolist(), records.lots.form.tolist(), strict=True)):

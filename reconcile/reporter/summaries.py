@@ -114,7 +114,7 @@ def findings(audit: Audit) -> Table:
                 unit_words(f.unit),
                 interval(f),
                 since_words(f),
-                explains_words(f.would_explain),
+                explains_words(f),
                 len(f.readings),
                 len(f.impact),
                 float(f.log_likelihood_gain),

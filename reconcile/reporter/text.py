@@ -8,7 +8,7 @@ from reconcile.reporter.gist import gist
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.plain import plain
 from reconcile.reporter.stocks import stocks
-from reconcile.reporter.words import counted, listed, since_words, size_words, title
+from reconcile.reporter.words import brief_since, counted, listed, size_words, title
 
 MOST_FINDINGS = 12
 MOST_LOTS = 4
@@ -23,8 +23,9 @@ def finding_lines(audit: Audit) -> list[str]:
     """One line a finding: id, what, how large, since when, number of rivals; at most twelve."""
     lines = []
     for finding in audit.findings[:MOST_FINDINGS]:
-        rivals = f"; {counted(len(finding.rivals), 'rival')}" if finding.rivals else ""
-        lines.append(f"{plain(finding.id)}  {title(finding)}, {size_words(finding)}, {since_words(finding)}{rivals}")
+        rivals = counted(len(finding.rivals), "rival") if finding.rivals else ""
+        parts = (title(finding), size_words(finding), brief_since(finding), rivals)
+        lines.append(f"{plain(finding.id)}  {', '.join(filter(None, parts))}")
     more = len(audit.findings) - MOST_FINDINGS
     return [*lines, f"and {counted(more, 'more finding')} in report.html"] if more > 0 else lines
 

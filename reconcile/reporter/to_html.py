@@ -4,11 +4,12 @@ from __future__ import annotations
 
 import base64
 import hashlib
+import re
 from functools import cache
 from importlib.resources import files
 
 from jinja2 import Environment, PackageLoader, StrictUndefined
-from markupsafe import Markup
+from markupsafe import Markup, escape
 
 from reconcile import __version__
 from reconcile.records.results import Audit
@@ -23,10 +24,21 @@ from reconcile.reporter.plain import plain
 from reconcile.reporter.tables import Table
 from reconcile.reporter.words import STATUS_MEANINGS, STATUSES
 
+_UNBROKEN = re.compile(r"\d{4}-\d\d-\d\d(?: \d\d:\d\d)?|[+−]?\d[\d,.]*(?: (?:%|pH|mL|°C))")
+
+
+def prose(text: str) -> Markup:
+    """Text escaped, its dates and quantities kept on one line."""
+    parts, end = [], 0
+    for found in _UNBROKEN.finditer(text):
+        parts += [escape(text[end : found.start()]), Markup('<span class="s">{}</span>').format(found.group())]
+        end = found.end()
+    return Markup("").join([*parts, escape(text[end:])])
+
 
 @cache
 def _environment() -> Environment:
-    return Environment(
+    made = Environment(
         loader=PackageLoader("reconcile.reporter"),
         autoescape=True,
         undefined=StrictUndefined,
@@ -34,6 +46,8 @@ def _environment() -> Environment:
         lstrip_blocks=True,
         keep_trailing_newline=True,
     )
+    made.filters["prose"] = prose
+    return made
 
 
 def _asset(name: str) -> str:

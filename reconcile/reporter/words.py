@@ -23,7 +23,7 @@ KINDS: Mapping[str, str] = {
     "probe_matrix": "error in one kind of solution",
     "calibration_buffer": "wrong calibration buffer",
     "lot_strength": "strength",
-    "lot_identity": "identity",
+    "lot_identity": "another substance",
     "batch_preparation": "preparation",
     "recipe_slip": "recipe slip",
     "reading_slip": "reading slip",
@@ -53,6 +53,8 @@ STATUS_MEANINGS: Mapping[str, str] = {
     "void": "marked void in the record; kept and shown, no evidence",
     "not_solved": "no prediction was reached",
 }
+TIMELESS = ("reading", "batch", "acid")
+"""Subjects of which "throughout the record" would say nothing."""
 MINUS = "−"
 
 
@@ -128,51 +130,68 @@ def unit_words(unit: str) -> str:
     return "" if unit in ("", "-", "1") else plain(unit)
 
 
-def quantity(value: float | None, unit: str) -> str:
-    """A size with its unit: differences in pH with sign and three decimals, factors with three."""
-    if value is None or not math.isfinite(value):
-        return "no size"
-    name = unit_words(unit)
-    if name == "factor" or not name:
-        return f"a factor of {half_up(value, 3)}"
-    digits = half_up(value, 3) if abs(value) >= 0.01 else significant(value, 2)
-    return f"{signed(digits) if name.startswith('pH') else minus(digits)} {name}"
+def _decimals(finding: Finding) -> int:
+    """Digits after the point that the interval deserves: two of its width, and three at least for a pH."""
+    if finding.interval95 is None:
+        return 3
+    width = abs(finding.interval95[1] - finding.interval95[0])
+    if not math.isfinite(width) or width <= 0:
+        return 3
+    digits = min(max(math.ceil(-math.log10(width)) + 1, 0), 6)
+    return max(digits, 3) if finding.unit in ("pH", "factor") else digits
+
+
+def _is_difference(unit: str) -> bool:
+    return unit.startswith("p")  # pH, pH/day, pH per pH, pKa
+
+
+def _number(value: float, finding: Finding) -> str:
+    text = half_up(value, _decimals(finding))
+    return signed(text) if _is_difference(finding.unit) else minus(text)
+
+
+def quantity(finding: Finding) -> str:
+    """An estimate with its unit: differences with their sign, as many decimals as the interval deserves."""
+    if finding.estimate is None or not math.isfinite(finding.estimate):
+        return explains_words(finding)
+    name = unit_words(finding.unit)
+    if name in ("", "factor"):
+        return f"a factor of {_number(finding.estimate, finding)}"
+    return f"{_number(finding.estimate, finding)} {name}"
+
+
+def brief_since(finding: Finding) -> str:
+    """The day it began, without interval; "" for the whole record."""
+    return f"since {moment(finding.since)[:10]}" if finding.since is not None else ""
 
 
 def interval(finding: Finding) -> str:
     """The 95 % interval of an estimate; "" when there is none."""
     if finding.interval95 is None or not all(math.isfinite(v) for v in finding.interval95):
         return ""
-    low, high = finding.interval95
-    scale = max(abs(low), abs(high))
-    decimals = 3 if scale >= 0.01 else 6
-    ends = [half_up(v, decimals) for v in (low, high)]
-    if finding.unit.startswith("pH"):
-        ends = [signed(e) for e in ends]
-    return f"{minus(ends[0])} to {minus(ends[1])}"
+    return " to ".join(_number(v, finding) for v in finding.interval95)
 
 
 def size_words(finding: Finding) -> str:
-    """How large, with the interval."""
-    if finding.estimate is None:
-        return "no size is estimated for this kind"
+    """How large, with the interval; what would explain it where no size is estimated."""
     between = interval(finding)
-    return quantity(finding.estimate, finding.unit) + (f" (95 % interval {between})" if between else "")
+    return (quantity(finding) or "no size is estimated") + (f" (95 % interval {between})" if between else "")
 
 
 def since_words(finding: Finding) -> str:
-    """Since when, until when."""
-    if finding.since is None and finding.until is None:
-        return "throughout the record"
+    """Since when, until when; "" where time does not come into it."""
     words = []
     if finding.since is not None:
         words.append(f"since {moment(finding.since)}")
         if finding.since_interval95 is not None:
-            low, high = finding.since_interval95
-            words.append(f"(95 % interval {moment(low)} to {moment(high)})")
+            low, high = (moment(t) for t in finding.since_interval95)
+            if low != high:
+                words.append(f"(95 % interval {low} to {high})")
     if finding.until is not None:
         words.append(f"until {moment(finding.until)}")
-    return " ".join(words)
+    if words or finding.subject_type in TIMELESS:
+        return " ".join(words)
+    return "throughout the record"
 
 
 def chance(p: float) -> str:
@@ -196,17 +215,44 @@ def certainty_words(finding: Finding) -> str:
     return sure
 
 
-def explains_words(explains: Mapping[str, Any] | None) -> str:
-    """What would explain it, as "substance formic acid; factor 1.15"."""
-    if not explains:
+EXPLAINS: Mapping[str, str] = {
+    "substance": "{} in the bottle",
+    "factor": "a factor of {}",
+    "component": "in the amount of {}",
+    "total": "{} pH in all",
+    "offset": "an offset of {} pH",
+    "step": "a step of {} pH",
+    "span": "{} pH per pH",
+    "pivot": "about pH {}",
+    "pH": "pH {}",
+    "pKa_shift": "pKa shifted by {}",
+    "temperature": "compensation at {} °C",
+    "solutions": "in {}",
+}
+"""What would explain a finding, by the key of findings.json; other keys are written as they are."""
+DIFFERENCES = ("total", "offset", "step", "span", "pKa_shift")
+SAME_AS_ESTIMATE = ("offset", "step", "factor", "pKa_shift", "pH", "temperature")
+
+
+def explains_words(finding: Finding) -> str:
+    """What would explain it, where that says more than the estimate: "formic acid in the bottle"."""
+    explains = finding.would_explain or {}
+    if set(explains) <= set(SAME_AS_ESTIMATE) and len(explains) == 1 and finding.estimate is not None:
         return ""
-    return "; ".join(f"{plain(str(key)).replace('_', ' ')} {_value(value)}" for key, value in explains.items())
+    words = []
+    for key, value in explains.items():
+        text = _value(value, key in DIFFERENCES)
+        words.append(EXPLAINS[key].format(text) if key in EXPLAINS else f"{plain(str(key)).replace('_', ' ')} {text}")
+    return "; ".join(words)
 
 
-def _value(value: Any) -> str:
+def _value(value: Any, difference: bool) -> str:
+    if isinstance(value, (list, tuple)):
+        return listed([_value(v, difference) for v in value])
     if isinstance(value, bool) or not isinstance(value, (int, float)):
         return plain(str(value))
-    return minus(significant(float(value), 4))
+    text = f"{float(value):.4g}"
+    return signed(text) if difference else minus(text)
 
 
 def silence_words(silence: Silence) -> str:

@@ -9,9 +9,9 @@ import numpy as np
 from reconcile.chemistry.acids import AcidTable
 from reconcile.chemistry.activity import ActivityModel
 from reconcile.chemistry.composition import Contents, FormTable, pad
-from reconcile.chemistry.sensitivities import slopes
+from reconcile.chemistry.sensitivities import Slopes, slopes
 from reconcile.chemistry.solve import solve
-from reconcile.chemistry.temperature import Solvent, solvent
+from reconcile.chemistry.temperature import U_PKW, Solvent, solvent, spread_factors
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 
 CHUNK = 8192
@@ -32,7 +32,8 @@ class Answers:
     """What the engine found for n solutions; arrays (n,) unless said; NaN where not solved.
 
     ph, ionic_strength [mol/kg], solved
-    d_temperature [1/K], d_model, d_pkw, d_titrant [L/mol] : slopes of pH
+    d_temperature [1/K], d_model, d_titrant [L/mol] : slopes of pH
+    u_constants : share of the ionization constants and of pKw in the uncertainty [pH]
     entry : FloatArray (c,)      dpH/d ln(amount) of every contribution of the contents
     constants : Ragged           dpH/dpKa, columns are constants of the AcidTable
     degree : Ragged              protons lost over those that can be lost, columns are acids of the AcidTable
@@ -43,8 +44,8 @@ class Answers:
     solved: BoolArray
     d_temperature: FloatArray
     d_model: FloatArray
-    d_pkw: FloatArray
     d_titrant: FloatArray
+    u_constants: FloatArray
     entry: FloatArray
     constants: Ragged
     degree: Ragged
@@ -94,6 +95,21 @@ class _Rows:
         return Ragged(start, column, value)
 
 
+def _u_of_constants(some: Slopes, acids: AcidTable, water: Solvent) -> FloatArray:
+    """Root-sum-square of dpH/dpKa times u(pKa) at temperature, over all constants and pKw [pH] (m,).
+
+    Steps count as independent: published constants of one acid seldom come with their covariance.
+    """
+    by_dh, by_dcp = spread_factors(water.temperature_c)
+    at, value = some.constant, some.constant_value  # the index -1, for none, meets a slope of 0
+    u2 = (acids.u**2)[at]
+    u2 += (acids.u_dh**2)[at] * (by_dh**2)[:, None]
+    u2 += (acids.u_dcp**2)[at] * (by_dcp**2)[:, None]
+    u2 *= value
+    u2 *= value
+    return np.asarray(np.sqrt(u2.sum(axis=1) + (some.d_pkw * U_PKW) ** 2))
+
+
 def run(contents: Contents, forms: FormTable, acids: AcidTable, model: ActivityModel) -> Answers:
     """pH, ionic strength and slopes of n solutions.
 
@@ -117,7 +133,9 @@ def run(contents: Contents, forms: FormTable, acids: AcidTable, model: ActivityM
     temperatures, which = np.unique(contents.temperature_c, return_inverse=True)
     water = solvent(temperatures)
     order = _order(contents, forms, acids)
-    out = {name: np.full(n, np.nan) for name in ("ph", "ionic_strength", "temperature", "model", "pkw", "titrant")}
+    out = {
+        name: np.full(n, np.nan) for name in ("ph", "ionic_strength", "temperature", "model", "titrant", "constants")
+    }
     solved = np.zeros(n, bool)
     entry = np.zeros(len(contents.form))
     constants, degree = _Rows(), _Rows()
@@ -129,9 +147,10 @@ def run(contents: Contents, forms: FormTable, acids: AcidTable, model: ActivityM
         some = slopes(chunk, padding, contents, forms, acids, here, model, ph, strength)
         out["ph"][rows], out["ionic_strength"][rows], solved[rows] = ph, strength, fine
         out["temperature"][rows], out["model"][rows] = some.d_temperature, some.d_model
-        out["pkw"][rows], out["titrant"][rows] = some.d_pkw, some.d_titrant
+        out["titrant"][rows] = some.d_titrant
         entry[padding.entry] = some.entry
         constants.add(rows, some.constant, some.constant_value)
+        out["constants"][rows] = _u_of_constants(some, acids, here)
         degree.add(rows, some.degree_acid, some.degree)
     return Answers(
         out["ph"],
@@ -139,8 +158,8 @@ def run(contents: Contents, forms: FormTable, acids: AcidTable, model: ActivityM
         solved,
         out["temperature"],
         out["model"],
-        out["pkw"],
         out["titrant"],
+        out["constants"],
         entry,
         constants.ragged(n),
         degree.ragged(n),

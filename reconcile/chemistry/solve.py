@@ -7,7 +7,6 @@ import numpy as np
 from reconcile.chemistry.activity import ActivityModel
 from reconcile.chemistry.balance import AtStrength, balance
 from reconcile.chemistry.composition import Chunk
-from reconcile.chemistry.temperature import LN10
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 
 PH_LOW, PH_HIGH = -1.0, 15.0  # first bracket; the last resort searches further
@@ -139,7 +138,11 @@ def rows_alike(keys: FloatArray) -> tuple[IntArray, IntArray]:
             mixed[begin : begin + rows] = ((part ^ (part >> np.uint64(31))) * odd).sum(axis=1, dtype=np.uint64)
     _, first, inverse = np.unique(mixed, return_index=True, return_inverse=True)
     if len(first) == n:
-        return first, inverse
+        return np.arange(n), np.arange(n)
+    order = np.argsort(first)  # sets in the order in which they first appear, so that neighbours stay neighbours
+    first, renamed = first[order], np.empty(len(first), np.intp)
+    renamed[order] = np.arange(len(first))
+    inverse = renamed[inverse]
     apart = [
         begin + np.flatnonzero(np.any(bits[begin : begin + rows] != bits[first[inverse[begin : begin + rows]]], axis=1))
         for begin in range(0, n, rows)

@@ -116,6 +116,26 @@ U_KNOWN_DCP = 20.0  # J/(K mol)
 U_PKW = 0.005  # half the uncertainty that IAPWS R11-07 gives for pKw of the liquid, 0.01
 
 
+def spread_factors(temperature_c: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """What an error of the enthalpy and one of the heat capacity do to a pKa at temperature.
+
+    Parameters
+    ----------
+    temperature_c : ndarray (n,)
+        Temperature [°C].
+
+    Returns
+    -------
+    tuple of ndarray (n,)
+        dpKa/d(dH) [mol/kJ] and -dpKa/d(dCp) [K mol/J]; both 0 at 25 °C.
+    """
+    kelvin = temperature_c + ZERO_CELSIUS
+    scale = 1.0 / (GAS_CONSTANT * LN10)
+    by_dh = 1000.0 * scale * (1.0 / kelvin - 1.0 / T_REFERENCE)
+    by_dcp = scale * (np.log(kelvin / T_REFERENCE) + T_REFERENCE / kelvin - 1.0)
+    return by_dh, by_dcp
+
+
 def u_at(u_25c: FloatArray, u_dh: FloatArray, u_dcp: FloatArray, temperature_c: FloatArray) -> FloatArray:
     """Standard uncertainty of a pKa at temperature, from those at 25 °C, of the enthalpy and of the heat capacity.
 
@@ -130,9 +150,10 @@ def u_at(u_25c: FloatArray, u_dh: FloatArray, u_dcp: FloatArray, temperature_c: 
     -------
     ndarray (t,)
         Standard uncertainty [-]; equal to u_25c at 25 °C, growing per kelvin away from it.
+
+    References
+    ----------
+    JCGM 100:2008, equation 10.
     """
-    kelvin = temperature_c + ZERO_CELSIUS
-    scale = 1.0 / (GAS_CONSTANT * LN10)
-    by_dh = 1000.0 * scale * (1.0 / T_REFERENCE - 1.0 / kelvin) * u_dh
-    by_dcp = scale * (np.log(kelvin / T_REFERENCE) + T_REFERENCE / kelvin - 1.0) * u_dcp
-    return np.asarray(np.sqrt(u_25c**2 + by_dh**2 + by_dcp**2), float)
+    by_dh, by_dcp = spread_factors(temperature_c)
+    return np.asarray(np.sqrt(u_25c**2 + (by_dh * u_dh) ** 2 + (by_dcp * u_dcp) ** 2), float)

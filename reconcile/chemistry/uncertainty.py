@@ -6,9 +6,6 @@ from collections.abc import Mapping
 
 import numpy as np
 
-from reconcile.chemistry.acids import AcidTable
-from reconcile.chemistry.engine import Answers
-from reconcile.chemistry.temperature import U_PKW, u_at
 from reconcile.records.arrays import FloatArray, IntArray
 
 ROOT3 = float(np.sqrt(3.0))
@@ -19,20 +16,6 @@ SOURCES = ("strength", "taking", "temperature", "pKa", "activity model", "certif
 def rows_of(start: IntArray) -> IntArray:
     """Row of every entry of a list whose row i runs from start[i] to start[i + 1]."""
     return np.repeat(np.arange(len(start) - 1), np.diff(start))
-
-
-def of_constants(answers: Answers, acids: AcidTable, temperature_c: FloatArray) -> FloatArray:
-    """Share of the ionization constants and of pKw [pH] (n,): root-sum-square of dpH/dpKa times u(pKa) at temperature.
-
-    Steps count as independent: published constants of one acid seldom come with their covariance.
-    """
-    n = len(temperature_c)
-    part = answers.constants
-    row = rows_of(part.start)
-    q = part.column
-    u = u_at(acids.u[q], acids.u_dh[q], acids.u_dcp[q], temperature_c[row])
-    total = np.bincount(row, (part.value * u) ** 2, n) + (answers.d_pkw * U_PKW) ** 2
-    return np.asarray(np.sqrt(total), float)
 
 
 def of_independent(start: IntArray, slope: FloatArray, u: FloatArray) -> FloatArray:

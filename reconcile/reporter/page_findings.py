@@ -10,7 +10,7 @@ import numpy as np
 from reconcile.records.results import Audit, Finding
 from reconcile.reporter.drawn import Drawn
 from reconcile.reporter.lookups import Lookups
-from reconcile.reporter.page_tables import Cell, Row, View, anchor, row_id, shown_rows
+from reconcile.reporter.page_tables import Cell, Row, View, anchor, row_id, shown_rows, text_cell
 from reconcile.reporter.plain import plain
 from reconcile.reporter.words import (
     brief_since,
@@ -130,10 +130,10 @@ def _rivals(finding: Finding, name: str) -> View | None:
                 "",
                 False,
                 [
-                    Cell(title(rival)),
+                    text_cell(title(rival)),
                     Cell(size, "n"),
-                    Cell(f"{explains}{also}" or "–"),
-                    Cell(since_words(rival) or "–"),
+                    text_cell(f"{explains}{also}" or "–"),
+                    text_cell(since_words(rival) or "–"),
                     Cell(minus(half_up(behind, 1)), "n"),
                 ],
             )
@@ -167,8 +167,8 @@ def _impact(audit: Audit, lookups: Lookups, finding: Finding, name: str, on_page
                 False,
                 [
                     Cell(f"row {int(readings.row[i])}", "", target),
-                    Cell(str(lookups.batch[i])),
-                    Cell(str(lookups.meter[i])),
+                    text_cell(str(lookups.batch[i])),
+                    text_cell(str(lookups.meter[i])),
                     Cell(minus(half_up(float(readings["ph"][i]), int(lookups.decimals[i]))), "n"),
                     Cell(digits(readings["low_limit"][i], i), "n"),
                     Cell(digits(readings["high_limit"][i], i), "n"),
@@ -205,13 +205,13 @@ def overview(audit: Audit) -> View | None:
                 False,
                 [
                     Cell(ident, "", link),
-                    Cell(title(finding)),
+                    text_cell(title(finding)),
                     Cell(quantity(finding) or "–", "s"),
                     Cell(interval(finding) or "–", "s"),
                     Cell(brief_since(finding) or "–", "s"),
                     Cell(f"{len(finding.readings):,}", "n"),
                     Cell(f"{len(finding.impact):,}", "n"),
-                    Cell(listed([title(r) for r in finding.rivals], 3) or "–"),
+                    text_cell(listed([title(r) for r in finding.rivals], 3) or "–"),
                 ],
             )
         )

@@ -7,7 +7,7 @@ import numpy as np
 from reconcile.records.completeness import shortfalls
 from reconcile.records.results import Audit
 from reconcile.reporter.lookups import Lookups
-from reconcile.reporter.page_tables import Cell, Row, View
+from reconcile.reporter.page_tables import Cell, Row, View, text_cell
 from reconcile.reporter.plain import plain
 from reconcile.reporter.words import counted, half_up, listed, minus, moment
 
@@ -80,12 +80,12 @@ def sheets_view(audit: Audit) -> View:
                 "",
                 False,
                 [
-                    Cell(plain(sheet.file)),
-                    Cell(plain(sheet.sheet) or "–"),
-                    Cell(plain(sheet.kind) or "not recognised, not read"),
+                    text_cell(plain(sheet.file)),
+                    text_cell(plain(sheet.sheet) or "–"),
+                    text_cell(plain(sheet.kind) or "not recognised, not read"),
                     Cell(str(sheet.heading_row) if sheet.heading_row else "–", "n"),
-                    Cell(found or "–"),
-                    Cell(listed([plain(h) for h in sheet.ignored], 8) or "–"),
+                    text_cell(found or "–"),
+                    text_cell(listed([plain(h) for h in sheet.ignored], 8) or "–"),
                 ],
             )
         )

@@ -93,8 +93,13 @@ def css_of(column: Column) -> str:
 
 
 def short(text: str) -> str:
-    """Class of a text cell that is not broken over lines."""
-    return "s" if len(text) <= SHORT else ""
+    """Class of a text cell: not broken over lines when short, never squeezed to a column of letters when long."""
+    return "s" if len(text) <= SHORT else "w"
+
+
+def text_cell(text: str) -> Cell:
+    """A cell of text, set by its length."""
+    return Cell(text, short(text))
 
 
 def view(
@@ -114,29 +119,40 @@ def view(
     cells : called with column, row and text; may give another cell for it
     """
     by_key = {c.key: c for c in table.columns}
-    columns = [by_key[k] for k in (by_key if keys is None else keys)]
-    values = {c.key: table.data[c.key] for c in columns}
-    rows = []
-    for i in range(len(table)):
-        line = []
-        for column in columns:
-            text = cell_text(column, values[column.key][i], table.places(column, i))
-            line.append(cells(column, i, text) or Cell(text, css_of(column) or short(text)))
-        rows.append(Row(ids(i), table.is_flagged(i), line))
-    return View(table_id, caption, [(c.heading, css_of(c)) for c in columns], rows, note, tool)
+    columns, texts = [], []
+    for column in (by_key[k] for k in (by_key if keys is None else keys)):
+        values = table.data[column.key]
+        found = [cell_text(column, values[i], table.places(column, i)) for i in range(len(table))]
+        if any(found) or not found:  # a column without any entry says nothing
+            columns.append(column)
+            texts.append(found)
+    rows = [
+        Row(
+            ids(i),
+            table.is_flagged(i),
+            [
+                cells(column, i, found[i]) or Cell(found[i], css_of(column) or short(found[i]))
+                for column, found in zip(columns, texts, strict=True)
+            ],
+        )
+        for i in range(len(table))
+    ]
+    return View(table_id, caption, [(c.brief or c.heading, css_of(c)) for c in columns], rows, note, tool)
 
 
-def capped(table: Table, table_id: str, caption: str, rest: str, most: int = MOST_OTHER) -> View:
+def capped(
+    table: Table, table_id: str, caption: str, rest: str, most: int = MOST_OTHER, keys: Sequence[str] | None = None
+) -> View:
     """A table cut to its first rows; the note says where the rest is."""
     if len(table) <= most:
-        return view(table, table_id, caption, tool=len(table) > 8)
+        return view(table, table_id, caption, keys=keys, tool=len(table) > 8)
     note = f"Shown are the first {most:,} of {len(table):,} rows; {rest}"
-    return view(table.rows(np.arange(most)), table_id, caption, note=note)
+    return view(table.rows(np.arange(most)), table_id, caption, keys=keys, note=note)
 
 
 ORDER = (
     "source", "sheet", "row", "batch", "status", "explained_by", "read_at", "meter", "probe", "stage", "temperature_C",
-    "pH_observed", "pH_predicted", "residual", "u_residual", "z", "low_limit", "high_limit", "pH_calculated",
+    "pH_observed", "pH_predicted", "residual", "z", "low_limit", "high_limit", "pH_calculated",
     "standing",
 )  # fmt: skip
 WHERE_SAID = ("source", "sheet", "probe", "stage", "low_limit", "high_limit", "pH_calculated", "standing")
@@ -197,10 +213,10 @@ def set_aside_view(audit: Audit) -> View:
                 "",
                 False,
                 [
-                    Cell(plain(one.place.words())),
-                    Cell(", ".join(names)),
-                    Cell(plain(one.cause.words() if elsewhere else f"cell {one.cause.cell}")),
-                    Cell(plain(one.read)[:LONGEST_CELL]),
+                    text_cell(plain(one.place.words())),
+                    text_cell(", ".join(names)),
+                    text_cell(plain(one.cause.words() if elsewhere else f"cell {one.cause.cell}")),
+                    text_cell(plain(one.read)[:LONGEST_CELL]),
                     Cell(plain(one.reason), "long"),
                     Cell(plain(one.advice), "long"),
                 ],

@@ -23,6 +23,7 @@ class Column:
     decimals : digits after the point when shown; None shows four significant digits
     signed : a difference, shown with its sign
     width : of the workbook's column, in characters
+    brief : heading where room is short (the page), "" for the same
     """
 
     key: str
@@ -31,6 +32,7 @@ class Column:
     decimals: int | None = None
     signed: bool = False
     width: int = 0
+    brief: str = ""
 
     @property
     def characters(self) -> int:
@@ -102,7 +104,7 @@ RESIDUALS: tuple[Column, ...] = (
     Column("meter", "Meter", width=10),
     Column("probe", "Probe", width=10),
     Column("stage", "Stage", width=12),
-    Column("temperature_C", "Temperature (°C)", "number", 1),
+    Column("temperature_C", "Temperature (°C)", "number", 1, brief="t (°C)"),
     Column("pH_observed", "pH observed", "number", 2),
     Column("pH_predicted", "pH predicted", "number", 3),
     Column("u_predicted", "u of prediction (pH)", "number", 3),

@@ -24,6 +24,9 @@ from reconcile.reporter.plain import plain
 from reconcile.reporter.tables import Table
 from reconcile.reporter.words import STATUS_MEANINGS, STATUSES
 
+STOCKS_ON_PAGE = (
+    "lot", "substance", "hazard", "strength", "u_strength", "readings", "mean_residual", "smallest_factor", "findings",
+)  # fmt: skip
 _UNBROKEN = re.compile(r"\d{4}-\d\d-\d\d(?: \d\d:\d\d)?|[+−]?\d[\d,.]*(?: (?:%|pH|mL|°C))")
 
 
@@ -100,6 +103,7 @@ def page(audit: Audit, lookups: Lookups, residuals: Table, drawn: list[Drawn]) -
             "stocks",
             "Stocks, with the hazard words recorded for them",
             "residuals.xlsx holds all, with their hazard words.",
+            keys=STOCKS_ON_PAGE,
         ),
         method=method.paragraphs(audit),
         settings=view(summaries.settings(audit), "settings", "Settings", tool=False),

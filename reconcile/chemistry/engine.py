@@ -51,7 +51,7 @@ class Answers:
     degree: Ragged
 
 
-def _order(contents: Contents, forms: FormTable, acids: AcidTable) -> IntArray:
+def alike_together(contents: Contents, forms: FormTable, acids: AcidTable) -> IntArray:
     """Rows in an order that puts alike shapes together: by most steps, then by number of acids brought."""
     n = len(contents)
     if n <= CHUNK:
@@ -68,7 +68,8 @@ def _order(contents: Contents, forms: FormTable, acids: AcidTable) -> IntArray:
     return np.argsort(key, kind="stable")
 
 
-def _at(water: Solvent, rows: IntArray) -> Solvent:
+def water_at(water: Solvent, rows: IntArray) -> Solvent:
+    """The entries of a Solvent named by `rows`, in that order."""
     return Solvent(*(getattr(water, name)[rows] for name in Solvent.__dataclass_fields__))
 
 
@@ -132,7 +133,7 @@ def run(contents: Contents, forms: FormTable, acids: AcidTable, model: ActivityM
     n = len(contents)
     temperatures, which = np.unique(contents.temperature_c, return_inverse=True)
     water = solvent(temperatures)
-    order = _order(contents, forms, acids)
+    order = alike_together(contents, forms, acids)
     out = {
         name: np.full(n, np.nan) for name in ("ph", "ionic_strength", "temperature", "model", "titrant", "constants")
     }
@@ -141,7 +142,7 @@ def run(contents: Contents, forms: FormTable, acids: AcidTable, model: ActivityM
     constants, degree = _Rows(), _Rows()
     for begin in range(0, n, CHUNK):
         rows = order[begin : begin + CHUNK]
-        here = _at(water, which[rows])
+        here = water_at(water, which[rows])
         chunk, padding = pad(contents, rows, forms, acids, here, model.sized)
         ph, strength, fine = solve(chunk, model)
         some = slopes(chunk, padding, contents, forms, acids, here, model, ph, strength)

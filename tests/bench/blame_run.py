@@ -14,7 +14,6 @@ os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")
 
 from reconcile.auditor.audit import audit
 from reconcile.chemistry.predict import predict_records, repredictor
-
 from tests.simulated.matching import match, says
 from tests.simulated.planted import Planted
 from tests.simulated.simulator import simulate
@@ -32,7 +31,7 @@ class Case:
 
 @dataclass(frozen=True)
 class Told:
-    """One finding in brief: kind, subject, estimate, interval, gain, p, and the kinds and subjects of its rivals."""
+    """One finding in brief; rivals as (kind, subject), component as far as it names one."""
 
     kind: str
     subject: str
@@ -41,6 +40,7 @@ class Told:
     gain: float
     p: float
     rivals: tuple[tuple[str, str], ...]
+    component: str
 
 
 @dataclass(frozen=True)
@@ -58,8 +58,17 @@ class Result:
 
 def _told(finding: Any) -> Told:
     rivals = tuple((r.kind, str(r.subject)) for r in finding.rivals)
-    gain, p = finding.log_likelihood_gain, finding.family_wise_p
-    return Told(finding.kind, str(finding.subject), finding.estimate, finding.interval95, gain, p, rivals)
+    component = str((finding.would_explain or {}).get("component", ""))
+    return Told(
+        finding.kind,
+        str(finding.subject),
+        finding.estimate,
+        finding.interval95,
+        finding.log_likelihood_gain,
+        finding.family_wise_p,
+        rivals,
+        component,
+    )
 
 
 def run(case: Case) -> Result:

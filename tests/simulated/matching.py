@@ -85,8 +85,8 @@ def _same_substance(planted: Planted, finding: Finding) -> bool:
 
 def _same_subject(planted: Planted, finding: Finding) -> bool:
     if planted.subject_type == "acid":
-        first = finding.subject if isinstance(finding.subject, str) else finding.subject[0]
-        return first == planted.subject or first.startswith(f"{planted.subject} ")
+        step = planted.detail["step"]
+        return finding.subject in (planted.subject, f"{planted.subject}, step {step}", (planted.subject, str(step)))
     if isinstance(planted.subject, tuple):
         return not isinstance(finding.subject, str) and [str(s) for s in finding.subject] == list(planted.subject)
     return finding.subject == planted.subject

@@ -1,5 +1,7 @@
 """Which finding counts as naming what was planted."""
 
+import dataclasses
+
 import numpy as np
 
 from reconcile.records.results import Finding
@@ -72,6 +74,13 @@ def test_a_hydrate_in_a_lot_is_a_strength_when_the_interval_holds_its_factor():
     hydrate = planted("lot_hydrate", "A", substance="sodium acetate trihydrate", factor=0.603)
     assert outcomes([finding("lot_strength", "A", interval=(0.58, 0.62))], hydrate)[0] == ["named"]
     assert outcomes([finding("lot_strength", "A", interval=(0.7, 0.8))], hydrate)[0] == ["missed"]
+
+
+def test_a_constant_is_named_with_its_step():
+    constant = planted("acid_constant", "citric acid", step=2)
+    constant = dataclasses.replace(constant, subject_type="acid")
+    assert outcomes([finding("acid_constant", "citric acid, step 2")], constant)[0] == ["named"]
+    assert outcomes([finding("acid_constant", "citric acid, step 3")], constant)[0] == ["missed"]
 
 
 def test_every_fault_says_what_names_it():

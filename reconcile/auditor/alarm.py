@@ -7,15 +7,17 @@ import zlib
 import numpy as np
 from scipy import linalg, sparse, special, stats
 
-from reconcile.auditor.mixed import Model
+from reconcile.auditor.components import Model
 from reconcile.auditor.scoring import Candidate, Pool
 from reconcile.records.arrays import BoolArray, FloatArray
 
 PRIOR_DF = 14.0
 """Degrees of freedom behind a stated accuracy or tolerance: reliable to about 19 % (JCGM 100:2008, G.4.2, eq. G.3)."""
-ESTIMATED_DF = 14.0
-"""Degrees of freedom taken for session and preparation spreads, which few readings settle."""
+CONSTANT_DF = 7.0
+"""The same behind a tabulated constant's uncertainty, which is reliable to about 27 %; tables differ by more than u."""
 DRAWS = 1000
+CERTAIN = 1e-6
+"""Family-wise probability under which the plain Bonferroni bound is given instead of a simulated one."""
 
 
 def single_p(model: Model, x: sparse.csc_array, z: FloatArray) -> FloatArray:
@@ -33,8 +35,11 @@ def single_p(model: Model, x: sparse.csc_array, z: FloatArray) -> FloatArray:
     share = noise.sum(axis=0)
     concentration = (noise**2).sum(axis=0) / np.maximum(share, 1e-12) ** 2
     known = np.asarray(layout.z.T @ a) ** 2 * model.g[:, None]
+    df_known = np.full(len(model.g), PRIOR_DF)
+    constants = layout.effects["constant"]
+    df_known[constants.first : constants.last] = CONSTANT_DF
     kurtosis = 6.0 * share**2 / max(model.components.noise_df - 4.0, 2.0)
-    kurtosis += 6.0 * (known**2).sum(axis=0) / (PRIOR_DF - 4.0)
+    kurtosis += 6.0 * (known**2 / (df_known - 4.0)[:, None]).sum(axis=0)
     if np.isfinite(model.components.tail):
         kurtosis += 6.0 / max(model.components.tail - 4.0, 0.25) * share**2 * concentration
     df = 4.0 + 6.0 / np.maximum(kurtosis, 1e-6)
@@ -46,7 +51,13 @@ def equivalent_z(p: float) -> float:
     return float(stats.norm.isf(max(p, 1e-300) / 2.0))
 
 
-def block_p(correlation: FloatArray, one_sided: BoolArray, threshold: float, seed: int) -> float:
+def root_of(correlation: FloatArray) -> FloatArray:
+    """A square root of a correlation matrix, for draws with that correlation."""
+    values, vectors = linalg.eigh(correlation)
+    return np.asarray(vectors * np.sqrt(np.maximum(values, 0.0)))
+
+
+def block_p(correlation: FloatArray, root: FloatArray, one_sided: BoolArray, threshold: float, seed: int) -> float:
     """Probability that any of j correlated normal scores passes a threshold, by importance sampling.
 
     One score is drawn beyond the threshold, the others given it; the mean of 1/(number beyond) times the sum of the
@@ -55,7 +66,7 @@ def block_p(correlation: FloatArray, one_sided: BoolArray, threshold: float, see
 
     Parameters
     ----------
-    correlation : ndarray (j, j)
+    correlation, root : ndarray (j, j)    and its square root
     one_sided : ndarray (j,)      True where only positive scores count
     """
     weight = np.where(one_sided, 0.5, 1.0)
@@ -63,8 +74,6 @@ def block_p(correlation: FloatArray, one_sided: BoolArray, threshold: float, see
     j = len(correlation)
     if j == 1 or single < 1e-290:
         return min(1.0, single * float(weight.sum()))
-    values, vectors = linalg.eigh(correlation)
-    root = vectors * np.sqrt(np.maximum(values, 0.0))
     rng = np.random.default_rng(seed)
     pick = rng.choice(j, size=DRAWS, p=weight / weight.sum())
     size = -special.ndtri(special.ndtr(-threshold) * rng.uniform(size=DRAWS))
@@ -81,18 +90,18 @@ class Alarm:
 
     def __init__(self, pool: Pool, model: Model) -> None:
         self.pool, self.model = pool, model
-        self._correlation: dict[int, tuple[FloatArray, BoolArray]] = {}
+        self._correlation: dict[int, tuple[FloatArray, FloatArray, BoolArray]] = {}
 
-    def block(self, block: int) -> tuple[FloatArray, BoolArray]:
-        """Correlation of the scores of one block, and which of them count on one side only."""
+    def block(self, block: int) -> tuple[FloatArray, FloatArray, BoolArray]:
+        """Correlation of the scores of one block, its root, and which of them count on one side only."""
         if block not in self._correlation:
             members = np.flatnonzero((self.pool.block == block) & (self.pool.df == 1))
             x = self.pool.x[:, members]
             covariance = np.asarray(x.T @ self.model.project(x.toarray()))
             sd = np.sqrt(np.maximum(np.diag(covariance), 1e-12))
             good = np.diag(covariance) > 1e-9
-            correlation = covariance / np.outer(sd, sd)
-            self._correlation[block] = (correlation[np.ix_(good, good)], self.pool.point[members][good])
+            correlation = (covariance / np.outer(sd, sd))[np.ix_(good, good)]
+            self._correlation[block] = (correlation, root_of(correlation), self.pool.point[members][good])
         return self._correlation[block]
 
     def family_wise(self, candidate: Candidate, k: int, gain: float, p_single: float, limit: float = 1.0) -> float:
@@ -103,10 +112,13 @@ class Alarm:
         trials = self.pool.trials(k)
         if candidate.df > 1:
             return min(1.0, trials * float(stats.chi2.sf(2.0 * gain, candidate.df)))
-        if p_single * trials > limit:
+        size = int(np.count_nonzero(self.pool.block == self.pool.block[k]))
+        if p_single * trials > limit or size == 1:
             return min(1.0, p_single * trials)
-        correlation, one_sided = self.block(int(self.pool.block[k]))
+        if p_single * trials * size < CERTAIN:
+            return p_single * trials * size
+        correlation, root, one_sided = self.block(int(self.pool.block[k]))
         if not len(correlation):
             return min(1.0, p_single * trials)
         seed = zlib.crc32(candidate.alarm_class.encode())
-        return min(1.0, trials * block_p(correlation, one_sided, equivalent_z(p_single), seed))
+        return min(1.0, trials * block_p(correlation, root, one_sided, equivalent_z(p_single), seed))

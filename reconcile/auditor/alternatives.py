@@ -56,7 +56,7 @@ def alternatives(label: Form, at_equal_mass: bool, known_acids: frozenset[str], 
             classes.setdefault(key, []).append(form)
     result = []
     for forms in classes.values():
-        ranked = sorted(forms, key=lambda f: (_likeness(f, label), f.name), reverse=True)
+        ranked = sorted(forms, key=lambda f: (_likeness(f, label), f.name), reverse=True) if len(forms) > 1 else forms
         best = ranked[0]
         if best.acts_as == label.acts_as and (best.hydrate_of or label.hydrate_of):
             relation = "hydrate"

@@ -6,10 +6,10 @@ from collections.abc import Callable, Sequence
 
 import numpy as np
 
+from reconcile.auditor.components import Components, Model, noise_of
 from reconcile.auditor.faults import KINDS
 from reconcile.auditor.findings import build, with_impact
 from reconcile.auditor.layout import Layout, build_layout, evidence
-from reconcile.auditor.mixed import Components, Model, noise_of
 from reconcile.auditor.proposals import FaultKind
 from reconcile.auditor.retrial import Retrial
 from reconcile.auditor.search import Search

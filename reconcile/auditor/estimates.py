@@ -9,12 +9,14 @@ from reconcile.auditor.alarm import Alarm, block_p
 from reconcile.records.arrays import BoolArray, FloatArray
 
 
-def critical_z(correlation: FloatArray, one_sided: BoolArray, trials: int, rate: float, seed: int) -> float:
+def critical_z(
+    correlation: FloatArray, root: FloatArray, one_sided: BoolArray, trials: int, rate: float, seed: int
+) -> float:
     """Score at which a block's family-wise probability equals the alarm rate."""
     low, high = 1.5, 9.0
 
     def excess(z: float) -> float:
-        return float(np.log(max(trials * block_p(correlation, one_sided, z, seed), 1e-300)) - np.log(rate))
+        return float(np.log(max(trials * block_p(correlation, root, one_sided, z, seed), 1e-300)) - np.log(rate))
 
     if excess(low) <= 0:
         return low
@@ -23,11 +25,11 @@ def critical_z(correlation: FloatArray, one_sided: BoolArray, trials: int, rate:
 
 def critical_score(alarm: Alarm, k: int, rate: float, seed: int) -> float:
     """Score that the block of candidate k had to pass."""
-    correlation, one_sided = alarm.block(int(alarm.pool.block[k]))
+    correlation, root, one_sided = alarm.block(int(alarm.pool.block[k]))
     trials = alarm.pool.trials(k)
     if not len(correlation):
         return float(stats.norm.isf(rate / trials / 2.0))
-    return critical_z(correlation, one_sided, trials, rate, seed)
+    return critical_z(correlation, root, one_sided, trials, rate, seed)
 
 
 def _tail_beyond(x: float, mean: float, cut: float) -> float:

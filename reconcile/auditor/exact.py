@@ -7,7 +7,7 @@ from collections.abc import Sequence
 import numpy as np
 from scipy import sparse
 
-from reconcile.auditor.mixed import Model
+from reconcile.auditor.components import Model
 from reconcile.auditor.proposals import Context, stack
 from reconcile.auditor.retrial import Supposed
 from reconcile.records.arrays import FloatArray, IntArray

@@ -11,9 +11,9 @@ import numpy as np
 from scipy import stats
 
 from reconcile.auditor.alarm import Alarm
+from reconcile.auditor.components import Model
 from reconcile.auditor.estimates import critical_score, given_selected
 from reconcile.auditor.layout import Layout
-from reconcile.auditor.mixed import Model
 from reconcile.auditor.scoring import Candidate, Pool, Scores
 from reconcile.auditor.search import Chosen, Search, State
 from reconcile.auditor.wording import sentence, short_name, since_words, support_words

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from scipy import sparse
@@ -83,6 +84,16 @@ class Layout:
 
     def __len__(self) -> int:
         return len(self.r)
+
+    @cached_property
+    def dense(self) -> FloatArray:
+        """z written out, (n, q); only for a short record."""
+        return np.asarray(self.z.toarray(), float)
+
+    @cached_property
+    def same_batch(self) -> BoolArray:
+        """True where two readings are of one batch, (n, n); only for a short record."""
+        return np.asarray(self.batch[:, None] == self.batch, bool)
 
     def own(self, sort: str, index: int) -> tuple[int, ...]:
         """Columns of the design that hold one subject's own prior; () when it has none."""

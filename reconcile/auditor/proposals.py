@@ -10,8 +10,8 @@ from typing import Any, Protocol
 import numpy as np
 from scipy import sparse
 
+from reconcile.auditor.components import Model
 from reconcile.auditor.layout import Layout
-from reconcile.auditor.mixed import Model
 from reconcile.auditor.retrial import Retrial
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 from reconcile.records.settings import Settings

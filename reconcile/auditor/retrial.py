@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
@@ -41,6 +42,8 @@ class Retrial:
     def __init__(self, layout: Layout, repredict: Repredict) -> None:
         self.layout, self.repredict = layout, repredict
         self._known: dict[Supposed, tuple[IntArray, FloatArray]] = {}
+        self.kept: dict[object, Any] = {}
+        """What fault kinds worked out once for this record, under keys of their own."""
         solutions = layout.records.solutions
         self._contributions_of = _groups(solutions.solution, len(solutions))
         self._rows_of = _groups(layout.solution, len(solutions))

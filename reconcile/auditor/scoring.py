@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 from scipy import sparse
 
-from reconcile.auditor.mixed import Model
+from reconcile.auditor.components import Model
 from reconcile.auditor.proposals import CLASSES, Context, FaultKind, Proposal, Told
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 

@@ -9,16 +9,19 @@ import numpy as np
 from scipy import sparse
 
 from reconcile.auditor.alarm import Alarm, single_p
+from reconcile.auditor.components import Components, Model
 from reconcile.auditor.layout import Layout
-from reconcile.auditor.mixed import Components, Model, estimate
+from reconcile.auditor.mixed import estimate, model_of
 from reconcile.auditor.proposals import Context, FaultKind
 from reconcile.auditor.retrial import Retrial
 from reconcile.auditor.scoring import Candidate, Pool, Scores, pool_of, score
-from reconcile.records.arrays import FloatArray
+from reconcile.records.arrays import BoolArray, FloatArray
 from reconcile.records.settings import Settings
 
 MOST_FINDINGS = 40
 SWAP_GAIN = 0.05
+RESTART_GAP, RESTART_SHARE = 8.0, 0.1
+"""How far below the chosen one, in log-likelihood or as a share of its gain, a rival may be to start anew from."""
 TRIED = 12
 """Candidates of each round whose family-wise probability is worked out, best first."""
 
@@ -69,7 +72,7 @@ class Search:
 
     def model(self, components: Components, candidates: Sequence[Candidate], own: tuple[int, ...] = ()) -> Model:
         fixed, r = self.fixed_and_rest(candidates)
-        return Model(self.layout, components, fixed, own, r)
+        return model_of(self.layout, components, fixed, own, r)
 
     def components(self, candidates: Sequence[Candidate], start: Components | None = None) -> Components:
         fixed, r = self.fixed_and_rest(candidates)
@@ -155,25 +158,42 @@ class Search:
             seen.add(key)
         return State(tuple(chosen), components)
 
+    @staticmethod
+    def overlaps(candidate: Candidate, rows: BoolArray) -> bool:
+        """True where a candidate touches any of the rows."""
+        return bool(rows[candidate.x.indices].any())
+
     def settle(self, chosen: list[Chosen], components: Components) -> tuple[list[Chosen], Components]:
-        """Rescore each chosen one beside the others: keep it, replace it by what serves better, or drop it."""
+        """Rescore each chosen one beside the others: keep it, replace it by what serves better, or drop it.
+
+        After the first round only those that share readings with what changed are looked at again; the last one was
+        just chosen beside all the others.
+        """
+        touched = np.zeros(len(self.layout), bool)
+        touched[chosen[-1].candidate.x.indices] = True
         for _ in range(4):
             changed = False
+            moved = np.zeros(len(self.layout), bool)
             for j in range(len(chosen) - 1, -1, -1):
+                if not self.overlaps(chosen[j].candidate, touched):
+                    continue
                 others = [c.candidate for i, c in enumerate(chosen) if i != j]
                 pool, model, scores = self.scored(components, others)
                 present = self.support(chosen[j].candidate, pool, model)
                 found = self.supported(pool, model, scores)
                 if found and found[0].marginal > present.marginal + SWAP_GAIN:
                     changed |= found[0].candidate.key != chosen[j].candidate.key
+                    moved[[*chosen[j].candidate.x.indices, *found[0].candidate.x.indices]] = True
                     chosen[j] = found[0]
                 elif present.p <= self.rate:
                     chosen[j] = present
                 else:
+                    moved[chosen[j].candidate.x.indices] = True
                     del chosen[j]
                     changed = True
             if not changed:
                 break
+            touched = moved
             components = self.components([c.candidate for c in chosen], components)
         return chosen, components
 
@@ -182,7 +202,7 @@ class Search:
         candidates = [c.candidate for c in chosen]
         _, r = self.fixed_and_rest([c for c in candidates if c.point])
         free = [c for c in candidates if not c.point]
-        model = Model(self.layout, components, None, (), r)
+        model = model_of(self.layout, components, None, (), r)
         value = -0.5 * float(r @ model.pr)
         if free:
             x = sparse.csc_array(sparse.hstack([c.x for c in free]))
@@ -225,7 +245,8 @@ class Search:
         rivals: list[Chosen] = []
         for found in self.supported(pool, model, scores):
             distinct = (found.candidate.kind, found.candidate.subject) != (mine.kind, mine.subject)
-            if distinct and all(found.candidate.subject != r.candidate.subject for r in rivals):
+            near = found.marginal > state.chosen[j].marginal - max(RESTART_GAP, RESTART_SHARE * state.chosen[j].gain)
+            if distinct and near and all(found.candidate.subject != r.candidate.subject for r in rivals):
                 rivals.append(found)
         return rivals[:2]
 

@@ -13,6 +13,9 @@ from reconcile.auditor.retrial import Supposed
 ROOM = 2.5
 """Score of a lot's common shift from which other contents are computed."""
 
+Meant = tuple[int, Alternative, float, float]
+"""Lot, content, log prior odds, and the factor of a hydrate."""
+
 
 def known_acids(context: Context) -> frozenset[str]:
     """Acids of the forms that the record names."""
@@ -37,34 +40,22 @@ class LotIdentity:
 
     def propose(self, context: Context) -> Proposal | None:
         layout = context.layout
-        records = layout.records
         odds = float(np.exp(context.settings["audit.known_acid_log_odds"]))
         acids = known_acids(context)
-        supposed: list[Supposed] = []
-        meant: list[tuple[int, Alternative, float, float]] = []
-        for position in lots_with_room(context):
-            lot = int(layout.lots_used[position])
-            label = records.forms[int(records.lots.form[lot])]
-            contributions = context.retrial.contributions_of_lot(lot)
-            weighed = bool(np.all(records.solutions.by_mass[list(contributions)]))
-            choices = alternatives(label, weighed, acids, odds)
-            total = sum(c.weight for c in choices)
-            for choice in choices:
-                supposed.append(Supposed(contributions, form=choice.form.name, at_equal_mass=weighed))
-                factor = label.molar_mass / choice.form.molar_mass if weighed else 1.0
-                meant.append((lot, choice, float(np.log(choice.weight / total)), factor))
-        kept, x = points(context, supposed)
-        if not kept:
+        blocks = [self.of_lot(context, position, acids, odds) for position in lots_with_room(context)]
+        meant = [m for told, _ in blocks for m in told]
+        if not meant:
             return None
+        x = sparse.csc_array(sparse.hstack([columns for _, columns in blocks]))
 
         def tell(k: int, a: float) -> Told:
-            _, choice, _, factor = meant[kept[k]]
+            _, choice, _, factor = meant[k]
             explains: dict[str, object] = {"substance": choice.form.name}
             if choice.relation == "hydrate":
                 explains["factor"] = factor
             return Told(None, "", explains, also=choice.also, detail=choice.relation)
 
-        subject = [str(records.lots.name[meant[i][0]]) for i in kept]
+        subject = [str(layout.records.lots.name[lot]) for lot, *_ in meant]
         return Proposal(
             self.name,
             self.alarm_class,
@@ -72,12 +63,41 @@ class LotIdentity:
             x,
             subject,
             subject,
-            np.ones(len(kept)),
-            np.array([meant[i][2] for i in kept]),
-            np.ones(len(kept), bool),
+            np.ones(len(meant)),
+            np.array([m[2] for m in meant]),
+            np.ones(len(meant), bool),
             tell,
-            same=[meant[i][1].form.name for i in kept],
+            same=[m[1].form.name for m in meant],
         )
+
+    def of_lot(
+        self, context: Context, position: int, acids: frozenset[str], odds: float
+    ) -> tuple[list[Meant], sparse.csc_array]:
+        """What one lot may hold, and the effect of each; worked out once a record."""
+        key = (self.name, position)
+        if key not in context.retrial.kept:
+            records = context.layout.records
+            lot = int(context.layout.lots_used[position])
+            label = records.forms[int(records.lots.form[lot])]
+            contributions = context.retrial.contributions_of_lot(lot)
+            weighed = bool(np.all(records.solutions.by_mass[list(contributions)]))
+            choices = alternatives(label, weighed, acids, odds)
+            total = sum(c.weight for c in choices)
+            kept, x = points(
+                context, [Supposed(contributions, form=c.form.name, at_equal_mass=weighed) for c in choices]
+            )
+            meant = [
+                (
+                    lot,
+                    choices[i],
+                    float(np.log(choices[i].weight / total)),
+                    label.molar_mass / choices[i].form.molar_mass if weighed else 1.0,
+                )
+                for i in kept
+            ]
+            context.retrial.kept[key] = (meant, x)
+        found: tuple[list[Meant], sparse.csc_array] = context.retrial.kept[key]
+        return found
 
 
 KIND = LotIdentity()

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
+from scipy import sparse
 
 from reconcile.auditor.alternatives import alternatives
 from reconcile.auditor.exact import points
@@ -43,19 +44,19 @@ class RecipeSlip:
     def propose(self, context: Context) -> Proposal | None:
         layout = context.layout
         room = batches_with_room(context)
-        meant = [
-            (batch, contribution, supposed, how)
+        blocks = [
+            (batch, contribution, *self.of_component(context, contribution))
             for batch, contribution, _, _ in components(context)
             if batch in room
-            for supposed, how in misreadings(context, contribution)
         ]
-        kept, x = points(context, [m[2] for m in meant])
-        if not kept:
+        meant = [(batch, contribution, *slip) for batch, contribution, slips, _ in blocks for slip in slips]
+        if not meant:
             return None
-        count = np.bincount([meant[i][0] for i in kept], minlength=len(layout.batches))
+        x = sparse.csc_array(sparse.hstack([columns for *_, columns in blocks]))
+        count = np.bincount([m[0] for m in meant], minlength=len(layout.batches))
 
         def tell(k: int, a: float) -> Told:
-            _, contribution, supposed, how = meant[kept[k]]
+            _, contribution, supposed, how = meant[k]
             name = component_name(context, contribution)
             explains: dict[str, object] = {"component": name, "slip": how}
             if supposed.form:
@@ -64,7 +65,7 @@ class RecipeSlip:
                 explains["factor"] = supposed.factor
             return Told(supposed.factor if not supposed.form else None, "factor", explains, detail=f"{name}: {how}")
 
-        batch = np.array([meant[i][0] for i in kept])
+        batch = np.array([m[0] for m in meant])
         subject = [layout.batches[b] for b in batch]
         return Proposal(
             self.name,
@@ -73,12 +74,22 @@ class RecipeSlip:
             x,
             subject,
             subject,
-            np.ones(len(kept)),
+            np.ones(len(meant)),
             -np.log(count[batch]) - np.log(2.0),
-            np.ones(len(kept), bool),
+            np.ones(len(meant), bool),
             tell,
-            same=[f"{component_name(context, meant[i][1])} {meant[i][3]} {meant[i][2].form}" for i in kept],
+            same=[f"{component_name(context, m[1])} {m[3]} {m[2].form}" for m in meant],
         )
+
+    def of_component(self, context: Context, contribution: int) -> tuple[list[tuple[Supposed, str]], sparse.csc_array]:
+        """Slips of one component that can be solved, and their effects; worked out once a record."""
+        key = (self.name, contribution)
+        if key not in context.retrial.kept:
+            slips = misreadings(context, contribution)
+            kept, x = points(context, [supposed for supposed, _ in slips])
+            context.retrial.kept[key] = ([slips[i] for i in kept], x)
+        found: tuple[list[tuple[Supposed, str]], sparse.csc_array] = context.retrial.kept[key]
+        return found
 
 
 KIND = RecipeSlip()

@@ -1,0 +1,78 @@
+"""Variance components, and what every model of the residuals offers."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from scipy import sparse
+
+from reconcile.auditor.layout import Layout
+from reconcile.records.arrays import FloatArray
+
+
+@dataclass(frozen=True)
+class Components:
+    """Variance components [pH^2; preparation relative^2].
+
+    noise : common reading variance; meter_ratio : FloatArray (meters,) a meter's own noise variance over it
+    session, preparation : variances; tail : degrees of freedom of the noise's tails (inf: normal)
+    noise_df : effective degrees of freedom behind `noise`
+    """
+
+    noise: float
+    meter_ratio: FloatArray
+    session: float
+    preparation: float
+    tail: float = np.inf
+    noise_df: float = np.inf
+
+
+def noise_of(layout: Layout, components: Components) -> FloatArray:
+    """Reading variance of each row [pH^2]."""
+    ratio = np.ones(len(layout))
+    known = layout.meter >= 0
+    ratio[known] = components.meter_ratio[layout.meter[known]]
+    return np.asarray(components.noise * ratio, float)
+
+
+class Model:
+    """One covariance V of the residuals, with fixed effects projected out: P = V^-1 less what they take up.
+
+    layout, components : what it was made of; r : residuals; g : prior variances of the columns of layout.z
+    noise, d : FloatArray (n,) reading variance, and all variance that a reading shares with no other [pH^2]
+    pr : FloatArray (n,) P r
+    """
+
+    pr: FloatArray
+
+    def __init__(
+        self, layout: Layout, components: Components, own_dropped: tuple[int, ...], r: FloatArray | None
+    ) -> None:
+        self.layout, self.components = layout, components
+        self.r = layout.r if r is None else r
+        self.noise = noise_of(layout, components)
+        self.d = self.noise + layout.other
+        self.g = np.where(np.isnan(layout.prior), components.session, layout.prior)
+        self.g[list(own_dropped)] = 0.0
+
+    def project(self, y: FloatArray) -> FloatArray:
+        """P y; y (n,) or (n, k)."""
+        raise NotImplementedError
+
+    def quadratic(self, x: sparse.csc_array) -> FloatArray:
+        """x' P x of each sparse column, FloatArray (k,)."""
+        raise NotImplementedError
+
+    def diagonal(self) -> FloatArray:
+        """Diagonal of P, FloatArray (n,)."""
+        return self.quadratic(sparse.csc_array(sparse.eye_array(len(self.layout))))
+
+    def batch_sd(self) -> FloatArray:
+        """Standard deviation that a reading shares with its batch [pH], FloatArray (n,)."""
+        return np.asarray(np.sqrt(self.components.preparation * self.layout.preparation**2 + self.layout.shared), float)
+
+    def variance(self) -> FloatArray:
+        """Diagonal of V [pH^2]: the full spread of each residual in a clean record."""
+        z2 = self.layout.z.multiply(self.layout.z)
+        return np.asarray(self.d + self.batch_sd() ** 2 + z2 @ self.g, float)

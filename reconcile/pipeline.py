@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import re
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
@@ -11,18 +10,21 @@ from typing import TYPE_CHECKING, Any, TypeAlias
 from reconcile.records.settings import Settings
 
 if TYPE_CHECKING:
-    from reconcile.chemistry.acids import Ionization
+    # each name said twice: the command line, which may not look into chemistry, takes these types from here
+    from reconcile.chemistry.library import LibraryAnswer as LibraryAnswer
+    from reconcile.chemistry.library import LibraryEntry as LibraryEntry
     from reconcile.records.book import BatchRecords
     from reconcile.records.parts import Composition, Part
     from reconcile.records.problems import Problem
     from reconcile.records.results import Audit, Constant, Prediction
-    from reconcile.records.substances import Form
 
 FilePath: TypeAlias = str | Path
 SettingsLike: TypeAlias = Settings | FilePath | Mapping[str, Mapping[str, Any]] | None
 """Settings, the path of a settings file, its sections as a dictionary, or None for the defaults."""
 ColumnsLike: TypeAlias = FilePath | Mapping[str, Mapping[str, Any]] | None
 """Path of a column map, or its content: kind of sheet -> heading as written -> field name."""
+_HEADINGS = ("file-no-table", "no-readings", "column-twice")
+"""Problems that a column map can mend."""
 Progress: TypeAlias = Callable[[str, float | None], None]
 """Told what is being done, and the share of the whole that is done, 0 to 1; None where no share can be told."""
 
@@ -66,11 +68,24 @@ def read(*paths: FilePath, settings: SettingsLike = None, columns: ColumnsLike =
     return read_books([Path(p) for p in paths], settings_of(settings), column_map)
 
 
-def write_columns(records: BatchRecords, path: FilePath) -> None:
-    """Write the beginning of a column map for a record; raises FileExistsError rather than replace a file."""
-    from reconcile.importer.toml_files import write_column_map
+def write_columns(path: FilePath, *files: FilePath, settings: SettingsLike = None, columns: ColumnsLike = None) -> None:
+    """Write a column map to complete: what each heading was taken for, or the headings where none was recognised.
 
-    write_column_map(records, Path(path))
+    Raises FileExistsError rather than replace a file, and InputProblems where a file cannot be read at all.
+    """
+    from reconcile.importer.begin_map import begun_map_text
+    from reconcile.importer.toml_files import column_map_text
+    from reconcile.records.problems import InputProblems
+
+    chosen = settings_of(settings)
+    try:
+        text = column_map_text(read(*files, settings=chosen, columns=columns))
+    except InputProblems as refused:
+        if any(problem.code not in _HEADINGS for problem in refused.problems):
+            raise
+        text = begun_map_text([Path(file) for file in files], chosen)
+    with Path(path).open("x", encoding="utf-8") as file:
+        file.write(text)
 
 
 def predict_records(records: BatchRecords, settings: SettingsLike = None) -> Prediction:
@@ -150,7 +165,6 @@ class PredictedParts:
 
 DEFAULT_TEMPERATURE_C = 25.0
 """Temperature of a prediction that names none [°C]: that of the library's constants."""
-_TEMPERATURE = re.compile(r"([+-]?\d+(?:\.\d+)?)\s*(?:(?:°|º|deg)?\s*C)?")
 
 
 def predict_parts(
@@ -232,71 +246,8 @@ def predict_composition(composition: Composition, at: float, settings: Settings)
     return PredictedParts(composition, prediction, settings)
 
 
-@dataclass(frozen=True)
-class LibraryEntry:
-    """One form of the library, with the ionization constants of every acid it brings."""
-
-    form: Form
-    constants: tuple[Ionization, ...]
-
-
-@dataclass(frozen=True)
-class LibraryAnswer:
-    """What the library holds on a word.
-
-    entries : the forms found, those of one acid side by side
-    several : True when the word itself may mean more than one of them
-    kin : names of the other forms of the same acid, where the word means one form
-    near : names that resemble a word on which nothing was found
-    """
-
-    entries: tuple[LibraryEntry, ...]
-    several: bool = False
-    kin: tuple[str, ...] = ()
-    near: tuple[str, ...] = ()
-
-
 def substances(word: str = "") -> LibraryAnswer:
-    """The library of substances, or what of it a word concerns.
+    """The library of substances, or what of it a word concerns: a name, synonym, formula, or a part of a name."""
+    from reconcile.chemistry.library import substances as concerned
 
-    word : a name, synonym or formula, or a part of a name; "" gives the whole library. The name of an acid brings
-        its salts along, after it.
-    """
-    from reconcile.chemistry.acids import acid_table
-    from reconcile.records.substances import catalogue, name_key
-
-    known, table = catalogue(), acid_table()
-    found = known.look_up(word) if word else None
-    key = name_key(word)
-    kin: list[Form] = []
-    if found is None:
-        forms = list(known.forms)
-    elif found.form:
-        own = found.form
-        kin = [f for f in known.forms if f is not own and own.acid and f.acid == own.acid]
-        forms = [own]
-        if name_key(own.acid) == key:
-            forms, kin = [own, *kin], []
-    elif found.several:
-        forms = list(found.several)
-    else:
-        forms = [f for f in known.forms if any(key in name_key(t) for t in (f.name, f.acid, *f.synonyms))]
-    return LibraryAnswer(
-        tuple(LibraryEntry(f, tuple(c for acid in f.acids for c in table.of(acid))) for f in forms),
-        several=bool(found and found.several),
-        kin=tuple(f.name for f in kin),
-        near=found.near if found and not forms else (),
-    )
-
-
-def temperature_of(text: str) -> float:
-    """A temperature in words, "20" or "20 °C", as a number [°C]; that of the library's constants for an empty text."""
-    from reconcile.records.places import Place
-    from reconcile.records.problems import InputProblems, Problem
-
-    if not text.strip():
-        return DEFAULT_TEMPERATURE_C
-    found = _TEMPERATURE.fullmatch(text.strip().replace("\u2212", "-"))
-    if not found:
-        raise InputProblems([Problem("at-unreadable", Place(""), text)])
-    return float(found.group(1))
+    return concerned(word)

@@ -17,6 +17,8 @@ from reconcile.records.settings import SettingsError
 
 SHOWN = 20
 """Problems printed before the rest is only counted."""
+WRITE_REPORTS = ("audit",)
+"""Commands that leave a whole report folder or nothing."""
 
 
 def _say(*lines: str) -> None:
@@ -42,7 +44,7 @@ class Edge(TyperGroup):
         except (typer.Exit, typer.Abort, BrokenPipeError):
             raise
         except KeyboardInterrupt:
-            _say("Interrupted; nothing was written.")
+            _say("Interrupted.")
             raise typer.Exit(INTERRUPTED) from None
         except Exception as error:
             if ctx.meta.get(DEBUG):
@@ -50,29 +52,30 @@ class Edge(TyperGroup):
             code, lines = _explained(error)
             if code is None:
                 raise
-            _say(*lines)
+            nothing = ["Nothing was written."] if code == REFUSED and ctx.invoked_subcommand in WRITE_REPORTS else []
+            _say(*lines, *nothing)
             raise typer.Exit(code) from None
 
 
 def _explained(error: Exception) -> tuple[int | None, list[str]]:
     """Exit code and message of an error; no code for the parser's own errors, which it prints itself."""
     if isinstance(error, InputProblems):
-        return REFUSED, [*_refusal(error.problems), "Nothing was written."]
+        return REFUSED, _refusal(error.problems)
     if isinstance(error, SettingsError):
-        return REFUSED, [f"{error}.", "Nothing was written."]
+        return REFUSED, [f"{error}."]
     if isinstance(error, FileExistsError):
         there = f"{error.filename} already exists; name another file" if error.filename else str(error)
         return USAGE, [f"{there}."]
     if isinstance(error, MemoryError):
-        return REFUSED, ["There is not enough memory for this record.", "Nothing was written."]
+        return REFUSED, ["There is not enough memory for this record."]
     if isinstance(error, OSError):
         where = f"{error.filename}: " if error.filename else ""
-        return REFUSED, [f"{where}{error.strerror or error}", "Nothing was written."]
+        return REFUSED, [f"{where}{error.strerror or error}"]
     if hasattr(error, "exit_code"):
         return None, []
     return REFUSED, [
         f"reconcile met an error of its own: {type(error).__name__}: {error}",
-        "Nothing was written. Run the same command with --debug to see where it arose.",
+        "Run the same command with --debug to see where it arose.",
     ]
 
 

@@ -46,8 +46,9 @@ def predict(
     """
     from reconcile import pipeline
     from reconcile.cli import show_prediction
+    from reconcile.records.parts import parse_temperature
 
-    temperature = pipeline.temperature_of(at)
+    temperature = parse_temperature(at) if at else pipeline.DEFAULT_TEMPERATURE_C
     predicted = pipeline.predict_parts(parts, to, temperature, settings, model)
     if json:
         from reconcile.cli.print_json import print_json

@@ -41,12 +41,12 @@ def read(
     from reconcile.cli.show import say
     from reconcile.records.completeness import shortfalls
 
+    if write_columns:
+        pipeline.write_columns(write_columns, *files, settings=settings, columns=columns)
+        say(f"Column map written to {write_columns}.", quiet)
     with progress_bar(quiet) as progress:
         progress("reading the record", 0.0)
         records = pipeline.read(*files, settings=settings, columns=columns)
-    if write_columns:
-        pipeline.write_columns(records, write_columns)
-        say(f"Column map written to {write_columns}.", quiet)
     if json:
         from reconcile.cli.print_json import print_json
 

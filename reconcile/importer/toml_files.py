@@ -63,7 +63,7 @@ def read_column_map(path: Path | str) -> ColumnMap:
     return found
 
 
-def _quoted(text: str) -> str:
+def quoted(text: str) -> str:
     escaped = text.replace("\\", "\\\\").replace('"', '\\"')
     return '"' + "".join(c if c.isprintable() else f"\\u{ord(c):04X}" for c in escaped) + '"'
 
@@ -83,8 +83,8 @@ def column_map_text(records: BatchRecords) -> str:
         if kind not in matched and kind not in ignored:
             continue
         lines += ["", f"[{kind}]"]
-        lines += [f"{_quoted(h)} = {_quoted(n)}" for h, n in matched.get(kind, {}).items()]
-        lines += [f"# {_quoted(h)} = " for h in ignored.get(kind, {})]
+        lines += [f"{quoted(h)} = {quoted(n)}" for h, n in matched.get(kind, {}).items()]
+        lines += [f"# {quoted(h)} = " for h in ignored.get(kind, {})]
         fields = ", ".join(c.name for c in BY_SHEET[kind])
         lines.append(f"# fields: {fields}")
     return "\n".join(lines) + "\n"

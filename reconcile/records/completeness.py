@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections import Counter
 
-from reconcile.records.book import BatchRecords
+from reconcile.records.book import BatchRecords, SetAside
 
 SHARE = 0.05
 """Share of the rows set aside above which a record is incomplete."""
@@ -25,12 +25,27 @@ def shortfalls(records: BatchRecords) -> tuple[str, ...]:
     found = []
     if rows >= LEAST_ROWS and len(aside) > SHARE * rows:
         found.append(f"{len(aside)} of {rows} rows were set aside, over {SHARE:.0%}.")
-    used = {"meter": set(records.readings["meter"].tolist()), "lot": set(records.lots.name.tolist())}
-    for subject in ("meter", "lot"):
-        lost = Counter(name for row in aside if (name := getattr(row, subject)) and name not in used[subject])
+    substances = {form.name for form in records.forms}
+    meters = set(records.readings["meter"].tolist())
+    lots = {_as_written(str(name), substances) for name in records.lots.name}
+    for subject, lost in (
+        ("meter", Counter(row.meter for row in aside if row.meter and row.meter not in meters)),
+        ("lot", Counter(lot for row in aside for lot in _lots(row) if lot not in lots)),
+    ):
         found += [
             f"Every row of {subject} {name} was set aside ({count} rows)."
             for name, count in sorted(lost.items())
             if count >= LEAST_OF_ONE
         ]
     return tuple(found)
+
+
+def _lots(row: SetAside) -> set[str]:
+    """Lots that a row set aside names; several are joined by a semicolon."""
+    return {lot for lot in row.lot.split("; ") if lot}
+
+
+def _as_written(lot: str, substances: set[str]) -> str:
+    """A lot's name without the substance added where one name stands for two bottles."""
+    name, bracket, substance = lot.rpartition(" (")
+    return name if bracket and substance.removesuffix(")") in substances else lot

@@ -15,6 +15,7 @@ _NUMBER = re.compile(r"\s*(\d+(?:\.\d+)?(?:[eE][+-]?\d+)?)(?![.,]?\d)\s*")
 _DENSITY = re.compile(r"\s*,\s*(\d+(?:\.\d+)?)\s*(?:g/mL|kg/L|g/cm3)\s*$")
 _TAKEN = ("mass", "volume", "mol")
 _STRENGTH = ("molar", "molal", "normal", "mass_volume", "mass_mass")
+_TEMPERATURE = re.compile(r"([+-]?\d+(?:\.\d+)?)\s*(?:(?:°|º|deg)?\s*C)?")
 _LONGEST_UNIT = max(len(spelling.split()) for spelling in UNITS)
 
 
@@ -143,6 +144,14 @@ def parse_total(text: str) -> tuple[float, str]:
     if not found or found[2] or found[1].measures not in ("volume", "mass") or not found[0]:
         raise _refuse("total-unreadable", text)
     return found[0] * found[1].factor / 1000.0, found[1].measures
+
+
+def parse_temperature(text: str) -> float:
+    """A temperature in words, "20" or "20 °C", as a number [°C]; raises InputProblems."""
+    found = _TEMPERATURE.fullmatch(text.strip().replace("\u2212", "-"))
+    if not found:
+        raise _refuse("at-unreadable", text)
+    return float(found.group(1))
 
 
 def _solute(part: Part, number: float, unit: Unit) -> tuple[float, str]:

@@ -38,3 +38,15 @@ def test_a_meter_lost_altogether_from_three_rows_on(tmp_path: Path) -> None:
     assert shortfalls(record(tmp_path, ["M-1,6.86"] * 5 + ["M-2,", "M-2,?"])) == ()
     lost = shortfalls(record(tmp_path, ["M-1,6.86"] * 5 + ["M-2,", "M-2,?", "M-2,none"]))
     assert lost == ("Every row of meter M-2 was set aside (3 rows).",)
+
+
+def test_a_lot_lost_altogether(tmp_path: Path) -> None:
+    """Lots A and B share their rows set aside; A is also used elsewhere, so only B is lost."""
+    readings = ["Batch,pH", *(f"B-{i},4.66" for i in range(4)), *(f"C-{i},?" for i in range(3))]
+    recipes = ["Batch,Substance,Lot,Amount,Unit"]
+    recipes += [f"B-{i},{name},A,50,mM" for i in range(4) for name in ("acetic acid", "sodium acetate")]
+    recipes += [f"C-{i},{name},{lot},50,mM" for i in range(3) for name, lot in (("acetic acid", "A"), ("NaCl", "B"))]
+    (tmp_path / "readings.csv").write_text("\n".join(readings) + "\n", encoding="utf-8")
+    (tmp_path / "recipes.csv").write_text("\n".join(recipes) + "\n", encoding="utf-8")
+    found = shortfalls(reconcile.read(tmp_path / "readings.csv", tmp_path / "recipes.csv"))
+    assert found == ("Every row of lot B was set aside (3 rows).",)

@@ -56,6 +56,13 @@ class Block:
     twice: list[tuple[str, list[int]]] = field(default_factory=list)
     units_row: int = -1
     title: str = ""
+    labels: dict[int, str] = field(default_factory=dict)
+
+    def used(self) -> list[int]:
+        """Every column that is read."""
+        own = [*self.columns.values(), *(c for c, _ in self.repeats)]
+        own += [c for c, _, _, _ in self.wide] + [lot for _, _, _, lot in self.wide if lot >= 0]
+        return own + ([self.time_of_day] if self.time_of_day >= 0 else [])
 
 
 def split_heading(text: str) -> tuple[str, str]:
@@ -174,6 +181,9 @@ def understand(row: Sequence[Any], kind: str, column_map: ColumnMap, catalogue: 
     _separate_date_and_time(row, places, block)
     for name, indices in places.items():
         block.columns[name] = indices[0]
+        if name in ("remark", "analyst"):  # a second column of remarks does no harm
+            block.ignored.extend(indices[1:])
+            continue
         if len(indices) > 1:
             block.twice.append((name, indices))
     for index, name, unit in wide:
@@ -222,4 +232,8 @@ def best_kind(row: Sequence[Any], column_map: ColumnMap, catalogue: Catalogue) -
         block = understand(row, kind, column_map, catalogue)
         if block is not None:
             found.append(block)
-    return sorted(found, key=lambda b: -(len(b.columns) + len(b.wide) + len(b.repeats)))
+    found.sort(key=lambda b: -(len(b.columns) + len(b.wide) + len(b.repeats)))
+    if found and found[0].kind == "readings" and not set(found[0].columns) & {"batch", "meter", "probe", "read_at"}:
+        certified = [b for b in found if b.kind == "known"]
+        return certified + [b for b in found if b.kind != "known"]
+    return found

@@ -86,9 +86,9 @@ def add_what_values_hide(sheet: RawSheet, xml: SheetXml, styles: Styles) -> None
     if computed:
         sheet.notes.append(Problem("cells-computed", sheet.place(), words=(("count", str(computed)),)))
     sheet.merges = xml.merges()
-    hidden = xml.hidden_rows()
-    if hidden:
-        sheet.notes.append(Problem("rows-hidden", sheet.place(), words=(("count", str(hidden)),)))
+    sheet.hidden_rows = {r for r in xml.hidden_rows() if r < len(sheet)}
+    if sheet.hidden_rows:
+        sheet.notes.append(Problem("rows-hidden", sheet.place(), words=(("count", str(len(sheet.hidden_rows))),)))
     for first, last in xml.hidden_columns():
         if first < len(sheet.columns):
             letters = column_letters(first) if first == last else f"{column_letters(first)} to {column_letters(last)}"

@@ -134,6 +134,7 @@ def long_lines(
         if b and b not in long_groups:
             long_groups[b] = recipes.new_group(b)
     lines.group = np.array([long_groups.get(b, -1) for b in batch.tolist()], np.intp)
+    lines.group[table.summary] = -1
     lines.substance, lines.lot = text_column(table, "substance"), text_column(table, "lot")
     lines.step = text_column(table, "step")
     lines.source[:] = source
@@ -163,6 +164,8 @@ def long_lines(
         if name in table.columns:
             for i, fault in table.columns[name].bad.items():
                 lines.problem[i] = table.problem(i, name, fault)
+    for i, why in table.whole_row.items():
+        lines.problem[i] = why
     return lines
 
 

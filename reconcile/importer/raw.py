@@ -54,6 +54,7 @@ class RawSheet:
     formats : what number formats say of a column's cells, None for a CSV file
     summary_formulas : cells, (row, column) from 0, that hold a SUM, an AVERAGE and the like
     merges : (first row, first column, last row, last column), counted from 0 in `columns`
+    hidden_rows : indices of hidden rows, filtered ones among them
     epoch_1904 : serial numbers of dates count from 1904
     """
 
@@ -68,6 +69,7 @@ class RawSheet:
     formats: ColumnFormats | None = None
     summary_formulas: set[tuple[int, int]] = field(default_factory=set)
     merges: list[tuple[int, int, int, int]] = field(default_factory=list)
+    hidden_rows: set[int] = field(default_factory=set)
     epoch_1904: bool = False
     hidden: bool = False
     notes: list[Problem] = field(default_factory=list)

@@ -3,49 +3,36 @@
 from __future__ import annotations
 
 import gc
-from collections.abc import Iterable, Iterator, Sequence
+from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
-from dataclasses import dataclass, field
 from pathlib import Path
 
 import numpy as np
 
-from reconcile.importer.blocks import find_blocks, label_of, nearest_headings
 from reconcile.importer.compose import Composer
 from reconcile.importer.contributions import lots_of, solutions_of
 from reconcile.importer.files import read_file
-from reconcile.importer.headings import Block, ColumnMap
+from reconcile.importer.headings import ColumnMap
 from reconcile.importer.known import KnownSolutions
-from reconcile.importer.ledger import ask_where_many, set_aside
+from reconcile.importer.ledger import questions, set_aside
 from reconcile.importer.line_parts import LineReader
 from reconcile.importer.lines import Recipes, long_lines, wide_lines
+from reconcile.importer.notices import notices, with_grid
 from reconcile.importer.raw import RawSheet
 from reconcile.importer.readings import ReadingRows, missing_column, read_readings
 from reconcile.importer.resolve import Resolver
+from reconcile.importer.sheets import Book, read_sheets
 from reconcile.importer.solutions import Assigner
 from reconcile.importer.stocks import StockRoom, read_stocks
-from reconcile.importer.tables import TableCells, read_cells
-from reconcile.records.book import BatchRecords, SheetSource, Table
-from reconcile.records.columns import BY_SHEET, READING_EXTRA, column
+from reconcile.records.arrays import AnyArray
+from reconcile.records.book import BatchRecords, Table
+from reconcile.records.columns import BY_SHEET, READING_EXTRA
 from reconcile.records.places import Place
-from reconcile.records.problems import InputProblems, Problem, shown
+from reconcile.records.problems import InputProblems
 from reconcile.records.settings import Settings
 from reconcile.records.substances import Catalogue, catalogue
 
 _NO_SETTINGS = Settings()
-
-
-@dataclass
-class Book:
-    """Everything read so far: parsed tables, their sheet sources, notices, and what stops the import."""
-
-    tables: list[TableCells] = field(default_factory=list)
-    sources: list[SheetSource] = field(default_factory=list)
-    notes: list[Problem] = field(default_factory=list)
-    stops: list[Problem] = field(default_factory=list)
-
-    def of_kind(self, kind: str) -> Iterable[tuple[int, TableCells]]:
-        return ((i, t) for i, t in enumerate(self.tables) if t.block.kind == kind)
 
 
 def read_books(
@@ -84,9 +71,7 @@ def _read(paths: Sequence[Path | str], settings: Settings, column_map: ColumnMap
             sheets.extend(read_file(Path(path), settings))
         except InputProblems as refused:
             book.stops.extend(refused.problems)
-    for sheet in sheets:
-        _read_sheet(sheet, settings, column_map, names, book)
-    _refuse_without_readings(sheets, book)
+    read_sheets(sheets, settings, column_map, names, book)
     if book.stops:
         raise InputProblems(book.stops)
     return _understood(book, settings, names)
@@ -94,72 +79,6 @@ def _read(paths: Sequence[Path | str], settings: Settings, column_map: ColumnMap
 
 def _library() -> Catalogue:
     return catalogue()
-
-
-def _read_sheet(sheet: RawSheet, settings: Settings, column_map: ColumnMap, names: Catalogue, book: Book) -> None:
-    book.notes.extend(sheet.notes)
-    blocks = find_blocks(sheet, column_map, names)
-    if not blocks:
-        book.notes.append(Problem("sheet-ignored", sheet.place(), sheet.sheet or sheet.file))
-        return
-    for block in blocks:
-        if sheet.text_cells:
-            sheet.names = [label_of(sheet, block, i) for i in range(len(sheet.columns))]
-        for name, indices in block.twice:
-            title = next((c.title for c in BY_SHEET[block.kind] if c.name == name), name)
-            headed = " and ".join(f"{label_of(sheet, block, i)} in column {sheet.names[i]}" for i in indices)
-            words = (("name", title),)
-            book.stops.append(Problem("column-twice", sheet.place(block.heading, indices[1]), headed, words))
-        if block.twice:
-            continue
-        table = read_cells(sheet, block, settings)
-        book.tables.append(table)
-        book.sources.append(_source(sheet, block, table))
-        book.notes.extend(table.notes)
-        for index in block.ignored:
-            book.notes.append(
-                Problem("column-ignored", sheet.place(block.heading, index), label_of(sheet, block, index))
-            )
-
-
-def _source(sheet: RawSheet, block: Block, table: TableCells) -> SheetSource:
-    columns = {}
-    for name, index in block.columns.items():
-        known = next((c for c in BY_SHEET[block.kind] if c.name == name), None)
-        unit = block.units.get(name, "") or (known.unit if known else "")
-        columns[name] = (sheet.names[index], label_of(sheet, block, index), unit)
-    for index, number in block.repeats:
-        name = f"ph {number}" if number else f"ph {label_of(sheet, block, index)}"
-        columns[name] = (sheet.names[index], label_of(sheet, block, index), "")
-        columns.setdefault("ph", columns[name])
-    for index, name, unit, lot in block.wide:
-        columns[f"amount of {name}"] = (sheet.names[index], label_of(sheet, block, index), unit)
-        if lot >= 0:
-            columns[f"lot of {name}"] = (sheet.names[lot], label_of(sheet, block, lot), "")
-    return SheetSource(
-        sheet.file,
-        sheet.sheet,
-        block.kind,
-        int(sheet.row_numbers[block.heading]),
-        columns,
-        tuple(label_of(sheet, block, i) for i in block.ignored),
-        sheet.sha256,
-        {k: v for k, v in table.counts.items() if v},
-    )
-
-
-def _refuse_without_readings(sheets: list[RawSheet], book: Book) -> None:
-    if book.stops or any(t.block.kind in ("readings", "calibrations") for t in book.tables):
-        return
-    for sheet in sheets:
-        if not any(t.sheet is sheet for t in book.tables):
-            nearest = nearest_headings(sheet)
-            read = ", ".join(shown(t, 30) for t in nearest[:12]) or "no text"
-            book.stops.append(Problem("file-no-table", sheet.place(), read))
-    if not book.stops:
-        first = sheets[0].file if sheets else ""
-        kinds = ", ".join(dict.fromkeys(t.block.kind for t in book.tables)) or "nothing"
-        book.stops.append(Problem("no-readings", Place(first), kinds))
 
 
 def _understood(book: Book, settings: Settings, names: Catalogue) -> BatchRecords:
@@ -188,7 +107,7 @@ def _understood(book: Book, settings: Settings, names: Catalogue) -> BatchRecord
         found, notes = read_readings(table, groups, settings)
         rows.append((i, found))
         book.notes.extend(notes)
-    stops = ask_where_many(book.tables)
+    stops = questions(book.tables, settings)
     if stops:
         raise InputProblems(stops)
     resolver = Resolver(names, room, tuple(settings["substances.without_effect"]))
@@ -232,6 +151,12 @@ def _records(
         sheet = book.sources[int(source[i])]
         place = Place(sheet.file, sheet.sheet, int(number[i]), ph_column[i] if repeated[i] else "")
         aside.append(set_aside(problem[i], place, columns, i, bool(summary[i]), composer, recipes, int(group[i])))
+    columns["resolution"] = with_grid(columns)
+    filled = [
+        Place(book.sources[s].file, book.sources[s].sheet, r, c)
+        for s, r, c in zip(source.tolist(), number.tolist(), ph_column.tolist(), strict=True)
+    ]
+    book.notes.extend(notices(columns, filled, _lot_places(composer)))
     solutions, forms, used_lots = solutions_of(assigner)
     lots, forms = lots_of(composer.resolver.lots, used_lots, forms, settings)
     readings = Table("readings", {k: v[used] for k, v in columns.items()}, source[used], number[used])
@@ -250,11 +175,23 @@ def _records(
     )
 
 
-def _joined(parts: list[np.ndarray], empty: np.ndarray) -> np.ndarray:
+def _lot_places(composer: Composer) -> dict[str, Place]:
+    """Every lot of the recipes and of the Stocks sheets, with the place where it is first named."""
+    lines = composer.lines
+    found: dict[str, Place] = {}
+    for i, lot in enumerate(lines.lot.tolist()):
+        if lot and lot not in found:
+            found[lot] = composer.reader.place(i, "")
+    for lot, stocks in composer.resolver.room.by_lot.items():
+        found.setdefault(lot, stocks[0].place)
+    return found
+
+
+def _joined(parts: list[AnyArray], empty: AnyArray) -> AnyArray:
     return np.concatenate(parts) if parts else empty
 
 
-def _places(book: Book, source: np.ndarray, number: np.ndarray) -> dict[str, np.ndarray]:
+def _places(book: Book, source: AnyArray, number: AnyArray) -> dict[str, AnyArray]:
     """File, sheet, row and the names of the batch and known columns of every reading."""
     out = {"row": number}
     for name, value in (
@@ -279,6 +216,3 @@ def _table(book: Book, kind: str) -> Table:
     source = _joined([np.full(len(t), i, np.intp) for i, t in tables], np.zeros(0, np.intp))
     row = _joined([t.sheet.row_numbers[t.rows] for _, t in tables], np.zeros(0, np.intp))
     return Table(kind, columns, source, row)
-
-
-__all__ = ["column", "read_books"]

@@ -6,12 +6,14 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from reconcile.importer.blocks import label_of
 from reconcile.importer.cells import Fault, Parsed, as_text, blanks, parse_numbers
 from reconcile.importer.lines import text_column
 from reconcile.importer.tables import TableCells, covered
 from reconcile.records.arrays import AnyArray, IntArray, TextArray
 from reconcile.records.columns import BY_SHEET, STANDINGS, column, heading_key
 from reconcile.records.problems import Problem
+from reconcile.records.problems import shown as shown_text
 from reconcile.records.settings import Settings
 
 JUDGED = ("target", "low_limit", "high_limit", "ph_calculated")
@@ -57,7 +59,7 @@ def read_readings(table: TableCells, groups: IntArray, settings: Settings) -> tu
         parsed = table.columns.get(c.name)
         columns[c.name] = parsed.values if parsed is not None else missing_column("readings", c.name, n)
     problem = np.full(n, None, object)
-    for i, why in _width_faults(table):
+    for i, why in table.whole_row.items():
         problem[i] = why
     if "ph" in table.columns:
         _ph_faults(table, table.columns["ph"], table.block.columns["ph"], problem)
@@ -96,24 +98,6 @@ def _say_missing_ph(table: TableCells, rows: ReadingRows) -> None:
             rows.problem[i] = table.problem(i, "ph", Fault(code, ""))
 
 
-def _width_faults(table: TableCells) -> list[tuple[int, Problem]]:
-    """Lines of a CSV file with more or fewer fields than its heading row; empty fields at the end do not count."""
-    sheet, block = table.sheet, table.block
-    if sheet.widths is None:
-        return []
-    heading = int(sheet.widths[block.heading])
-    used = max((i + 1 for i, c in enumerate(sheet.row(block.heading)) if str(c).strip()), default=0)
-    found = []
-    for i in np.flatnonzero(sheet.widths[table.rows] != heading).tolist():
-        row = int(table.rows[i])
-        cells = sheet.row(row)[: int(sheet.widths[row])]
-        extra = any(str(c).strip() for c in cells[used:]) if len(cells) > used else False
-        if extra or len(cells) < used:
-            words = (("count", str(heading)), ("name", ""))
-            found.append((i, Problem("row-width", sheet.place(row), str(len(cells)), words)))
-    return found
-
-
 def _ph_faults(table: TableCells, parsed: Parsed, column_index: int, problem: TextArray) -> None:
     for i, fault in parsed.bad.items():
         code = "ph-not-a-number" if fault.code == "number-not-a-number" else fault.code
@@ -145,16 +129,27 @@ def _settle_standing(table: TableCells, columns: dict[str, AnyArray], problem: T
 
 
 def _resolution(table: TableCells, column_index: int, parsed: Parsed | None, n: int) -> AnyArray:
-    """Resolution of the display [pH] from the decimals of the number format or of the text; NaN where unknown."""
+    """Resolution of the display [pH] from the decimals of the number format or of the text; NaN where unknown.
+
+    A value that is stored with more digits than its format shows did not come from a display of that resolution.
+    """
     resolution = np.full(n, np.nan)
     formats = table.sheet.formats
     shown = formats.decimals(table.sheet, column_index) if formats is not None and column_index >= 0 else None
-    if shown is not None:
+    if shown is not None and parsed is not None:
         decimals = shown[table.rows]
-        resolution = np.where(decimals >= 0, 10.0 ** -decimals.astype(float), resolution)
+        step = 10.0 ** -np.maximum(decimals, 0).astype(np.float64)
+        with np.errstate(invalid="ignore"):
+            finer = (decimals >= 0) & (np.abs(parsed.values - np.round(parsed.values / step) * step) > 1e-6 * step)
+        if finer.any():
+            label = shown_text(label_of(table.sheet, table.block, column_index))
+            words = (("count", str(int(finer.sum()))), ("name", label))
+            place = table.sheet.place(int(table.rows[int(np.argmax(finer))]), column_index)
+            table.notes.append(Problem("display-rounded", place, words=words))
+        resolution = np.where((decimals >= 0) & ~finer, step, resolution)
     if parsed is not None and parsed.decimals is not None:
         decimals = parsed.decimals
-        resolution = np.where(decimals >= 0, 10.0 ** -np.maximum(decimals, 0).astype(float), resolution)
+        resolution = np.where(decimals >= 0, 10.0 ** -np.maximum(decimals, 0).astype(np.float64), resolution)
     return resolution
 
 

@@ -107,11 +107,12 @@ class SheetXml:
         found = re.findall(rb'mergeCell [^>]*?ref="([A-Z]+)(\d+):([A-Z]+)(\d+)"', self.data[at:])
         return [(int(b) - 1, column_index(a), int(d) - 1, column_index(c)) for a, b, c, d in found]
 
-    def hidden_rows(self) -> int:
-        """Number of hidden rows, filtered ones among them."""
+    def hidden_rows(self) -> set[int]:
+        """Hidden rows (from 0), filtered ones among them."""
         if b"hidden=" not in self.data:
-            return 0
-        return len(re.findall(rb'<(?:\w+:)?row\b[^>]*\bhidden="(?:1|true)"', self.data))
+            return set()
+        tags = re.findall(rb'<(?:\w+:)?row\b([^>]*\bhidden="(?:1|true)"[^>]*)>', self.data)
+        return {int(m.group(1)) - 1 for t in tags if (m := re.search(rb'\br="(\d+)"', t))}
 
     def hidden_columns(self) -> list[tuple[int, int]]:
         """(first, last) index of every run of hidden columns."""

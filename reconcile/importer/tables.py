@@ -1,31 +1,29 @@
-"""One table of a sheet, column by column: which rows hold data, and what every cell of a known column says."""
+"""One table of a sheet, column by column: what every cell of a known column says."""
 
 from __future__ import annotations
 
-import re
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import Any
 
 import numpy as np
 
 from reconcile.importer.amounts import Amounts, parse_amounts
+from reconcile.importer.blocks import label_of
 from reconcile.importer.cells import Fault, Parsed, blanks, parse_names, parse_numbers
 from reconcile.importer.headings import Block
+from reconcile.importer.merged import spread_merges
 from reconcile.importer.raw import Marker, RawSheet
+from reconcile.importer.rows import data_rows, summary_rows, width_problems
 from reconcile.importer.times import parse_clocks, parse_times
 from reconcile.records.arrays import AnyArray, IntArray
-from reconcile.records.columns import BY_SHEET, Column, heading_key
+from reconcile.records.columns import BY_SHEET, Column
 from reconcile.records.places import Place
 from reconcile.records.problems import Problem, shown
 from reconcile.records.settings import Settings
+from reconcile.records.units import UNITS, find_unit
 
 IDENTIFIERS = {"batch", "known", "known_lot", "meter", "probe", "lot", "series", "substance", "name", "titrant_lot"}
-_SUMMARY = re.compile(
-    r"(?:mean|average|avg|total|totals|sum|min|max|minimum|maximum|median|sd|std|st\.? ?dev\.?|std\.? dev\.?|rsd|cv|"
-    r"count|n\s*=\s*\d+)(?:\s*(?:of|\(|:|ph).*)?:?",
-    re.IGNORECASE,
-)
 
 
 @dataclass
@@ -35,6 +33,7 @@ class TableCells:
     rows : IntArray (n,), indices into the sheet; columns : field -> Parsed over those rows
     amounts : field -> Amounts, of the columns of kind amount; counts : rows by kind, for SheetSource
     summary : BoolArray (n,), mean and total rows
+    whole_row : row -> Problem, lines with too many or too few fields, and hidden rows that are to be left out
     """
 
     sheet: RawSheet
@@ -44,6 +43,7 @@ class TableCells:
     amounts: dict[str, Amounts] = field(default_factory=dict)
     counts: dict[str, int] = field(default_factory=dict)
     summary: AnyArray = field(default_factory=lambda: np.zeros(0, bool))
+    whole_row: dict[int, Problem] = field(default_factory=dict)
     notes: list[Problem] = field(default_factory=list)
 
     def __len__(self) -> int:
@@ -72,47 +72,63 @@ class TableCells:
         """Carry a column's notices over, with the place of the first cell."""
         for code, row, read, words in parsed.notes:
             place = self.sheet.place(int(self.rows[row]), column)
-            heading = str(self.sheet.columns[column][self.block.heading])
-            self.notes.append(Problem(code, place, read, (*words, ("name", shown(heading.strip())))))
+            name = shown(label_of(self.sheet, self.block, column))
+            self.notes.append(Problem(code, place, read, (*words, ("name", name))))
 
 
 def read_cells(sheet: RawSheet, block: Block, settings: Settings) -> TableCells:
     """Parse every known column of a block; wide and repeat columns are left to their own readers."""
+    if sheet.text_cells:  # a CSV file names its columns by their headings, which differ from table to table
+        sheet = replace(sheet, names=[label_of(sheet, block, i) for i in range(len(sheet.columns))])
     counts: dict[str, int] = {}
-    table = TableCells(sheet, block, _data_rows(sheet, block, counts), counts=counts)
-    decimal = settings["reading.decimal"]
+    notes: list[Problem] = []
+    titles = spread_merges(sheet, block, notes)
+    table = TableCells(sheet, block, data_rows(sheet, block, titles, counts), counts=counts, notes=notes)
+    raw: dict[str, Any] = {}
+    for index in block.used():
+        if sheet.formats is not None:
+            sheet.formats.prepare(sheet, index)
     for column in BY_SHEET[block.kind]:
         if column.name not in block.columns:
             continue
         index = block.columns[column.name]
-        if sheet.formats is not None and column.kind != "time":
-            sheet.formats.prepare(sheet, index)
-        cells = table.cells(index)
-        parsed = _parse(table, column, cells, decimal, settings)
+        cells = raw[column.name] = table.cells(index)
+        parsed = _parse(table, column, cells, settings)
         table.columns[column.name] = parsed
         table.note(parsed, index)
-    table.summary = _summaries(table)
+    _struck(table)
+    table.whole_row = width_problems(sheet, block, table.rows)
+    if sheet.hidden_rows and settings["reading.hidden_rows"] == "leave out":
+        for i in np.flatnonzero(np.isin(table.rows, list(sheet.hidden_rows))).tolist():
+            table.whole_row[i] = Problem("row-hidden", table.place(i))
+    table.summary = summary_rows(sheet, block, table.rows, raw)
     table.counts["summary"] = int(table.summary.sum())
     table.counts["data"] = len(table) - table.counts["summary"]
     return table
 
 
-def _parse(table: TableCells, column: Column, cells: Sequence[Any], decimal: str, settings: Settings) -> Parsed:
+def _parse(table: TableCells, column: Column, cells: Sequence[Any], settings: Settings) -> Parsed:
     sheet, block = table.sheet, table.block
     if column.kind == "text":
-        return parse_names(cells, column.name in IDENTIFIERS)
+        parsed = parse_names(cells, column.name in IDENTIFIERS)
+        if column.name == "batch" and settings["reading.blank_batch"] != "missing":
+            _blank_batches(table, parsed, cells, settings["reading.blank_batch"])
+        return parsed
     if column.kind == "time":
-        parsed = parse_times(cells, settings["reading.date_order"], sheet.epoch_1904)
+        parsed = parse_times(cells, settings, sheet.epoch_1904)
         if column.name == "read_at" and block.time_of_day >= 0:
             clocks = parse_clocks(table.cells(block.time_of_day))
             have = ~np.isnat(clocks.values)
             parsed.values[have] = parsed.values[have].astype("datetime64[D]") + clocks.values[have]
             parsed.bad.update(clocks.bad)
         return parsed
+    decimal = settings["reading.decimal"]
     if column.kind == "amount":
         amounts = parse_amounts(cells, decimal, sheet.text_cells)
         table.amounts[column.name] = amounts
         parsed = amounts.parsed
+        if column.unit:
+            _in_unit(amounts, column, block.units.get(column.name, ""))
     else:
         parsed = parse_numbers(cells, decimal, sheet.text_cells, _change_of_unit(column))
         _heading_unit(parsed, column, block.units.get(column.name, ""))
@@ -127,19 +143,30 @@ def _parse(table: TableCells, column: Column, cells: Sequence[Any], decimal: str
     return parsed
 
 
+def _blank_batches(table: TableCells, parsed: Parsed, cells: Sequence[Any], meaning: str) -> None:
+    """Blank batches below a named one: "as above" where the settings say so, else a question if there are many."""
+    blank = blanks(cells)
+    named = np.flatnonzero(~blank)
+    if not blank.any() or not len(named) or "known" in table.block.columns:
+        return
+    below = [i for i in np.flatnonzero(blank).tolist() if i > named[0]]
+    if meaning == "above":
+        last = np.maximum.accumulate(np.where(blank, 0, np.arange(len(cells))))
+        parsed.values[below] = parsed.values[last[below]]
+        if below:
+            parsed.notes.append(("batch-as-above", below[0], "", (("count", str(len(below))),)))
+        return
+    parsed.open_choice["blank_batch"] = below
+
+
 def _change_of_unit(column: Column) -> Any:
     """Function text -> (factor, offset) for a number written with its own unit, such as "21 °C"."""
+    kelvin = {"°c": (1.0, 0.0), "c": (1.0, 0.0), "degc": (1.0, 0.0), "°f": (5 / 9, -160 / 9), "k": (1.0, -273.15)}
 
     def change(text: str) -> tuple[float, float] | None:
         key = text.casefold().replace("º", "°").replace("˚", "°").replace(" ", "")
         if column.unit == "°C":
-            return {
-                "°c": (1.0, 0.0),
-                "c": (1.0, 0.0),
-                "degc": (1.0, 0.0),
-                "°f": (5 / 9, -160 / 9),
-                "k": (1.0, -273.15),
-            }.get(key)
+            return kelvin.get(key)
         if column.unit and key == column.unit.casefold().replace(" ", ""):
             return 1.0, 0.0
         return (1.0, 0.0) if key == "ph" and column.name in ("ph", "target", "low_limit", "high_limit") else None
@@ -155,66 +182,30 @@ def _heading_unit(parsed: Parsed, column: Column, unit: str) -> None:
             parsed.values[:] = parsed.values * change[0] + change[1]
 
 
-def _used_columns(block: Block) -> list[int]:
-    own = [*block.columns.values(), *(c for c, _ in block.repeats)]
-    own += [c for c, _, _, _ in block.wide] + [lot for _, _, _, lot in block.wide if lot >= 0]
-    return own + ([block.time_of_day] if block.time_of_day >= 0 else [])
+def _in_unit(amounts: Amounts, column: Column, heading_unit: str) -> None:
+    """Amounts of a column that has one unit once read, such as titrant added in mL."""
+    wanted = UNITS[column.unit]
+    heading = find_unit(heading_unit) or wanted
+    names = np.where(amounts.units == "", heading.name, amounts.units)
+    for name in set(names.tolist()):
+        mine = names == name
+        if UNITS[name].measures != wanted.measures:
+            for i in np.flatnonzero(mine & ~np.isnan(amounts.parsed.values)).tolist():
+                read = f"{amounts.parsed.values[i]:g} {name}"
+                amounts.parsed.bad.setdefault(i, Fault("unit-conflict", read, (("name", wanted.name),)))
+        amounts.parsed.values[mine] *= UNITS[name].factor / wanted.factor
 
 
-def _data_rows(sheet: RawSheet, block: Block, counts: dict[str, int]) -> IntArray:
-    """Rows with anything in a known column, without units rows and repeated headings."""
-    filled = np.zeros(block.last - block.first, bool)
-    for column in _used_columns(block):
-        filled |= ~blanks(sheet.columns[column][block.first : block.last])
-    rows = np.flatnonzero(filled) + block.first
-    repeats = _heading_repeats(sheet, block, rows)
-    if block.units_row >= 0:
-        rows = rows[rows != block.units_row]
-    counts["title"] = (
-        sum(1 for r in range(block.heading) if any(str(c).strip() for c in sheet.row(r))) if block.heading < 200 else 0
-    )
-    counts["units"] = int(block.units_row >= 0)
-    counts["heading repeat"] = len(repeats)
-    counts["blank"] = int((~filled).sum())
-    return rows[~np.isin(rows, repeats)] if len(repeats) else rows
-
-
-def _heading_repeats(sheet: RawSheet, block: Block, rows: IntArray) -> IntArray:
-    """Rows that say the headings again: every filled known cell equals its heading."""
-    used = _used_columns(block)
-    headings = {c: heading_key(str(sheet.columns[c][block.heading])) for c in used}
-    probe = used[0]
-    raw = sheet.columns[probe]
-    first = headings[probe][:1]
-    same = (
-        {
-            v
-            for v in set(raw[block.first : block.last])
-            if isinstance(v, str) and v.strip()[:1].casefold() == first and heading_key(v) == headings[probe]
-        }
-        if headings[probe]
-        else set()
-    )
-    found = []
-    for row in (r for r in rows.tolist() if same and raw[r] in same):
-        cells = [(sheet.columns[c][row], headings[c]) for c in used]
-        said = [(v, h) for v, h in cells if not (isinstance(v, str) and not v.strip())]
-        if len(said) > 1 and all(isinstance(v, str) and heading_key(v) == h for v, h in said):
-            found.append(row)
-    return np.array(found, np.intp)
-
-
-def _summaries(table: TableCells) -> AnyArray:
-    """Mean, total and like rows, known by the word in a name column."""
-    summary = np.zeros(len(table), bool)
-    for name in ("batch", "known", "lot", "meter", "read_at", "substance", "series", "analyst", "stage"):
-        if name not in table.columns:
-            continue
-        cells = table.cells(table.block.columns[name])
-        labels = {v for v in set(cells) if isinstance(v, str) and len(v) < 40 and _SUMMARY.fullmatch(v.strip())}
-        if labels:
-            summary |= np.fromiter((isinstance(v, str) and v in labels for v in cells), bool, len(cells))
-    return summary
+def _struck(table: TableCells) -> None:
+    """Notice struck-through cells in the columns that matter; colours are not read at all."""
+    if table.sheet.formats is None:
+        return
+    columns = [table.block.columns[n] for n in ("ph", "amount", "batch") if n in table.block.columns]
+    inside = set(table.rows.tolist())
+    struck = [(r, c) for c in columns for r in table.sheet.formats.struck(table.sheet, c) if r in inside]
+    if struck:
+        place = table.sheet.place(*min(struck))
+        table.notes.append(Problem("cells-struck", place, words=(("count", str(len(struck))),)))
 
 
 def covered(cells: Sequence[Any]) -> AnyArray:

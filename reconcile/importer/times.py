@@ -12,6 +12,7 @@ import numpy as np
 from reconcile.importer.cells import MARKER_CODES, MISSING, Fault, Parsed, as_text
 from reconcile.importer.raw import Marker
 from reconcile.records.arrays import AnyArray
+from reconcile.records.settings import Settings
 
 _CLOCK = r"(?:[T ,]+(\d{1,2}):(\d{2})(?::(\d{2})(?:[.,](\d{1,6}))?)?\s*([AaPp]\.?[Mm]\.?)?)?"
 _ISO = re.compile(r"(\d{4})[-/.](\d{1,2})[-/.](\d{1,2})" + _CLOCK)
@@ -36,10 +37,11 @@ _DAY_ZERO_1904 = datetime(1904, 1, 1)
 _SECOND = np.timedelta64(1, "s")
 
 
-def parse_times(cells: Sequence[Any], date_order: str, epoch_1904: bool = False) -> Parsed:
+def parse_times(cells: Sequence[Any], settings: Settings, epoch_1904: bool = False) -> Parsed:
     """A column of local wall times as datetime64[s], NaT where missing.
 
-    date_order : "auto", "day-month" or "month-day"
+    Text dates among real ones are a question too: the spreadsheet has then turned some of a column into dates, and may
+    have taken the day for the month in them.
     """
     n = len(cells)
     kinds = set(map(type, cells))
@@ -51,8 +53,12 @@ def parse_times(cells: Sequence[Any], date_order: str, epoch_1904: bool = False)
     if real.any():
         moments[real] = np.array([v for v in cells if type(v) in (datetime, date)], "datetime64[us]")
     texts = {v for v in cells if type(v) is str}
-    order = _order(texts, date_order)
-    meaning = {t: _from_text(t, order) for t in texts}
+    wanted = settings["reading.date_order"]
+    order = _order(texts, wanted)
+    if wanted == "auto" and real.any():
+        order = "mixed"
+    ways = (settings["reading.two_digit_years"], settings["reading.time_zone"])
+    meaning = {t: _from_text(t, order, *ways) for t in texts}
     serials: list[int] = []
     marks: list[int] = []
     for i in np.flatnonzero(~real).tolist():
@@ -63,8 +69,8 @@ def parse_times(cells: Sequence[Any], date_order: str, epoch_1904: bool = False)
                 parsed.bad[i] = found
                 if found.code == "date-order-unclear":
                     parsed.open_choice.setdefault("date_order", []).append(i)
-                elif found.code == "year-short":
-                    parsed.open_choice.setdefault("year", []).append(i)
+                elif found.code in ("year-short", "time-zone"):
+                    parsed.open_choice.setdefault(found.code, []).append(i)
             elif found is not None:
                 moments[i] = np.datetime64(found, "us")
             elif v.strip():
@@ -161,8 +167,12 @@ def _moment(year: int, month: int, day: int, clock: tuple[Any, ...]) -> datetime
     return moment + timedelta(microseconds=int((fraction or "0").ljust(6, "0")))
 
 
-def _from_text(text: str, order: str) -> datetime | Fault | None:
+def _from_text(text: str, order: str, short_years: str, zones: str) -> datetime | Fault | None:
     bare = " ".join(text.replace("\u00a0", " ").split())
+    if zones == "ignore" and re.match(r"\d{4}-", bare):
+        bare = _ZONE.sub("", bare).strip()
+    if short_years == "2000" and (short := _SHORT_YEAR.match(bare)):
+        bare = f"{bare[: short.end() - 2]}20{bare[short.end() - 2 :]}"
     if bare.casefold() in MISSING:
         return None
     bad = Fault("time-not-a-time", text)
@@ -170,7 +180,7 @@ def _from_text(text: str, order: str) -> datetime | Fault | None:
         return _moment(int(match[1]), int(match[2]), int(match[3]), match.groups()[3:]) or bad
     if match := _NUMERIC.fullmatch(bare):
         first, second, year = int(match[1]), int(match[3]), int(match[4])
-        if first != second and order in ("", "both") and max(first, second) <= 12:
+        if (first != second and order in ("", "both") and max(first, second) <= 12) or order == "mixed":
             return Fault("date-order-unclear", text)
         day_first = order == "day-month" or (order != "month-day" and first > 12) or first == second
         if order == "both" and first > 12:

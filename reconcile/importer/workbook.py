@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import html
 import io
 import posixpath
 import re
@@ -11,6 +12,7 @@ from typing import Any
 
 import python_calamine as calamine
 
+from reconcile.importer.beside import note_what_lies_beside
 from reconcile.importer.hidden import add_what_values_hide
 from reconcile.importer.raw import RawSheet, sheet_of_rows
 from reconcile.importer.sheet_xml import SheetXml
@@ -31,14 +33,14 @@ def read_workbook(content: bytes, file: str, sha256: str, settings: Settings) ->
     if "xl/workbook.xml" not in parts and not any(p.endswith("workbook.xml") for p in parts):
         raise _refused("file-type", file, "a zip archive without a workbook")
     for name, data in parts.items():
-        if name.endswith((".xml", ".rels")) and (b"<!DOCTYPE" in data[:65536] or b"<!ENTITY" in data):
+        if _declares(data):
             raise _refused("file-entities", file, name)
     styles = Styles(parts.get("xl/styles.xml", b""))
     book = parts.get("xl/workbook.xml", b"")
     epoch_1904 = re.search(rb'date1904\s*=\s*"(1|true)"', book) is not None
     sheets: list[RawSheet] = []
     values = _opened(content, file)
-    for name, part in _sheets(book, parts.get("xl/_rels/workbook.xml.rels", b"")):
+    for name, part, hidden in _sheets(book, parts.get("xl/_rels/workbook.xml.rels", b"")):
         if b"worksheet" not in parts.get(part, b"")[:2048]:
             continue  # a chart or dialogue sheet holds no cells
         xml = SheetXml(parts[part])
@@ -47,18 +49,22 @@ def read_workbook(content: bytes, file: str, sha256: str, settings: Settings) ->
             raise InputProblems([Problem("sheet-too-wide", Place(file, name), f"{last_row} x {last_column}")])
         sheet = sheet_of_rows(file, name, _values(values, file, name), sha256)
         sheet.epoch_1904 = epoch_1904
-        state = rb'"[^>]*state="(?:hidden|veryHidden)"'
-        sheet.hidden = re.search(rb'<sheet [^>]*name="' + re.escape(_escaped(name)) + state, book) is not None
+        sheet.hidden = hidden
         add_what_values_hide(sheet, xml, styles)
         if len(sheet) in _FULL_SHEETS:
             sheet.notes.append(Problem("file-maybe-cut", Place(file, name), str(len(sheet))))
-        extras = _beside_the_cells(part, parts)
-        if extras:
-            sheet.notes.append(Problem("beside-the-cells", Place(file, name), extras))
+        note_what_lies_beside(sheet, part, parts)
         sheets.append(sheet)
     if epoch_1904 and sheets:
         sheets[0].notes.append(Problem("epoch-1904", Place(file)))
     return sheets
+
+
+def _declares(data: bytes) -> bool:
+    """Whether a part declares a document type or an entity, in whatever encoding."""
+    if data[:2] in (b"\xff\xfe", b"\xfe\xff") or b"\x00" in data[:64]:
+        data = data.replace(b"\x00", b"")
+    return b"<!DOCTYPE" in data or b"<!ENTITY" in data
 
 
 def _refused(code: str, file: str, read: str = "") -> InputProblems:
@@ -107,8 +113,8 @@ def _values(book: calamine.CalamineWorkbook, file: str, sheet: str) -> list[list
         raise InputProblems([Problem("file-damaged", Place(file, sheet), message)]) from None
 
 
-def _sheets(book: bytes, relations: bytes) -> list[tuple[str, str]]:
-    """(name, part) of every sheet, in the order of the workbook."""
+def _sheets(book: bytes, relations: bytes) -> list[tuple[str, str, bool]]:
+    """(name, part, hidden) of every sheet, in the order of the workbook."""
     targets: dict[bytes, str] = {}
     for tag in re.findall(rb"<(?:\w+:)?Relationship\b[^>]*>", relations):
         identity, target = _attribute(tag, rb"Id"), _attribute(tag, rb"Target")
@@ -119,7 +125,8 @@ def _sheets(book: bytes, relations: bytes) -> list[tuple[str, str]]:
         found_id = re.search(rb'\br?:?id="([^"]*)"', tag)
         name = _unescaped(_attribute(tag, rb"name"))
         if found_id and name:
-            found.append((name, targets.get(found_id.group(1), "")))
+            state = _attribute(tag, rb"state")
+            found.append((name, targets.get(found_id.group(1), ""), state in (b"hidden", b"veryHidden")))
     return found
 
 
@@ -128,39 +135,5 @@ def _attribute(tag: bytes, name: bytes) -> bytes:
     return match.group(1) if match else b""
 
 
-_ENTITIES = (("&lt;", "<"), ("&gt;", ">"), ("&quot;", '"'), ("&apos;", "'"))
-
-
 def _unescaped(data: bytes) -> str:
-    text = data.decode("utf-8", "replace")
-    for entity, character in _ENTITIES:
-        text = text.replace(entity, character)
-    text = re.sub(r"&#(\d+);", lambda m: chr(int(m.group(1))), text)
-    return text.replace("&amp;", "&")
-
-
-def _escaped(name: str) -> bytes:
-    text = name.replace("&", "&amp;")
-    for entity, character in _ENTITIES[:3]:
-        text = text.replace(character, entity)
-    return text.encode()
-
-
-def _beside_the_cells(part: str, parts: dict[str, bytes]) -> str:
-    """What a sheet carries that is not read: comments, pictures, charts, text boxes, external links."""
-    folder, _, base = part.rpartition("/")
-    relations = parts.get(f"{folder}/_rels/{base}.rels", b"")
-    counts: dict[str, int] = {}
-    for tag in re.findall(rb"<(?:\w+:)?Relationship\b[^>]*>", relations):
-        kind = _attribute(tag, rb"Type").decode("utf-8", "replace").rpartition("/")[2]
-        path = posixpath.normpath(posixpath.join(folder, _attribute(tag, rb"Target").decode("utf-8", "replace")))
-        data = parts.get(path.lstrip("/"), b"")
-        if kind == "comments":
-            counts["comments"] = counts.get("comments", 0) + len(re.findall(rb"<(?:\w+:)?comment\b", data))
-        elif kind == "drawing":
-            number = len(re.findall(rb"<xdr:(?:pic|graphicFrame|sp)\b", data))
-            counts["pictures, charts or text boxes"] = counts.get("pictures, charts or text boxes", 0) + number
-    links = sum(1 for p in parts if p.startswith("xl/externalLinks/externalLink"))
-    if links:
-        counts["links to other workbooks"] = links
-    return ", ".join(f"{number} {kind}" for kind, number in counts.items() if number)
+    return html.unescape(data.decode("utf-8", "replace"))

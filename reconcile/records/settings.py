@@ -44,6 +44,20 @@ SETTINGS: tuple[Setting, ...] = (
         (AUTO, "day-month", "month-day"),
     ),
     Setting(
+        "reading",
+        "blank_batch",
+        "ask",
+        "",
+        "a blank batch may mean the one above, or a slip; nothing is filled in unasked",
+        ("ask", "above", "missing"),
+    ),
+    Setting("reading", "two_digit_years", "ask", "", "the century is not guessed", ("ask", "2000")),
+    Setting(
+        "reading", "time_zone", "ask", "", "times are local wall time; a zone beside them is not", ("ask", "ignore")
+    ),
+    Setting("reading", "leading_zeros", "ask", "", "12 and 0012 may be one name or two", ("ask", "apart")),
+    Setting("reading", "hidden_rows", "read", "", "hidden is not deleted", ("read", "leave out")),
+    Setting(
         "prediction",
         "activity_model",
         "davies",

@@ -1,0 +1,57 @@
+"""What is noticed about the readings as a whole: doubles, names that look the same, stray dates, the display's grid."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+
+import numpy as np
+
+from reconcile.importer.likeness import alike, doubles
+from reconcile.records.arrays import AnyArray, FloatArray
+from reconcile.records.places import Place
+from reconcile.records.problems import Problem
+
+_FAR = np.timedelta64(1400, "D")
+"""The two ways of counting dates in spreadsheets lie 1462 days apart."""
+_LEAST = 10
+"""Readings of a meter from which on the grid that they lie on is taken for its display; common practice, no source."""
+
+
+def notices(columns: Mapping[str, AnyArray], place_of: Sequence[Place], lots: Mapping[str, Place]) -> list[Problem]:
+    """Notices about the readings; none of them leaves a row out."""
+    found = doubles(columns, place_of)
+    for name in ("meter", "probe", "batch"):
+        where = dict(zip(columns[name].tolist(), place_of, strict=True))
+        found += alike(list(where), name, where)
+    found += alike(list(lots), "lot", lots)
+    moments = columns["read_at"]
+    dated = np.flatnonzero(~np.isnat(moments))
+    if len(dated) >= 3:
+        days = moments[dated].astype("datetime64[D]")
+        middle = np.sort(days)[len(days) // 2]
+        far = dated[np.abs(days - middle) > _FAR]
+        if len(far):
+            words = (("count", str(len(far))), ("name", "Read at"))
+            found.append(Problem("date-far-off", place_of[int(far[0])], str(moments[far[0]]), words))
+    return found
+
+
+def with_grid(columns: Mapping[str, AnyArray]) -> FloatArray:
+    """Resolution of every reading [pH]; where unknown, the decimal grid on which all readings of its meter lie.
+
+    A grid is taken only from 10 readings on, and never a grid of whole units.
+    """
+    resolution = np.array(columns["resolution"], np.float64)
+    unknown = np.isnan(resolution) & ~np.isnan(columns["ph"])
+    names, code = np.unique(columns["meter"].astype(str), return_inverse=True)
+    for k in range(len(names)):
+        mine = unknown & (code == k)
+        values = columns["ph"][mine]
+        if len(values) < _LEAST:
+            continue
+        for decimals in (0, 1, 2, 3):
+            if np.all(np.abs(values * 10.0**decimals - np.round(values * 10.0**decimals)) < 1e-6):
+                if decimals:
+                    resolution[mine] = 10.0**-decimals
+                break
+    return resolution

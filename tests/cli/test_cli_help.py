@@ -73,6 +73,13 @@ def test_the_readme_shows_what_a_prediction_prints(run: Run) -> None:
     assert run(*shlex.split(shown.group(1))).out.rstrip() == shown.group(2)
 
 
+def test_the_first_python_example_runs_as_it_stands(capsys: pytest.CaptureFixture[str]) -> None:
+    example = re.search(r"^```python\n(.*?)\n```$", README, re.MULTILINE | re.DOTALL)
+    assert example
+    exec(example.group(1), {})
+    assert capsys.readouterr().out.count("[") == 2  # two arrays
+
+
 def test_the_first_two_commands_are_one_line_each_and_stand_alone() -> None:
     audit, checks = sh_blocks()[:2]
     for line in (audit, checks):

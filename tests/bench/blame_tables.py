@@ -4,7 +4,8 @@
     python -m tests.bench.blame_tables one      --seeds 100     one planted fault a record, by kind
     python -m tests.bench.blame_tables two      --seeds 200     two planted faults a record
     python -m tests.bench.blame_tables cover    --seeds 500     intervals, signs and bias of the estimates, by kind
-    python -m tests.bench.blame_tables power meter_offset --at 0.02 0.03 0.05   named and covered, by size
+    python -m tests.bench.blame_tables power meter_offset --at 0.02 0.03 0.05 --gain 9   named, covered, oracle, by size
+    python -m tests.bench.blame_tables missed --seeds 50    planted faults not named, with what an oracle would gain
     python -m tests.bench.blame_tables time     --seeds 50      milliseconds a record
     python -m tests.bench.blame_tables show meter_offset 17     one record: what was planted, what was found
 
@@ -23,6 +24,7 @@ from typing import Any
 import numpy as np
 
 from tests.bench.blame_run import Case, Result, Told, run, run_all
+from tests.simulated.oracle import DECIDED_BY_DISPLAY, consult
 from tests.simulated.simulator import FAULTS
 
 ROOMS: dict[str, dict[str, Any]] = {
@@ -66,7 +68,7 @@ def _share(count: int, of: int) -> str:
         return "      -         "
     p, z = count / of, 1.959964
     middle, half = (p + z * z / (2 * of)), z * np.sqrt(p * (1 - p) / of + z * z / (4 * of * of))
-    low, high = ((middle + s * half) / (1 + z * z / of) for s in (-1, 1))
+    low, high = (abs(middle + s * half) / (1 + z * z / of) for s in (-1, 1))
     return f"{100 * p:5.1f} [{100 * low:4.1f},{100 * high:5.1f}]"
 
 
@@ -157,11 +159,34 @@ def cover(options: argparse.Namespace) -> None:
 
 
 def power(options: argparse.Namespace) -> None:
-    """Share of records in which the planted fault is named, and in which it is covered, by size."""
-    print(f"{'size':>8}   {'named, %':18} {'named or rival':18} {'any stray':18}")
+    """Share of records in which the planted fault is named, and covered, by size, and in which an oracle would name it.
+
+    The oracle tests the true candidate with the true spreads at --gain, the gain at which the auditor's p is its share.
+    """
+    print(f"{'size':>8}   {'named, %':21}{'named or rival':21}{'any stray':21}{'oracle, %':21}strays")
     for size in options.at:
         cases = [Case(seed, (options.kind,), {options.kind: size}) for seed in _seeds(options)]
-        print(f"{size:8g}   " + _row("", run_all(cases, options.processes))[21:], flush=True)
+        told = _row("", run_all(cases, options.processes))[21:]
+        oracle = ""
+        if options.kind not in DECIDED_BY_DISPLAY:
+            sure = sum(consult(seed, options.kind, size).gain >= options.gain for seed in _seeds(options))
+            oracle = _share(sure, options.seeds)
+        print(f"{size:8g}   {told[:60]}   {oracle}   {told[63:]}", flush=True)
+
+
+def missed(options: argparse.Namespace) -> None:
+    """Every planted fault that is not the finding, with the gain that an oracle would have (it knows the candidate)."""
+    for name in _kept([*MAIN, *FURTHER], options):
+        for result in run_all([Case(seed, (name,)) for seed in _seeds(options)], options.processes):
+            if result.outcomes[0] == "named" and not result.stray:
+                continue
+            known = name not in DECIDED_BY_DISPLAY and name != "record_value"
+            gain = f"oracle {consult(result.case.seed, name).gain:6.1f}" if known else ""
+            planted = result.truth[0]
+            print(f"{name:18} {result.case.seed:5d} {result.outcomes[0]:7} {planted.subject} {gain}", flush=True)
+            for told in (result.told[0], *result.stray):
+                if told is not None:
+                    print(f"      {_line(told)}")
 
 
 def timing(options: argparse.Namespace) -> None:
@@ -202,6 +227,7 @@ TABLES: dict[str, Callable[[argparse.Namespace], None]] = {
     "two": two,
     "cover": cover,
     "power": power,
+    "missed": missed,
     "time": timing,
     "show": show,
 }
@@ -222,6 +248,7 @@ def main(arguments: Sequence[str]) -> None:
         sub.add_argument("--processes", type=int, default=2)
         sub.add_argument("--only", nargs="*", default=[])
         sub.add_argument("--room", choices=list(ROOMS), default="default")
+        sub.add_argument("--gain", type=float, default=9.0)
         sub.add_argument("--at", type=float, nargs="*", default=[])
     options = parser.parse_args(arguments)
     TABLES[options.table](options)

@@ -71,12 +71,16 @@ def split_heading(text: str) -> tuple[str, str]:
     if bracket:
         return bracket.group(1).strip(), bracket.group(2).strip()
     comma = _COMMA_UNIT.match(text)
-    if comma and find_unit(comma.group(2)) is not None:
+    if comma and _is_unit(comma.group(2)):
         return comma.group(1).strip(), comma.group(2)
     words = text.rsplit(None, 1)
-    if len(words) == 2 and len(words[1]) > 1 and find_unit(words[1]) is not None:
+    if len(words) == 2 and len(words[1]) > 1 and _is_unit(words[1]):
         return words[0], words[1]
     return text.strip(), ""
+
+
+def _is_unit(text: str) -> bool:
+    return find_unit(text) is not None or text.casefold() in ("°c", "ºc", "degc", "°f", "mv")
 
 
 _KEYS: Mapping[str, Mapping[str, Column]] = {
@@ -94,7 +98,8 @@ def known_heading(text: str) -> bool:
     """Whether a text is a heading of some kind of sheet."""
     if len(text) > 80:
         return False
-    return heading_key(text) in _ANY or heading_key(split_heading(text)[0]) in _ANY
+    name, unit = split_heading(text)
+    return any(heading_key(t) in _ANY for t in (text, name, f"{name} {unit}"))
 
 
 def match_heading(text: str, kind: str, column_map: ColumnMap, catalogue: Catalogue) -> Match | None:
@@ -104,7 +109,7 @@ def match_heading(text: str, kind: str, column_map: ColumnMap, catalogue: Catalo
         return _mapped(kind, mapped)
     name, unit = split_heading(text)
     keys = _KEYS[kind]
-    column = keys.get(heading_key(text))
+    column = keys.get(heading_key(text)) or (keys.get(heading_key(f"{name} {unit}")) if "(" in text else None)
     if column is not None:
         return Match(kind, column.name, unit)
     column = keys.get(heading_key(name))

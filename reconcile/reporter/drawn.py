@@ -10,9 +10,10 @@ import numpy as np
 
 from reconcile.records.results import Audit, Finding
 from reconcile.reporter.figures import PICTURES
-from reconcile.reporter.figures.finding import explained_part, finding_picture
+from reconcile.reporter.figures.finding import finding_picture
 from reconcile.reporter.figures.style import styled
 from reconcile.reporter.lookups import Lookups
+from reconcile.reporter.plain import plain
 from reconcile.reporter.to_png import images
 from reconcile.reporter.words import counted, half_up, signed, subject_words
 
@@ -59,18 +60,18 @@ def finding_stem(finding: Finding, index: int) -> str:
 
 def _caption(finding: Finding) -> str:
     return (
-        f"Residuals of {subject_words(finding)}, as recorded and with what {finding.id} explains taken out. "
+        f"Residuals of {subject_words(finding)}, with {plain(finding.id)} left in and taken out, on one scale. "
         "The band is twice the spread of a clean record."
     )
 
 
 def _alt(audit: Audit, lookups: Lookups, finding: Finding) -> str:
     own = np.asarray(finding.readings, np.intp)
-    before = audit.residual[own]
-    after = before - explained_part(audit, finding)[own]
+    before = lookups.apart_from_others([finding])[own]
+    after = before - lookups.part(finding)[own]
     known = np.isfinite(before)
     text = f"Residuals of {subject_words(finding)}, {counted(len(own), 'reading')}."
     if known.any():
         ends = [signed(half_up(float(np.median(v[known])), 3)) for v in (before, after)]
-        text += f" Their median is {ends[0]} pH as recorded and {ends[1]} pH with the finding taken out."
+        text += f" Their median is {ends[0]} pH with the finding left in and {ends[1]} pH with it taken out."
     return text

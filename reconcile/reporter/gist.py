@@ -5,14 +5,13 @@ from __future__ import annotations
 from collections import Counter
 from dataclasses import dataclass
 
-from reconcile.records.results import Audit, Finding
+from reconcile.records.results import Audit
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.plain import plain
 from reconcile.reporter.words import (
     STATUSES,
     brief_since,
     counted,
-    interval,
     kind_words,
     listed,
     moment,
@@ -22,7 +21,7 @@ from reconcile.reporter.words import (
 )
 
 NO_EVIDENCE = ("adjusted", "outside_model", "outside_electrode_range", "unbuffered", "void", "not_solved")
-MOST_NAMED = 4
+MOST_NAMED = 8
 
 
 @dataclass(frozen=True)
@@ -79,7 +78,7 @@ def _stands_out(audit: Audit) -> str:
         silence = "No fault is supported by the readings; smaller ones than the smallest detectable would not be seen."
         return f"{silence} {left}" if outstanding else silence
     named = [
-        ", ".join(filter(None, (f"{plain(f.id)} {_lower(title(f))}", _size(f), brief_since(f))))
+        ", ".join(filter(None, (f"{plain(f.id)} {_lower(title(f))}", quantity(f), brief_since(f))))
         for f in audit.findings[:MOST_NAMED]
     ]
     more = len(audit.findings) - MOST_NAMED
@@ -90,11 +89,6 @@ def _stands_out(audit: Audit) -> str:
 
 def _lower(text: str) -> str:
     return text[:1].lower() + text[1:]
-
-
-def _size(finding: Finding) -> str:
-    between = interval(finding)
-    return quantity(finding) + (f" ({between})" if between else "")
 
 
 def _read_next(audit: Audit) -> str:

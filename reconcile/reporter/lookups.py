@@ -103,6 +103,33 @@ class Lookups:
             chosen = own
         return np.union1d(chosen, own).astype(np.intp)
 
+    def part(self, finding: Finding) -> FloatArray:
+        """(n,) part of each residual that a finding accounts for [pH]; 0 elsewhere."""
+        part = np.zeros(len(self.audit.residual))
+        own = np.asarray(finding.readings, np.intp)
+        if len(finding.shift) == len(own):
+            part[own] = np.where(np.isfinite(finding.shift), finding.shift, 0.0)
+        return part
+
+    @cached_property
+    def all_parts(self) -> FloatArray:
+        """(n,) part of each residual that all findings together account for [pH]."""
+        return self._together(self.audit.findings)
+
+    def _together(self, findings: Iterable[Finding]) -> FloatArray:
+        whole = np.zeros(len(self.audit.residual))
+        for finding in findings:
+            whole += self.part(finding)
+        return whole
+
+    def apart_from_others(self, findings: Iterable[Finding]) -> FloatArray:
+        """(n,) residual with what every other finding accounts for taken out, and these left in [pH]."""
+        return self.audit.residual - (self.all_parts - self._together(findings))
+
+    def about(self, name: str, types: tuple[str, ...]) -> list[Finding]:
+        """Findings about one subject."""
+        return [f for f in self.audit.findings if f.subject_type in types and f.subject == name]
+
     @cached_property
     def findings_of_meter(self) -> dict[str, list[str]]:
         """Meter name -> ids of findings about it."""

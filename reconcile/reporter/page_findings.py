@@ -22,6 +22,7 @@ from reconcile.reporter.words import (
     listed,
     minus,
     quantity,
+    rival_words,
     signed,
     since_words,
     size_words,
@@ -81,7 +82,7 @@ def sections(audit: Audit, lookups: Lookups, drawn: list[Drawn]) -> list[Section
 def _section(
     audit: Audit, lookups: Lookups, finding: Finding, index: int, own: Picture | None, on_page: set[int]
 ) -> Section:
-    facts = [("How large", size_words(finding))]
+    facts = [("How large" if finding.estimate is not None else "What would explain it", size_words(finding))]
     when = since_words(finding)
     if when:
         facts.append(("Since when", when))
@@ -211,7 +212,7 @@ def overview(audit: Audit) -> View | None:
                     Cell(brief_since(finding) or "–", "s"),
                     Cell(f"{len(finding.readings):,}", "n"),
                     Cell(f"{len(finding.impact):,}", "n"),
-                    text_cell(listed([title(r) for r in finding.rivals], 3) or "–"),
+                    text_cell(listed([rival_words(finding, r) for r in finding.rivals], 3) or "–"),
                 ],
             )
         )

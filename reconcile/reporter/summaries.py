@@ -17,6 +17,7 @@ from reconcile.reporter.words import (
     explains_words,
     interval,
     kind_words,
+    rival_words,
     silence_words,
     since_words,
     subject_words,
@@ -119,7 +120,7 @@ def findings(audit: Audit) -> Table:
                 len(f.impact),
                 float(f.log_likelihood_gain),
                 float(f.family_wise_p),
-                "; ".join(title(r) for r in f.rivals),
+                "; ".join(rival_words(f, r) for r in f.rivals),
                 plain(f.next_check),
                 plain(f.text),
             )

@@ -53,7 +53,7 @@ STATUS_MEANINGS: Mapping[str, str] = {
     "void": "marked void in the record; kept and shown, no evidence",
     "not_solved": "no prediction was reached",
 }
-TIMELESS = ("reading", "batch", "acid")
+TIMELESS = ("reading", "batch", "acid", "lot", "buffer")
 """Subjects of which "throughout the record" would say nothing."""
 MINUS = "−"
 
@@ -202,17 +202,19 @@ def chance(p: float) -> str:
 
 
 def certainty_words(finding: Finding) -> str:
-    """How sure: what the gain and the family-wise p mean."""
-    sure = (
-        f"It raises the log likelihood of the record by {half_up(finding.log_likelihood_gain, 1)}; the chance of a "
-        f"signal this strong anywhere in a record without faults is {chance(finding.family_wise_p)}."
+    """How sure: gain, chance, and how many other explanations there are."""
+    rivals = counted(len(finding.rivals), "other explanation") if finding.rivals else "no other explanation"
+    return (
+        f"family-wise p {chance(finding.family_wise_p)}, the chance of a signal this strong anywhere in a record "
+        f"without faults; log-likelihood gain {half_up(finding.log_likelihood_gain, 1)}; {rivals} within reach"
     )
-    if finding.rivals:
-        number = len(finding.rivals)
-        sure += f" The record cannot tell it from {number} other explanation{'s' if number > 1 else ''}, listed below."
-    else:
-        sure += " No other explanation comes within reach of it."
-    return sure
+
+
+def rival_words(finding: Finding, rival: Finding) -> str:
+    """A rival in few words: its kind, and its subject where that is another one."""
+    what = title(rival) if rival.subject != finding.subject else kind_words(rival.kind)
+    explains = explains_words(rival)
+    return f"{what} ({explains})" if explains else what
 
 
 EXPLAINS: Mapping[str, str] = {

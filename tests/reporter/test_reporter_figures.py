@@ -13,7 +13,7 @@ from matplotlib.figure import Figure
 
 from reconcile.records.results import Audit
 from reconcile.reporter.figures import PICTURES
-from reconcile.reporter.figures.finding import explained_part, finding_picture
+from reconcile.reporter.figures.finding import finding_picture
 from reconcile.reporter.figures.marks import RASTER_FROM
 from reconcile.reporter.figures.style import styled
 from reconcile.reporter.lookups import Lookups
@@ -98,7 +98,21 @@ def test_a_finding_is_shown_before_and_after(invented: Audit) -> None:
     own = invented.residual[finding.readings]
     np.testing.assert_allclose(np.sort(offsets(before)[:, 1])[-len(own) :], np.sort(own))
     assert np.abs(offsets(after)[:, 1]).max() < 0.13
-    assert explained_part(invented, finding).sum() == pytest.approx(0.14 * len(finding.readings))
+    assert Lookups(invented).part(finding).sum() == pytest.approx(0.14 * len(finding.readings))
+
+
+def test_other_findings_on_the_same_readings_are_taken_out_and_said_so(invented: Audit) -> None:
+    step = invented.findings[0]
+    other = dataclasses.replace(
+        invented.findings[1], id="F3", readings=step.readings, shift=np.full(len(step.readings), 0.05)
+    )
+    audit = dataclasses.replace(invented, findings=(*invented.findings, other))
+    with styled():
+        before, after = finding_picture(audit, Lookups(audit), step).axes
+    assert before.get_title(loc="left") == "as recorded, other findings taken out"
+    assert after.get_title(loc="left") == "F1 taken out too"
+    own = np.sort(audit.residual[step.readings] - 0.05)
+    np.testing.assert_allclose(np.sort(offsets(before)[:, 1])[-len(own) :], own)
 
 
 @pytest.mark.parametrize("name", sorted(PICTURES))

@@ -46,23 +46,25 @@ PICTURES: Mapping[str, Picture] = {
     "residuals_time": Picture(
         residuals_time,
         "Residual through time, by meter",
-        "One strip a meter, all on one scale; the band is twice the median spread of a clean record.",
+        "One strip a meter, all on one scale, with what findings about other subjects account for taken out; the band "
+        "is twice the median spread of a clean record. Readings as recorded are in the table of residuals.",
         "Residual against time, one strip for each meter. The values are in the table of residuals.",
         lambda audit, lookups: _rest(len(set(lookups.meter.tolist())), MOST_METERS, "meters"),
     ),
     "residuals_lots": Picture(
         residuals_lots,
         "Residual by stock lot",
-        "Every reading counts once for each lot its solution rests on, so one bad lot also shows on the lots it was "
-        "used with; the findings take this into account, the picture does not.",
+        "Every reading counts once for each lot its solution rests on. What findings about other subjects account for "
+        "is taken out, so that one bad lot does not show on the lots it was used with.",
         "Residuals of the readings that rest on each stock lot, sorted by their mean. "
-        "The means are in the table of stocks.",
+        "Means as recorded are in the table of stocks.",
         lambda audit, lookups: _rest(len(audit.records.lots), MOST_LOTS, "lots"),
     ),
     "meter_lot": Picture(
         meter_lot,
         "Mean residual by meter and lot",
-        "A fault of a meter shows along its row, a fault of a lot down its column.",
+        "As recorded, nothing taken out: a fault of a meter shows along its row, a fault of a lot down its column and, "
+        "more weakly, in the columns of the lots it was used with.",
         "Grid of the mean residual of each meter on each stock lot, with the number of readings.",
         lambda audit, lookups: " ".join(
             filter(

@@ -11,7 +11,7 @@ from matplotlib.ticker import MaxNLocator
 from reconcile.records.arrays import BoolArray, FloatArray
 from reconcile.records.results import Audit, Finding
 from reconcile.reporter.figures.marks import MARKS, RASTER_FROM, legend_above, limit
-from reconcile.reporter.figures.style import GREY, OCHRE, WIDTH, band, empty, figure, whole_ticks, zero_line
+from reconcile.reporter.figures.style import GREY, OCHRE, WIDTH, band, empty, figure, label, whole_ticks, zero_line
 from reconcile.reporter.figures.timeline import day, timeline
 from reconcile.reporter.lookups import Lookups
 
@@ -19,17 +19,8 @@ AGAINST_PH = ("meter_span", "lot_identity", "acid_constant", "probe_matrix", "ca
 AGAINST_TEMPERATURE = ("meter_temperature",)
 
 
-def explained_part(audit: Audit, finding: Finding) -> FloatArray:
-    """(n,) part of each residual that the finding accounts for [pH]; 0 elsewhere."""
-    part = np.zeros(len(audit.residual))
-    own = np.asarray(finding.readings, np.intp)
-    if len(finding.shift) == len(own):
-        part[own] = np.where(np.isfinite(finding.shift), finding.shift, 0.0)
-    return part
-
-
 def finding_picture(audit: Audit, lookups: Lookups, finding: Finding) -> Figure:
-    """Two panels on one scale: as recorded, and with the finding taken out."""
+    """Two panels on one scale, other findings taken out of both: with this one left in, and with it taken out."""
     rows = lookups.of_subject(finding)
     rows = rows[np.isfinite(audit.residual[rows])]
     line = timeline(lookups)
@@ -43,15 +34,16 @@ def finding_picture(audit: Audit, lookups: Lookups, finding: Finding) -> Figure:
     if not len(rows):
         return empty("None of these readings has a residual and a place on the axis.")
     own = np.isin(rows, finding.readings)
-    before = audit.residual[rows]
-    after = before - explained_part(audit, finding)[rows]
+    before = lookups.apart_from_others([finding])[rows]
+    after = before - lookups.part(finding)[rows]
+    others = not np.allclose(before, audit.residual[rows], equal_nan=True)
+    left = "as recorded, other findings taken out" if others else "as recorded"
     half = limit(np.concatenate([before, after]))
     drawn = figure(WIDTH, 2.35)
     panels = drawn.subplots(1, 2, sharey=True, sharex=True)
     spread = float(np.nanmedian(audit.u_residual[rows]))
-    for axes, values, title in zip(
-        panels, (before, after), ("as recorded", f"with {finding.id} taken out"), strict=True
-    ):
+    without = f"{label(finding.id)} taken out too" if others else f"with {label(finding.id)} taken out"
+    for axes, values, title in zip(panels, (before, after), (left, without), strict=True):
         band(axes, spread)
         zero_line(axes)
         _points(axes, x[rows], np.clip(values, -half, half), own)
@@ -61,9 +53,9 @@ def finding_picture(audit: Audit, lookups: Lookups, finding: Finding) -> Figure:
                 low, high = (day(t) for t in finding.since_interval95)
                 axes.axvspan(low, high, color=OCHRE, alpha=0.14, linewidth=0, zorder=0.5)
         axes.set_title(title)
-        axes.set(ylim=(-half, half), xlabel=name)
+        axes.set(ylim=_ends(np.clip(np.concatenate([before, after]), -half, half), spread), xlabel=name)
     if dress is line:
-        line.dress(panels[0], most=5)
+        line.dress(panels[0], most=5, x=x[rows])
     else:
         panels[0].xaxis.set_major_locator(MaxNLocator(6, steps=[1, 2, 5, 10]))
         air = max(0.05 * float(np.ptp(x[rows])), 0.1)
@@ -77,6 +69,12 @@ def finding_picture(audit: Audit, lookups: Lookups, finding: Finding) -> Figure:
                               label=f"other reading of the same subject ({int((~own).sum()):,})"))  # fmt: skip
     legend_above(drawn, entries)
     return drawn
+
+
+def _ends(values: FloatArray, spread: float) -> tuple[float, float]:
+    """Ends of the axis: all values, and at least a little more than the band of a clean record."""
+    least = 2.6 * spread if np.isfinite(spread) else 0.02
+    return min(1.12 * float(values.min()), -least), max(1.12 * float(values.max()), least)
 
 
 def _points(axes: Axes, x: FloatArray, y: FloatArray, own: BoolArray) -> None:

@@ -16,16 +16,14 @@ MOST_LOTS = 40
 
 
 def lots_shown(lookups: Lookups) -> IntArray:
-    """Lots with findings first, then the most used; at most forty, by rising mean residual."""
-    reading, lot = _pairs(lookups)
+    """Lots with findings first, then the most used; at most forty."""
+    _, lot = _pairs(lookups)
     number = len(lookups.lot_names)
     count = np.bincount(lot, minlength=number)
-    total = np.bincount(lot, weights=lookups.audit.residual[reading], minlength=number)
     used = np.flatnonzero(count)
     accused = np.array([str(n) in lookups.findings_of_lot for n in lookups.lot_names[used]], bool)
     order = np.lexsort((lookups.lot_names[used].astype(str), -count[used], ~accused))
-    chosen = used[order][:MOST_LOTS]
-    return chosen[np.argsort(total[chosen] / count[chosen], kind="stable")].astype(np.intp)
+    return used[order][:MOST_LOTS].astype(np.intp)
 
 
 def _pairs(lookups: Lookups) -> tuple[IntArray, IntArray]:
@@ -44,12 +42,18 @@ def residuals_lots(audit: Audit, lookups: Lookups) -> Figure:
     axes = drawn.subplots()
     kept = np.isin(lot, shown)
     reading, lot = reading[kept], lot[kept]
-    half = limit(audit.residual[reading])
+    drawn_values = []
+    for one in shown.tolist():
+        about = lookups.about(str(audit.records.lots.name[one]), ("lot",))
+        drawn_values.append(lookups.apart_from_others(about)[reading[lot == one]])
+    order = sorted(range(len(shown)), key=lambda k: (float(drawn_values[k].mean()), k))
+    shown, drawn_values = shown[order], [drawn_values[k] for k in order]
+    half = limit(np.concatenate(drawn_values))
     many = len(reading) > RASTER_FROM
     zero_line(axes, across=False)
     names = []
     for height, one in enumerate(shown.tolist()):
-        values = audit.residual[reading[lot == one]]
+        values = drawn_values[height]
         accused = str(lookups.lot_names[one]) in lookups.findings_of_lot
         level = np.full(len(values), height)
         axes.plot(

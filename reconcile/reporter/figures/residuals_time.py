@@ -44,25 +44,27 @@ def residuals_time(audit: Audit, lookups: Lookups) -> Figure:
     line = timeline(lookups)
     shown = meters_shown(audit, lookups)
     finite = np.isfinite(audit.residual) & line.placed
+    residual = {name: lookups.apart_from_others(lookups.about(name, METER_TYPES)) for name in shown}
     if not shown or not finite.any():
         return empty("No reading has both a residual and a place in time.")
     meter = audit.records.readings["meter"]
     drawn = figure(WIDTH, 0.85 + (2.0 if len(shown) == 1 else (0.95 if len(shown) <= 6 else 0.8) * len(shown)))
     strips = drawn.subplots(len(shown), 1, sharex=True, sharey=True, squeeze=False)[:, 0]
-    half, total = limit(audit.residual[finite]), int(finite.sum())
+    own_rows = {name: finite & (meter == name) for name in shown}
+    half = limit(np.concatenate([residual[name][own_rows[name]] for name in shown]))
+    total = int(finite.sum())
     entries = handles(audit.status[finite])
     drew: set[str] = set()
     for axes, name in zip(strips, shown, strict=True):
-        own = finite & (meter == name)
+        own, values = own_rows[name], residual[name]
         band(axes, float(np.nanmedian(audit.u_residual)))
         zero_line(axes)
-        inside = np.where(np.abs(audit.residual) <= half, audit.residual, np.nan)
+        inside = np.where(np.abs(values) <= half, values, np.nan)
         cloud(axes, line.x[own], inside[own], audit.status[own], total)
-        beyond(axes, line.x[own], audit.residual[own], half, most=2)
-        for finding in audit.findings:
-            if finding.subject_type in METER_TYPES and finding.subject == name:
-                _course(axes, finding, line)
-                drew.add("fit")
+        beyond(axes, line.x[own], values[own], half, most=2)
+        for finding in lookups.about(name, METER_TYPES):
+            _course(axes, finding, line)
+            drew.add("fit")
         drew |= _dated_marks(axes, name, audit, line, half)
         axes.set_title(f"{label(name) or 'meter not named'}   n = {int(own.sum()):,}")
         axes.set_ylim(-half, half)

@@ -43,12 +43,12 @@ class Timeline:
     def name(self) -> str:
         return "read at" if self.dated else "reading, in order of the record"
 
-    def dress(self, axes: Axes, most: int = 9) -> None:
-        """Ticks, limits and name of the axis."""
-        known = self.x[self.placed]
+    def dress(self, axes: Axes, most: int = 9, x: FloatArray | None = None) -> None:
+        """Ticks and limits of the axis; of the whole record, or of these places on it."""
+        known = self.x[self.placed] if x is None else x[np.isfinite(x)]
         if len(known):
             low, high = float(known.min()), float(known.max())
-            air = max(0.02 * (high - low), 0.02 if self.dated else 0.5)
+            air = max(0.02 * (high - low), 0.02 if x is None and self.dated else 0.6)
             axes.set_xlim(low - air, high + air)
         if not self.dated:
             axes.xaxis.set_major_locator(MaxNLocator(most - 1, integer=True))

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import sys
 from collections.abc import Sequence
 from typing import Annotated, Any
@@ -112,8 +113,14 @@ for module in (read, predict, audit, substances):
     module.add_to(app)
 
 
+THREADS = ("OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS", "OMP_NUM_THREADS", "VECLIB_MAXIMUM_THREADS")
+"""Where the libraries of linear algebra look for their number of threads, when numpy is first imported."""
+
+
 def main() -> None:
     """Entry point of the console script."""
+    for name in THREADS:  # one thread: the matrices are small, and sums in one order give the same bytes everywhere
+        os.environ.setdefault(name, "1")
     for stream in (sys.stdout, sys.stderr):
         if hasattr(stream, "reconfigure"):  # a terminal that lacks a character shows a mark in its place
             stream.reconfigure(errors="replace")

@@ -58,10 +58,10 @@ def decimals(text: str) -> str:
     return "0." + "0" * max(1, len(text.partition(".")[2]))
 
 
-def main() -> None:
-    """Write the workbook."""
+def main(folder: Path = HERE) -> None:
+    """Write the workbook into a folder."""
     everything, allowed = rows(), allowances()
-    book = xlsxwriter.Workbook(str(HERE / "published_buffers.xlsx"))
+    book = xlsxwriter.Workbook(str(folder / "published_buffers.xlsx"))
     book.set_properties({"created": datetime(2025, 1, 6), "title": "Published buffer tables as a record"})
     bold = book.add_format({"bold": True, "text_wrap": True, "valign": "top", "bottom": 1})
     shown = {f"0.{'0' * n}": book.add_format({"num_format": f"0.{'0' * n}"}) for n in range(1, 5)}

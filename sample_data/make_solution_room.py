@@ -7,7 +7,7 @@ come from the simulator's own chemistry (tests/simulated), not from the engine t
 from __future__ import annotations
 
 import sys
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from datetime import datetime, timedelta
 from pathlib import Path
 from typing import Any
@@ -69,7 +69,7 @@ def take(lot: Lot, concentration: float, litres: float, style: int, rng: np.rand
     return Part(lot, amount, unit, None, "", stated, stated * by_mass * error)
 
 
-def make_batches(rng: np.random.Generator) -> list[Batch]:
+def make_batches(lots: list[Lot], rng: np.random.Generator) -> list[Batch]:
     """All preparations, in order of making."""
     kinds = [kind for kind in KINDS for _ in range(kind[2])]
     order, days = rng.permutation(len(kinds)), np.sort(rng.uniform(0.0, DAYS, len(kinds)))
@@ -82,7 +82,7 @@ def make_batches(rng: np.random.Generator) -> list[Batch]:
         wanted = [first, first * float(np.exp(rng.uniform(np.log(low), np.log(high))))] if high else [first]
         style, litres = int(rng.integers(3)), float(rng.choice([0.5, 1.0, 2.0]))
         for substance, concentration in zip(substances, wanted, strict=True):
-            open_lots = [lot for lot in LOTS if lot.label == substance and lot.opened <= batch.day]
+            open_lots = [lot for lot in lots if lot.label == substance and lot.opened <= batch.day]
             lot = open_lots[-1] if len(open_lots) == 1 or rng.random() < 0.75 else open_lots[-2]
             batch.parts.append(take(lot, concentration, litres, style, rng))
         batches.append(batch)
@@ -139,26 +139,28 @@ def read_all(batches: list[Batch], rng: np.random.Generator) -> list[dict[str, A
     return rows
 
 
-def transpose_one(rows: list[dict[str, Any]], batches: list[Batch]) -> int:
+def transpose_one(rows: list[dict[str, Any]], batches: list[Batch], lots: list[Lot]) -> int:
     """Exchange two neighbouring digits of one reading of a sound batch on a sound meter; its index."""
-    sound = {lot.name for lot in LOTS if lot.factor < 1.1 and not lot.content}
+    sound = {lot.name for lot in lots if lot.factor < 1.1 and not lot.content}
     for index, row in enumerate(rows[100:], start=100):
-        text, lots = f"{row['ph']:.2f}", {part.lot.name for part in batches[row["batch"]].parts}
+        text, used = f"{row['ph']:.2f}", {part.lot.name for part in batches[row["batch"]].parts}
         far_apart = abs(int(text[2]) - int(text[3])) >= 5
-        if METERS[row["meter"]] in ("Bench 1", "Bench 4", "Hatch") and far_apart and lots <= sound:
+        if METERS[row["meter"]] in ("Bench 1", "Bench 4", "Hatch") and far_apart and used <= sound:
             row["slip_from"], row["ph"] = row["ph"], float(f"{text[:2]}{text[3]}{text[2]}")
             return index
     raise LookupError("no reading to transpose")
 
 
-def draw_lots(rng: np.random.Generator) -> None:
-    """Give every sound lot its own small error within its tolerance."""
-    for lot in LOTS:
+def draw_lots(rng: np.random.Generator) -> list[Lot]:
+    """The bottles, every sound one with its own small error within its tolerance."""
+    lots = [replace(lot) for lot in LOTS]
+    for lot in lots:
         if lot.factor == 1.0 and not lot.content:
             lot.factor = float(np.exp(rng.normal(0.0, lot.tolerance / 100.0 / np.sqrt(3.0))))
+    return lots
 
 
-def truth(batches: list[Batch], rows: list[dict[str, Any]], slip: int) -> list[dict[str, Any]]:
+def truth(lots: list[Lot], batches: list[Batch], rows: list[dict[str, Any]], slip: int) -> list[dict[str, Any]]:
     """Every planted fault, in the words of a finding, with the sheet rows it touches."""
 
     def of_meter(name: str, since: datetime | None = None) -> list[int]:
@@ -177,9 +179,9 @@ def truth(batches: list[Batch], rows: list[dict[str, Any]], slip: int) -> list[d
 
     row = rows[slip]
     days = (FIRST_DAY + timedelta(days=DAYS) - DRIFT_FROM) / timedelta(days=1)
-    wrong_strength = next(lot for lot in LOTS if lot.factor > 1.1)
-    hydrate = next(lot for lot in LOTS if "hydrate" in lot.content)
-    other = next(lot for lot in LOTS if lot.content == ACETIC)
+    wrong_strength = next(lot for lot in lots if lot.factor > 1.1)
+    hydrate = next(lot for lot in lots if "hydrate" in lot.content)
+    other = next(lot for lot in lots if lot.content == ACETIC)
     label, held = (catalogue().by_name[name].molar_mass for name in (hydrate.label, hydrate.content))
     since = {"Bench 3": STEP_AT.isoformat(), "Bench 2": DRIFT_FROM.isoformat()}
     return [
@@ -216,14 +218,14 @@ def truth(batches: list[Batch], rows: list[dict[str, Any]], slip: int) -> list[d
     ]
 
 
-def main() -> None:
-    """Write the workbook and the truth."""
+def main(folder: Path = HERE) -> None:
+    """Write the workbook and the truth into a folder."""
     rng = np.random.default_rng(20250303)
-    draw_lots(rng)
-    batches = make_batches(rng)
+    lots = draw_lots(rng)
+    batches = make_batches(lots, rng)
     rows = read_all(batches, rng)
-    slip = transpose_one(rows, batches)
-    faults = truth(batches, rows, slip)
+    slip = transpose_one(rows, batches, lots)
+    faults = truth(lots, batches, rows, slip)
     touched = {row for fault in faults for row in fault["rows"]}
     clean = [i for i in range(len(rows)) if i + 2 not in touched]
     unknown_in = next(
@@ -236,8 +238,8 @@ def main() -> None:
         if not (u.written or "").replace(".", "").isdigit()
     ]
     lost += [{"row": i + 2, "why": "a substance nobody knows"} for i, r in enumerate(rows) if r["batch"] == unknown_in]
-    write_workbook(HERE / "solution_room.xlsx", LOTS, METERS, batches, rows, untidy, unknown_in)
-    write_truth(HERE / "solution_room_truth.json", faults, sorted(lost, key=lambda item: item["row"]))
+    write_workbook(folder / "solution_room.xlsx", lots, METERS, batches, rows, untidy, unknown_in)
+    write_truth(folder / "solution_room_truth.json", faults, sorted(lost, key=lambda item: item["row"]))
     print(f"solution_room.xlsx: {len(batches)} batches, {len(rows)} readings, {len(faults)} planted faults")
 
 

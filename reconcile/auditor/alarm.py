@@ -20,16 +20,17 @@ CERTAIN = 1e-6
 """Family-wise probability under which the plain Bonferroni bound is given instead of a simulated one."""
 
 
-def single_p(model: Model, x: sparse.csc_array, z: FloatArray) -> FloatArray:
-    """Two-sided probability of a score as large as z, for each of k columns, in a clean record.
+def score_df(model: Model, x: sparse.csc_array) -> FloatArray:
+    """Degrees of freedom of the t law that each column's score follows in a clean record, FloatArray (k,).
 
     The score is normal only if the spreads are known and the noise is normal. Spreads known with limited degrees of
     freedom and heavy-tailed noise are met by a t law of the same kurtosis, their contributions weighted by their shares
     of the score's variance (Welch-Satterthwaite, JCGM 100:2008, G.4.1, for the first).
     """
     layout = model.layout
-    px = model.project(x.toarray())
-    size = np.einsum("ij,ij->j", px, x.toarray())
+    column = x.toarray()
+    px = model.project(column)
+    size = np.einsum("ij,ij->j", px, column)
     a = px / np.sqrt(np.maximum(size, 1e-12))
     noise = a**2 * model.noise[:, None]
     share = noise.sum(axis=0)
@@ -42,8 +43,12 @@ def single_p(model: Model, x: sparse.csc_array, z: FloatArray) -> FloatArray:
     kurtosis += 6.0 * (known**2 / (df_known - 4.0)[:, None]).sum(axis=0)
     if np.isfinite(model.components.tail):
         kurtosis += 6.0 / max(model.components.tail - 4.0, 0.25) * share**2 * concentration
-    df = 4.0 + 6.0 / np.maximum(kurtosis, 1e-6)
-    return np.asarray(2.0 * stats.t.sf(np.abs(z), df), float)
+    return np.asarray(4.0 + 6.0 / np.maximum(kurtosis, 1e-6), float)
+
+
+def single_p(model: Model, x: sparse.csc_array, z: FloatArray) -> FloatArray:
+    """Two-sided probability of a score as large as z, for each of k columns, in a clean record."""
+    return np.asarray(2.0 * stats.t.sf(np.abs(z), score_df(model, x)), float)
 
 
 def equivalent_z(p: float) -> float:

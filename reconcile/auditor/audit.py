@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
+from dataclasses import replace
 
 import numpy as np
 
@@ -10,9 +11,11 @@ from reconcile.auditor.components import Components, Model, noise_of
 from reconcile.auditor.faults import KINDS
 from reconcile.auditor.findings import build, with_impact
 from reconcile.auditor.layout import Layout, build_layout, evidence
+from reconcile.auditor.next_check import next_check
 from reconcile.auditor.proposals import FaultKind
 from reconcile.auditor.retrial import Retrial
 from reconcile.auditor.search import Search
+from reconcile.auditor.silence import not_testable, smallest_detectable
 from reconcile.records.arrays import BoolArray, FloatArray, TextArray
 from reconcile.records.book import BatchRecords
 from reconcile.records.results import Audit, Finding, Hazard, Prediction, Repredict, Spreads
@@ -47,7 +50,15 @@ def audit(
     state = search.run()
     say("describing findings and their rivals")
     pairs = build(search, state, layout, float(settings["audit.reach"]))
-    findings = with_impact(layout, [finding for finding, _ in pairs])
+    say("choosing next checks")
+    checked = [
+        replace(finding, next_check=next_check(search, state, j, candidates))
+        for j, (finding, candidates) in enumerate(pairs)
+    ]
+    findings = with_impact(layout, checked)
+    say("working out what could not be seen")
+    pool, bare, _ = search.scored(state.components, [])
+    power = float(settings["audit.detectable_power"])
     residual = records.readings["ph"] - prediction.ph
     model = search.model(state.components, [])
     spread = full_spread(layout, model, prediction, usable)
@@ -64,8 +75,8 @@ def audit(
         explained_by=explained_by,
         evidence=usable,
         findings=tuple(findings),
-        not_testable=(),
-        smallest_detectable=(),
+        not_testable=not_testable(layout),
+        smallest_detectable=smallest_detectable(layout, bare, pool, power, search.rate),
         hazards=hazards(records),
         spreads=spreads(layout, state.components, len(records.readings)),
     )

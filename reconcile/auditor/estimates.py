@@ -23,13 +23,15 @@ def critical_z(
     return float(optimize.brentq(excess, low, high, xtol=1e-3))
 
 
-def critical_score(alarm: Alarm, k: int, rate: float, seed: int) -> float:
-    """Score that the block of candidate k had to pass."""
+def critical_score(alarm: Alarm, k: int, df: float, rate: float, seed: int) -> float:
+    """Score that candidate k of the pool had to pass, whose score follows a t law with df in a clean record."""
     correlation, root, one_sided = alarm.block(int(alarm.pool.block[k]))
     trials = alarm.pool.trials(k)
-    if not len(correlation):
-        return float(stats.norm.isf(rate / trials / 2.0))
-    return critical_z(correlation, root, one_sided, trials, rate, seed)
+    if len(correlation):
+        normal = critical_z(correlation, root, one_sided, trials, rate, seed)
+    else:
+        normal = float(stats.norm.isf(rate / trials / 2.0))
+    return float(stats.t.isf(stats.norm.sf(normal), df))
 
 
 def _tail_beyond(x: float, mean: float, cut: float) -> float:

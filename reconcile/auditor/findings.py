@@ -10,13 +10,13 @@ from datetime import datetime
 import numpy as np
 from scipy import stats
 
-from reconcile.auditor.alarm import Alarm
+from reconcile.auditor.alarm import Alarm, score_df
 from reconcile.auditor.components import Model
 from reconcile.auditor.estimates import critical_score, given_selected
 from reconcile.auditor.layout import Layout
 from reconcile.auditor.scoring import Candidate, Pool, Scores
 from reconcile.auditor.search import Chosen, Search, State
-from reconcile.auditor.wording import sentence, short_name, since_words, support_words
+from reconcile.auditor.wording import name_of, sentence, since_words, support_words
 from reconcile.records.arrays import IntArray
 from reconcile.records.results import Finding
 
@@ -135,13 +135,16 @@ def interval_of(
     cut = 0.0
     if k is not None:
         seed = zlib.crc32(candidate.alarm_class.encode())
-        cut = critical_score(Alarm(pool, model), k, search.rate, seed) * info**-0.5
+        df = float(score_df(model, candidate.x)[0])
+        cut = critical_score(Alarm(pool, model), k, df, search.rate, seed) * info**-0.5
     low, middle, high = given_selected(amplitude, u, cut, (0.025, 0.5, 0.975))
     return middle, (low, high)
 
 
-def build(search: Search, state: State, layout: Layout, reach: float) -> list[tuple[Finding, list[Candidate]]]:
-    """Findings with their rivals, best first, and beside each the candidates (its own first) for the next check."""
+def build(
+    search: Search, state: State, layout: Layout, reach: float
+) -> list[tuple[Finding, list[tuple[Candidate, float]]]]:
+    """Findings with their rivals, best first, and beside each the candidates with amplitudes, its own first."""
     result = []
     for j, one in enumerate(state.chosen):
         others = [c.candidate for i, c in enumerate(state.chosen) if i != j]
@@ -153,34 +156,28 @@ def build(search: Search, state: State, layout: Layout, reach: float) -> list[tu
         between = onset_interval(layout, pool, scores, one.candidate, one.gain)
         finding = described(search, layout, one.candidate, amplitude, interval, one.gain, one.p, between)
         rivals = distinct(pool, scores, one, reach)
-        told = []
+        told: list[Finding] = []
+        tried = [(one.candidate, amplitude)]
         for k, other in rivals:
             support = search.support(other, pool, model)
             own = search.model(state.components, others, other.own)
             own_estimate = interval_of(search, other, pool, model, own, None)
             size, ends = (float(scores.amplitude[k]), None) if own_estimate is None else own_estimate
+            tried.append((other, size))
             between = onset_interval(layout, pool, scores, other, float(scores.gain[k]))
             told.append(described(search, layout, other, size, ends, support.gain, support.p, between))
         batches = len({int(b) for b in layout.batch[rows_of(one.candidate)]})
         words = [finding.text, support_words(one.p, len(finding.readings), batches, len(told))]
         if told:
-            names = "; ".join(short_name(r.kind, r.subject, _detail(r)) for r in told[:3])
+            names = "; ".join(name_of(c, a) for c, a in tried[1:4])
             words.append(f"It could also be: {names}.")
         result.append(
             (
                 replace(finding, id=f"F{j + 1}", rivals=tuple(told), text=" ".join(words)),
-                [one.candidate, *(c for _, c in rivals)],
+                tried,
             )
         )
     return result
-
-
-def _detail(finding: Finding) -> str:
-    explains = finding.would_explain or {}
-    for name in ("substance", "component", "solutions", "slip"):
-        if explains.get(name):
-            return str(explains[name])
-    return ""
 
 
 def impact_of(layout: Layout, finding: Finding) -> IntArray:

@@ -54,6 +54,15 @@ class Told:
 
 
 @dataclass(frozen=True)
+class Site:
+    """A reading that could be taken: on what kind of solution, at which pH and temperature [°C]."""
+
+    ph: float
+    temperature: float
+    family: str
+
+
+@dataclass(frozen=True)
 class Proposal:
     """Candidates of one kind, k of them.
 
@@ -81,6 +90,8 @@ class Proposal:
     own: Sequence[tuple[int, ...]] = ()
     same: Sequence[object] = field(default_factory=tuple)
     """What tells apart candidates of one kind and subject in a list of rivals (a substance); () when nothing does."""
+    at: Callable[[int, Site], float] | None = None
+    """Effect at amplitude 1 on a further reading of the subject meter; None for kinds that are no meter's."""
     df: IntArray | None = None
     """Degrees of freedom of a candidate drawn from the readings themselves; None: one each."""
 
@@ -125,6 +136,7 @@ def linear(
     block: Sequence[str] | None = None,
     log_prior: FloatArray | None = None,
     own: Sequence[tuple[int, ...]] = (),
+    at: Callable[[int, Site], float] | None = None,
 ) -> Proposal | None:
     """A proposal whose candidates all have a free amplitude; None when there is no candidate."""
     k = len(subject)
@@ -142,4 +154,5 @@ def linear(
         np.zeros(k, bool),
         tell,
         own,
+        at=at,
     )

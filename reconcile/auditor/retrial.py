@@ -17,15 +17,14 @@ from reconcile.records.results import Change, Repredict
 class Supposed:
     """One supposed truth: contributions (of a lot or of one batch) that hold another form, or another amount.
 
-    contributions : IntArray (j,); form : name or "" to keep it; factor : multiplies the amounts
-    at_equal_mass : weighed contributions keep their mass under the other form
+    contributions : IntArray (j,); form : name or "" to keep it
+    factor : mol of the supposed content for each mol stated
     co2 : dissolved carbon dioxide added [mol/kg]
     """
 
     contributions: tuple[int, ...]
     form: str = ""
     factor: float = 1.0
-    at_equal_mass: bool = False
     co2: float = 0.0
 
 
@@ -80,7 +79,6 @@ class Retrial:
                     contributions=np.array(s.contributions, np.intp),
                     form=s.form,
                     factor=np.full(len(s.contributions), s.factor),
-                    at_equal_mass=s.at_equal_mass,
                     dissolved_co2=s.co2,
                 )
                 for s, rows in zip(new, touched, strict=True)

@@ -5,6 +5,9 @@ from __future__ import annotations
 from collections.abc import Mapping
 from datetime import datetime
 
+from reconcile.auditor.proposals import Told
+from reconcile.auditor.scoring import Candidate
+
 # {subject}, {size}, {interval}, {since}, {detail}, {direction} are filled; each sentence says what and how large
 SENTENCES: Mapping[str, str] = {
     "meter_offset": "Meter {subject} reads {size} pH {direction}{interval}.",
@@ -86,6 +89,20 @@ def fields_of(subject: str | tuple[str, ...]) -> dict[str, str]:
 def short_name(kind: str, subject: str | tuple[str, ...], detail: str) -> str:
     """An explanation in a few words, for lists of rivals."""
     return _fill(NAMES[kind], {**fields_of(subject), "detail": detail})
+
+
+def detail_of(told: Told) -> str:
+    """What a told candidate is about beside its subject: a substance, a component, a kind of solution."""
+    explains = told.would_explain or {}
+    for name in ("substance", "component", "solutions", "slip"):
+        if explains.get(name):
+            return str(explains[name])
+    return told.detail
+
+
+def name_of(candidate: Candidate, amplitude: float) -> str:
+    """A candidate in a few words."""
+    return short_name(candidate.kind, candidate.subject, detail_of(candidate.tell(amplitude)))
 
 
 def sentence(

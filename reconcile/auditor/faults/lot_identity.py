@@ -9,12 +9,13 @@ from reconcile.auditor.alternatives import Alternative, alternatives
 from reconcile.auditor.exact import points
 from reconcile.auditor.proposals import Context, Proposal, Told
 from reconcile.auditor.retrial import Supposed
+from reconcile.records.substances import Form
 
 ROOM = 2.5
 """Score of a lot's common shift from which other contents are computed."""
 
 Meant = tuple[int, Alternative, float, float]
-"""Lot, content, log prior odds, and the factor of a hydrate."""
+"""Lot, content, mol of it for a mol of the label, and log prior odds."""
 
 
 def known_acids(context: Context) -> frozenset[str]:
@@ -35,6 +36,25 @@ def lots_with_room(context: Context) -> list[int]:
     return [int(i) for i in np.flatnonzero(room)]
 
 
+def contents(
+    context: Context, lot: int, label: Form, acids: frozenset[str], odds: float
+) -> list[tuple[Alternative, float]]:
+    """What a lot may hold instead of its label, each with the mol of it for a mol of the label.
+
+    A solid is weighed, so another content comes at equal mass. A stock solution of stated strength may be the wrong
+    bottle, at equal mol, or was made by weighing another hydrate or salt form.
+    """
+    records = context.layout.records
+    mine = list(context.retrial.contributions_of_lot(lot))
+    direct = records.solutions.lot[mine] == lot
+    solid = not np.isfinite(records.lots.strength[lot]) and bool(np.all(records.solutions.by_mass[mine] | ~direct))
+    at_mass = [(a, label.molar_mass / a.form.molar_mass) for a in alternatives(label, True, acids, odds)]
+    if solid:
+        return at_mass
+    at_mol = [(a, 1.0) for a in alternatives(label, False, acids, odds)]
+    return at_mol + [(a, factor) for a, factor in at_mass if a.relation in ("hydrate", "form")]
+
+
 class LotIdentity:
     name, alarm_class = "lot_identity", "lot"
 
@@ -49,7 +69,7 @@ class LotIdentity:
         x = sparse.csc_array(sparse.hstack([columns for _, columns in blocks]))
 
         def tell(k: int, a: float) -> Told:
-            _, choice, _, factor = meant[k]
+            _, choice, factor, _ = meant[k]
             explains: dict[str, object] = {"substance": choice.form.name}
             if choice.relation == "hydrate":
                 explains["factor"] = factor
@@ -64,10 +84,10 @@ class LotIdentity:
             subject,
             subject,
             np.ones(len(meant)),
-            np.array([m[2] for m in meant]),
+            np.array([m[3] for m in meant]),
             np.ones(len(meant), bool),
             tell,
-            same=[m[1].form.name for m in meant],
+            same=[f"{m[1].form.name} {m[2]:.3g}" for m in meant],
         )
 
     def of_lot(
@@ -80,21 +100,10 @@ class LotIdentity:
             lot = int(context.layout.lots_used[position])
             label = records.forms[int(records.lots.form[lot])]
             contributions = context.retrial.contributions_of_lot(lot)
-            weighed = bool(np.all(records.solutions.by_mass[list(contributions)]))
-            choices = alternatives(label, weighed, acids, odds)
-            total = sum(c.weight for c in choices)
-            kept, x = points(
-                context, [Supposed(contributions, form=c.form.name, at_equal_mass=weighed) for c in choices]
-            )
-            meant = [
-                (
-                    lot,
-                    choices[i],
-                    float(np.log(choices[i].weight / total)),
-                    label.molar_mass / choices[i].form.molar_mass if weighed else 1.0,
-                )
-                for i in kept
-            ]
+            choices = contents(context, lot, label, acids, odds)
+            total = sum(choice.weight for choice, _ in choices)
+            kept, x = points(context, [Supposed(contributions, c.form.name, factor) for c, factor in choices])
+            meant = [(lot, *choices[i], float(np.log(choices[i][0].weight / total))) for i in kept]
             context.retrial.kept[key] = (meant, x)
         found: tuple[list[Meant], sparse.csc_array] = context.retrial.kept[key]
         return found

@@ -54,6 +54,7 @@ class MeterDrift:
             tell,
             prior_sd=1.0,
             log_prior=np.array(log_prior),
+            at=lambda k, site: total[k],
         )
         if proposal is not None:
             proposal.prior_sd[:] = prior_sd

@@ -20,6 +20,7 @@ class MeterOffset:
             lambda k, a: Told(a, "pH", {"offset": a}),
             prior_sd=0.1,
             own=[layout.own("meter", i) for i in range(len(layout.meters))],
+            at=lambda k, site: 1.0,
         )
 
 

@@ -44,6 +44,7 @@ class MeterSpan:
             prior_sd=0.03,
             own=own,
             log_prior=np.array(log_prior),
+            at=lambda k, site: site.ph - pivots[k],
         )
 
 

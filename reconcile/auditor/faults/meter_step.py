@@ -38,6 +38,7 @@ class MeterStep:
             tell,
             prior_sd=0.1,
             log_prior=np.array(log_prior),
+            at=lambda k, site: 1.0,
         )
 
 

@@ -54,6 +54,7 @@ class MeterStuck:
             np.zeros(k),
             np.ones(k, bool),
             tell,
+            at=lambda k, site: shown[k] - site.ph,
             df=np.array([len(rows) for rows, _ in columns], np.intp),
         )
 

@@ -53,6 +53,9 @@ class MeterTemperature:
             np.array(log_prior),
             np.ones(k, bool),
             tell,
+            at=lambda k, site: (
+                (site.ph - 7.0) * ((site.temperature + ZERO_CELSIUS) / (assumed[k] + ZERO_CELSIUS) - 1.0)
+            ),
         )
 
 

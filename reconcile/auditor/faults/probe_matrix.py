@@ -39,6 +39,7 @@ class ProbeMatrix:
             tell,
             prior_sd=0.1,
             log_prior=np.array([-1.0 - np.log(counts[m]) for m in subject]),
+            at=lambda k, site: float(site.family == kinds[k]),
         )
 
 

@@ -20,7 +20,6 @@ def misreadings(context: Context, contribution: int) -> list[tuple[Supposed, str
     records = context.layout.records
     solutions = records.solutions
     label = records.forms[int(solutions.form[contribution])]
-    weighed = bool(solutions.by_mass[contribution])
     only = (contribution,)
     slips = [(Supposed(only, factor=f), how) for f, how in FACTORS]
     if label.equivalents > 1:
@@ -32,9 +31,10 @@ def misreadings(context: Context, contribution: int) -> list[tuple[Supposed, str
         density = float(records.stocks["density"][stock[0]]) if len(stock) else np.nan
     if np.isfinite(density) and abs(density - 1.0) > 0.02:
         slips += [(Supposed(only, factor=f), "% w/w for % w/v") for f in (density, 1.0 / density)]
-    for choice in alternatives(label, weighed, known_acids(context), 1.0):
+    for choice in alternatives(label, True, known_acids(context), 1.0):
         if choice.relation in ("hydrate", "form"):
-            slips.append((Supposed(only, form=choice.form.name, at_equal_mass=weighed), choice.relation))
+            factor = label.molar_mass / choice.form.molar_mass
+            slips.append((Supposed(only, form=choice.form.name, factor=factor), choice.relation))
     return slips
 
 

@@ -49,7 +49,11 @@ def draw_all(audit: Audit, lookups: Lookups, progress: Callable[[str, float], No
             progress(f"drawing finding {i + 1} of {len(findings)}", (len(PICTURES) + i) / steps)
             png, svg = images(finding_picture(audit, lookups, finding))
             words = _alt(audit, lookups, finding)
-            found.append(Drawn(finding_stem(finding, i), "Evidence", _caption(finding), words, png, svg, i))
+            found.append(
+                Drawn(
+                    finding_stem(finding, i), f"evidence for {plain(finding.id)}", _caption(finding), words, png, svg, i
+                )
+            )
     return found
 
 

@@ -137,7 +137,7 @@ def test_scrolling_boxes_can_be_reached_and_are_named(page: Page) -> None:
     assert boxes
     for box in boxes:
         assert box["tabindex"] == "0"
-        assert box["role"] == "region"
+        assert box["role"] == "group"
         assert box.get("aria-label") or box.get("aria-labelledby")
 
 

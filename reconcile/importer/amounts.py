@@ -13,7 +13,7 @@ from reconcile.importer.cells import Fault, Parsed, as_text, decimal_mark, numbe
 from reconcile.records.arrays import TextArray
 from reconcile.records.units import find_unit
 
-_SPLIT = re.compile(r"([+-]?(?:\d[\d.,]*|[.,]\d+)(?:[eE][+-]?\d{1,3})?)\s*(.+)", re.DOTALL)
+_SPLIT = re.compile(r"([+-]?(?:\d[\d.,]*|[.,]\d+)(?:[eE][+-]?\d{1,3})?)\s*([^\d\s.,+-].*)", re.DOTALL)
 _FILL = re.compile(
     r"(?:q\.?\s?s\.?(?:\s+to)?|ad|to|make up to|made up to|fill to|up to|add to)\s*:?\s+(?=[\d.,])", re.IGNORECASE
 )
@@ -52,7 +52,7 @@ def parse_amounts(cells: Sequence[Any], decimal: str, text_is_usual: bool) -> Am
     mark = decimal_mark(numbers, decimal)
     own = {t: found for t, bare in tidy.items() if (found := _with_unit(t, bare, mark)) is not None}
     plain = ["" if type(v) is str and v in own else v for v in cells] if own else list(cells)
-    parsed = parse_numbers(plain, mark if mark in (".", ",") else decimal, text_is_usual)
+    parsed = parse_numbers(plain, decimal, text_is_usual, mark=mark)
     for i, v in enumerate(cells):
         if type(v) is not str or v not in own:
             continue

@@ -122,11 +122,14 @@ def number_of(text: str, mark: str) -> tuple[float, int] | None:
     return value, -1 if "e" in plain.lower() else len(mantissa.partition(".")[2])
 
 
-def parse_numbers(cells: Sequence[Any], decimal: str, text_is_usual: bool, unit_factors: Any = None) -> Parsed:
+def parse_numbers(
+    cells: Sequence[Any], decimal: str, text_is_usual: bool, unit_factors: Any = None, mark: str | None = None
+) -> Parsed:
     """A column of numbers; cells of another kind are named in `bad`, blanks and missing marks are NaN.
 
     decimal : "auto", "." or ","; text_is_usual : True in a CSV file, where text is no notice
     unit_factors : function text -> (factor, offset) or None, for cells such as "25 mL" or "20 °C"
+    mark : what `decimal_mark` says, where more texts than these settle it
     """
     kinds = set(map(type, cells))
     if kinds <= {float, int}:
@@ -149,8 +152,13 @@ def parse_numbers(cells: Sequence[Any], decimal: str, text_is_usual: bool, unit_
         v = cells[i]
         if type(v) is str and v not in distinct:
             distinct[v] = tidy_number(v)
-    mark = decimal_mark([t for t, _ in distinct.values()], decimal)
+    if mark is None:
+        mark = decimal_mark([t for t, _ in distinct.values()], decimal)
     meaning = {text: _meaning(tidy, text, mark, unit_factors) for text, (tidy, _) in distinct.items()}
+    if decimal != "auto":  # the choice is made: what does not follow it is no number
+        for text, found in meaning.items():
+            if isinstance(found, Fault) and found.code == "decimal-unclear":
+                meaning[text] = Fault("number-not-a-number", text)
     counts: dict[str, list[int]] = {}
     decimals = np.full(n, -1, np.intp)
     for i in others.tolist():

@@ -15,6 +15,7 @@ from reconcile.records.places import Place, column_letters
 from reconcile.records.problems import Problem
 
 _SUMMARY_FORMULA = re.compile(r"=\s*(?:SUM|AVERAGE|MEDIAN|MIN|MAX|COUNTA?|STDEV(?:\.[SP])?|SUBTOTAL)\(", re.IGNORECASE)
+_NUMBER_LIKE = re.compile(r"[\d.,\s×x·*eE+-]+")
 
 
 class Formats:
@@ -71,7 +72,7 @@ class Formats:
         return Marker("duration", str(value), value) if kind in styles.duration else None
 
 
-def add_what_values_hide(sheet: RawSheet, xml: SheetXml, styles: Styles) -> None:
+def add_what_values_hide(sheet: RawSheet, xml: SheetXml, styles: Styles, raised: list[int]) -> None:
     """Markers for errors, formulas without a value and cells under a merge; notices about the rest."""
     for row, column, text in xml.errors():
         mark(sheet, row, column, Marker("error", text))
@@ -85,6 +86,10 @@ def add_what_values_hide(sheet: RawSheet, xml: SheetXml, styles: Styles) -> None
                 sheet.summary_formulas.add((formula.row, formula.column))
     if computed:
         sheet.notes.append(Problem("cells-computed", sheet.place(), words=(("count", str(computed)),)))
+    for row, column in xml.cells_of_strings(raised):
+        text = str(sheet.columns[column][row])
+        if _NUMBER_LIKE.fullmatch(text):  # in a name or a remark a raised digit does no harm
+            mark(sheet, row, column, Marker("raised", text))
     sheet.merges = xml.merges()
     sheet.hidden_rows = {r for r in xml.hidden_rows() if r < len(sheet)}
     if sheet.hidden_rows:

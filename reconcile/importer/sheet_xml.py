@@ -88,6 +88,14 @@ class SheetXml:
             found.append(Formula(int(row) - 1, column_index(letters), text, saved))
         return found
 
+    def cells_of_strings(self, indices: list[int]) -> list[tuple[int, int]]:
+        """(row, column) of the cells that show any of some shared strings."""
+        if not indices:
+            return []
+        wanted = b"|".join(b"%d" % i for i in indices)
+        found = re.findall(rb'<c r="([A-Z]+)(\d+)"[^>]*\bt="s"[^>]*><v>(?:' + wanted + rb")</v>", self.data)
+        return [(int(row) - 1, column_index(letters)) for letters, row in found]
+
     def uses_style(self, index: int) -> bool:
         """Whether any cell has a style."""
         return b's="%d"' % index in self.data
@@ -123,6 +131,17 @@ class SheetXml:
             if a.get(b"hidden") in (b"1", b"true") and b"min" in a and b"max" in a:
                 found.append((int(a[b"min"]) - 1, int(a[b"max"]) - 1))
         return found
+
+
+def raised_digits(strings: bytes) -> list[int]:
+    """Indices of the shared strings in which digits are written as a superscript or subscript, such as 10 to the 3."""
+    if b"vertAlign" not in strings:
+        return []
+    run = re.compile(
+        rb'<(?:\w+:)?r>(?:(?!</(?:\w+:)?r>).)*vertAlign val="su(?:per|b)script".*?<(?:\w+:)?t[^>]*>([^<]*)<', re.DOTALL
+    )
+    texts = re.findall(rb"<(?:\w+:)?si>(.*?)</(?:\w+:)?si>|<(?:\w+:)?si/>", strings, re.DOTALL)
+    return [i for i, text in enumerate(texts) if any(re.search(rb"\d", t) for t in run.findall(text))]
 
 
 def _cells(data: bytes) -> int:

@@ -52,13 +52,13 @@ def parse_times(cells: Sequence[Any], settings: Settings, epoch_1904: bool = Fal
     real = np.fromiter((type(v) in (datetime, date) for v in cells), bool, n)
     if real.any():
         moments[real] = np.array([v for v in cells if type(v) in (datetime, date)], "datetime64[us]")
-    texts = {v for v in cells if type(v) is str}
+    ways = (settings["reading.two_digit_years"], settings["reading.time_zone"])
+    texts = {v: _as_agreed(v, *ways) for v in cells if type(v) is str}
     wanted = settings["reading.date_order"]
-    order = _order(texts, wanted)
+    order = _order(set(texts.values()), wanted)
     if wanted == "auto" and real.any():
         order = "mixed"
-    ways = (settings["reading.two_digit_years"], settings["reading.time_zone"])
-    meaning = {t: _from_text(t, order, *ways) for t in texts}
+    meaning = {t: _from_text(t, bare, order) for t, bare in texts.items()}
     serials: list[int] = []
     marks: list[int] = []
     for i in np.flatnonzero(~real).tolist():
@@ -167,12 +167,17 @@ def _moment(year: int, month: int, day: int, clock: tuple[Any, ...]) -> datetime
     return moment + timedelta(microseconds=int((fraction or "0").ljust(6, "0")))
 
 
-def _from_text(text: str, order: str, short_years: str, zones: str) -> datetime | Fault | None:
+def _as_agreed(text: str, short_years: str, zones: str) -> str:
+    """A text with its spaces tidied, its zone dropped and its century filled in where the settings say so."""
     bare = " ".join(text.replace("\u00a0", " ").split())
     if zones == "ignore" and re.match(r"\d{4}-", bare):
         bare = _ZONE.sub("", bare).strip()
     if short_years == "2000" and (short := _SHORT_YEAR.match(bare)):
         bare = f"{bare[: short.end() - 2]}20{bare[short.end() - 2 :]}"
+    return bare
+
+
+def _from_text(text: str, bare: str, order: str) -> datetime | Fault | None:
     if bare.casefold() in MISSING:
         return None
     bad = Fault("time-not-a-time", text)

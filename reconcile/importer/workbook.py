@@ -15,7 +15,7 @@ import python_calamine as calamine
 from reconcile.importer.beside import note_what_lies_beside
 from reconcile.importer.hidden import add_what_values_hide
 from reconcile.importer.raw import RawSheet, sheet_of_rows
-from reconcile.importer.sheet_xml import SheetXml
+from reconcile.importer.sheet_xml import SheetXml, raised_digits
 from reconcile.importer.styles import Styles
 from reconcile.records.places import Place
 from reconcile.records.problems import InputProblems, Problem
@@ -40,6 +40,7 @@ def read_workbook(content: bytes, file: str, sha256: str, settings: Settings) ->
     epoch_1904 = re.search(rb'date1904\s*=\s*"(1|true)"', book) is not None
     sheets: list[RawSheet] = []
     values = _opened(content, file)
+    raised = raised_digits(parts.get("xl/sharedStrings.xml", b""))
     for name, part, hidden in _sheets(book, parts.get("xl/_rels/workbook.xml.rels", b"")):
         if b"worksheet" not in parts.get(part, b"")[:2048]:
             continue  # a chart or dialogue sheet holds no cells
@@ -50,7 +51,7 @@ def read_workbook(content: bytes, file: str, sha256: str, settings: Settings) ->
         sheet = sheet_of_rows(file, name, _values(values, file, name), sha256)
         sheet.epoch_1904 = epoch_1904
         sheet.hidden = hidden
-        add_what_values_hide(sheet, xml, styles)
+        add_what_values_hide(sheet, xml, styles, raised)
         if len(sheet) in _FULL_SHEETS:
             sheet.notes.append(Problem("file-maybe-cut", Place(file, name), str(len(sheet))))
         note_what_lies_beside(sheet, part, parts)

@@ -152,6 +152,7 @@ class Padding:
 
 
 CARBONIC = "carbonic acid"
+ROUNDING = 1e-15  # mol/kg; what subtracting two equal molalities may leave
 
 
 def entries_at(start: IntArray, rows: IntArray) -> tuple[IntArray, IntArray]:
@@ -193,6 +194,10 @@ def pad(
     if air:
         column = cells.reshape(m, count + 1)[:, place[carbonic]]
         column[:] = np.where(opened > 0.0, opened, column)
+    if cells.min(initial=0.0) < 0.0:  # carbon dioxide supposed lost: more than there is cannot be solved
+        short = np.any(cells.reshape(m, count + 1) < -ROUNDING, axis=1)
+        strong = np.where(short, np.nan, strong)
+        np.maximum(cells, 0.0, out=cells)
     slots = _slots(cells, m, columns, opened if air else None, carbonic, acids, water, sized)
     charge = strong
     for slot in slots:

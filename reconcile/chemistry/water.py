@@ -95,7 +95,7 @@ def permittivity(temperature_c: FloatArray) -> tuple[FloatArray, FloatArray]:
 
     Notes
     -----
-    sum a_i (T / 300 K)^b_i; valid from -20 to 110 °C; agrees with IAPWS R8-97 to 0.01.
+    sum a_i (T / 300 K)^b_i; valid from -20 to 110 °C; agrees with IAPWS R8-97 to 0.04.
 
     References
     ----------

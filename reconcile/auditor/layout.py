@@ -166,13 +166,22 @@ def felt(block: sparse.csc_array, weight: FloatArray | float = 1.0, least: float
     return np.flatnonzero(largest * weight > least).astype(np.intp)
 
 
-def sessions_of(records: BatchRecords, meter: IntArray, rows: IntArray) -> tuple[IntArray, tuple[str, ...]]:
-    """Calibration session of each reading: the meter's day, where the time is known."""
+def sessions_of(
+    records: BatchRecords, meters: Sequence[str], meter: IntArray, rows: IntArray
+) -> tuple[IntArray, tuple[str, ...]]:
+    """Calibration session of each reading; the meter's day where no calibration of the meter is recorded before it."""
     at = records.readings["read_at"][rows]
-    labels = [
-        f"{m} {t}" if m >= 0 and t != "NaT" else ""
-        for m, t in zip(meter, at.astype("datetime64[D]").astype(str), strict=True)
-    ]
+    days = at.astype("datetime64[D]").astype(str)
+    labels = [f"{meters[m]} {t}" if m >= 0 and t != "NaT" else "" for m, t in zip(meter, days, strict=True)]
+    table = records.calibrations
+    named = np.array([str(m) for m in table["meter"]], object) if len(table) else np.zeros(0, object)
+    for index, name in enumerate(meters):
+        calibrated = np.sort(table["calibrated_at"][named == name]) if len(named) else np.zeros(0, "datetime64[s]")
+        calibrated = calibrated[~np.isnat(calibrated)]
+        mine = np.flatnonzero((meter == index) & ~np.isnat(at)) if len(calibrated) else np.zeros(0, np.intp)
+        for row, session in zip(mine, np.searchsorted(calibrated, at[mine], side="right"), strict=True):
+            if session:
+                labels[row] = f"{name} calibrated {calibrated[session - 1]}"
     return _codes(labels)
 
 
@@ -195,7 +204,7 @@ def build_layout(records: BatchRecords, prediction: Prediction, settings: Settin
     solution = records.readings_solution[rows]
     family_of_solution, families = _codes(family_names(records))
     family = family_of_solution[solution] if n else np.zeros(0, np.intp)
-    session, sessions = sessions_of(records, meter, rows)
+    session, sessions = sessions_of(records, meters, meter, rows)
     ph = prediction.ph[rows]
 
     accuracy = _accuracies(records, meters, float(settings["uncertainty.meter_accuracy"]))

@@ -49,10 +49,17 @@ def moment(layout: Layout, day: float) -> datetime:
     return datetime.fromtimestamp(round((start.timestamp() + day * DAY) / 60) * 60)
 
 
+def calibrations_of(layout: Layout, meter: str) -> tuple[FloatArray, list[str]]:
+    """Days of a meter's calibrations, in order, and the buffer lots of each; empty where none is recorded."""
+    table = layout.records.calibrations
+    mine = np.flatnonzero([str(m) == meter for m in table["meter"]]) if len(table) else np.zeros(0, np.intp)
+    at = table["calibrated_at"][mine] if len(mine) else np.zeros(0, "datetime64[s]")
+    dated = ~np.isnat(at)
+    day = (at[dated] - layout.start) / np.timedelta64(1, "s") / DAY
+    order = np.argsort(day, kind="stable")
+    return day[order], [str(table["buffer_lots"][i]) for i in mine[dated][order]]
+
+
 def calibration_days(layout: Layout, meter: str) -> FloatArray:
     """Days of a meter's calibrations, in order; empty where none is recorded."""
-    table = layout.records.calibrations
-    mine = np.array([str(m) == meter for m in table["meter"]], bool) if len(table) else np.zeros(0, bool)
-    at = table["calibrated_at"][mine] if len(table) else np.zeros(0, "datetime64[s]")
-    at = at[~np.isnat(at)]
-    return np.sort((at - layout.start) / np.timedelta64(1, "s") / DAY)
+    return calibrations_of(layout, meter)[0]

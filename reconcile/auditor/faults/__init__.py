@@ -5,6 +5,8 @@ from __future__ import annotations
 from reconcile.auditor.faults import (
     acid_constant,
     batch_preparation,
+    calibration_buffer,
+    carbon_dioxide,
     lot_identity,
     lot_strength,
     meter_drift,
@@ -27,10 +29,13 @@ KINDS: tuple[FaultKind, ...] = (
     meter_temperature.KIND,
     meter_stuck.KIND,
     probe_matrix.KIND,
+    calibration_buffer.KIND,
     lot_strength.KIND,
     lot_identity.KIND,
     batch_preparation.KIND,
     recipe_slip.KIND,
     reading_slip.KIND,
     acid_constant.KIND,
+    carbon_dioxide.KIND,
+    carbon_dioxide.KIND_OF_LOTS,
 )

@@ -31,6 +31,7 @@ from reconcile.reporter.words import (
 
 MOST_LINKS = 30
 MOST_IMPACT = 40
+MOST_BATCHES = 20
 MOST_SECTIONS = 100
 """Findings that get a section; the overview lists all."""
 
@@ -93,6 +94,9 @@ def _section(
         facts.append(("The same for pH", listed([plain(a) for a in finding.also], 8)))
     facts.append(("How sure", certainty_words(finding)))
     rows = sorted(int(i) for i in finding.readings)
+    batches = list(dict.fromkeys(b for b in (str(lookups.batch[i]) for i in rows) if b))
+    if finding.subject_type not in ("batch", "reading") and batches:
+        facts.append(("Batches concerned", f"{len(batches):,}: {listed(batches, MOST_BATCHES)}"))
     links = [(_row_words(audit, lookups, i), row_id(i) if i in on_page else "") for i in rows[:MOST_LINKS]]
     more = len(rows) - len(links)
     name = anchor(finding, index)
@@ -146,6 +150,7 @@ def _rivals(finding: Finding, name: str) -> View | None:
         ("When", ""),
         ("Behind the finding (log likelihood)", "n"),
     ]
+    headings, rows = _without_blank(headings, rows)
     return View(f"{name}-rivals", f"What else it could be, instead of {plain(finding.id)}", headings, rows, tool=False)
 
 
@@ -192,6 +197,12 @@ def _impact(audit: Audit, lookups: Lookups, finding: Finding, name: str, on_page
                 note, tool=False)  # fmt: skip
 
 
+def _without_blank(headings: list[tuple[str, str]], rows: list[Row]) -> tuple[list[tuple[str, str]], list[Row]]:
+    """The same table without columns that hold nothing but dashes."""
+    kept = [k for k in range(len(headings)) if any(row.cells[k].text != "–" for row in rows)]
+    return [headings[k] for k in kept], [Row(r.id, r.flagged, [r.cells[k] for k in kept]) for r in rows]
+
+
 def overview(audit: Audit) -> View | None:
     """All findings in one table, each leading to its section."""
     if not audit.findings:
@@ -226,4 +237,5 @@ def overview(audit: Audit) -> View | None:
         ("Limits concerned", "n"),
         ("What else it could be", ""),
     ]
+    headings, rows = _without_blank(headings, rows)
     return View("findings-table", "Findings, most supported first", headings, rows, tool=len(rows) > 8, captioned=True)

@@ -27,7 +27,7 @@ from reconcile.reporter.words import (
 
 FINDINGS: tuple[Column, ...] = (
     Column("id", "Finding", width=8),
-    Column("what", "What", width=42),
+    Column("what", "What", width=40),
     Column("estimate", "Estimate", "number"),
     Column("unit", "Unit", width=9),
     Column("interval95", "95 % interval", width=18),
@@ -37,9 +37,9 @@ FINDINGS: tuple[Column, ...] = (
     Column("impact", "Limits concerned (readings)", "integer", 0),
     Column("log_likelihood_gain", "Log-likelihood gain (–)", "number", 1),
     Column("family_wise_p", "Family-wise p (–)", "number"),
-    Column("rivals", "Rivals", width=44),
-    Column("next_check", "Next check", width=60),
-    Column("text", "In words", width=70),
+    Column("rivals", "Rivals", width=40),
+    Column("next_check", "Next check", width=44),
+    Column("text", "In words", width=56),
 )
 METERS: tuple[Column, ...] = (
     Column("meter", "Meter", width=14),

@@ -23,6 +23,7 @@ from reconcile.reporter.to_csv import six_digits
 MOST_ROWS = 20_000
 """Readings up to which the workbook holds them all."""
 MOST_BATCHES = 2_000
+METHOD_WIDTHS = (40, 22, 22, 14, 60, 14, 60)
 FILL, FONT = "#D9D9D9", "Calibri"
 FIRST_DAY, LAST_DAY = np.datetime64("1900-03-01"), np.datetime64("9999-12-31")
 """Days that a spreadsheet counts as dates without fault."""
@@ -133,11 +134,8 @@ def _print(book: Book, sheet: Any, last_row: int, last: int, heading: int | None
 def add_method(book: Book, audit: Audit) -> None:
     """The sheet that says how the others came about."""
     sheet = book.book.add_worksheet("Method")
-    sheet.set_column(0, 0, 40)
-    sheet.set_column(1, 1, 26)
-    sheet.set_column(2, 2, 26)
-    sheet.set_column(3, 3, 14)
-    sheet.set_column(4, 4, 80)
+    for at, width in enumerate(METHOD_WIDTHS):
+        sheet.set_column(at, at, width)
     row = 0
     wrap = book.format(text_wrap=True)
     for heading, lines in method.sections(audit):
@@ -148,11 +146,11 @@ def add_method(book: Book, audit: Audit) -> None:
                 sheet.write_string(row, 0, name, wrap)
                 sheet.merge_range(row, 1, row, 4, "", wrap)
                 sheet.write_string(row, 1, text, wrap)
-                sheet.set_row(row, 13.5 * max(1, math.ceil(len(text) / 140)))
+                sheet.set_row(row, 13.5 * max(1, math.ceil(len(text) / 125)))
             else:
                 sheet.merge_range(row, 0, row, 4, "", wrap)
                 sheet.write_string(row, 0, text, wrap)
-                sheet.set_row(row, 13.5 * max(1, math.ceil(len(text) / 180)))
+                sheet.set_row(row, 13.5 * max(1, math.ceil(len(text) / 165)))
             row += 1
         row += 1
     for table in (summaries.settings(audit), summaries.spreads(audit), summaries.constants(audit)):

@@ -14,7 +14,7 @@ def plain(text: str) -> str:
     """The text with every character that acts instead of showing written as its code point.
 
     Control characters, terminal escapes, line breaks, direction overrides, zero-width characters, unusual spaces and
-    lone surrogates become \\u and four hexadecimal digits, so that two names that differ only there still differ on paper.
+    lone surrogates become \\u and their code, so that two names that differ only there still differ on paper.
     """
     if len(text) > LONGEST:
         text = f"{text[:LONGEST]}… ({len(text)} characters, cut here)"

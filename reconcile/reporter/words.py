@@ -230,6 +230,7 @@ EXPLAINS: Mapping[str, str] = {
     "pKa_shift": "pKa shifted by {}",
     "temperature": "compensation at {} °C",
     "solutions": "in {}",
+    "slip": "{}",
 }
 """What would explain a finding, by the key of findings.json; other keys are written as they are."""
 DIFFERENCES = ("total", "offset", "step", "span", "pKa_shift")

@@ -69,6 +69,11 @@ class Recipes:
         self.by_batch.setdefault(batch, []).append(len(self.batch) - 1)
         return len(self.batch) - 1
 
+    def side_group(self, name: str) -> int:
+        """A group that no batch refers to."""
+        self.batch.append(name)
+        return len(self.batch) - 1
+
     def lines(self) -> Lines:
         """All lines, in file order."""
         if not self.parts:

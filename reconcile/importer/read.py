@@ -21,6 +21,7 @@ from reconcile.importer.notices import notices, with_grid
 from reconcile.importer.raw import RawSheet
 from reconcile.importer.readings import ReadingRows, missing_column, read_readings
 from reconcile.importer.resolve import Resolver
+from reconcile.importer.series import SeriesList, read_series
 from reconcile.importer.sheets import Book, read_sheets
 from reconcile.importer.solutions import Assigner
 from reconcile.importer.stocks import StockRoom, read_stocks
@@ -82,7 +83,7 @@ def _library() -> Catalogue:
 
 
 def _understood(book: Book, settings: Settings, names: Catalogue) -> BatchRecords:
-    recipes, room, known = Recipes(), StockRoom(), KnownSolutions()
+    recipes, room, known, series = Recipes(), StockRoom(), KnownSolutions(), SeriesList()
     long_groups: dict[str, int] = {}
     counts = {"recipes": 0, "stocks": 0}
     own_groups = {}
@@ -101,6 +102,8 @@ def _understood(book: Book, settings: Settings, names: Catalogue) -> BatchRecord
             recipes.parts.append(lines)
     for _, table in book.of_kind("known"):
         known.add(table)
+    for i, table in book.of_kind("series"):
+        read_series(table, i, recipes, series)
     rows: list[tuple[int, ReadingRows]] = []
     for i, table in book.of_kind("readings"):
         groups = own_groups.get(i, np.full(len(table), -1, np.intp))
@@ -114,7 +117,7 @@ def _understood(book: Book, settings: Settings, names: Catalogue) -> BatchRecord
     files = [(s.file, s.sheet) for s in book.sources]
     composer = Composer(LineReader(recipes.lines(), resolver, settings, files))
     composer.group_of_batch = {b: groups[0] for b, groups in recipes.by_batch.items()}
-    return _records(book, rows, recipes, composer, known, settings)
+    return _records(book, rows, recipes, composer, known, series, settings)
 
 
 def _records(
@@ -123,6 +126,7 @@ def _records(
     recipes: Recipes,
     composer: Composer,
     known: KnownSolutions,
+    series: SeriesList,
     settings: Settings,
 ) -> BatchRecords:
     fields = [c.name for c in BY_SHEET["readings"]] + list(READING_EXTRA)
@@ -141,7 +145,7 @@ def _records(
     repeated = _joined([np.full(len(r), r.repeated) for _, r in rows], np.zeros(0, bool))
     usable = np.fromiter((p is None for p in problem), bool, len(problem))
     places = _places(book, source, number)
-    assigner = Assigner(recipes, composer, known, settings)
+    assigner = Assigner(recipes, composer, known, series, settings)
     solution, problems = assigner.assign(columns, group, usable, places)
     for i, why in problems.items():
         problem[i] = why
@@ -192,13 +196,14 @@ def _joined(parts: list[AnyArray], empty: AnyArray) -> AnyArray:
 
 
 def _places(book: Book, source: AnyArray, number: AnyArray) -> dict[str, AnyArray]:
-    """File, sheet, row and the names of the batch and known columns of every reading."""
+    """File, sheet, row and the names of the batch, known and series columns of every reading."""
     out = {"row": number}
     for name, value in (
         ("file", [s.file for s in book.sources]),
         ("sheet", [s.sheet for s in book.sources]),
         ("batch", [s.columns.get("batch", ("",))[0] for s in book.sources]),
         ("known", [s.columns.get("known", ("",))[0] for s in book.sources]),
+        ("series", [s.columns.get("series", ("",))[0] for s in book.sources]),
     ):
         out[name] = np.array([*value, ""], object)[source] if len(source) else np.zeros(0, object)
     return out

@@ -11,6 +11,7 @@ from reconcile.importer.bulk import Plain, compose_plain
 from reconcile.importer.compose import Composer, Mixture
 from reconcile.importer.known import KnownSolutions
 from reconcile.importer.lines import Recipes
+from reconcile.importer.series import SeriesList
 from reconcile.records.arrays import AnyArray, IntArray
 from reconcile.records.columns import heading_key
 from reconcile.records.places import Place
@@ -42,13 +43,16 @@ class SolutionList:
 class Assigner:
     """Gives every usable reading its solution: its own amounts, else its batch's recipe, else a known solution."""
 
-    def __init__(self, recipes: Recipes, composer: Composer, known: KnownSolutions, settings: Settings) -> None:
-        self.recipes, self.composer, self.known = recipes, composer, known
+    def __init__(
+        self, recipes: Recipes, composer: Composer, known: KnownSolutions, series: SeriesList, settings: Settings
+    ) -> None:
+        self.recipes, self.composer, self.known, self.series = recipes, composer, known, series
         self.room = float(settings["prediction.room_temperature_c"])
         self.plain: Plain = compose_plain(composer, len(recipes.batch))
         stepped = np.unique(composer.lines.group[composer.lines.step != ""])
         self.stepped = set(stepped.tolist())
         self.made = SolutionList()
+        self._additions: dict[tuple[str, str, float], int | Problem] = {}
         self.first_group = {b: groups[0] for b, groups in recipes.by_batch.items()}
 
     def assign(
@@ -63,11 +67,14 @@ class Assigner:
         batch, stage = columns["batch"].tolist(), columns["stage"].tolist()
         first = self.first_group
         group = [g if g >= 0 else first.get(b, -1) for g, b in zip(own_group.tolist(), batch, strict=True)]
+        names = columns["series"].tolist()
         seen: dict[tuple[int, str], int | Problem] = {}
         for i in np.flatnonzero(usable).tolist():
             g = group[i]
-            if g < 0:
-                found: int | Problem = self._without_recipe(columns, i, places)
+            if names[i] in self.series.analyte:
+                found: int | Problem = self._of_series(columns, i, places)
+            elif g < 0:
+                found = self._without_recipe(columns, i, places)
             else:
                 key = (g, stage[i])
                 if key not in seen:
@@ -91,11 +98,29 @@ class Assigner:
         self.made.mixtures[index] = mixture
         return index
 
+    def _of_series(self, columns: Mapping[str, AnyArray], i: int, places: Mapping[str, AnyArray]) -> int | Problem:
+        name, added = columns["series"][i], float(columns["titrant_added"][i])
+        if np.isnan(added):
+            place = Place(places["file"][i], places["sheet"][i], int(places["row"][i]), places["series"][i])
+            return Problem("titrant-missing", place, name)
+        key = (name, columns["stage"][i], added)
+        if key not in self._additions:
+            mixture = self.series.mixture(name, added, self.composer)
+            if mixture.problem is not None:
+                self._additions[key] = mixture.problem
+            else:
+                index = self.made.new(columns["batch"][i] or name, columns["stage"][i])
+                self.made.mixtures[index] = mixture
+                self._additions[key] = index
+        return self._additions[key]
+
     def _without_recipe(self, columns: Mapping[str, AnyArray], i: int, places: Mapping[str, AnyArray]) -> int | Problem:
         def place(name: str) -> Place:
             return Place(places["file"][i], places["sheet"][i], int(places["row"][i]), places[name][i])
 
         name, lot = columns["known"][i], columns["known_lot"][i]
+        if not name and not columns["batch"][i]:
+            return Problem("series-unknown", place("series"), columns["series"][i])
         if not name:
             return Problem("batch-without-recipe", place("batch"), columns["batch"][i])
         stated = float(columns["temperature"][i])

@@ -133,7 +133,7 @@ class SetAside:
 
     place : the row; cause : the cell that caused it (a recipe's, where the row rests on a bad recipe)
     code : key of the PROBLEMS table; read : what stood there; reason, advice : sentences
-    batch, meter, lot : names as far as they could be read
+    batch, meter, lot : names as far as they could be read; several lots are parted by "; "
     summary : a mean or total row: listed and counted, but not weighed against completeness
     """
 

@@ -52,20 +52,18 @@ class Answers:
 
 
 def alike_together(contents: Contents, forms: FormTable, acids: AcidTable) -> IntArray:
-    """Rows in an order that puts alike shapes together: by most steps, then by number of acids brought."""
+    """Rows in an order that puts alike shapes together: as many acids of six steps, of five, ... of one, then charges.
+
+    The order is a matter of speed alone, so that a shape beyond what the key can count may stand anywhere.
+    """
     n = len(contents)
     if n <= CHUNK:
         return np.arange(n)
     steps = np.where(forms.acid >= 0, acids.steps[forms.acid], 0)
-    most, several = steps.max(axis=0), np.count_nonzero(steps, axis=0)
-    key = np.zeros(n, np.uint16)
-    full = np.flatnonzero(np.diff(contents.start) > 0)
-    if len(full):
-        entries, starts = contents.form, contents.start[full]
-        key[full] = 256 * np.maximum.reduceat(most[entries], starts) + np.minimum(
-            np.add.reduceat(several[entries], starts), 255
-        )
-    return np.argsort(key, kind="stable")
+    charges = np.where(forms.acid >= 0, acids.charge[forms.acid], 0.0).astype(np.intp)
+    code = (np.where(steps > 0, 4 ** (np.maximum(steps, 1) + 1), 0) + charges).sum(axis=0)
+    sums = np.concatenate([[0], np.cumsum(code[contents.form])])
+    return np.argsort(np.diff(sums[contents.start]).astype(np.uint16), kind="stable")
 
 
 def water_at(water: Solvent, rows: IntArray) -> Solvent:

@@ -120,6 +120,7 @@ def audit(
     from reconcile.auditor.audit import audit as explain
     from reconcile.chemistry.predict import predict_records as predict
     from reconcile.chemistry.predict import repredictor
+    from reconcile.chemistry.shortcuts import shortcut_values
     from reconcile.records.book import BatchRecords
 
     say = progress or (lambda doing, share: None)
@@ -133,7 +134,14 @@ def audit(
     say("predicting every reading", 0.2)
     prediction = predict(records, chosen)
     say("searching for explanations", 0.3)
-    found = explain(records, prediction, repredictor(records, chosen), chosen, progress=lambda doing: say(doing, None))
+    found = explain(
+        records,
+        prediction,
+        repredictor(records, chosen),
+        chosen,
+        progress=lambda doing: say(doing, None),
+        shortcuts=lambda rows: shortcut_values(records, chosen, rows),
+    )
     return replace(found, constants=_constants(prediction))
 
 

@@ -13,6 +13,7 @@ from reconcile.auditor.findings import build, with_impact
 from reconcile.auditor.layout import Layout, build_layout, evidence
 from reconcile.auditor.next_check import next_check
 from reconcile.auditor.proposals import FaultKind
+from reconcile.auditor.record_values import Shortcuts, record_values
 from reconcile.auditor.retrial import Retrial
 from reconcile.auditor.search import Search
 from reconcile.auditor.silence import not_testable, smallest_detectable
@@ -32,6 +33,7 @@ def audit(
     settings: Settings,
     progress: Callable[[str], None] | None = None,
     kinds: Sequence[FaultKind] = KINDS,
+    shortcuts: Shortcuts | None = None,
 ) -> Audit:
     """Explains the residuals of a record together.
 
@@ -40,6 +42,7 @@ def audit(
     records, prediction : the record and its predicted pH, n readings each
     repredict : predicts readings again under a supposed other recipe
     progress : told in words what is being done
+    shortcuts : hand methods' values for some readings, to name the one that the record used
     """
     say = progress or (lambda _: None)
     say("comparing readings with predictions")
@@ -55,7 +58,9 @@ def audit(
         replace(finding, next_check=next_check(search, state, j, candidates))
         for j, (finding, candidates) in enumerate(pairs)
     ]
-    findings = with_impact(layout, checked)
+    said = record_values(records, prediction, shortcuts)
+    together = sorted([*with_impact(layout, checked), *said], key=lambda f: -f.log_likelihood_gain)
+    findings = [replace(finding, id=f"F{i + 1}") for i, finding in enumerate(together)]
     say("working out what could not be seen")
     pool, bare, _ = search.scored(state.components, [])
     power = float(settings["audit.detectable_power"])

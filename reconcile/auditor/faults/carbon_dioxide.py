@@ -18,7 +18,7 @@ LOST = (0.1, 0.3)
 CARBONATED = (0.01, 0.03, 0.1)
 """Carbon dioxide taken up by a base, mol per mol of base."""
 LIKELY = 2.0
-"""Log prior odds: a dilute alkaline solution reads low for this reason before any other (common practice, no source)."""
+"""Log prior odds: dilute alkali reads low for this reason before any other (common practice, no source)."""
 ALKALINE = 6.5
 """pH under which a solution takes up too little carbon dioxide to show (first pKa of carbonic acid 6.35)."""
 

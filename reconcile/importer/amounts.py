@@ -9,7 +9,7 @@ from typing import Any
 
 import numpy as np
 
-from reconcile.importer.cells import Fault, Parsed, as_text, decimal_mark, number_of, parse_numbers, tidy_number
+from reconcile.importer.cells import Fault, Parsed, decimal_mark, number_of, parse_numbers, tidy_number
 from reconcile.records.arrays import TextArray
 from reconcile.records.units import find_unit
 
@@ -93,4 +93,4 @@ def _with_unit(text: str, bare: str, mark: str) -> Fault | tuple[float, str, str
 
 def amount_words(value: float, unit: str) -> str:
     """An amount for a message: 25 mL."""
-    return f"{as_text(value)} {unit}".strip() if value == int(value) else f"{value:.6g} {unit}".strip()
+    return f"{value:.10g} {unit}" if unit else f"{value:.10g}"

@@ -16,6 +16,7 @@ from reconcile.records.substances import Catalogue
 from reconcile.records.units import find_unit
 
 _NUMBER = re.compile(r"[-+]?[\d.,]+")
+_DIGITS = set("0123456789")
 _DIGIT = re.compile(r"\d")
 _TOP = 60
 _PLAIN_UNITS = {"°c", "ºc", "c", "degc", "ph", "-", "h", "min", "mv", "%", "dd/mm/yyyy", "yyyy-mm-dd", "g/ml"}
@@ -123,8 +124,8 @@ def _candidates(sheet: RawSheet, column_map: ColumnMap) -> list[int]:
     """Rows in which two cells are known headings, and near the top rows in which one is or that could be headings."""
     mapped = {h for headings in column_map.values() for h in headings}
     hits = np.zeros(len(sheet), np.intp)
-    for column in sheet.columns:
-        texts = {v for v in set(column) if isinstance(v, str) and v and len(v) <= 80}
+    for i, column in enumerate(sheet.columns):
+        texts = {v for v in sheet.texts(i) if v and (v[-1] not in _DIGITS or mapped)}
         known = [t for t in texts if t.strip() in mapped or (not _DIGIT.search(t) and known_heading(t))]
         for text in known:
             hits[_where(column, text)] += 1

@@ -10,11 +10,10 @@ from typing import Any
 
 import numpy as np
 
-from reconcile.importer.raw import Marker
+from reconcile.importer.raw import SPACES, Marker
 from reconcile.records.arrays import AnyArray, IntArray
 
 _NUMBER = re.compile(r"[+-]?(?:\d+(?:[.,]\d*)?|[.,]\d+)(?:[eE][+-]?\d{1,3})?", re.ASCII)
-_SPACES = "\u00a0\u2007\u202f\u2009\u200b\ufeff \t\r\n"
 _MINUS = re.compile("^[\u2212\u2012\u2013](?=[\\d.,\uff10-\uff19])")
 _FULL_WIDTH = {0xFF10 + d: str(d) for d in range(10)} | {0xFF0E: ".", 0xFF0C: ",", 0xFF0B: "+", 0xFF0D: "-"}
 MISSING = frozenset(
@@ -66,7 +65,7 @@ def as_text(cell: Any) -> str:
 
 def blanks(cells: Sequence[Any]) -> AnyArray:
     """BoolArray (n,): cells that hold nothing but spaces."""
-    empty = {v for v in set(cells) if isinstance(v, str) and not v.strip(_SPACES)}
+    empty = {v for v in set(cells) if isinstance(v, str) and not v.strip(SPACES)}
     if not empty:
         return np.zeros(len(cells), bool)
     return np.fromiter((v in empty for v in cells), bool, len(cells))
@@ -83,7 +82,7 @@ MARKER_CODES = {
 
 def tidy_number(text: str) -> tuple[str, bool]:
     """Text of a number with its look-alike characters replaced, and whether any was."""
-    stripped = text.strip(_SPACES)
+    stripped = text.strip(SPACES)
     tidy = _MINUS.sub("-", stripped.translate(_FULL_WIDTH))
     return tidy, tidy != stripped
 
@@ -234,15 +233,16 @@ def parse_names(cells: Sequence[Any], identifier: bool = True) -> Parsed:
     values = np.empty(n, object)
     parsed = Parsed(values)
     if kinds <= {str}:
-        clean = {v: v.strip(_SPACES) for v in set(cells)}
-        values[:] = [clean[v] for v in cells]
+        clean = {v: v.strip(SPACES) for v in set(cells)}
+        tidy = all(k is v or k == v for k, v in clean.items())
+        values[:] = cells if tidy else [clean[v] for v in cells]
         return parsed
     counts: dict[str, list[int]] = {}
     clean = {}
     for i, v in enumerate(cells):
         if type(v) is str:
             if v not in clean:
-                clean[v] = v.strip(_SPACES)
+                clean[v] = v.strip(SPACES)
             values[i] = clean[v]
             continue
         values[i] = as_text(v)

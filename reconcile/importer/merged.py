@@ -49,3 +49,4 @@ def _set(sheet: RawSheet, row: int, column: int, value: object) -> None:
     if not isinstance(cells, list):
         cells = sheet.columns[column] = list(cells)
     cells[row] = value
+    sheet.forget(column)

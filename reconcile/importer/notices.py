@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping
 
 import numpy as np
 
@@ -17,13 +17,16 @@ _LEAST = 10
 """Readings of a meter from which on the grid that they lie on is taken for its display; common practice, no source."""
 
 
-def notices(columns: Mapping[str, AnyArray], place_of: Sequence[Place], lots: Mapping[str, Place]) -> list[Problem]:
+def notices(
+    columns: Mapping[str, AnyArray], place_of: Callable[[int], Place], lots: Mapping[str, Place]
+) -> list[Problem]:
     """Notices about the readings; none of them leaves a row out."""
     found = doubles(columns, place_of)
     for name in ("meter", "probe", "batch"):
-        where = dict(zip(columns[name].tolist(), place_of, strict=True))
-        found += alike(list(where), name, where)
-    found += alike(list(lots), "lot", lots)
+        values = columns[name].tolist()
+        where = dict(zip(reversed(values), range(len(values) - 1, -1, -1), strict=True))  # the first of each stays
+        found += alike(list(where), name, lambda value, where=where: place_of(where[value]))  # type: ignore[misc]
+    found += alike(list(lots), "lot", lots.__getitem__)
     moments = columns["read_at"]
     dated = np.flatnonzero(~np.isnat(moments))
     if len(dated) >= 3:
@@ -32,7 +35,7 @@ def notices(columns: Mapping[str, AnyArray], place_of: Sequence[Place], lots: Ma
         far = dated[np.abs(days - middle) > _FAR]
         if len(far):
             words = (("count", str(len(far))), ("name", "Read at"))
-            found.append(Problem("date-far-off", place_of[int(far[0])], str(moments[far[0]]), words))
+            found.append(Problem("date-far-off", place_of(int(far[0])), str(moments[far[0]]), words))
     return found
 
 

@@ -4,11 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field
+from datetime import date, datetime, time, timedelta
 from typing import Any, Protocol
 
 import numpy as np
 
-from reconcile.records.arrays import IntArray
+from reconcile.records.arrays import BoolArray, IntArray
 from reconcile.records.places import Place, column_letters
 from reconcile.records.problems import Problem
 
@@ -73,9 +74,30 @@ class RawSheet:
     epoch_1904: bool = False
     hidden: bool = False
     notes: list[Problem] = field(default_factory=list)
+    _texts: dict[int, set[str]] = field(default_factory=dict)
 
     def __len__(self) -> int:
         return len(self.row_numbers)
+
+    def texts(self, column: int) -> set[str]:
+        """The different texts of one column; kept, because most questions about a column are about these."""
+        if column not in self._texts:
+            cells = self.columns[column]
+            slow = {datetime, date, time, timedelta} & set(map(type, cells))  # moments are slow to compare
+            self._texts[column] = {v for v in (cells if slow else set(cells)) if type(v) is str}
+        return self._texts[column]
+
+    def forget(self, column: int) -> None:
+        """Forget what was kept of a column that is changed."""
+        self._texts.pop(column, None)
+
+    def blanks(self, column: int, first: int, last: int) -> BoolArray:
+        """BoolArray (last - first,): cells of a column that hold nothing but spaces."""
+        empty = {v for v in self.texts(column) if is_blank(v)}
+        if not empty:
+            return np.zeros(last - first, bool)
+        cells = self.columns[column][first:last]
+        return np.fromiter(map(empty.__contains__, cells), bool, last - first)
 
     def place(self, row: int = -1, column: int = -1) -> Place:
         """Place of a cell, a row (no column) or the sheet, from indices counted from 0."""
@@ -99,6 +121,15 @@ def sheet_of_rows(file: str, sheet: str, rows: Sequence[Sequence[Any]], sha256: 
     )
 
 
+SPACES = "\u00a0\u2007\u202f\u2009\u200b\ufeff \t\r\n"
+"""Characters that count as space at the ends of a cell."""
+
+
+def is_blank(text: str) -> bool:
+    """Whether a text holds nothing but spaces."""
+    return not text.strip(SPACES)
+
+
 def mark(sheet: RawSheet, row: int, column: int, marker: Marker) -> None:
     """Put a marker in the place of a cell; widens the sheet where the cell lies outside what was read."""
     if row >= len(sheet):
@@ -112,3 +143,4 @@ def mark(sheet: RawSheet, row: int, column: int, marker: Marker) -> None:
     if not isinstance(cells, list):
         cells = sheet.columns[column] = list(cells)
     cells[row] = marker
+    sheet.forget(column)

@@ -156,11 +156,12 @@ def _records(
         place = Place(sheet.file, sheet.sheet, int(number[i]), ph_column[i] if repeated[i] else "")
         aside.append(set_aside(problem[i], place, columns, i, bool(summary[i]), composer, recipes, int(group[i])))
     columns["resolution"] = with_grid(columns)
-    filled = [
-        Place(book.sources[s].file, book.sources[s].sheet, r, c)
-        for s, r, c in zip(source.tolist(), number.tolist(), ph_column.tolist(), strict=True)
-    ]
-    book.notes.extend(notices(columns, filled, _lot_places(composer)))
+
+    def place_of(i: int) -> Place:
+        sheet = book.sources[int(source[i])]
+        return Place(sheet.file, sheet.sheet, int(number[i]), ph_column[i])
+
+    book.notes.extend(notices(columns, place_of, _lot_places(composer)))
     solutions, forms, used_lots = solutions_of(assigner)
     lots, forms = lots_of(composer.resolver.lots, used_lots, forms, settings)
     readings = Table("readings", {k: v[used] for k, v in columns.items()}, source[used], number[used])

@@ -6,7 +6,7 @@ import re
 
 import numpy as np
 
-from reconcile.importer.cells import as_text, blanks
+from reconcile.importer.cells import as_text
 from reconcile.importer.headings import Block
 from reconcile.importer.raw import RawSheet
 from reconcile.records.arrays import AnyArray, IntArray
@@ -18,13 +18,14 @@ _SUMMARY = re.compile(
     r"count|n\s*=\s*\d+)(?:\s*(?:of|\(|:|ph).*)?:?",
     re.IGNORECASE,
 )
+_STARTS = set("mMaAtTsSnNcCrR ")
 
 
 def data_rows(sheet: RawSheet, block: Block, titles: set[int], counts: dict[str, int]) -> IntArray:
     """Rows with anything in a known column, without units rows, section titles and repeated headings."""
     filled = np.zeros(block.last - block.first, bool)
     for column in block.used():
-        filled |= ~blanks(sheet.columns[column][block.first : block.last])
+        filled |= ~sheet.blanks(column, block.first, block.last)
     rows = np.flatnonzero(filled) + block.first
     if block.units_row >= 0:
         rows = rows[rows != block.units_row]
@@ -48,8 +49,10 @@ def _heading_repeats(sheet: RawSheet, block: Block, rows: IntArray) -> IntArray:
     if probe < 0:
         return np.zeros(0, np.intp)
     raw, first = sheet.columns[probe], headings[probe][:1]
-    texts = {v for v in set(raw[block.first : block.last]) if isinstance(v, str) and v.strip()[:1].casefold() == first}
+    texts = {v for v in sheet.texts(probe) if v.strip()[:1].casefold() == first}
     same = {v for v in texts if heading_key(v) == headings[probe]}
+    if raw.count(raw[block.heading]) == 1 and len(same) == 1:
+        return np.zeros(0, np.intp)  # the headings themselves
     found = []
     for row in (r for r in rows.tolist() if same and raw[r] in same):
         cells = [(sheet.columns[c][row], headings[c]) for c in used]
@@ -66,7 +69,8 @@ def summary_rows(sheet: RawSheet, block: Block, rows: IntArray, cells_of: dict[s
         cells = cells_of.get(name)
         if cells is None:
             continue
-        labels = {v for v in set(cells) if isinstance(v, str) and len(v) < 40 and _SUMMARY.fullmatch(v.strip())}
+        texts = sheet.texts(block.columns[name])
+        labels = {v for v in texts if v[:1] in _STARTS and _SUMMARY.fullmatch(v.strip())}
         if labels:
             summary |= np.fromiter((isinstance(v, str) and v in labels for v in cells), bool, len(rows))
     if sheet.summary_formulas:

@@ -40,13 +40,16 @@ class SheetXml:
     """The XML of one sheet. A sheet whose cells are written in an unusual way is first written out in the usual one."""
 
     def __init__(self, data: bytes) -> None:
-        usual = data.count(b'<c r="')
-        self.data = data if usual == _cells(data) else _usual(data)
+        self._shape = _shape(data)
+        self.data = data
+        if not _is_usual(self._shape):
+            self.data = _usual(data)
+            self._shape = _shape(self.data)
 
     def bounds(self, many: int) -> tuple[int, int]:
         """Last row and a bound on the last column that hold a cell, from the cells and never the declared dimension.
 
-        The bound on the columns is exact where rows times 702 exceeds `many`, or three letters occur.
+        The bound on the columns is exact where it matters: where rows times columns might exceed `many`.
         """
         data = self.data
         last = _ROW.search(data, max(data.rfind(b"<row"), 0))
@@ -54,17 +57,18 @@ class SheetXml:
         at = data.rfind(b'<c r="')
         cell = re.match(rb'<c r="[A-Z]+(\d+)"', data[at : at + 30]) if at >= 0 else None
         rows = max(int(m.group(1)) if m else 0 for m in (number, cell))
-        if rows * 702 <= many and not re.search(rb'<c r="[A-Z]{3}', data):
-            return rows, 702
-        for letters in (3, 2, 1):
-            found = set(re.findall(rb'<c r="([A-Z]{%d})\d' % letters, data))
-            if found:
-                return rows, max(map(column_index, found)) + 1
-        return rows, 0
+        for letters, most in ((1, 26), (2, 702), (3, 16384)):
+            longer = b'<c r="' + b"A" * (letters + 1)
+            if longer not in self._shape:
+                if rows * most <= many:
+                    return rows, most
+                found = set(re.findall(rb'<c r="([A-Z]{%d})\d' % letters, data))
+                return rows, max(map(column_index, found), default=-1) + 1
+        return rows, 1 << 20
 
     def errors(self) -> list[tuple[int, int, str]]:
         """(row, column, text) of every error cell."""
-        if b't="e"' not in self.data:
+        if b't="e"' not in self._shape:
             return []
         cells = re.finditer(rb'<c r="([A-Z]+)(\d+)"([^>]*\bt="e"[^>]*)>(.*?)</c>', self.data, re.DOTALL)
         found = []
@@ -76,7 +80,7 @@ class SheetXml:
 
     def formulas(self) -> list[Formula]:
         """Every formula cell."""
-        if b"<f" not in self.data:
+        if b"<f" not in self._shape:
             return []
         found = []
         for match in re.finditer(rb'<c r="([A-Z]+)(\d+)"([^>]*)>(<f\b.*?)</c>', self.data, re.DOTALL):
@@ -104,20 +108,18 @@ class SheetXml:
         """Rows (from 0) and style indices of the styled cells of one column."""
         letters = column_letters(column).encode()
         found = re.findall(rb'<c r="' + letters + rb'(\d+)"(?: t="\w+")? s="(\d+)"', self.data)
-        table = np.array(found, dtype=np.bytes_).astype(np.intp) if found else np.zeros((0, 2), np.intp)
-        return table[:, 0] - 1, table[:, 1]
+        rows = np.array([int(row) for row, _ in found], np.intp) - 1
+        return rows, np.array([int(style) for _, style in found], np.intp)
 
     def merges(self) -> list[tuple[int, int, int, int]]:
         """(first row, first column, last row, last column) of every merged range."""
-        at = self.data.find(b"mergeCells")
-        if at < 0:
-            return []
-        found = re.findall(rb'mergeCell [^>]*?ref="([A-Z]+)(\d+):([A-Z]+)(\d+)"', self.data[at:])
+        after = self.data[max(self.data.rfind(b"sheetData>"), 0) :]
+        found = re.findall(rb'mergeCell [^>]*?ref="([A-Z]+)(\d+):([A-Z]+)(\d+)"', after)
         return [(int(b) - 1, column_index(a), int(d) - 1, column_index(c)) for a, b, c, d in found]
 
     def hidden_rows(self) -> set[int]:
         """Hidden rows (from 0), filtered ones among them."""
-        if b"hidden=" not in self.data:
+        if b"hidden=" not in self._shape:
             return set()
         tags = re.findall(rb'<(?:\w+:)?row\b([^>]*\bhidden="(?:1|true)"[^>]*)>', self.data)
         return {int(m.group(1)) - 1 for t in tags if (m := re.search(rb'\br="(\d+)"', t))}
@@ -144,9 +146,23 @@ def raised_digits(strings: bytes) -> list[int]:
     return [i for i, text in enumerate(texts) if any(re.search(rb"\d", t) for t in run.findall(text))]
 
 
-def _cells(data: bytes) -> int:
-    """Number of cell elements, however they are written."""
-    return data.count(b"<c ") + data.count(b":c ") + data.count(b"<c>") + data.count(b"<c/>") + data.count(b":c>")
+_LETTERS = bytes(65 if 65 <= c <= 90 else c for c in range(256))
+
+
+def _shape(data: bytes) -> bytes:
+    """The XML without its digits and with every capital an A, so that questions about its form are plain searches."""
+    return data.translate(_LETTERS, b"0123456789")
+
+
+def _is_usual(shape: bytes) -> bool:
+    """Whether every cell begins with its reference, in the plain namespace."""
+    first, last = shape.find(b"<sheetAata"), shape.rfind(b"</sheetAata")
+    if first < 0:
+        return False
+    if last < 0:  # no rows at all
+        last = len(shape)
+    cells = shape.count(b'<c r="A', first, last)
+    return shape.count(b"<c", first, last) == cells and shape.find(b":c ", first, last) < 0
 
 
 def _usual(data: bytes) -> bytes:

@@ -6,7 +6,7 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, field
 
 from reconcile.importer.blocks import find_blocks, label_of, nearest_headings
-from reconcile.importer.cells import as_text, blanks
+from reconcile.importer.cells import as_text
 from reconcile.importer.headings import Block, ColumnMap
 from reconcile.importer.raw import RawSheet
 from reconcile.importer.tables import TableCells, read_cells
@@ -93,7 +93,7 @@ def _unheaded(sheet: RawSheet, block: Block, blocks: Sequence[Block]) -> list[in
         for i, cells in enumerate(sheet.columns)
         if i not in elsewhere
         and not as_text(cells[block.heading]).strip()
-        and not blanks(cells[block.first : block.last]).all()
+        and not sheet.blanks(i, block.first, block.last).all()
     ]
 
 

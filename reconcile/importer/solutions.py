@@ -67,11 +67,11 @@ class Assigner:
         batch, stage = columns["batch"].tolist(), columns["stage"].tolist()
         first = self.first_group
         group = [g if g >= 0 else first.get(b, -1) for g, b in zip(own_group.tolist(), batch, strict=True)]
-        names = columns["series"].tolist()
+        names, series = columns["series"].tolist(), self.series.analyte
         seen: dict[tuple[int, str], int | Problem] = {}
         for i in np.flatnonzero(usable).tolist():
             g = group[i]
-            if names[i] in self.series.analyte:
+            if series and names[i] in series:
                 found: int | Problem = self._of_series(columns, i, places)
             elif g < 0:
                 found = self._without_recipe(columns, i, places)

@@ -45,6 +45,9 @@ def parse_times(cells: Sequence[Any], settings: Settings, epoch_1904: bool = Fal
     """
     n = len(cells)
     kinds = set(map(type, cells))
+    if kinds == {datetime}:
+        seconds = np.array([(v - _DAY_ZERO).total_seconds() for v in cells])
+        return Parsed(np.datetime64(_DAY_ZERO, "s") + np.floor(seconds + 0.5).astype("timedelta64[s]"))
     if kinds <= {datetime, date}:
         return Parsed(_rounded(np.array(cells, "datetime64[us]")))
     moments = np.full(n, np.datetime64("NaT", "us"), "datetime64[us]")

@@ -22,6 +22,8 @@ MOST_FINDINGS = 40
 SWAP_GAIN = 0.05
 RESTART_GAP, RESTART_SHARE = 8.0, 0.1
 """How far below the chosen one, in log-likelihood or as a share of its gain, a rival may be to start anew from."""
+AGAIN, AGAIN_FROM, AGAIN_READINGS = 3, 2.0, 3
+"""How many candidates of a round are judged again, from which marginal gain and number of readings on."""
 TRIED = 12
 """Candidates of each round whose family-wise probability is worked out, best first."""
 
@@ -85,8 +87,12 @@ class Search:
         self.tried += len(pool)
         return pool, model, score(model, pool.x, pool.point, pool.prior_sd, pool.log_prior)
 
-    def supported(self, pool: Pool, model: Model, scores: Scores) -> list[Chosen]:
-        """The best candidates with their family-wise probability at or under the alarm rate, best first."""
+    def supported(self, pool: Pool, model: Model, scores: Scores, beside: Sequence[Candidate]) -> list[Chosen]:
+        """The best candidates with their family-wise probability at or under the alarm rate, best first.
+
+        beside : what the model holds already. A fault that is not in the model yet swells the noise and its tails, so
+        the best few that fall short are judged again with the spreads that would be found beside them.
+        """
         floor = np.sqrt(2.0 * np.maximum(scores.gain, 0.0))
         order = np.argsort(-scores.marginal, kind="stable")
         order = order[(floor[order] > 2.5) & np.isfinite(scores.marginal[order])][:400]
@@ -95,18 +101,27 @@ class Search:
             return found
         alarm = Alarm(pool, model)
         p_single = single_p(model, sparse.csc_array(pool.x[:, order]), floor[order])
+        again: set[tuple[object, ...]] = set()
         for k, p in zip(order.tolist(), p_single.tolist(), strict=True):
             candidate = pool.candidate(k)
-            p_all = alarm.family_wise(candidate, k, float(scores.gain[k]), p, self.rate)
-            if p_all <= self.rate:
-                found.append(
-                    Chosen(
-                        candidate, float(scores.gain[k]), float(scores.marginal[k]), p_all, float(scores.amplitude[k])
-                    )
-                )
+            gain, marginal = float(scores.gain[k]), float(scores.marginal[k])
+            one = Chosen(candidate, gain, marginal, 1.0, float(scores.amplitude[k]))
+            one = replace(one, p=alarm.family_wise(candidate, k, gain, p, self.rate))
+            subject = (candidate.kind, candidate.subject)
+            promising = marginal > AGAIN_FROM and len(candidate.x.indices) >= AGAIN_READINGS
+            if one.p > self.rate and promising and subject not in again and len(again) < AGAIN:
+                again.add(subject)
+                one = self.judged_again(candidate, pool, model, beside)
+            if one.p <= self.rate:
+                found.append(one)
                 if len(found) >= TRIED:
                     break
-        return found
+        return sorted(found, key=lambda c: -c.marginal)
+
+    def judged_again(self, candidate: Candidate, pool: Pool, model: Model, beside: Sequence[Candidate]) -> Chosen:
+        """Support of a candidate with the variance components estimated beside it."""
+        components = self.components([*beside, candidate], model.components)
+        return self.support(candidate, pool, self.model(components, beside))
 
     def support(self, candidate: Candidate, pool: Pool, model: Model) -> Chosen:
         """Support of one candidate under a model that lacks it, charged as a member of the pool's block of its own."""
@@ -146,7 +161,7 @@ class Search:
             self.progress(f"explaining residuals: {len(chosen)} found")
             candidates = [c.candidate for c in chosen]
             pool, model, scores = self.scored(components, candidates)
-            found = self.supported(pool, model, scores)
+            found = self.supported(pool, model, scores, candidates)
             if not found:
                 break
             chosen = [*chosen, found[0]]
@@ -180,7 +195,7 @@ class Search:
                 others = [c.candidate for i, c in enumerate(chosen) if i != j]
                 pool, model, scores = self.scored(components, others)
                 present = self.support(chosen[j].candidate, pool, model)
-                found = self.supported(pool, model, scores)
+                found = self.supported(pool, model, scores, others)
                 if found and found[0].marginal > present.marginal + SWAP_GAIN:
                     changed |= found[0].candidate.key != chosen[j].candidate.key
                     moved[[*chosen[j].candidate.x.indices, *found[0].candidate.x.indices]] = True
@@ -243,7 +258,7 @@ class Search:
         pool, model, scores = self.scored(state.components, others)
         mine = state.chosen[j].candidate
         rivals: list[Chosen] = []
-        for found in self.supported(pool, model, scores):
+        for found in self.supported(pool, model, scores, others):
             distinct = (found.candidate.kind, found.candidate.subject) != (mine.kind, mine.subject)
             near = found.marginal > state.chosen[j].marginal - max(RESTART_GAP, RESTART_SHARE * state.chosen[j].gain)
             if distinct and near and all(found.candidate.subject != r.candidate.subject for r in rivals):

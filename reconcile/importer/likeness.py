@@ -52,13 +52,14 @@ def doubles(columns: Mapping[str, AnyArray], place_of: Callable[[int], Place]) -
     moment = columns["read_at"].astype(np.int64).tolist()
     first: dict[tuple[object, ...], int] = {}
     again: list[int] = []  # rows whose batch, meter, moment, stage and repeat stood before
-    for i, key in enumerate(zip(batch, meter, moment, stage, repeat, strict=True)):
-        if first.setdefault(key, i) != i:
+    for i in _not_alone(columns["read_at"]):
+        if first.setdefault((batch[i], meter[i], moment[i], stage[i], repeat[i]), i) != i:
             again.append(i)
     if not again:
         return []
     same_key = {(batch[i], meter[i], moment[i], stage[i], repeat[i]) for i in again}
-    rows = [i for i, key in enumerate(zip(batch, meter, moment, stage, repeat, strict=True)) if key in same_key]
+    keys = zip(batch, meter, moment, stage, repeat, strict=True)
+    rows = [i for i, key in enumerate(keys) if key in same_key]
     whole: dict[tuple[object, ...], int] = {}
     identical = []
     sub = {c: _plain(v[rows]) for c, v in columns.items() if c != "resolution"}
@@ -77,6 +78,14 @@ def doubles(columns: Mapping[str, AnyArray], place_of: Callable[[int], Place]) -
     if clashes:
         found.append(Problem("same-moment", place_of(clashes[0]), words=(("count", str(len(clashes))),)))
     return found
+
+
+def _not_alone(moments: AnyArray) -> list[int]:
+    """Rows whose moment, or lack of one, occurs more than once."""
+    ticks = moments.astype(np.int64)
+    ordered = np.sort(ticks)
+    twice = np.unique(ordered[1:][ordered[1:] == ordered[:-1]])
+    return np.flatnonzero(np.isin(ticks, twice)).tolist() if len(twice) else []
 
 
 def _plain(values: AnyArray) -> list[object]:

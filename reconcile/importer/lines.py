@@ -226,13 +226,16 @@ def wide_lines(table: TableCells, source: int, recipes: Recipes, settings: Setti
     groups = np.full(n, -1, np.intp)
     seen: dict[tuple[Any, ...], int] = {}
     first_rows: list[int] = []
+    names, some, of_row = batch.tolist(), any_amount.tolist(), groups.tolist()
     for i, content in enumerate(zip(*contents, strict=True)):
-        if not any_amount[i]:
+        if not some[i]:
             continue
-        if content not in seen:
-            seen[content] = recipes.new_group(batch[i])
+        group = seen.get(content)
+        if group is None:
+            group = seen[content] = recipes.new_group(names[i])
             first_rows.append(i)
-        groups[i] = seen[content]
+        of_row[i] = group
+    groups = np.array(of_row, np.intp)
     first = np.array(first_rows, np.intp)
     parts = [_wide_part(table, source, piece, first, groups) for piece in pieces]
     parts = [p for p in parts if len(p)]

@@ -108,8 +108,14 @@ class SheetXml:
         """Rows (from 0) and style indices of the styled cells of one column."""
         letters = column_letters(column).encode()
         found = re.findall(rb'<c r="' + letters + rb'(\d+)"(?: t="\w+")? s="(\d+)"', self.data)
-        rows = np.array([int(row) for row, _ in found], np.intp) - 1
-        return rows, np.array([int(style) for _, style in found], np.intp)
+        if not found:
+            return np.zeros(0, np.intp), np.zeros(0, np.intp)
+        numbers, styles = zip(*found, strict=True)
+        first, last, n = int(numbers[0]), int(numbers[-1]), len(found)
+        in_a_run = last - first == n - 1  # the usual case needs no conversion of every number
+        rows = np.arange(first - 1, last) if in_a_run else np.array([int(r) for r in numbers], np.intp) - 1
+        alike = len(set(styles)) == 1
+        return rows, np.full(n, int(styles[0])) if alike else np.array([int(s) for s in styles], np.intp)
 
     def merges(self) -> list[tuple[int, int, int, int]]:
         """(first row, first column, last row, last column) of every merged range."""

@@ -5,10 +5,11 @@ from __future__ import annotations
 import zlib
 
 import numpy as np
-from scipy import linalg, sparse, special, stats
+from scipy import linalg, optimize, sparse, special, stats
 
 from reconcile.auditor.components import Model
 from reconcile.auditor.scoring import Candidate, Pool
+from reconcile.auditor.tails import TAILS
 from reconcile.records.arrays import BoolArray, FloatArray
 
 PRIOR_DF = 14.0
@@ -21,11 +22,12 @@ CERTAIN = 1e-6
 
 
 def score_df(model: Model, x: sparse.csc_array) -> FloatArray:
-    """Degrees of freedom of the t law that each column's score follows in a clean record, FloatArray (k,).
+    """Degrees of freedom of the t law that each column's score follows in a clean record, FloatArray (laws, k).
 
-    The score is normal only if the spreads are known and the noise is normal. Spreads known with limited degrees of
-    freedom and heavy-tailed noise are met by a t law of the same kurtosis, their contributions weighted by their shares
-    of the score's variance (Welch-Satterthwaite, JCGM 100:2008, G.4.1, for the first).
+    One row for each law of the noise in tails.TAILS. The score is normal only if the spreads are known and the noise is
+    normal. Spreads known with limited degrees of freedom and heavy-tailed noise are met by a t law of the same
+    kurtosis, their contributions weighted by their shares of the score's variance (Welch-Satterthwaite, JCGM 100:2008,
+    G.4.1, for the first).
     """
     layout = model.layout
     column = x.toarray()
@@ -41,14 +43,28 @@ def score_df(model: Model, x: sparse.csc_array) -> FloatArray:
     df_known[constants.first : constants.last] = CONSTANT_DF
     kurtosis = 6.0 * share**2 / max(model.components.noise_df - 4.0, 2.0)
     kurtosis += 6.0 * (known**2 / (df_known - 4.0)[:, None]).sum(axis=0)
-    if np.isfinite(model.components.tail):
-        kurtosis += 6.0 / max(model.components.tail - 4.0, 0.25) * share**2 * concentration
-    return np.asarray(4.0 + 6.0 / np.maximum(kurtosis, 1e-6), float)
+    laws = np.array(TAILS[: len(model.components.tails)])
+    of_noise = 6.0 / (laws - 4.0)
+    return np.asarray(4.0 + 6.0 / np.maximum(kurtosis + np.outer(of_noise, share**2 * concentration), 1e-6), float)
 
 
 def single_p(model: Model, x: sparse.csc_array, z: FloatArray) -> FloatArray:
     """Two-sided probability of a score as large as z, for each of k columns, in a clean record."""
-    return np.asarray(2.0 * stats.t.sf(np.abs(z), score_df(model, x)), float)
+    return mixed_p(model, score_df(model, x), z)
+
+
+def mixed_p(model: Model, df: FloatArray, z: FloatArray) -> FloatArray:
+    """The same from the degrees of freedom (laws, k), averaged over the laws of the noise with their weights."""
+    return np.asarray(2.0 * np.array(model.components.tails) @ stats.t.sf(np.abs(z), df), float)
+
+
+def score_needed(model: Model, df: FloatArray, p: float) -> float:
+    """Score whose two-sided probability is p, for one column with degrees of freedom (laws,)."""
+
+    def excess(z: float) -> float:
+        return float(np.log(max(float(mixed_p(model, df[:, None], np.array([z]))[0]), 1e-300)) - np.log(p))
+
+    return float(optimize.brentq(excess, 0.0, 1e4)) if p < 1.0 else 0.0
 
 
 def equivalent_z(p: float) -> float:

@@ -16,7 +16,7 @@ class Components:
     """Variance components [pH^2; preparation relative^2].
 
     noise : common reading variance; meter_ratio : FloatArray (meters,) a meter's own noise variance over it
-    session, preparation : variances; tail : degrees of freedom of the noise's tails (inf: normal)
+    session, preparation : variances; tails : weights of the noise laws that tails.py considers, normal first
     noise_df : effective degrees of freedom behind `noise`
     """
 
@@ -24,7 +24,7 @@ class Components:
     meter_ratio: FloatArray
     session: float
     preparation: float
-    tail: float = np.inf
+    tails: tuple[float, ...] = (1.0,)
     noise_df: float = np.inf
 
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from scipy import optimize, special, stats
 
-from reconcile.auditor.alarm import Alarm, block_p
+from reconcile.auditor.alarm import Alarm, block_p, score_needed
 from reconcile.records.arrays import BoolArray, FloatArray
 
 
@@ -23,15 +23,15 @@ def critical_z(
     return float(optimize.brentq(excess, low, high, xtol=1e-3))
 
 
-def critical_score(alarm: Alarm, k: int, df: float, rate: float, seed: int) -> float:
-    """Score that candidate k of the pool had to pass, whose score follows a t law with df in a clean record."""
+def critical_score(alarm: Alarm, k: int, df: FloatArray, rate: float, seed: int) -> float:
+    """Score that candidate k of the pool had to pass; df (laws,) as alarm.score_df gives it."""
     correlation, root, one_sided = alarm.block(int(alarm.pool.block[k]))
     trials = alarm.pool.trials(k)
     if len(correlation):
         normal = critical_z(correlation, root, one_sided, trials, rate, seed)
     else:
         normal = float(stats.norm.isf(rate / trials / 2.0))
-    return float(stats.t.isf(stats.norm.sf(normal), df))
+    return score_needed(alarm.model, df, 2.0 * float(stats.norm.sf(normal)))
 
 
 def _tail_beyond(x: float, mean: float, cut: float) -> float:

@@ -135,7 +135,7 @@ def interval_of(
     cut = 0.0
     if k is not None:
         seed = zlib.crc32(candidate.alarm_class.encode())
-        df = float(score_df(model, candidate.x)[0])
+        df = score_df(model, candidate.x)[:, 0]
         cut = critical_score(Alarm(pool, model), k, df, search.rate, seed) * info**-0.5
     low, middle, high = given_selected(amplitude, u, cut, (0.025, 0.5, 0.975))
     return middle, (low, high)

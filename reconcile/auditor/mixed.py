@@ -14,6 +14,7 @@ from scipy import linalg, sparse, stats
 from reconcile.auditor.components import Components, Model
 from reconcile.auditor.layout import ROOT3, Layout
 from reconcile.auditor.long_model import LongModel
+from reconcile.auditor.tails import tail_weights
 from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.settings import Settings
 
@@ -152,7 +153,7 @@ def estimate(
         now = new
         if moved < 2e-3:
             break
-    return replace(now, noise_df=max(df * 0.92, 3.0), tail=_tail(model_of(layout, now, fixed, r=r)))
+    return replace(now, noise_df=max(df * 0.92, 3.0), tails=tail_weights(model_of(layout, now, fixed, r=r)))
 
 
 def _meter_ratios(meter: IntArray, counts: IntArray, share: FloatArray, z2: FloatArray) -> FloatArray:
@@ -161,31 +162,3 @@ def _meter_ratios(meter: IntArray, counts: IntArray, share: FloatArray, z2: Floa
     num = np.bincount(meter[known], (share * z2 / HUBER_MEAN)[known], minlength=len(counts))
     den = np.bincount(meter[known], share[known], minlength=len(counts))
     return np.asarray((num + OWN_NOISE_FROM) / (den + OWN_NOISE_FROM))
-
-
-TAILS = (4.5, 5.0, 6.0, 8.0, 12.0, 24.0, np.inf)
-
-
-def _tail(model: Model) -> float:
-    """Degrees of freedom of the noise's tails, from standardized residuals without the largest one.
-
-    The largest is left out because it is what a reading's own test asks about; normal tails are kept unless another
-    choice is better by 1.5 in log-likelihood.
-    """
-    n = len(model.layout)
-    if n < 20:
-        return 8.0
-    p = model.diagonal()
-    z = model.pr / np.sqrt(np.maximum(p, 1e-12))
-    z = z[np.argsort(np.abs(z), kind="stable")][: n - max(1, n // 200)]
-    bound = float(np.abs(z).max())
-    fits = []
-    for nu in TAILS:
-        law = stats.norm() if np.isinf(nu) else stats.t(nu)
-        # both laws are cut where the largest was, and brought to the spread of the sample by its own scale
-        scale = float(np.median(np.abs(z)) / law.ppf(0.75))
-        scale = max(scale, 1e-6)
-        inside = law.cdf(bound / scale) - law.cdf(-bound / scale)
-        fits.append(float((law.logpdf(z / scale) - np.log(scale) - np.log(inside)).sum()))
-    best = int(np.argmax(fits))
-    return float(TAILS[best]) if fits[best] > fits[-1] + 1.5 else np.inf

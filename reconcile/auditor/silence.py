@@ -8,7 +8,7 @@ from collections.abc import Iterator
 import numpy as np
 from scipy import sparse, stats
 
-from reconcile.auditor.alarm import Alarm, score_df
+from reconcile.auditor.alarm import Alarm, score_df, score_needed
 from reconcile.auditor.components import Model
 from reconcile.auditor.estimates import critical_score
 from reconcile.auditor.faults.meter_span import LEAST_SPREAD
@@ -126,8 +126,8 @@ def _critical(
         k = members.get(name)
         seed = zlib.crc32(b"meter" if kind.startswith("meter") else b"lot")
         needed[i] = (
-            critical_score(alarm, k, float(df[i]), rate, seed)
+            critical_score(alarm, k, df[:, i], rate, seed)
             if k is not None
-            else float(stats.t.isf(rate / 2.0 / max(pool.classes * len(names), 1), df[i]))
+            else score_needed(model, df[:, i], rate / max(pool.classes * len(names), 1))
         )
     return needed

@@ -70,14 +70,14 @@ def compose_plain(composer: Composer, groups: int) -> Plain:
     plain = ~odd & ~unclear & ~(has_taken & (measure == 0)) & ~(per_litre & per_kg)
     amount = np.where(kept, L.value * k, 0.0)
     with np.errstate(divide="ignore", invalid="ignore"):
-        whole = np.where(group >= 0, total[group], np.nan)
+        whole = np.append(total, np.nan)[group]  # lines without a group, -1, take the last entry
         share = np.where(taken, amount / whole * 1000.0, amount)
-        by_water = per_kg[group]
+        by_water = np.append(per_kg, False)[group]
         s = _sum_in(group, np.where(kept & ~water, share * solute, 0.0), groups) / 1000.0
         m = _sum_in(group, np.where(water, share * solute, 0.0), groups) / 1000.0
         left = (1.0 - s) / (1.0 + m)
         moles = np.where(how == _W, share / molar_mass, share)
-        final = np.where(by_water & ~water, moles / left[group], moles)
+        final = np.where(by_water & ~water, moles / np.append(left, np.nan)[group], moles)
     plain &= ~(per_kg & ~(left > 0.0))
     u_total = np.where(by_water, reader.u_weighing, reader.u_volume)
     order = np.argsort(group, kind="stable")

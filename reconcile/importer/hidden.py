@@ -75,9 +75,12 @@ class Formats:
 def add_what_values_hide(sheet: RawSheet, xml: SheetXml, styles: Styles, raised: list[int]) -> None:
     """Markers for errors, formulas without a value and cells under a merge; notices about the rest."""
     for row, column, text in xml.errors():
-        mark(sheet, row, column, Marker("error", text))
+        if xml.holds(row, column):
+            mark(sheet, row, column, Marker("error", text))
     computed = 0
     for formula in xml.formulas():
+        if not xml.holds(formula.row, formula.column):
+            continue
         if not formula.saved:
             mark(sheet, formula.row, formula.column, Marker("uncalculated", formula.text))
         else:
@@ -87,10 +90,15 @@ def add_what_values_hide(sheet: RawSheet, xml: SheetXml, styles: Styles, raised:
     if computed:
         sheet.notes.append(Problem("cells-computed", sheet.place(), words=(("count", str(computed)),)))
     for row, column in xml.cells_of_strings(raised):
-        text = str(sheet.columns[column][row])
+        text = sheet.text(row, column)
         if _NUMBER_LIKE.fullmatch(text):  # in a name or a remark a raised digit does no harm
             mark(sheet, row, column, Marker("raised", text))
-    sheet.merges = xml.merges()
+    last_row, last_column = len(sheet) - 1, len(sheet.columns) - 1
+    sheet.merges = [
+        (r0, c0, min(r1, last_row), min(c1, last_column))
+        for r0, c0, r1, c1 in xml.merges()
+        if 0 <= r0 <= min(r1, last_row) and 0 <= c0 <= min(c1, last_column)
+    ]
     sheet.hidden_rows = {r for r in xml.hidden_rows() if r < len(sheet)}
     if sheet.hidden_rows:
         sheet.notes.append(Problem("rows-hidden", sheet.place(), words=(("count", str(len(sheet.hidden_rows))),)))

@@ -88,6 +88,20 @@ def _lost_zeros(table: TableCells) -> list[Problem]:
     return found
 
 
+def rows_without_name(tables: Sequence[TableCells]) -> list[Problem]:
+    """Notices about rows of recipes and stocks that no reading can rest on, because they name no batch or no lot."""
+    found = []
+    for table in tables:
+        name = {"recipes": "batch", "stocks": "lot"}.get(table.block.kind, "")
+        if not name:
+            continue
+        nameless = np.flatnonzero((table.columns[name].values == "") & ~table.summary)
+        if len(nameless):
+            words = (("count", str(len(nameless))), ("name", name))
+            found.append(Problem("row-nameless", table.place(int(nameless[0]), name), words=words))
+    return found
+
+
 def set_aside(
     problem: Problem,
     place: Place,

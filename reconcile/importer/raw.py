@@ -108,6 +108,12 @@ class RawSheet:
             self.names[column] if column >= 0 else "",
         )
 
+    def text(self, row: int, column: int) -> str:
+        """Text of one cell; "" for any other kind of cell, and outside the sheet."""
+        inside = 0 <= row < len(self) and 0 <= column < len(self.columns)
+        cell = self.columns[column][row] if inside else ""
+        return cell if isinstance(cell, str) else ""
+
     def row(self, index: int) -> list[Any]:
         """All cells of one row."""
         return [column[index] for column in self.columns]

@@ -14,7 +14,7 @@ from reconcile.importer.contributions import lots_of, solutions_of
 from reconcile.importer.files import read_file
 from reconcile.importer.headings import ColumnMap
 from reconcile.importer.known import KnownSolutions
-from reconcile.importer.ledger import questions, set_aside
+from reconcile.importer.ledger import questions, rows_without_name, set_aside
 from reconcile.importer.line_parts import LineReader
 from reconcile.importer.lines import Recipes, long_lines, wide_lines
 from reconcile.importer.notices import notices, with_grid
@@ -110,6 +110,7 @@ def _understood(book: Book, settings: Settings, names: Catalogue) -> BatchRecord
         found, notes = read_readings(table, groups, settings)
         rows.append((i, found))
         book.notes.extend(notes)
+    book.notes.extend(rows_without_name(book.tables))
     stops = questions(book.tables, settings)
     if stops:
         raise InputProblems(stops)

@@ -11,7 +11,6 @@ import numpy as np
 from reconcile.records.arrays import IntArray
 from reconcile.records.places import column_letters
 
-_ROW = re.compile(rb"<(?:\w+:)?row\b([^>]*)>")
 _ANY_CELL = re.compile(
     rb"<(?:\w+:)?row\b([^>]*?)/?>|<(?:\w+:)?c\b((?:[^>\"]|\"[^\"]*\")*?)(?:/>|>(.*?)</(?:\w+:)?c>)", re.DOTALL
 )
@@ -41,30 +40,47 @@ class SheetXml:
 
     def __init__(self, data: bytes) -> None:
         self._shape = _shape(data)
+        self._last_row = 0
+        self.bad_reference = ""
         self.data = data
         if not _is_usual(self._shape):
-            self.data = _usual(data)
+            self.data, self.bad_reference = _usual(data)
             self._shape = _shape(self.data)
 
     def bounds(self, many: int) -> tuple[int, int]:
-        """Last row and a bound on the last column that hold a cell, from the cells and never the declared dimension.
+        """Last row and last column that can hold a cell, from rows and cells and never from the declared dimension.
 
-        The bound on the columns is exact where it matters: where rows times columns might exceed `many`.
+        Exact where it matters, that is, where rows times columns might exceed `many`.
         """
-        data = self.data
-        last = _ROW.search(data, max(data.rfind(b"<row"), 0))
-        number = re.search(rb'\br="(\d+)"', last.group(1)) if last else None
-        at = data.rfind(b'<c r="')
-        cell = re.match(rb'<c r="[A-Z]+(\d+)"', data[at : at + 30]) if at >= 0 else None
-        rows = max(int(m.group(1)) if m else 0 for m in (number, cell))
+        rows = max(map(int, re.findall(rb'<(?:\w+:)?row\b[^>]*?\br="(\d{1,9})', self.data)), default=0)
+        columns, letters = 1 << 20, 4
         for letters, most in ((1, 26), (2, 702), (3, 16384)):
-            longer = b'<c r="' + b"A" * (letters + 1)
-            if longer not in self._shape:
-                if rows * most <= many:
-                    return rows, most
-                found = set(re.findall(rb'<c r="([A-Z]{%d})\d' % letters, data))
-                return rows, max(map(column_index, found), default=-1) + 1
-        return rows, 1 << 20
+            if b'<c r="' + b"A" * (letters + 1) not in self._shape:
+                columns = most
+                break
+        digits = len(str(rows))
+        longer = any(b'<c r="' + b"A" * n + b"0" * (digits + 1) in self._shape for n in range(1, letters + 1))
+        if longer or (10**digits - 1) * columns > many:
+            rows = max(rows, self._row_beyond(rows))
+        if rows * columns > many and columns <= 16384:
+            found = set(re.findall(rb'<c r="([A-Z]{%d})\d' % letters, self.data))
+            columns = max(map(column_index, found), default=-1) + 1
+        self._last_row = rows
+        return rows, columns
+
+    def _row_beyond(self, rows: int) -> int:
+        """The last row that a cell names, where one lies beyond `rows`; 0 where none does."""
+        text = str(rows)
+        greater = [f"\\d{{{len(text) + 1},}}"]
+        for i, digit in enumerate(text):
+            if digit != "9":
+                greater.append(rf"{text[:i]}[{int(digit) + 1}-9]\d{{{len(text) - i - 1}}}")
+        found = re.findall(('<c r="[A-Z]+(' + "|".join(greater) + ')"').encode(), self.data)
+        return max((int(r[:9]) for r in found), default=0)
+
+    def holds(self, row: int, column: int) -> bool:
+        """Whether a cell (from 0) lies within the rows that were bounded and the columns that a sheet can have."""
+        return 0 <= row < self._last_row and 0 <= column < 16384
 
     def errors(self) -> list[tuple[int, int, str]]:
         """(row, column, text) of every error cell."""
@@ -152,12 +168,12 @@ def raised_digits(strings: bytes) -> list[int]:
     return [i for i, text in enumerate(texts) if any(re.search(rb"\d", t) for t in run.findall(text))]
 
 
-_LETTERS = bytes(65 if 65 <= c <= 90 else c for c in range(256))
+_FORM = bytes(65 if 65 <= c <= 90 else 48 if 48 <= c <= 57 else c for c in range(256))
 
 
 def _shape(data: bytes) -> bytes:
-    """The XML without its digits and with every capital an A, so that questions about its form are plain searches."""
-    return data.translate(_LETTERS, b"0123456789")
+    """The XML with every digit a 0 and every capital an A, so that questions about its form are plain searches."""
+    return data.translate(_FORM)
 
 
 def _is_usual(shape: bytes) -> bool:
@@ -167,12 +183,17 @@ def _is_usual(shape: bytes) -> bool:
         return False
     if last < 0:  # no rows at all
         last = len(shape)
-    cells = shape.count(b'<c r="A', first, last)
-    return shape.count(b"<c", first, last) == cells and shape.find(b":c ", first, last) < 0
+    cells = shape.count(b"<c", first, last)
+    for letters in (b"A0", b"AA0", b"AAA0"):
+        if cells == 0:
+            break
+        cells -= shape.count(b'<c r="' + letters, first, last)
+    return cells == 0 and shape.find(b":c ", first, last) < 0
 
 
-def _usual(data: bytes) -> bytes:
-    """The sheet with every cell as <c r="A1" s="1" t="s">, references filled in where they were left out."""
+def _usual(data: bytes) -> tuple[bytes, str]:
+    """The sheet with every cell as <c r="A1" s="1" t="s">, references filled in; and a reference that is none."""
+    bad = ""
     out, row, column, end = [], 0, 0, 0
     for match in _ANY_CELL.finditer(data):
         out.append(data[end : match.start()])
@@ -185,7 +206,9 @@ def _usual(data: bytes) -> bytes:
             out.append(b'<row r="%d"%s>' % (row, others))
             continue
         attributes = dict(_ATTRIBUTE.findall(match.group(2)))
-        named = re.fullmatch(rb"([A-Z]+)(\d+)", attributes.get(b"r", b""))
+        named = re.fullmatch(rb"([A-Z]{1,3})(\d{1,7})", attributes.get(b"r", b""))
+        if named is None and attributes.get(b"r"):
+            bad = bad or _plain(attributes[b"r"])
         column = column_index(named.group(1)) if named else column
         here = b"%s%d" % (column_letters(column).encode(), int(named.group(2)) if named else row)
         kept = b"".join(b' %s="%s"' % (k, attributes[k]) for k in (b"s", b"t") if k in attributes)
@@ -193,7 +216,7 @@ def _usual(data: bytes) -> bytes:
         out.append(b'<c r="%s"%s>%s</c>' % (here, kept, inside))
         column += 1
     out.append(data[end:])
-    return b"".join(out)
+    return b"".join(out), bad
 
 
 def _plain(data: bytes) -> str:

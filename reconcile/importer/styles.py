@@ -33,9 +33,9 @@ class Styles:
         )
         struck = [re.search(rb"<(?:\w+:)?strike\b(?![^>]*val=\"(?:0|false)\")", f) is not None for f in fonts]
         for tag in tags:
-            number = int(_value(tag, rb"numFmtId") or 0)
+            number = _whole(_value(tag, rb"numFmtId"))
             self.formats.append(own.get(number, _BUILT_IN.get(number, "")))
-            font = int(_value(tag, rb"fontId") or 0)
+            font = _whole(_value(tag, rb"fontId"))
             self.struck.append(font < len(struck) and struck[font])
         self.decimals = [decimals_of(f) for f in self.formats]
         self.percent = {i for i, f in enumerate(self.formats) if "%" in _bare(f)}
@@ -48,6 +48,11 @@ class Styles:
 def _value(tag: bytes, name: bytes) -> bytes:
     match = re.search(rb"\b" + name + rb"\s*=\s*\"([^\"]*)\"", tag)
     return match.group(1) if match else b""
+
+
+def _whole(data: bytes) -> int:
+    """A whole number; 0, the general format, where there is none."""
+    return int(data) if data.isdigit() and len(data) < 9 else 0
 
 
 def _text(data: bytes) -> str:

@@ -45,6 +45,8 @@ def read_workbook(content: bytes, file: str, sha256: str, settings: Settings) ->
         if b"worksheet" not in parts.get(part, b"")[:2048]:
             continue  # a chart or dialogue sheet holds no cells
         xml = SheetXml(parts[part])
+        if xml.bad_reference:
+            raise InputProblems([Problem("file-damaged", Place(file, name), f"a cell is called {xml.bad_reference}")])
         last_row, last_column = xml.bounds(_WIDEST)
         if last_row * last_column > _WIDEST:
             raise InputProblems([Problem("sheet-too-wide", Place(file, name), f"{last_row} x {last_column}")])

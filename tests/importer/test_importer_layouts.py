@@ -183,3 +183,10 @@ def test_rows_of_one_csv_are_placed_by_line_and_heading(tmp_path: Path) -> None:
     paths = [csv_file(tmp_path / "log.csv", [HEAD[1:], *[r[1:] for r in readings(2)], reading(0, ph="?")[1:]])]
     paths.append(csv_file(tmp_path / "recipes.csv", RECIPES))
     assert aside(read(paths)) == {("", "4:pH", "ph-not-a-number")}
+
+
+def test_recipe_rows_without_a_batch_are_noted() -> None:
+    records = records_from_rows([HEAD, reading()], [*RECIPES, (None, "NaCl", None, 1.0, "mM")])
+    assert ("Recipes", "A4", "row-nameless") in noted(records)
+    alone = records_from_rows([HEAD, reading()], [RECIPES[0], (None, "NaCl", None, 1.0, "mM")])
+    assert aside(alone) == {("Readings", "B2", "batch-without-recipe")}

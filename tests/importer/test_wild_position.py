@@ -243,3 +243,16 @@ def test_csv_and_workbook_agree(tmp_path: Path) -> None:
     one, other = read(book(tmp_path, readings(5))), read(csv_pair(tmp_path, readings(5)))
     for name in ("ph", "batch", "meter", "read_at", "temperature"):
         assert one.readings[name].tolist() == other.readings[name].tolist()
+
+
+@pytest.mark.parametrize("reference", ["E4000000000", "ABatch2", "AAAAA2", "e2"])
+def test_12_a_cell_reference_that_no_sheet_has_is_damage(tmp_path: Path, reference: str) -> None:
+    path = change_part(book(tmp_path, readings(3)), SHEET, lambda t: t.replace('<c r="E2"', f'<c r="{reference}"'))
+    assert {code for _, _, code in refusal(path)} <= {"file-damaged", "sheet-too-wide"}
+
+
+def test_12_a_row_far_below_its_place_is_not_laid_out(tmp_path: Path) -> None:
+    path = change_part(book(tmp_path, readings(3)), SHEET, lambda t: t.replace('<c r="E2"', '<c r="E1048576"'))
+    assert len(read(path).readings) == 2  # five columns of a million rows may still be laid out
+    wide = change_part(path, SHEET, lambda t: t.replace('<c r="E3"', '<c r="ZE3"'), "wide.xlsx")
+    assert refusal(wide) == {("Readings", "", "sheet-too-wide")}

@@ -11,6 +11,7 @@ import numpy as np
 from reconcile.records.arrays import IntArray
 from reconcile.records.places import column_letters
 
+_FEW = 100_000
 _ANY_CELL = re.compile(
     rb"<(?:\w+:)?row\b([^>]*?)/?>|<(?:\w+:)?c\b((?:[^>\"]|\"[^\"]*\")*?)(?:/>|>(.*?)</(?:\w+:)?c>)", re.DOTALL
 )
@@ -43,40 +44,44 @@ class SheetXml:
         self._last_row = 0
         self.bad_reference = ""
         self.data = data
-        if not _is_usual(self._shape):
+        self._letters = _longest_column(self._shape)
+        if self._letters < 0:
             self.data, self.bad_reference = _usual(data)
             self._shape = _shape(self.data)
+            self._letters = max(_longest_column(self._shape), 0)
 
     def bounds(self, many: int) -> tuple[int, int]:
         """Last row and last column that can hold a cell, from rows and cells and never from the declared dimension.
 
         Exact where it matters, that is, where rows times columns might exceed `many`.
         """
-        rows = max(map(int, re.findall(rb'<(?:\w+:)?row\b[^>]*?\br="(\d{1,9})', self.data)), default=0)
-        columns, letters = 1 << 20, 4
-        for letters, most in ((1, 26), (2, 702), (3, 16384)):
-            if b'<c r="' + b"A" * (letters + 1) not in self._shape:
-                columns = most
-                break
+        rows = max(map(int, re.findall(rb'<row [^>]*?\br="(\d{1,9})', self.data)), default=0)
+        columns = (0, 26, 702, 16384)[self._letters]
         digits = len(str(rows))
-        longer = any(b'<c r="' + b"A" * n + b"0" * (digits + 1) in self._shape for n in range(1, letters + 1))
+        longer = any(b'<c r="' + b"A" * n + b"0" * (digits + 1) in self._shape for n in range(1, self._letters + 1))
         if longer or (10**digits - 1) * columns > many:
             rows = max(rows, self._row_beyond(rows))
-        if rows * columns > many and columns <= 16384:
-            found = set(re.findall(rb'<c r="([A-Z]{%d})\d' % letters, self.data))
+        if rows * columns > many:
+            found = set(re.findall(rb'<c r="([A-Z]{%d})\d' % self._letters, self.data))
             columns = max(map(column_index, found), default=-1) + 1
         self._last_row = rows
         return rows, columns
 
     def _row_beyond(self, rows: int) -> int:
-        """The last row that a cell names, where one lies beyond `rows`; 0 where none does."""
-        text = str(rows)
-        greater = [f"\\d{{{len(text) + 1},}}"]
-        for i, digit in enumerate(text):
-            if digit != "9":
-                greater.append(rf"{text[:i]}[{int(digit) + 1}-9]\d{{{len(text) - i - 1}}}")
-        found = re.findall(('<c r="[A-Z]+(' + "|".join(greater) + ')"').encode(), self.data)
-        return max((int(r[:9]) for r in found), default=0)
+        """The last row that a cell names, where one lies beyond `rows`; at most that where none does."""
+        digits = len(str(rows))
+        begins = [b'<c r="' + b"A" * n + b"0" * digits for n in range(1, self._letters + 1)]
+        if sum(self._shape.count(b) for b in begins) > _FEW:
+            found = re.findall(rb'<c r="[A-Z]+(\d{%d,})"' % digits, self.data)
+            return max((int(r[:9]) for r in found), default=0)
+        last = 0
+        for begin in begins:  # the few cells whose row has as many digits: the shape is as long as the data
+            at = self._shape.find(begin)
+            while at >= 0:
+                named = re.match(rb"\d+", self.data[at + len(begin) - digits : at + len(begin) + 9])
+                last = max(last, int(named.group(0)) if named else 0)
+                at = self._shape.find(begin, at + 1)
+        return last
 
     def holds(self, row: int, column: int) -> bool:
         """Whether a cell (from 0) lies within the rows that were bounded and the columns that a sheet can have."""
@@ -176,19 +181,18 @@ def _shape(data: bytes) -> bytes:
     return data.translate(_FORM)
 
 
-def _is_usual(shape: bytes) -> bool:
-    """Whether every cell begins with its reference, in the plain namespace."""
+def _longest_column(shape: bytes) -> int:
+    """Letters of the longest column name, 0 without any cell; -1 where a cell does not begin with its reference."""
     first, last = shape.find(b"<sheetAata"), shape.rfind(b"</sheetAata")
-    if first < 0:
-        return False
+    if first < 0 or shape.find(b":c ", first) >= 0:
+        return -1
     if last < 0:  # no rows at all
         last = len(shape)
-    cells = shape.count(b"<c", first, last)
-    for letters in (b"A0", b"AA0", b"AAA0"):
-        if cells == 0:
-            break
-        cells -= shape.count(b'<c r="' + letters, first, last)
-    return cells == 0 and shape.find(b":c ", first, last) < 0
+    cells, letters = shape.count(b"<c", first, last), 0
+    while cells and letters < 3:
+        letters += 1
+        cells -= shape.count(b'<c r="' + b"A" * letters + b"0", first, last)
+    return letters if cells == 0 else -1
 
 
 def _usual(data: bytes) -> tuple[bytes, str]:

@@ -29,23 +29,18 @@ def score_df(model: Model, x: sparse.csc_array) -> FloatArray:
     kurtosis, their contributions weighted by their shares of the score's variance (Welch-Satterthwaite, JCGM 100:2008,
     G.4.1, for the first).
     """
-    layout = model.layout
-    column = x.toarray()
-    px = model.project(column)
-    size = np.einsum("ij,ij->j", px, column)
-    a = px / np.sqrt(np.maximum(size, 1e-12))
-    noise = a**2 * model.noise[:, None]
-    share = noise.sum(axis=0)
-    concentration = (noise**2).sum(axis=0) / np.maximum(share, 1e-12) ** 2
-    known = np.asarray(layout.z.T @ a) ** 2 * model.g[:, None]
+    shares = model.shares(x)
+    share = shares.noise
     df_known = np.full(len(model.g), PRIOR_DF)
-    constants = layout.effects["constant"]
+    constants = model.layout.effects["constant"]
     df_known[constants.first : constants.last] = CONSTANT_DF
+    df_known = df_known[model.columns]
     kurtosis = 6.0 * share**2 / max(model.components.noise_df - 4.0, 2.0)
-    kurtosis += 6.0 * (known**2 / (df_known - 4.0)[:, None]).sum(axis=0)
+    kurtosis += 6.0 * (shares.known**2 / (df_known - 4.0)[:, None]).sum(axis=0)
     laws = np.array(TAILS[: len(model.components.tails)])
     of_noise = 6.0 / (laws - 4.0)
-    return np.asarray(4.0 + 6.0 / np.maximum(kurtosis + np.outer(of_noise, share**2 * concentration), 1e-6), float)
+    kurtosis = kurtosis + np.outer(of_noise, share**2 * shares.concentration)
+    return np.asarray(4.0 + 6.0 / np.maximum(kurtosis, 1e-6), float)
 
 
 def single_p(model: Model, x: sparse.csc_array, z: FloatArray) -> FloatArray:
@@ -118,7 +113,7 @@ class Alarm:
         if block not in self._correlation:
             members = np.flatnonzero((self.pool.block == block) & (self.pool.df == 1))
             x = self.pool.x[:, members]
-            covariance = np.asarray(x.T @ self.model.project(x.toarray()))
+            covariance = self.model.covariance(x)
             sd = np.sqrt(np.maximum(np.diag(covariance), 1e-12))
             good = np.diag(covariance) > 1e-9
             correlation = (covariance / np.outer(sd, sd))[np.ix_(good, good)]

@@ -8,7 +8,10 @@ import numpy as np
 from scipy import sparse
 
 from reconcile.auditor.layout import Layout
-from reconcile.records.arrays import FloatArray
+from reconcile.records.arrays import FloatArray, IntArray
+
+SHORT = 1200
+"""Readings up to which the whole covariance is written out, which is then the faster way."""
 
 
 @dataclass(frozen=True)
@@ -36,15 +39,33 @@ def noise_of(layout: Layout, components: Components) -> FloatArray:
     return np.asarray(components.noise * ratio, float)
 
 
+@dataclass(frozen=True)
+class Shares:
+    """What the variance of k scores in a clean record is made of; each score's variance is 1.
+
+    noise : FloatArray (k,)          the readings' noise
+    concentration : FloatArray (k,)  sum of the squared shares of single readings in it: 1 where one reading is all
+    known : FloatArray (q, k)        each effect with a prior, in the order of the model's columns
+    """
+
+    noise: FloatArray
+    concentration: FloatArray
+    known: FloatArray
+
+
 class Model:
     """One covariance V of the residuals, with fixed effects projected out: P = V^-1 less what they take up.
 
     layout, components : what it was made of; r : residuals; g : prior variances of the columns of layout.z
     noise, d : FloatArray (n,) reading variance, and all variance that a reading shares with no other [pH^2]
     pr : FloatArray (n,) P r
+    long : True where columns are kept sparse and fault kinds hand in only what comes near significance
+    columns : IntArray, columns of layout.z that `shares` tells apart
     """
 
     pr: FloatArray
+    long = False
+    columns: IntArray
 
     def __init__(
         self, layout: Layout, components: Components, own_dropped: tuple[int, ...], r: FloatArray | None
@@ -55,6 +76,7 @@ class Model:
         self.d = self.noise + layout.other
         self.g = np.where(np.isnan(layout.prior), components.session, layout.prior)
         self.g[list(own_dropped)] = 0.0
+        self.columns = np.arange(len(self.g))
 
     def project(self, y: FloatArray) -> FloatArray:
         """P y; y (n,) or (n, k)."""
@@ -63,6 +85,30 @@ class Model:
     def quadratic(self, x: sparse.csc_array) -> FloatArray:
         """x' P x of each sparse column, FloatArray (k,)."""
         raise NotImplementedError
+
+    def information(
+        self, x: sparse.csc_array, slope: FloatArray, own: IntArray | None = None, steady: bool = False
+    ) -> FloatArray:
+        """x' P x of each sparse column as far as a score test needs it, FloatArray (k,).
+
+        slope : x' P r; own : column of layout.z that a column may be, or -1; steady : x is the same object every time
+        """
+        return self.quadratic(x)
+
+    def covariance(self, x: sparse.csc_array) -> FloatArray:
+        """X' P X, FloatArray (k, k)."""
+        return np.asarray(x.T @ self.project(x.toarray()))
+
+    def shares(self, x: sparse.csc_array) -> Shares:
+        """What each column's score is made of in a clean record."""
+        column = x.toarray()
+        px = self.project(column)
+        size = np.einsum("ij,ij->j", px, column)
+        a = px / np.sqrt(np.maximum(size, 1e-12))
+        noise = a**2 * self.noise[:, None]
+        share = noise.sum(axis=0)
+        concentration = (noise**2).sum(axis=0) / np.maximum(share, 1e-12) ** 2
+        return Shares(share, concentration, np.asarray(self.layout.z.T @ a) ** 2 * self.g[:, None])
 
     def diagonal(self) -> FloatArray:
         """Diagonal of P, FloatArray (n,)."""

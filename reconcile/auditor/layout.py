@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from functools import cached_property
+from typing import Any
 
 import numpy as np
 from scipy import sparse
@@ -94,6 +95,11 @@ class Layout:
     def same_batch(self) -> BoolArray:
         """True where two readings are of one batch, (n, n); only for a short record."""
         return np.asarray(self.batch[:, None] == self.batch, bool)
+
+    @cached_property
+    def kept(self) -> dict[str, Any]:
+        """What models of a long record worked out once, under names of their own."""
+        return {}
 
     def own(self, sort: str, index: int) -> tuple[int, ...]:
         """Columns of the design that hold one subject's own prior; () when it has none."""

@@ -11,7 +11,7 @@ from dataclasses import replace
 import numpy as np
 from scipy import linalg, sparse, stats
 
-from reconcile.auditor.components import Components, Model
+from reconcile.auditor.components import SHORT, Components, Model
 from reconcile.auditor.layout import ROOT3, Layout
 from reconcile.auditor.long_model import LongModel
 from reconcile.auditor.tails import tail_weights
@@ -22,8 +22,6 @@ HUBER = 2.5
 HUBER_MEAN = float(stats.chi2.cdf(HUBER**2, 3) + HUBER**2 * stats.chi2.sf(HUBER**2, 1))
 """Mean of min(z^2, HUBER^2) for standard normal z, so that the bounded squares stay consistent."""
 OWN_NOISE_FROM = 20
-SHORT = 1200
-"""Readings up to which the whole covariance is written out, which is then the faster way."""
 
 
 class ShortModel(Model):

@@ -14,6 +14,7 @@ if TYPE_CHECKING:
     from reconcile.chemistry.library import LibraryAnswer as LibraryAnswer
     from reconcile.chemistry.library import LibraryEntry as LibraryEntry
     from reconcile.records.book import BatchRecords
+    from reconcile.records.meter_results import MeterHistory
     from reconcile.records.parts import Composition, Part
     from reconcile.records.problems import Problem
     from reconcile.records.results import Audit, Constant, Prediction
@@ -121,16 +122,11 @@ def audit(
     from reconcile.chemistry.predict import predict_records as predict
     from reconcile.chemistry.predict import repredictor
     from reconcile.chemistry.shortcuts import shortcut_values
-    from reconcile.records.book import BatchRecords
 
     say = progress or (lambda doing, share: None)
     chosen = settings_of(settings)
     say("reading the record", 0.0)
-    books = [one for one in source if isinstance(one, BatchRecords)]
-    paths = [one for one in source if not isinstance(one, BatchRecords)]
-    if books and (paths or len(books) > 1):
-        raise TypeError("audit takes files, or one BatchRecords")
-    records = books[0] if books else read(*paths, settings=chosen, columns=columns)
+    records = _record(source, chosen, columns)
     say("predicting every reading", 0.2)
     prediction = predict(records, chosen)
     say("searching for explanations", 0.3)
@@ -143,6 +139,47 @@ def audit(
         shortcuts=lambda rows: shortcut_values(records, chosen, rows),
     )
     return replace(found, constants=_constants(prediction))
+
+
+def _record(source: Sequence[FilePath | BatchRecords], settings: Settings, columns: ColumnsLike) -> BatchRecords:
+    """The record that files hold, or the one that was given; raises TypeError for a mixture."""
+    from reconcile.records.book import BatchRecords
+
+    books = [one for one in source if isinstance(one, BatchRecords)]
+    paths = [one for one in source if not isinstance(one, BatchRecords)]
+    if books and (paths or len(books) > 1):
+        raise TypeError("expected files, or one BatchRecords")
+    return books[0] if books else read(*paths, settings=settings, columns=columns)
+
+
+def meters(
+    *source: FilePath | BatchRecords,
+    settings: SettingsLike = None,
+    columns: ColumnsLike = None,
+    progress: Progress | None = None,
+) -> MeterHistory:
+    """Each meter and probe through time: calibrations against limits, and readings against predictions.
+
+    Parameters
+    ----------
+    *source : str or Path, or one BatchRecords
+        Calibrations alone are enough, so are readings of known solutions; an ordinary record gives both.
+    settings, columns, progress
+        As for `audit`.
+
+    Raises
+    ------
+    InputProblems, SettingsError
+        As for `read`.
+    """
+    from reconcile.auditor.meter_history import meter_history
+
+    say = progress or (lambda doing, share: None)
+    chosen = settings_of(settings)
+    say("reading the record", 0.0)
+    records = _record(source, chosen, columns)
+    audited = audit(records, settings=chosen, progress=progress) if len(records.readings) else None
+    return meter_history(records, audited, chosen, progress=lambda doing: say(doing, None))
 
 
 def _constants(prediction: Prediction) -> tuple[Constant, ...]:

@@ -101,6 +101,13 @@ SETTINGS: tuple[Setting, ...] = (
     Setting("audit", "known_acid_log_odds", 2.0, "ln odds", "an acid already in the record is likelier in a bottle"),
     Setting("audit", "detectable_power", 0.9, "-", "power at which the smallest detectable fault is stated"),
     Setting("meters", "slope_low_percent", 90.0, "%", "USP <791>, revision of 2016; the European text has 95"),
+    Setting(
+        "meters",
+        "other_slope_low_percent",
+        95.0,
+        "%",
+        "Ph. Eur. 2.2.3, recent text (from memory); shown beside the limit above, nothing is counted by it; 0 for none",
+    ),
     Setting("meters", "slope_high_percent", 105.0, "%", "USP <791>, revision of 2016"),
     Setting("meters", "offset_limit_mv", 30.0, "mV", "USP <791>, revision of 2016"),
     Setting("substances", "without_effect", (), "names", "declared by the site: no effect on pH (a protein, a dye)"),

@@ -17,12 +17,14 @@ _TAKEN, _MOLAR, _MOLAL, _W = range(len(HOWS))
 class Plain:
     """What the array reckoning settles.
 
-    Groups (g,): plain, True where every line is ordinary; per_kg_water. Lines (n,): kept, brings something; basis,
-    index into `bases`; amount, u : final, as in Solutions. Only lines of plain groups have a meaning.
+    Groups (g,): plain, True where every line is ordinary; per_kg_water; without_effect, holds a declared substance.
+    Lines (n,): kept, brings something; basis, index into `bases`; amount, u : final, as in Solutions. Only lines of
+    plain groups have a meaning.
     """
 
     plain: BoolArray
     per_kg_water: BoolArray
+    without_effect: BoolArray
     bases: list[Basis]
     basis: IntArray
     kept: BoolArray
@@ -58,6 +60,7 @@ def compose_plain(composer: Composer, groups: int) -> Plain:
     usual = np.equal(L.special, "") & np.fromiter((p is None for p in L.problem), bool, len(L))
     brings = plain_basis[basis] & usual & ~np.isnan(L.value) if len(basis) else np.zeros(0, bool)
     empty = nothing[basis] & usual if len(basis) else np.zeros(0, bool)
+    declared = np.array([b.taken.without_effect for b in bases], bool)[basis] if len(basis) else np.zeros(0, bool)
     kept = brings & (L.value != 0.0)
     group = L.group
     odd = _any_in(group, ~(brings | empty), groups)
@@ -86,6 +89,7 @@ def compose_plain(composer: Composer, groups: int) -> Plain:
     return Plain(
         plain=plain,
         per_kg_water=per_kg,
+        without_effect=_any_in(group, declared, groups),
         bases=bases,
         basis=basis,
         kept=kept,

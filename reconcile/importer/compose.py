@@ -26,6 +26,7 @@ class Mixture:
     per_kg_water: bool = False
     parts: list[tuple[Part, float, float]] = field(default_factory=list)
     problem: Problem | None = None
+    without_effect: bool = False
 
 
 class Composer:
@@ -145,6 +146,7 @@ class Composer:
 
     def mixture(self, lines: Sequence[int]) -> Mixture:
         """All lines of one solution put together."""
+        L = self.lines
         parts: list[Part] = []
         for line in lines:
             found = self.parts_of(line)
@@ -154,6 +156,7 @@ class Composer:
         total, measure, problem = self._total(lines)
         if problem is not None:
             return Mixture(problem=problem)
+        declared = any(self.reader.basis(L.substance[i], L.lot[i], L.unit[i]).taken.without_effect for i in lines)
         taken = [p for p in parts if p.how == "taken"]
         if taken and not measure:
             total, measure = self._added_up(lines)
@@ -165,7 +168,7 @@ class Composer:
             line = next(p.line for p in parts if p.how != "molar")
             return Mixture(problem=self._fault(line, "litre-and-kilogram"))
         if by_mass:
-            return self._per_kilogram(parts, total)
+            return replace(self._per_kilogram(parts, total), without_effect=declared)
         u = self.reader.u_volume
         return Mixture(
             False,
@@ -173,6 +176,7 @@ class Composer:
                 (p, p.amount, p.u) if p.how == "molar" else (p, p.amount / (total / 1000.0), float(np.hypot(p.u, u)))
                 for p in parts
             ],
+            without_effect=declared,
         )
 
     def _per_kilogram(self, parts: list[Part], total: float) -> Mixture:

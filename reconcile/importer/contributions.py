@@ -59,8 +59,9 @@ def solutions_of(assigner: Assigner) -> tuple[Solutions, tuple[Form, ...], IntAr
     for s, value in made.known.items():
         known[s] = value
     per_kg = plain.per_kg_water[group] & (group >= 0) if len(plain.per_kg_water) else np.zeros(len(group), bool)
+    declared = np.append(plain.without_effect, False)[group]
     for s, mixture in made.mixtures.items():
-        per_kg[s] = mixture.per_kg_water
+        per_kg[s], declared[s] = mixture.per_kg_water, mixture.without_effect
     L = composer.lines
     result = Solutions(
         batch=texts(made.batch),
@@ -79,6 +80,7 @@ def solutions_of(assigner: Assigner) -> tuple[Solutions, tuple[Form, ...], IntAr
         stated=_stated(L.value[line], L.unit[line], L.lot[line]),
         chain_contribution=pairs[:, 0],
         chain_lot=new[pairs[:, 1]],
+        without_effect=declared,
     )
     return result, tuple(forms), used
 

@@ -104,6 +104,8 @@ class Solutions:
 
     Chains: a contribution made through stocks of stocks depends on every lot of the chain:
     chain_contribution, chain_lot : IntArray (k,), pairs; the direct lot is among them.
+
+    without_effect : BoolArray (s,), True where the recipe names a substance declared without effect on pH (empty: none)
     """
 
     batch: TextArray
@@ -122,6 +124,7 @@ class Solutions:
     stated: TextArray
     chain_contribution: IntArray
     chain_lot: IntArray
+    without_effect: AnyArray = field(default_factory=lambda: np.zeros(0, bool))
 
     def __len__(self) -> int:
         return len(self.batch)

@@ -285,3 +285,7 @@ def test_declared_substances_have_no_contribution() -> None:
     records = solution([("NaCl", "L1", 5.0, "mM"), ("green dye", "D1", "a pinch", None)], settings=declared)
     assert amounts(records) == pytest.approx([0.005])
     assert records.without_effect == ("green dye",)
+    assert records.solutions.without_effect.tolist() == [True]
+    by_mass = solution([("NaCl", None, 5.0, "g", 1.0, "kg"), ("green dye", None, None, None)], settings=declared)
+    assert by_mass.solutions.without_effect.tolist() == [True]
+    assert not solution([("NaCl", None, 5.0, "mM")], settings=declared).solutions.without_effect.any()

@@ -204,7 +204,7 @@ def test_recipes_composed_in_arrays_are_those_composed_one_by_one(drawn: list[tu
     hcl, acetic = catalogue().look_up("HCl").form, catalogue().look_up("acetic acid").form
     room.add(Stock("L1", hcl, "", 1.0, UNITS["M"], nan, nan, 1.01, nan, 0, Place("")))
     room.add(Stock("L2", acetic, "", nan, None, 1.05, 99.0, nan, nan, 1, Place("")))
-    composer = Composer(LineReader(lines, Resolver(catalogue(), room, ()), Settings(), [("f", "s")]))
+    composer = Composer(LineReader(lines, Resolver(catalogue(), room, ("nonsense",)), Settings(), [("f", "s")]))
     plain = compose_plain(composer, 4)
     for group in range(4):
         mixture = composer.mixture(composer.by_group.get(group, []))
@@ -215,5 +215,6 @@ def test_recipes_composed_in_arrays_are_those_composed_one_by_one(drawn: list[tu
         assert [p.line for p, _, _ in mixture.parts] == kept.tolist()
         assert [a for _, a, _ in mixture.parts] == pytest.approx(plain.amount[kept].tolist(), rel=1e-12)
         assert [u for _, _, u in mixture.parts] == pytest.approx(plain.u[kept].tolist(), rel=1e-12)
+        assert mixture.without_effect == plain.without_effect[group]
         if kept.size:
             assert mixture.per_kg_water == plain.per_kg_water[group]

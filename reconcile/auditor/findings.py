@@ -8,19 +8,22 @@ from dataclasses import replace
 from datetime import datetime
 
 import numpy as np
-from scipy import stats
+from scipy import sparse, stats
 
 from reconcile.auditor.alarm import Alarm, score_df
 from reconcile.auditor.components import Model
 from reconcile.auditor.estimates import critical_score, given_selected
+from reconcile.auditor.judging import Chosen
 from reconcile.auditor.layout import Layout
 from reconcile.auditor.scoring import Candidate, Pool, Scores
-from reconcile.auditor.search import Chosen, Search, State
-from reconcile.auditor.wording import name_of, sentence, since_words, support_words
+from reconcile.auditor.search import Search, State
+from reconcile.auditor.wording import detail_of, name_of, sentence, since_words, support_words
 from reconcile.records.arrays import IntArray
 from reconcile.records.results import Finding
 
 MOST_RIVALS = 8
+INSEPARABLE = 1.0
+"""Squared distance of two supposed effects in spreads of the readings: half a unit of log-likelihood is expected."""
 ONSET_DROP = 1.92
 """Half the 95 % point of chi-squared with one degree of freedom: dates closer than this to the best."""
 READING_ERRORS = ("meter", "probe", "reading", "calibration", "buffer")
@@ -32,22 +35,44 @@ def rows_of(candidate: Candidate) -> IntArray:
     return np.sort(candidate.x.indices.astype(np.intp))
 
 
-def distinct(pool: Pool, scores: Scores, best: Chosen, reach: float) -> list[tuple[int, Candidate]]:
-    """Other explanations within reach of the best, one for each kind, subject and substance, best first."""
+def distinct(
+    pool: Pool, model: Model, scores: Scores, best: Chosen, reach: float
+) -> tuple[list[tuple[int, Candidate]], dict[int, list[str]]]:
+    """Other explanations within reach of the best, one for each kind, subject and substance, best first.
+
+    Substances in one lot that no reading separates are one: the dict holds, by pool index (-1 for the best itself), the
+    names of those that go with it.
+    """
     near = np.flatnonzero((scores.gain > best.gain - reach) & (scores.gain > 1.0) & np.isfinite(scores.marginal))
     near = near[np.argsort(-scores.marginal[near], kind="stable")]
     mine = best.candidate
-    taken = {(mine.kind, mine.subject, mine.same if mine.kind == "lot_identity" else None)}
+    taken = {(mine.kind, mine.subject)}
+    heads: list[tuple[int, Candidate]] = [(-1, mine)] if mine.kind == "lot_identity" else []
+    with_it: dict[int, list[str]] = {}
     found: list[tuple[int, Candidate]] = []
     for k in near.tolist():
         other = pool.candidate(k)
-        key = (other.kind, other.subject, other.same if other.kind == "lot_identity" else None)
-        if key not in taken:
-            taken.add(key)
+        if other.kind == "lot_identity":
+            head = next((h for h in heads if inseparable(model, h[1], other)), None)
+            if head is not None:
+                if other.same != head[1].same:
+                    with_it.setdefault(head[0], []).append(detail_of(other.tell(1.0)))
+                continue
+            heads.append((k, other))
+        elif (other.kind, other.subject) in taken:
+            continue
+        taken.add((other.kind, other.subject))
+        if len(found) < MOST_RIVALS:
             found.append((k, other))
-        if len(found) == MOST_RIVALS:
-            break
-    return found
+    return found, with_it
+
+
+def inseparable(model: Model, one: Candidate, other: Candidate) -> bool:
+    """True where two substances in one lot move the readings alike, within what the readings can tell."""
+    if one.subject != other.subject:
+        return False
+    gap = sparse.csc_array(one.x - other.x)
+    return float(model.quadratic(gap)[0]) < INSEPARABLE if gap.nnz else True
 
 
 def onset_interval(
@@ -155,7 +180,7 @@ def build(
         amplitude, interval = (one.amplitude, None) if estimated is None else estimated
         between = onset_interval(layout, pool, scores, one.candidate, one.gain)
         finding = described(search, layout, one.candidate, amplitude, interval, one.gain, one.p, between)
-        rivals = distinct(pool, scores, one, reach)
+        rivals, with_it = distinct(pool, model, scores, one, reach)
         told: list[Finding] = []
         tried = [(one.candidate, amplitude)]
         for k, other in rivals:
@@ -165,7 +190,8 @@ def build(
             size, ends = (float(scores.amplitude[k]), None) if own_estimate is None else own_estimate
             tried.append((other, size))
             between = onset_interval(layout, pool, scores, other, float(scores.gain[k]))
-            told.append(described(search, layout, other, size, ends, support.gain, support.p, between))
+            rival = described(search, layout, other, size, ends, support.gain, support.p, between)
+            told.append(also_with(rival, with_it.get(k, [])))
         batches = len({int(b) for b in layout.batch[rows_of(one.candidate)]})
         words = [finding.text, support_words(one.p, len(finding.readings), batches, len(told))]
         if told:
@@ -173,11 +199,18 @@ def build(
             words.append(f"It could also be: {names}.")
         result.append(
             (
-                replace(finding, id=f"F{j + 1}", rivals=tuple(told), text=" ".join(words)),
+                replace(
+                    also_with(finding, with_it.get(-1, [])), id=f"F{j + 1}", rivals=tuple(told), text=" ".join(words)
+                ),
                 tried,
             )
         )
     return result
+
+
+def also_with(finding: Finding, names: Sequence[str]) -> Finding:
+    """A finding with further substances that act alike in its place."""
+    return replace(finding, also=tuple(dict.fromkeys([*finding.also, *names])))
 
 
 def impact_of(layout: Layout, finding: Finding) -> IntArray:

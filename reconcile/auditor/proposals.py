@@ -92,6 +92,8 @@ class Proposal:
     """What tells apart candidates of one kind and subject in a list of rivals (a substance); () when nothing does."""
     at: Callable[[int, Site], float] | None = None
     """Effect at amplitude 1 on a further reading of the subject meter; None for kinds that are no meter's."""
+    unsure: Callable[[int], sparse.csc_array] | None = None
+    """What remains unsure about a candidate's effect, as columns of unit variance (n, m) [pH]; None for nothing."""
     df: IntArray | None = None
     """Degrees of freedom of a candidate drawn from the readings themselves; None: one each."""
 

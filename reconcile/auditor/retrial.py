@@ -7,10 +7,11 @@ from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
+from scipy import sparse
 
 from reconcile.auditor.layout import Layout
 from reconcile.records.arrays import FloatArray, IntArray
-from reconcile.records.results import Change, Repredict
+from reconcile.records.results import Change, Prediction, Repredict
 
 
 @dataclass(frozen=True)
@@ -41,6 +42,7 @@ class Retrial:
     def __init__(self, layout: Layout, repredict: Repredict) -> None:
         self.layout, self.repredict = layout, repredict
         self._known: dict[Supposed, tuple[IntArray, FloatArray]] = {}
+        self._unsure: dict[Supposed, dict[tuple[str, int], tuple[IntArray, FloatArray]]] = {}
         self.kept: dict[object, Any] = {}
         """What fault kinds worked out once for this record, under keys of their own."""
         solutions = layout.records.solutions
@@ -85,4 +87,32 @@ class Retrial:
             ]
             for s, rows, prediction in zip(new, touched, self.repredict(changes), strict=True):
                 self._known[s] = (rows, prediction.ph - layout.ph[rows])
+                if s.form:
+                    self._unsure[s] = _of_constants(prediction, rows)
         return [self._known[s] for s in supposed]
+
+    def unsure(self, supposed: Supposed, beside: frozenset[str]) -> sparse.csc_array:
+        """What the constants of a supposed form leave unsure: u(pKa) dpH/dpKa, one column a constant [pH].
+
+        beside : acids whose constants are in the model already. Columns have unit variance; (n, number of constants)
+        """
+        self.shifts([supposed])
+        parts = [part for (acid, _), part in sorted(self._unsure.get(supposed, {}).items()) if acid not in beside]
+        n = len(self.layout)
+        if not parts:
+            return sparse.csc_array((n, 0))
+        rows = np.concatenate([rows for rows, _ in parts])
+        column = np.repeat(np.arange(len(parts)), [len(rows) for rows, _ in parts])
+        values = np.concatenate([value for _, value in parts])
+        return sparse.csc_array((values, (rows, column)), shape=(n, len(parts)))
+
+
+def _of_constants(prediction: Prediction, rows: IntArray) -> dict[tuple[str, int], tuple[IntArray, FloatArray]]:
+    """By constant: the evidence rows that feel it, and by how much for one standard uncertainty [pH]."""
+    t = prediction.constants
+    moved = t.value * prediction.constant_u[t.column]
+    found = {}
+    for column in np.unique(t.column[np.abs(moved) > 1e-4]).tolist():
+        mine = t.column == column
+        found[prediction.constant_names[column]] = (rows[t.row[mine]], moved[mine])
+    return found

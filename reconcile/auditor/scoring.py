@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from scipy import sparse
@@ -20,6 +20,7 @@ class Candidate:
     """One explanation, taken out of the pool: its effect, and how to tell it.
 
     x : sparse (n, 1), effect at amplitude 1
+    unsure : sparse (n, m), what its own constants leave unsure about it, as columns of unit variance; None for nothing
     """
 
     kind: str
@@ -36,6 +37,7 @@ class Candidate:
     own: tuple[int, ...]
     proposal: Proposal
     index: int
+    unsure: sparse.csc_array | None = None
 
     @property
     def key(self) -> tuple[object, ...]:
@@ -86,6 +88,10 @@ class Pool:
         """Number of blocks times classes by which a candidate's block probability is charged."""
         return self.classes * self.blocks_in_class[self.block_class[int(self.block[k])]]
 
+    def concerning(self, subjects: set[tuple[str, str | tuple[str, ...]]]) -> BoolArray:
+        """True for candidates of any of these (alarm class, subject)."""
+        return np.array([(p.alarm_class, s) in subjects for p in self.proposals for s in p.subject], bool)
+
     def candidate(self, k: int) -> Candidate:
         which = int(np.searchsorted(self.offsets, k, side="right")) - 1
         p, i = self.proposals[which], int(k - self.offsets[which])
@@ -104,6 +110,7 @@ class Pool:
             own=p.own[i] if len(p.own) else (),
             proposal=p,
             index=i,
+            unsure=None if p.unsure is None else p.unsure(i),
         )
 
 
@@ -111,6 +118,22 @@ def pool_of(context: Context, kinds: Sequence[FaultKind]) -> Pool:
     """Candidates of all kinds under the present model."""
     found = [kind.propose(context) for kind in kinds]
     return Pool([p for p in found if p is not None], len(context.layout))
+
+
+def gain_if_unsure(model: Model, x: sparse.csc_array, unsure: sparse.csc_array) -> float:
+    """Log-likelihood gain of a supposed truth whose effect is not sure: the variance is recomputed under it.
+
+    x : sparse (n, 1); unsure : sparse (n, m) columns of unit variance that join V under the supposition
+    """
+    effect = x.toarray().ravel()
+    p_effect = model.project(effect)
+    at_one = float(effect @ model.pr - 0.5 * effect @ p_effect)
+    if not unsure.shape[1]:
+        return at_one
+    columns = unsure.toarray()
+    inner = np.eye(columns.shape[1]) + columns.T @ model.project(columns)
+    left = columns.T @ (model.pr - p_effect)
+    return at_one + 0.5 * float(left @ np.linalg.solve(inner, left)) - 0.5 * float(np.linalg.slogdet(inner)[1])
 
 
 @dataclass(frozen=True)
@@ -147,4 +170,14 @@ def score(model: Model, x: sparse.csc_array, point: BoolArray, prior_sd: FloatAr
         z,
         gain,
         np.where(good, marginal, -np.inf),
+    )
+
+
+def without(scores: Scores, ruled_out: BoolArray) -> Scores:
+    """Scores in which some candidates score nothing."""
+    return replace(
+        scores,
+        z=np.where(ruled_out, 0.0, scores.z),
+        gain=np.where(ruled_out, 0.0, scores.gain),
+        marginal=np.where(ruled_out, -np.inf, scores.marginal),
     )

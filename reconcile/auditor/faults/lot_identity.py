@@ -14,8 +14,8 @@ from reconcile.records.substances import Form
 ROOM = 2.5
 """Score of a lot's common shift from which other contents are computed."""
 
-Meant = tuple[int, Alternative, float, float]
-"""Lot, content, mol of it for a mol of the label, and log prior odds."""
+Meant = tuple[int, Alternative, float, float, Supposed]
+"""Lot, content, mol of it for a mol of the label, log prior odds, and what is supposed for it."""
 
 
 def known_acids(context: Context) -> frozenset[str]:
@@ -69,7 +69,7 @@ class LotIdentity:
         x = sparse.csc_array(sparse.hstack([columns for _, columns in blocks]))
 
         def tell(k: int, a: float) -> Told:
-            _, choice, factor, _ = meant[k]
+            _, choice, factor, *_ = meant[k]
             explains: dict[str, object] = {"substance": choice.form.name}
             if choice.relation == "hydrate":
                 explains["factor"] = factor
@@ -87,6 +87,7 @@ class LotIdentity:
             np.array([m[3] for m in meant]),
             np.ones(len(meant), bool),
             tell,
+            unsure=lambda k: context.retrial.unsure(meant[k][-1], acids),
             same=[f"{m[1].form.name} {m[2]:.3g}" for m in meant],
         )
 
@@ -102,8 +103,9 @@ class LotIdentity:
             contributions = context.retrial.contributions_of_lot(lot)
             choices = contents(context, lot, label, acids, odds)
             total = sum(choice.weight for choice, _ in choices)
-            kept, x = points(context, [Supposed(contributions, c.form.name, factor) for c, factor in choices])
-            meant = [(lot, *choices[i], float(np.log(choices[i][0].weight / total))) for i in kept]
+            supposed = [Supposed(contributions, c.form.name, factor) for c, factor in choices]
+            kept, x = points(context, supposed)
+            meant = [(lot, *choices[i], float(np.log(choices[i][0].weight / total)), supposed[i]) for i in kept]
             context.retrial.kept[key] = (meant, x)
         found: tuple[list[Meant], sparse.csc_array] = context.retrial.kept[key]
         return found

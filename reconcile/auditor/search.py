@@ -85,7 +85,7 @@ class Search:
         model = self.model(components, candidates)
         pool = pool_of(Context(self.layout, self.settings, model, self.retrial), self.kinds)
         self.tried += len(pool)
-        return pool, model, score(model, pool.x, pool.point, pool.prior_sd, pool.log_prior)
+        return pool, model, pool.scores(model)
 
     def supported(self, pool: Pool, model: Model, scores: Scores, beside: Sequence[Candidate]) -> list[Chosen]:
         """The best candidates with their family-wise probability at or under the alarm rate, best first.
@@ -100,7 +100,7 @@ class Search:
         if not len(order):
             return found
         alarm = Alarm(pool, model)
-        p_single = single_p(model, sparse.csc_array(pool.x[:, order]), floor[order])
+        p_single = single_p(model, pool.columns(order), floor[order])
         again: set[tuple[object, ...]] = set()
         for k, p in zip(order.tolist(), p_single.tolist(), strict=True):
             candidate = pool.candidate(k)
@@ -109,7 +109,9 @@ class Search:
             one = replace(one, p=alarm.family_wise(candidate, k, gain, p, self.rate))
             subject = (candidate.kind, candidate.subject)
             promising = marginal > AGAIN_FROM and len(candidate.x.indices) >= AGAIN_READINGS
-            if one.p > self.rate and promising and subject not in again and len(again) < AGAIN:
+            # one fault swells the noise of a short record only
+            falls_short = one.p > self.rate and promising and not model.long
+            if falls_short and subject not in again and len(again) < AGAIN:
                 again.add(subject)
                 one = self.judged_again(candidate, pool, model, beside)
             if one.p <= self.rate:

@@ -1,6 +1,6 @@
 """Audits pH readings against batch recipes by full chemical equilibrium.
 
-The doors, each loaded when first used: predict_ph, read, audit, meters, write_report.
+The doors, each loaded when first used: predict_ph, read, audit, meters, fit_pka, write_report.
 """
 
 from __future__ import annotations
@@ -10,17 +10,18 @@ from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     from reconcile.chemistry.predict import predict_ph
-    from reconcile.pipeline import audit, meters, read
+    from reconcile.pipeline import audit, fit_pka, meters, read
     from reconcile.reporter.write import write_report
 
 __version__ = "0.1.0"
-__all__ = ["__version__", "audit", "meters", "predict_ph", "read", "write_report"]
+__all__ = ["__version__", "audit", "fit_pka", "meters", "predict_ph", "read", "write_report"]
 
 _DOORS = {
     "predict_ph": "reconcile.chemistry.predict",
     "read": "reconcile.pipeline",
     "audit": "reconcile.pipeline",
     "meters": "reconcile.pipeline",
+    "fit_pka": "reconcile.pipeline",
     "write_report": "reconcile.reporter.write",
 }
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, TypeAlias
 
@@ -13,11 +13,14 @@ if TYPE_CHECKING:
     # each name said twice: the command line, which may not look into chemistry, takes these types from here
     from reconcile.chemistry.library import LibraryAnswer as LibraryAnswer
     from reconcile.chemistry.library import LibraryEntry as LibraryEntry
+    from reconcile.chemistry.of_parts import PredictedParts as PredictedParts
     from reconcile.records.book import BatchRecords
     from reconcile.records.meter_results import MeterHistory
-    from reconcile.records.parts import Composition, Part
+    from reconcile.records.parts import Part
+    from reconcile.records.pka_results import PkaFit
     from reconcile.records.problems import Problem
-    from reconcile.records.results import Audit, Constant, Prediction
+    from reconcile.records.results import Audit, Prediction
+    from reconcile.records.substances import Catalogue
 
 FilePath: TypeAlias = str | Path
 SettingsLike: TypeAlias = Settings | FilePath | Mapping[str, Mapping[str, Any]] | None
@@ -62,11 +65,18 @@ def read(*paths: FilePath, settings: SettingsLike = None, columns: ColumnsLike =
     SettingsError
         The settings name a key that does not exist, or a value that it cannot take.
     """
+    return _read(paths, settings_of(settings), columns)
+
+
+def _read(
+    paths: Sequence[FilePath], settings: Settings, columns: ColumnsLike, names: Catalogue | None = None
+) -> BatchRecords:
+    """The same, with the substances known, by default the library's own."""
     from reconcile.importer.read import read_books
     from reconcile.importer.toml_files import read_column_map
 
     column_map = columns if columns is None or isinstance(columns, Mapping) else read_column_map(Path(columns))
-    return read_books([Path(p) for p in paths], settings_of(settings), column_map)
+    return read_books([Path(p) for p in paths], settings, column_map, names)
 
 
 def write_columns(path: FilePath, *files: FilePath, settings: SettingsLike = None, columns: ColumnsLike = None) -> None:
@@ -119,6 +129,7 @@ def audit(
         As for `read`.
     """
     from reconcile.auditor.audit import audit as explain
+    from reconcile.chemistry.library import constants_met
     from reconcile.chemistry.predict import predict_records as predict
     from reconcile.chemistry.predict import repredictor
     from reconcile.chemistry.shortcuts import shortcut_values
@@ -138,10 +149,12 @@ def audit(
         progress=lambda doing: say(doing, None),
         shortcuts=lambda rows: shortcut_values(records, chosen, rows),
     )
-    return replace(found, constants=_constants(prediction))
+    return replace(found, constants=constants_met(prediction))
 
 
-def _record(source: Sequence[FilePath | BatchRecords], settings: Settings, columns: ColumnsLike) -> BatchRecords:
+def _record(
+    source: Sequence[FilePath | BatchRecords], settings: Settings, columns: ColumnsLike, names: Catalogue | None = None
+) -> BatchRecords:
     """The record that files hold, or the one that was given; raises TypeError for a mixture."""
     from reconcile.records.book import BatchRecords
 
@@ -149,7 +162,7 @@ def _record(source: Sequence[FilePath | BatchRecords], settings: Settings, colum
     paths = [one for one in source if not isinstance(one, BatchRecords)]
     if books and (paths or len(books) > 1):
         raise TypeError("expected files, or one BatchRecords")
-    return books[0] if books else read(*paths, settings=settings, columns=columns)
+    return books[0] if books else _read(paths, settings, columns, names)
 
 
 def meters(
@@ -182,30 +195,43 @@ def meters(
     return meter_history(records, audited, chosen, progress=lambda doing: say(doing, None))
 
 
-def _constants(prediction: Prediction) -> tuple[Constant, ...]:
-    """The ionization constants that a prediction met, as the library holds them."""
-    from reconcile.chemistry.acids import acid_table
-    from reconcile.records.results import Constant
+def fit_pka(
+    *source: FilePath | BatchRecords,
+    acid: str,
+    settings: SettingsLike = None,
+    columns: ColumnsLike = None,
+    progress: Progress | None = None,
+    **about: Any,
+) -> PkaFit:
+    """Ionization constants of one acid from the readings of every solution that holds it.
 
-    rows = {(row.acid, row.step): row for row in acid_table().rows}
-    return tuple(
-        Constant(row.acid, row.step, row.pka, row.u, row.dh_kj_mol, row.dcp_j_k_mol, row.source)
-        for row in (rows[name] for name in prediction.constant_names)
-    )
+    Parameters
+    ----------
+    *source : str or Path, or one BatchRecords
+        As for `audit`; an acid that the library does not hold needs the files.
+    acid : str
+        Name of a substance of the library, or of an unfamiliar one as the record calls it.
+    settings, columns, progress
+        As for `audit`.
+    **about
+        The rest of PkaQuestion. Of an unfamiliar acid: steps (by AICc when None), charge of its fully protonated form,
+        protons_removed from it in what was weighed, counter_ion ("name:number"), molar_mass [g/mol]. Of any: free
+        ("strength", "offset"), noise (standard deviation of a reading [pH]; estimated when None).
 
-
-@dataclass(frozen=True)
-class PredictedParts:
-    """The prediction for one solution given in words.
-
-    composition : the parts once made up
-    prediction : Prediction of one row
-    settings : with which it was made
+    Raises
+    ------
+    InputProblems, SettingsError
+        As for `read`; where the question contradicts itself, or no reading bears on it.
     """
+    from reconcile.fitter.fit import fit_pka as fit
+    from reconcile.fitter.question import understood
+    from reconcile.records.pka_results import PkaQuestion
 
-    composition: Composition
-    prediction: Prediction
-    settings: Settings
+    chosen, question = settings_of(settings), PkaQuestion(acid, **about)
+    names = understood(question).names
+    if progress:
+        progress("reading the record", 0.0)
+    return fit(_record(source, chosen, columns, names), question, chosen, progress)
 
 
 DEFAULT_TEMPERATURE_C = 25.0
@@ -241,6 +267,7 @@ def predict_parts(
     SettingsError
         The settings, or the activity model, are not among those allowed.
     """
+    from reconcile.chemistry.of_parts import predict_composition
     from reconcile.records.parts import compose, parse_part
     from reconcile.records.problems import InputProblems
 
@@ -264,31 +291,6 @@ def with_model(settings: Settings, activity_model: str) -> Settings:
     named = Settings.from_sections({"prediction": {"activity_model": activity_model}})
     kept = {name: value for name, value in settings.changed.items() if name != "prediction.activity_model"}
     return replace(settings, changed={**kept, **named.changed})
-
-
-def predict_composition(composition: Composition, at: float, settings: Settings) -> PredictedParts:
-    """The predicted pH of parts once made up, with the uncertainties that the settings give to their amounts."""
-    import numpy as np
-
-    from reconcile.chemistry.predict import predict_ph
-    from reconcile.chemistry.water import HIGH_C, LOW_C
-    from reconcile.records.places import Place
-    from reconcile.records.problems import InputProblems, Problem
-
-    if not LOW_C <= at <= HIGH_C:
-        words = (("name", "the temperature"), ("low", f"{LOW_C:g} °C"), ("high", f"{HIGH_C:g} °C"))
-        raise InputProblems([Problem("at-out-of-range", Place(""), f"{at:g} °C", words)])
-    strength = settings["uncertainty.lot_strength_percent"] / 100.0 / 3.0**0.5
-    taking = settings["uncertainty.preparation_percent"] / 100.0 / 3.0**0.5
-    prediction = predict_ph(
-        [part.form.name for part in composition.parts],
-        np.array([composition.amounts]),
-        at,
-        unit=composition.unit,
-        settings=settings,
-        u_amounts=np.full((1, len(composition.parts)), (strength**2 + taking**2) ** 0.5),
-    )
-    return PredictedParts(composition, prediction, settings)
 
 
 def substances(word: str = "") -> LibraryAnswer:

@@ -110,13 +110,13 @@ class Alarm:
 
     def __init__(self, pool: Pool, model: Model) -> None:
         self.pool, self.model = pool, model
-        self._correlation: dict[int, tuple[FloatArray, FloatArray, BoolArray]] = {}
+        self._correlation: dict[int, tuple[FloatArray, FloatArray, BoolArray]] = pool.kept.setdefault(model, {})
 
     def block(self, block: int) -> tuple[FloatArray, FloatArray, BoolArray]:
         """Correlation of the scores of one block, its root, and which of them count on one side only."""
         if block not in self._correlation:
             members = np.flatnonzero((self.pool.block == block) & (self.pool.df == 1))
-            x = self.pool.x[:, members]
+            x = self.pool.columns(members)
             covariance = self.model.covariance(x)
             sd = np.sqrt(np.maximum(np.diag(covariance), 1e-12))
             good = np.diag(covariance) > 1e-9

@@ -33,7 +33,7 @@ class BaseModel:
 
     M = I + Z' W Z, of as many rows as there are effects with columns of their own (Henderson's equations, scaled).
     columns : IntArray, columns of layout.z that Z holds; place : IntArray, where each column of layout.z stands in Z,
-    or -1
+    or -1; inside : sparse (n, s), columns of Z for sessions and batches; taken : degrees of freedom of the others
     """
 
     def __init__(self, layout: Layout, components: Components) -> None:
@@ -53,9 +53,12 @@ class BaseModel:
         self.weighted = sparse.csr_array(sparse.diags_array(1.0 / self.grouped.d) @ self.z)
         self.shared = sparse.csr_array(self.grouped.block.T @ self.z)
         inner = sparse.csr_array(self.z.T @ self.weighted) - sparse.csr_array(self.shared.T @ self.shared)
-        self.m = np.asfortranarray(inner.toarray())
+        self.m = np.asarray(inner.toarray().T, float)  # symmetric: the transpose is as good, and in LAPACK's order
         self.m[np.diag_indices(len(self.m))] += 1.0
         self.factor = linalg.cholesky(self.m, lower=True, check_finite=True) if self.m.size else self.m
+        inside = np.concatenate([np.isnan(layout.prior)[self.columns], np.ones(found.wide.shape[1], bool)])
+        self.inside = sparse.csc_array(self.z[:, np.flatnonzero(inside)])
+        self.taken = float((1.0 - 1.0 / np.diag(self.m)[~inside]).sum())
         self._bounds: dict[int, tuple[sparse.csc_array, Bound]] = {}
 
     @cached_property

@@ -7,7 +7,7 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from reconcile.auditor.calibration_lines import HORIZON_DAYS, Fit, crossing, fit_line
+from reconcile.auditor.calibration_lines import Dates, Fit, crossing, fit_line
 from reconcile.auditor.calibration_runs import Run, days_of, time_of
 from reconcile.auditor.calibration_steps import Jump, places, steps
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
@@ -17,7 +17,8 @@ from reconcile.records.meter_results import QUANTITIES, CalibrationStep, Crossin
 MONTH = 30.0
 """Rates are told per 30 days."""
 UNLOGGED = "a step that no logged event explains"
-NO_LEAVE = "It does not extend a calibration interval."
+HORIZON = 2.0
+"""Lines are followed beyond the last calibration by this many lengths of their calibrations, and no further."""
 NAN = float("nan")
 
 
@@ -127,27 +128,14 @@ def crossings_of(lines: Sequence[Line], records: BatchRecords, limits: Sequence[
 
 
 def _cross(line: Line, fit: Fit, limit: Limit) -> Crossing:
-    last = float(days_of(np.array([line.last]))[0])
+    first, last = (float(d) for d in days_of(np.array([line.first, line.last])))
     dates = crossing(fit, limit.value)
-    end = last + HORIZON_DAYS
-    begin = last - HORIZON_DAYS
-    at, early, late = (d if begin <= d <= end else NAN for d in (dates.at, dates.earliest, dates.latest))
-    ahead = bool(dates.at > last) if dates.told else True
-    unit = QUANTITIES[line.quantity]
-    what = f"{line.subject_type} {line.subject}: its {line.quantity}"
-    course = f"goes by {line.rate:+.3g} {unit} in 30 days".replace("-", "−")
-    bound = f"{limit.value:g} {unit}".replace("-", "−")
-    if not dates.told:
-        text = f"{what} {course}, with an interval that holds zero: no date of crossing {bound} is given"
-        text += f", and not before {_day(early)} at 95 % confidence. " if np.isfinite(early) else ". "
-    elif dates.earliest > end:
-        text = f"{what} {course}; the line does not reach {bound} within ten years. "
-    else:
-        tense = "crosses" if ahead else "crossed"
-        when = f"about {_day(at)}" if np.isfinite(at) else "over ten years from the last calibration"
-        to = _day(late) if np.isfinite(late) else "beyond ten years"
-        start = _day(early) if np.isfinite(early) else "more than ten years before"
-        text = f"{what} {course}; the line {tense} {bound} {when} (95 % interval {start} to {to}). "
+    end = last + HORIZON * (last - first)
+    beyond = fit.at(last) < limit.value if limit.side == "low" else fit.at(last) > limit.value
+    ahead = dates.at > last if dates.told else not beyond
+    at = dates.at if first <= dates.at <= end else NAN
+    early = max(dates.earliest, first) if dates.earliest <= end else NAN
+    late = dates.latest if dates.latest <= end else NAN
     return Crossing(
         line.subject,
         line.subject_type,
@@ -157,9 +145,36 @@ def _cross(line: Line, fit: Fit, limit: Limit) -> Crossing:
         time_of(at),
         time_of(early),
         time_of(late),
-        ahead,
-        text[:1].upper() + text[1:] + NO_LEAVE,
+        bool(ahead),
+        f"{line.subject_type.capitalize()} {line.subject}: its {line.quantity} "
+        + _in_words(line, limit, dates, (first, end), bool(beyond)),
     )
+
+
+def _in_words(line: Line, limit: Limit, dates: Dates, drawn: tuple[float, float], beyond: bool) -> str:
+    """The course of a line and when it crosses a limit, in words."""
+    first, end = drawn
+    unit = QUANTITIES[line.quantity]
+    course = f"goes by {_number(line.rate, '+.3g')} {unit} in 30 days"
+    bound = f"{_number(limit.value, 'g')} {unit}"
+    now = f" The line lies beyond {bound} at the last calibration." if beyond else ""
+    if not dates.told:
+        early = f", but not before {_day(dates.earliest)} at 95 % confidence" if dates.earliest <= end else ""
+        return f"{course}, with an interval that holds zero: no date of crossing {bound} is given{early}.{now}"
+    if dates.earliest > end:
+        return f"{course}; the line does not reach {bound} before {_day(end)}, the last date that is looked at."
+    if dates.latest < first:
+        return f"{course}; the line lies beyond {bound} from the first calibration on."
+    low = _day(dates.earliest) if dates.earliest >= first else f"before {_day(first)}"
+    high = _day(dates.latest) if dates.latest <= end else f"after {_day(end)}"
+    when = f"about {_day(dates.at)}" if first <= dates.at <= end else ("after " if dates.at > end else "before ")
+    if when.endswith(" "):
+        when += _day(end if dates.at > end else first)
+    return f"{course}; the line {'crossed' if beyond else 'crosses'} {bound} {when} (95 % interval {low} to {high})."
+
+
+def _number(value: float, form: str) -> str:
+    return format(value, form).replace("-", "−")
 
 
 def _day(day: float) -> str:

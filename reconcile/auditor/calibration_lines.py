@@ -11,8 +11,6 @@ from reconcile.records.arrays import FloatArray
 
 LEAST_POINTS = 4
 """Calibrations for a line: two to place it, two to tell how far they scatter."""
-HORIZON_DAYS = 3653.0
-"""Dates further than ten years from the last calibration are not given."""
 STEPS = (1.0, 0.1, 0.01, 0.001)
 
 

@@ -19,7 +19,7 @@ from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 
 EXPLICIT = 1500
 """Calibration sessions up to which each has a column of its own: then nothing is put on the diagonal."""
-WIDE = 30
+WIDE = 8
 """Readings from which a batch (a known solution, read again and again) has a column of its own beside sessions."""
 
 

@@ -87,7 +87,7 @@ class Judge:
         taken = {(c.alarm_class, c.subject) for c in candidates if c.alarm_class in ONE_EACH}
         pool = pool_of(Context(self.layout, self.settings, model, self.retrial), self.kinds)
         self.tried += len(pool)
-        scores = self.made_unsure(pool, model, score(model, pool.x, pool.point, pool.prior_sd, pool.log_prior))
+        scores = self.made_unsure(pool, model, pool.scores(model))
         return pool, model, without(scores, pool.concerning(taken)) if taken else scores
 
     @staticmethod
@@ -107,7 +107,7 @@ class Judge:
                     if own[i] < 1.0 or own[i] < best - UNSURE_GAP - UNSURE_SHARE * abs(best):
                         break
                     k = int(offset + i)
-                    now = gain_if_unsure(model, sparse.csc_array(pool.x[:, [k]]), p.unsure(int(i)))
+                    now = gain_if_unsure(model, pool.columns(np.array([k], np.intp)), p.unsure(int(i)))
                     marginal[k] += now - gain[k]
                     gain[k] = max(now, 0.0)
         return replace(scores, gain=gain, marginal=marginal)
@@ -125,7 +125,7 @@ class Judge:
         if not len(order):
             return found
         alarm = Alarm(pool, model)
-        p_single = single_p(model, sparse.csc_array(pool.x[:, order]), floor[order])
+        p_single = single_p(model, pool.columns(order), floor[order])
         again: set[tuple[object, ...]] = set()
         for k, p in zip(order.tolist(), p_single.tolist(), strict=True):
             candidate = pool.candidate(k)
@@ -134,7 +134,9 @@ class Judge:
             one = replace(one, p=alarm.family_wise(candidate, k, gain, p, self.rate))
             subject = (candidate.kind, candidate.subject)
             promising = marginal > AGAIN_FROM and len(candidate.x.indices) >= AGAIN_READINGS
-            if one.p > self.rate and promising and subject not in again and len(again) < AGAIN:
+            # one fault swells the noise of a short record only
+            falls_short = one.p > self.rate and promising and not model.long
+            if falls_short and subject not in again and len(again) < AGAIN:
                 again.add(subject)
                 one = self.judged_again(candidate, pool, model, beside)
             if one.p <= self.rate:

@@ -129,6 +129,17 @@ class LongModel(Model):
         rest = np.clip(1.0 - known.sum(axis=0), 0.0, 1.0)
         return Shares(rest * np.minimum(total / local, 1.0), fourth / np.maximum(total, 1e-12) ** 2, known)
 
+    def remainder(self) -> FloatArray:
+        """Residuals less the estimated effects of meters, lots, constants and fixed columns, (n,) [pH]."""
+        inside = self.base.inside
+        shared = inside @ (inside.T @ self.pr) if inside.shape[1] else 0.0
+        return np.asarray(self.base.grouped.unweighed(self.pr) + shared, float)
+
+    def kept_share(self) -> float:
+        """Share of the readings' degrees of freedom that these effects leave; about, each taken by itself."""
+        taken = self.base.taken + self.core.shape[0] - len(self.dropped)
+        return float(max(1.0 - taken / max(len(self.layout), 1), 0.2))
+
     def variance(self) -> FloatArray:
         if self.dropped:
             return super().variance()

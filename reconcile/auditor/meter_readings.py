@@ -14,7 +14,8 @@ from scipy import sparse, stats
 from reconcile.auditor.calibration_runs import days_of
 from reconcile.auditor.components import Components
 from reconcile.auditor.layout import Layout, build_layout, one_hot
-from reconcile.auditor.mixed import HUBER, HUBER_MEAN, estimate, model_of
+from reconcile.auditor.mixed import estimate, model_of
+from reconcile.auditor.robust import HUBER, HUBER_MEAN
 from reconcile.records.arrays import FloatArray
 from reconcile.records.meter_results import BetweenCalibrations, MeterNoise
 from reconcile.records.results import Audit, Finding

@@ -9,19 +9,18 @@ from __future__ import annotations
 from dataclasses import replace
 
 import numpy as np
-from scipy import linalg, sparse, stats
+from scipy import linalg, sparse
 
 from reconcile.auditor.components import SHORT, Components, Model
-from reconcile.auditor.layout import ROOT3, Layout
+from reconcile.auditor.layout import Layout
+from reconcile.auditor.long_components import estimate_long
 from reconcile.auditor.long_model import LongModel
+from reconcile.auditor.robust import HUBER as HUBER
+from reconcile.auditor.robust import HUBER_MEAN as HUBER_MEAN
+from reconcile.auditor.robust import OWN_NOISE_FROM, bounded, meter_ratios, stated
 from reconcile.auditor.tails import tail_weights
-from reconcile.records.arrays import FloatArray, IntArray
+from reconcile.records.arrays import FloatArray
 from reconcile.records.settings import Settings
-
-HUBER = 2.5
-HUBER_MEAN = float(stats.chi2.cdf(HUBER**2, 3) + HUBER**2 * stats.chi2.sf(HUBER**2, 1))
-"""Mean of min(z^2, HUBER^2) for standard normal z, so that the bounded squares stay consistent."""
-OWN_NOISE_FROM = 20
 
 
 class ShortModel(Model):
@@ -78,23 +77,6 @@ def model_of(
     return sort(layout, components, fixed, own_dropped, r)
 
 
-def stated(layout: Layout, settings: Settings) -> Components:
-    """The components as stated, which are also the floors of the estimates."""
-    return Components(
-        noise=float(settings["uncertainty.noise_floor"]) ** 2,
-        meter_ratio=np.ones(len(layout.meters)),
-        session=float(settings["uncertainty.session"]) ** 2,
-        preparation=(float(settings["uncertainty.preparation_percent"]) / 100 / ROOT3) ** 2,
-    )
-
-
-def _bounded(score: FloatArray, information: FloatArray) -> tuple[float, float]:
-    """Bounded sum of squared scores and its expectation: their ratio is one where a component fits."""
-    good = information > 1e-12
-    z2 = np.minimum(score[good] ** 2 / information[good], HUBER**2)
-    return float((information[good] * z2).sum() / HUBER_MEAN), float(information[good].sum())
-
-
 def estimate(
     layout: Layout,
     settings: Settings,
@@ -109,8 +91,10 @@ def estimate(
     2019, J. Comput. Graph. Stat. 28:350, for multiplicative steps; both from memory). A meter's own noise from 20
     readings on, shrunk to the common value with the weight of 20 readings.
     """
-    floor = stated(layout, settings)
     n = len(layout)
+    if n > SHORT:
+        return estimate_long(layout, settings, fixed, r, start)
+    floor = stated(layout, settings)
     if n < 4:
         return floor
     now = start or replace(floor, noise=max(floor.noise, 1e-4), session=max(floor.session, 2.5e-5))
@@ -128,13 +112,13 @@ def estimate(
         z2 = np.minimum(model.pr**2 / np.maximum(p, 1e-12), HUBER**2)
         noise_ratio = float((share * z2).sum() / HUBER_MEAN / max(share.sum(), 1e-12))
         df = float(share.sum())
-        ratio = now.meter_ratio * _meter_ratios(layout.meter, counts, share, z2) ** 0.5
+        ratio = now.meter_ratio * meter_ratios(layout.meter, counts, share, z2) ** 0.5
         ratio = np.where(counts >= OWN_NOISE_FROM, ratio / noise_ratio**0.5, 1.0)
         session = now.session
         if session_columns.shape[1]:
-            num, den = _bounded(np.asarray(session_columns.T @ model.pr), model.quadratic(session_columns))
+            num, den = bounded(np.asarray(session_columns.T @ model.pr), model.quadratic(session_columns))
             session *= (num / den) ** 0.9 if den > 0 else 1.0
-        num, den = _bounded(np.asarray(batch_columns.T @ model.pr), model.quadratic(batch_columns))
+        num, den = bounded(np.asarray(batch_columns.T @ model.pr), model.quadratic(batch_columns))
         preparation = now.preparation * ((num / den) ** 0.9 if den > 0 else 1.0)
         new = Components(
             noise=max(now.noise * noise_ratio**0.9, floor.noise),
@@ -152,11 +136,3 @@ def estimate(
         if moved < 2e-3:
             break
     return replace(now, noise_df=max(df * 0.92, 3.0), tails=tail_weights(model_of(layout, now, fixed, r=r)))
-
-
-def _meter_ratios(meter: IntArray, counts: IntArray, share: FloatArray, z2: FloatArray) -> FloatArray:
-    """Noise variance of each meter over the present one, pulled towards one with the weight of 20 readings."""
-    known = meter >= 0
-    num = np.bincount(meter[known], (share * z2 / HUBER_MEAN)[known], minlength=len(counts))
-    den = np.bincount(meter[known], share[known], minlength=len(counts))
-    return np.asarray((num + OWN_NOISE_FROM) / (den + OWN_NOISE_FROM))

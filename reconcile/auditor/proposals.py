@@ -5,10 +5,10 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
 from datetime import datetime
-from typing import Any, Protocol
+from typing import Any, Protocol, TypeVar
 
 import numpy as np
-from scipy import sparse
+from scipy import sparse, stats
 
 from reconcile.auditor.components import Model
 from reconcile.auditor.layout import Layout
@@ -18,6 +18,9 @@ from reconcile.records.settings import Settings
 
 CLASSES = ("meter", "lot", "batch", "reading", "chemistry")
 """Classes between which the alarm rate is split equally."""
+ROOM_SHARE = 0.75
+"""Least correlation between a subject's fault and the common shape it is first looked at with, on a long record."""
+T = TypeVar("T")
 
 
 @dataclass(frozen=True)
@@ -29,11 +32,32 @@ class Context:
     model: Model
     retrial: Retrial
 
-    def screen(self, x: sparse.csc_array) -> FloatArray:
-        """Score z of linear columns under the present model; 0 where a column says nothing."""
-        information = self.model.quadratic(x)
+    def screen(self, x: sparse.csc_array, steady: bool = False, own: IntArray | None = None) -> FloatArray:
+        """Score z of linear columns under the present model; 0 where a column says nothing.
+
+        steady : x is the same object whenever it is screened; own : column of the design that each may be, or -1
+        """
         score = np.asarray(x.T @ self.model.pr).ravel()
+        information = self.model.information(x, score, own, steady)
         return np.where(information > 1e-9, score / np.sqrt(np.maximum(information, 1e-9)), 0.0)
+
+    def room(self, least: float, tried: int) -> float:
+        """Score from which one of `tried` subjects is looked at closely.
+
+        On a long record many subjects pass any fixed score by chance: there it rises with their number, and stays well
+        below what a finding about any of them needs.
+        """
+        if not self.model.long:
+            return least
+        rate = float(self.settings["audit.alarm_rate"]) / len(CLASSES) / max(tried, 1)
+        return max(least, ROOM_SHARE * float(stats.norm.isf(rate / 2.0)))
+
+    def kept(self, key: object, make: Callable[[], T]) -> T:
+        """What was made once for this record under a key."""
+        if key not in self.retrial.kept:
+            self.retrial.kept[key] = make()
+        found: T = self.retrial.kept[key]
+        return found
 
 
 @dataclass(frozen=True)
@@ -96,13 +120,22 @@ class Proposal:
     """What remains unsure about a candidate's effect, as columns of unit variance (n, m) [pH]; None for nothing."""
     df: IntArray | None = None
     """Degrees of freedom of a candidate drawn from the readings themselves; None: one each."""
+    blocks: int = 0
+    """Blocks looked at, where only those that come near significance are handed in (on a long record)."""
+    steady: bool = False
+    """True where the same proposal serves whatever the model is."""
 
     def __len__(self) -> int:
         return len(self.subject)
 
 
 class FaultKind(Protocol):
-    """One kind of fault: a module-level object in its own small file under faults/."""
+    """One kind of fault: a module-level object in its own small file under faults/.
+
+    Two more may stand there. `steady = True`: its candidates depend on the record alone, not on the present model, so
+    that they are made once. `refine(context, proposal)`: on a long record, a second Proposal (or None) with further
+    candidates of the subjects that come near significance.
+    """
 
     name: str
     alarm_class: str
@@ -139,10 +172,11 @@ def linear(
     log_prior: FloatArray | None = None,
     own: Sequence[tuple[int, ...]] = (),
     at: Callable[[int, Site], float] | None = None,
+    blocks: int = 0,
 ) -> Proposal | None:
-    """A proposal whose candidates all have a free amplitude; None when there is no candidate."""
+    """A proposal whose candidates all have a free amplitude; None when there is no candidate and none was looked at."""
     k = len(subject)
-    if not k:
+    if not k and not blocks:
         return None
     return Proposal(
         kind,
@@ -157,4 +191,5 @@ def linear(
         tell,
         own,
         at=at,
+        blocks=blocks,
     )

@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from functools import cached_property
+from typing import Any
 
 import numpy as np
 from scipy import sparse
@@ -52,13 +54,8 @@ class Pool:
     """Candidates of several proposals, with arrays over all k of them."""
 
     def __init__(self, proposals: Sequence[Proposal], n: int) -> None:
-        self.proposals = [p for p in proposals if len(p)]
+        self.proposals, self.n = [p for p in proposals if len(p)], n
         self.offsets = np.cumsum([0, *(len(p) for p in self.proposals)])
-        self.x = (
-            sparse.csc_array(sparse.hstack([p.x for p in self.proposals]))
-            if self.proposals
-            else sparse.csc_array((n, 0))
-        )
         self.prior_sd = self._joined([p.prior_sd for p in self.proposals])
         self.log_prior = self._joined([p.log_prior for p in self.proposals])
         self.point: BoolArray = self._joined([p.point.astype(float) for p in self.proposals]) > 0
@@ -70,7 +67,10 @@ class Pool:
         place = {name: i for i, name in enumerate(distinct)}
         self.block: IntArray = np.array([place[name] for name in names], np.intp)
         self.block_class = [c for c, _ in distinct]
-        self.blocks_in_class = {c: self.block_class.count(c) for c in CLASSES}
+        looked_at = {c: max((p.blocks for p in proposals if p.alarm_class == c), default=0) for c in CLASSES}
+        self.blocks_in_class = {c: max(self.block_class.count(c), looked_at[c]) for c in CLASSES}
+        self.kept: dict[object, Any] = {}
+        """What was worked out about its blocks, by model."""
 
     @staticmethod
     def _joined(parts: Sequence[FloatArray]) -> FloatArray:
@@ -78,6 +78,33 @@ class Pool:
 
     def __len__(self) -> int:
         return int(self.offsets[-1])
+
+    @cached_property
+    def x(self) -> sparse.csc_array:
+        """All columns side by side, (n, k)."""
+        if not self.proposals:
+            return sparse.csc_array((self.n, 0))
+        return sparse.csc_array(sparse.hstack([p.x for p in self.proposals]))
+
+    def columns(self, ks: IntArray) -> sparse.csc_array:
+        """Some of the columns, in the order asked for."""
+        if "x" in self.__dict__ or not len(ks):
+            return sparse.csc_array(self.x[:, ks])
+        which = np.searchsorted(self.offsets, ks, side="right") - 1
+        order = np.argsort(which, kind="stable")
+        parts = [self.proposals[w].x[:, ks[which == w] - self.offsets[w]] for w in np.unique(which).tolist()]
+        back = np.argsort(order, kind="stable")
+        return sparse.csc_array(sparse.csc_array(sparse.hstack(parts))[:, back])
+
+    def scores(self, model: Model) -> Scores:
+        """Scores of all candidates; on a long record a proposal at a time, steady ones from what is known of them."""
+        if not model.long:
+            return score(model, self.x, self.point, self.prior_sd, self.log_prior)
+        slopes = [np.asarray(p.x.T @ model.pr).ravel() for p in self.proposals]
+        known = [
+            model.information(p.x, slope, _own(p), p.steady) for p, slope in zip(self.proposals, slopes, strict=True)
+        ]
+        return _scores(self._joined(known), self._joined(slopes), self.point, self.prior_sd, self.log_prior)
 
     @property
     def classes(self) -> int:
@@ -102,7 +129,7 @@ class Pool:
             subject=p.subject[i],
             subject_type=p.subject_type,
             same=p.same[i] if len(p.same) else None,
-            x=sparse.csc_array(self.x[:, [k]]),
+            x=self.columns(np.array([k], np.intp)),
             prior_sd=float(p.prior_sd[i]),
             log_prior=float(p.log_prior[i]),
             point=bool(p.point[i]),
@@ -116,8 +143,31 @@ class Pool:
 
 def pool_of(context: Context, kinds: Sequence[FaultKind]) -> Pool:
     """Candidates of all kinds under the present model."""
-    found = [kind.propose(context) for kind in kinds]
-    return Pool([p for p in found if p is not None], len(context.layout))
+    found = [p for kind in kinds for p in proposed(context, kind) if p is not None]
+    return Pool(found, len(context.layout))
+
+
+def proposed(context: Context, kind: FaultKind) -> list[Proposal | None]:
+    """What one kind hands in."""
+    if not getattr(kind, "steady", False):
+        return [kind.propose(context)]
+    key = ("proposal", kind.name, kind.alarm_class)
+    first = context.kept(key, lambda: _steady(kind.propose(context)))
+    refine = getattr(kind, "refine", None)
+    if refine is None or first is None or not context.model.long:
+        return [first]
+    return [first, refine(context, first)]
+
+
+def _steady(proposal: Proposal | None) -> Proposal | None:
+    return None if proposal is None else replace(proposal, steady=True)
+
+
+def _own(proposal: Proposal) -> IntArray | None:
+    """The column of the design that each candidate may be, -1 where it has none or several of its own."""
+    if not len(proposal.own):
+        return None
+    return np.array([own[0] if len(own) == 1 else -1 for own in proposal.own], np.intp)
 
 
 def gain_if_unsure(model: Model, x: sparse.csc_array, unsure: sparse.csc_array) -> float:
@@ -154,8 +204,13 @@ class Scores:
 
 def score(model: Model, x: sparse.csc_array, point: BoolArray, prior_sd: FloatArray, log_prior: FloatArray) -> Scores:
     """Scores of sparse columns under a model; columns that say nothing score nothing."""
-    information = model.quadratic(x)
     slope = np.asarray(x.T @ model.pr).ravel()
+    return _scores(model.quadratic(x), slope, point, prior_sd, log_prior)
+
+
+def _scores(
+    information: FloatArray, slope: FloatArray, point: BoolArray, prior_sd: FloatArray, log_prior: FloatArray
+) -> Scores:
     good = information > LEAST_INFORMATION
     safe = np.where(good, information, 1.0)
     z = np.where(good, slope / np.sqrt(safe), 0.0)

@@ -2,16 +2,22 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable
 from dataclasses import dataclass
 from datetime import datetime
 
 import numpy as np
 
 from reconcile.auditor.layout import DAY, Layout
+from reconcile.auditor.proposals import Context, Proposal, stack
 from reconcile.records.arrays import FloatArray, IntArray
 
-MOST_ONSETS = 60
+MOST_ONSETS, COARSE_ONSETS = 60, 12
+"""Change dates tried for a meter; on a long record, the few that say whether more are worth trying."""
+ROOM = 2.5
+"""Score of a coarse change date from which a long record's meter is looked at date by date."""
+Onset = tuple[int, float]
+"""Readings before a change, and the day midway between its neighbours."""
 
 
 @dataclass(frozen=True)
@@ -23,24 +29,58 @@ class Course:
     rows: IntArray
     day: FloatArray
 
-    def onsets(self, before: int, after: int) -> list[tuple[int, float]]:
-        """(readings before, day midway between neighbours) for every change date with enough readings on each side.
+    def onsets(self, before: int, after: int, most: int = MOST_ONSETS) -> list[Onset]:
+        """Every change date with enough readings on each side, thinned to `most` evenly spaced ones."""
+        return self.between(max(before, 1), len(self.day) - after, most)
 
-        Thinned to MOST_ONSETS evenly spaced ones on a long record.
-        """
-        cuts = [i for i in range(max(before, 1), len(self.day) - after + 1) if self.day[i] > self.day[i - 1]]
-        if len(cuts) > MOST_ONSETS:
-            cuts = [cuts[i] for i in np.linspace(0, len(cuts) - 1, MOST_ONSETS).round().astype(int)]
-        return [(i, float(self.day[i - 1] + self.day[i]) / 2) for i in cuts]
+    def between(self, first: int, last: int, most: int = MOST_ONSETS) -> list[Onset]:
+        """Change dates with `first` to `last` readings before them, both counted, thinned likewise."""
+        inside = np.arange(first, min(last, len(self.day) - 1) + 1)
+        cuts = inside[self.day[inside] > self.day[inside - 1]]
+        if len(cuts) > most:
+            cuts = cuts[np.linspace(0, len(cuts) - 1, most).round().astype(int)]
+        return [(int(i), float(self.day[i - 1] + self.day[i]) / 2) for i in cuts]
 
 
-def courses(layout: Layout) -> Iterator[Course]:
+def courses(layout: Layout) -> list[Course]:
     """Every meter with dated readings."""
-    for index, meter in enumerate(layout.meters):
-        rows = np.flatnonzero((layout.meter == index) & np.isfinite(layout.day))
-        if len(rows):
-            rows = rows[np.argsort(layout.day[rows], kind="stable")]
-            yield Course(index, meter, rows, layout.day[rows])
+    if "courses" not in layout.kept:
+        found = []
+        for index, meter in enumerate(layout.meters):
+            rows = np.flatnonzero((layout.meter == index) & np.isfinite(layout.day))
+            if len(rows):
+                rows = rows[np.argsort(layout.day[rows], kind="stable")]
+                found.append(Course(index, meter, rows, layout.day[rows]))
+        layout.kept["courses"] = found
+    result: list[Course] = layout.kept["courses"]
+    return result
+
+
+def refined(
+    context: Context,
+    coarse: Proposal,
+    side: tuple[int, int],
+    effect: Callable[[Course, int, float], FloatArray],
+) -> list[tuple[Course, list[Onset]]]:
+    """Meters of a long record on which a coarse change date comes near significance, with finer dates.
+
+    side : readings needed before and after; effect : of a change after so many readings, from a day on, on the rows
+    after it
+    """
+    layout = context.layout
+    score = np.abs(context.screen(coarse.x, steady=True))
+    room = context.room(ROOM, len(layout.meters))
+    near = {str(coarse.subject[k]) for k in np.flatnonzero(score > room).tolist()}
+    found = []
+    for course in courses(layout):
+        many = course.onsets(*side) if course.meter in near else []
+        if not many:
+            continue
+        columns = stack([(course.rows[i:], effect(course, i, day)) for i, day in many], len(layout))
+        best = int(np.argmax(np.abs(context.screen(columns))))
+        ends = many[max(best - 1, 0)][0], many[min(best + 1, len(many) - 1)][0]
+        found.append((course, sorted({*many, *course.between(*ends)})))
+    return found
 
 
 def moment(layout: Layout, day: float) -> datetime:

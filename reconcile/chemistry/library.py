@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from reconcile.chemistry.acids import Ionization, acid_table
+from reconcile.records.results import Constant, Prediction
 from reconcile.records.substances import Form, catalogue, name_key
 
 
@@ -59,4 +60,13 @@ def substances(word: str = "") -> LibraryAnswer:
         several=bool(found and found.several),
         kin=tuple(f.name for f in kin),
         near=found.near if found and not forms else (),
+    )
+
+
+def constants_met(prediction: Prediction) -> tuple[Constant, ...]:
+    """The ionization constants that a prediction met, as the library holds them."""
+    rows = {(row.acid, row.step): row for row in acid_table().rows}
+    return tuple(
+        Constant(row.acid, row.step, row.pka, row.u, row.dh_kj_mol, row.dcp_j_k_mol, row.source)
+        for row in (rows[name] for name in prediction.constant_names)
     )

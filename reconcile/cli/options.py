@@ -22,7 +22,11 @@ Files = Annotated[
 ]
 Out = Annotated[
     Path | None,
-    typer.Option("--out", metavar="DIR", help="Folder of the report [default: reports/<name of the first file>]."),
+    typer.Option(
+        "--out",
+        metavar="DIR",
+        help="Folder of the report [default: reports/<name of the first file>, of meters with _meters behind it].",
+    ),
 ]
 Replace = Annotated[bool, typer.Option("--replace", help="Replace a report that is already there.")]
 Json = Annotated[bool, typer.Option("--json", help="Print the result as JSON, and nothing else, on standard output.")]

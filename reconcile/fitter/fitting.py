@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 
 import numpy as np
+from scipy import special
 
 from reconcile.fitter.cases import Cases, Medium
 from reconcile.fitter.least_squares import Data, Point, bounds, normal, search
@@ -13,6 +14,7 @@ from reconcile.fitter.scatter import FIRST_SIGMA, Scatter, estimated_sigma
 from reconcile.fitter.starts import starts
 from reconcile.records.arrays import BoolArray, FloatArray
 
+STRETCH = 0.01
 ROUNDS = 3
 """Times that noise and fit are brought into agreement."""
 UNSEEN = (3.0, 300.0, 1.5, 1.5)
@@ -29,6 +31,7 @@ class Fitted:
     data : observed, variance, kept; residual (N,); jacobian (N, k)
     leverage (N,); deleted (N,) externally studentised residual
     chi2 (P,); converged (P,)
+    scale (P,) by which the readings scatter more than the noise stated for them; 1 where they do not
     """
 
     theta: FloatArray
@@ -44,6 +47,7 @@ class Fitted:
     deleted: FloatArray
     chi2: FloatArray
     converged: BoolArray
+    scale: FloatArray
 
 
 @dataclass(frozen=True)
@@ -57,7 +61,8 @@ class Task:
     scatter: Scatter
     free: BoolArray
     held: FloatArray
-    """(k,) values of the parameters that are not free."""
+    near: bool = False
+    """held (k,): values of the parameters that are not free; near: the search begins near these."""
 
 
 def first_data(task: Task) -> Data:
@@ -74,7 +79,7 @@ def fit(task: Task, theta: FloatArray | None = None) -> Fitted:
     data = first_data(task)
     free = np.tile(task.free, (len(task.cases), 1))
     if theta is None:
-        theta = starts(task.medium, task.cases, task.shape, data, task.free, task.held)
+        theta = starts(task.medium, task.cases, task.shape, data, task.free, task.held, task.near)
     point = search(task.medium, task.cases, task.shape, data, theta, free)
     return settle(task, data, point)
 
@@ -108,14 +113,36 @@ def settle(task: Task, data: Data, point: Point) -> Fitted:
             point = search(medium, cases, shape, data, point.theta, free)
     seen = _seen(cases, shape, data, point, free)
     left = count - seen.sum(axis=1)
-    freedom = np.where(given | (left < 1.0), np.inf, left)
+    data, scale = _stretched(cases, data, point, given, left)
+    freedom = np.where((given & (scale <= 1.0)) | (left < 1.0), np.inf, left)
     chi2 = cases.sums(np.where(data.kept, point.residual**2 / data.variance, 0.0))
     covariance = _covariance(cases, data, point, seen)
     leverage, deleted = _deleted(task, data, point, covariance, chi2, freedom)
     return Fitted(
-        point.theta, covariance, free, seen, sigma, freedom, data, point.residual, point.jacobian, leverage, deleted,
-        chi2, point.converged,
-    )  # fmt: skip
+        theta=point.theta,
+        covariance=covariance,
+        free=free,
+        seen=seen,
+        sigma=sigma,
+        freedom=freedom,
+        data=data,
+        residual=point.residual,
+        jacobian=point.jacobian,
+        leverage=leverage,
+        deleted=deleted,
+        chi2=chi2,
+        converged=point.converged,
+        scale=scale,
+    )
+
+
+def _stretched(cases: Cases, data: Data, point: Point, given: BoolArray, left: FloatArray) -> tuple[Data, FloatArray]:
+    """Variances stretched where readings of given noise scatter more than it allows at the 1 % level."""
+    chi2 = cases.sums(np.where(data.kept, point.residual**2 / data.variance, 0.0))
+    most = special.chdtri(np.maximum(left, 1.0), STRETCH)
+    wide = given & (left >= 1.0) & (chi2 > most)
+    scale = np.where(wide, np.sqrt(chi2 / np.maximum(left, 1.0)), 1.0)
+    return replace(data, variance=data.variance * cases.spread(scale) ** 2), scale
 
 
 def _seen(cases: Cases, shape: Shape, data: Data, point: Point, free: BoolArray) -> BoolArray:

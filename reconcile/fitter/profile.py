@@ -121,7 +121,7 @@ def _held(
 
 
 def curve(task: Task, fitted: Fitted, index: int, low: float, high: float) -> tuple[FloatArray, FloatArray]:
-    """The profile of one case: values of the parameter (m,), and the rise of the least sum of squares above its minimum."""
+    """The profile of one case: values of the parameter (m,), and how far the sum of squares then rises at least."""
     values = np.unique(np.append(np.linspace(low, high, POINTS), fitted.theta[0, index]))
     many = replace(task, cases=task.cases.take(np.zeros(len(values), np.intp)))
     all_ = replace(

@@ -19,6 +19,7 @@ LOW, HIGH = 0.0, 14.0
 BEST = 3
 """Grid points from which a search sets out, where there is more than one constant."""
 AT_ONCE = 20_000
+SHIFTS = np.arange(-4.0, 4.1, 0.5)
 
 
 def grid(steps: int) -> FloatArray:
@@ -27,15 +28,19 @@ def grid(steps: int) -> FloatArray:
     return np.array(list(combinations_with_replacement(values.tolist(), steps)), float)
 
 
-def starts(medium: Medium, cases: Cases, shape: Shape, data: Data, free: BoolArray, held: FloatArray) -> FloatArray:
+def starts(
+    medium: Medium, cases: Cases, shape: Shape, data: Data, free: BoolArray, held: FloatArray, near: bool = False
+) -> FloatArray:
     """Parameters (P, k) from which to search.
 
     free : ndarray of bool (k,); held : ndarray (k,), the values of what is not free, and the start of all but constants
+    near : try only common shifts of the constants held
     """
     thin = _thinned(cases)
     few = cases.of_readings(thin, _counts(cases))
     some = data.take(thin)
-    trials = np.unique(np.where(free[shape.pka], grid(shape.steps), held[shape.pka]), axis=0)
+    tried = held[shape.pka] + SHIFTS[:, None] if near else grid(shape.steps)
+    trials = np.unique(np.where(free[shape.pka], tried, held[shape.pka]), axis=0)
     found = np.empty((len(cases), shape.size))
     each = max(1, AT_ONCE // max(len(trials) * MOST_READINGS, 1))
     for begin in range(0, len(cases), each):

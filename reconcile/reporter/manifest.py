@@ -10,26 +10,41 @@ from functools import cache
 from importlib.metadata import version
 from importlib.resources import files
 from importlib.resources.abc import Traversable
-from typing import Any
+from typing import Any, Protocol
 
 from reconcile import __version__
-from reconcile.records.results import Audit
+from reconcile.records.book import BatchRecords
+from reconcile.records.settings import Settings
 from reconcile.reporter.cautions import UNSIGNED
 from reconcile.reporter.plain import plain
 
 SCHEMA = 1
 MANIFEST = "manifest.json"
+AUDIT = "audit"
 LIBRARIES = ("numpy", "scipy", "matplotlib", "xlsxwriter", "jinja2")
+
+
+class Reported(Protocol):
+    """What every result that a report is written of has: an audit, meters through time."""
+
+    @property
+    def records(self) -> BatchRecords: ...
+
+    @property
+    def settings(self) -> Settings: ...
+
+    @property
+    def rows(self) -> dict[str, int]: ...
 
 
 def sha256(content: bytes) -> str:
     return hashlib.sha256(content).hexdigest()
 
 
-def inputs(audit: Audit) -> list[dict[str, str]]:
+def inputs(result: Reported) -> list[dict[str, str]]:
     """Name and SHA-256 of every file read, in the order they were given."""
     found: dict[tuple[str, str], None] = {}
-    for sheet in audit.records.sheets:
+    for sheet in result.records.sheets:
         found.setdefault((sheet.file, sheet.sha256))
     return [{"name": plain(name), "sha256": digest} for name, digest in found]
 
@@ -51,8 +66,8 @@ def constants() -> Mapping[str, str]:
     return dict(sorted(_walk(files("reconcile"))))
 
 
-def _settings(audit: Audit) -> dict[str, Any]:
-    return {name: list(v) if isinstance(v, tuple) else v for name, v, *_ in audit.settings.rows()}
+def _settings(result: Reported) -> dict[str, Any]:
+    return {name: list(v) if isinstance(v, tuple) else v for name, v, *_ in result.settings.rows()}
 
 
 @cache
@@ -61,30 +76,39 @@ def _id(text: str) -> str:
     return "-".join(digest[i : i + 4] for i in range(0, 16, 4))
 
 
-def report_id(audit: Audit) -> str:
-    """Sixteen hexadecimal digits made from the inputs' hashes, the settings and the version, in groups of four."""
-    content = [sorted(i["sha256"] for i in inputs(audit)), _settings(audit), __version__]
+def report_id(result: Reported, command: str = AUDIT) -> str:
+    """Sixteen hexadecimal digits made from the inputs' hashes, the settings and the version, in groups of four.
+
+    command : what the report is of; another report on the same files has another id
+    """
+    content = [sorted(i["sha256"] for i in inputs(result)), _settings(result), __version__]
+    if command != AUDIT:
+        content.append(command)
     return _id(json.dumps(content, sort_keys=True))
 
 
-def manifest(audit: Audit, outputs: Mapping[str, bytes], written_at: datetime | None = None) -> bytes:
+def manifest(
+    result: Reported, outputs: Mapping[str, bytes], written_at: datetime | None = None, command: str = AUDIT
+) -> bytes:
     """manifest.json as bytes.
 
     outputs : path within the folder, with forward slashes -> content
     written_at : aware time of writing; now, when None
+    command : that makes the same report again
     """
     when = (written_at or datetime.now(UTC)).astimezone(UTC)
     document = {
         "schema": SCHEMA,
-        "report_id": report_id(audit),
+        "report_id": report_id(result, command),
+        "command": command,
         "version": __version__,
         "written_at": when.strftime("%Y-%m-%dT%H:%M:%SZ"),
         "notice": UNSIGNED,
-        "inputs": inputs(audit),
+        "inputs": inputs(result),
         "outputs": [{"name": name, "sha256": sha256(outputs[name])} for name in sorted(outputs)],
-        "rows": audit.rows,
-        "settings": _settings(audit),
-        "settings_changed": sorted(audit.settings.changed),
+        "rows": result.rows,
+        "settings": _settings(result),
+        "settings_changed": sorted(result.settings.changed),
         "constants": constants(),
         "libraries": {name: version(name) for name in LIBRARIES},
     }

@@ -7,6 +7,7 @@ import numpy as np
 from reconcile.records.completeness import shortfalls
 from reconcile.records.results import Audit
 from reconcile.reporter.lookups import Lookups
+from reconcile.reporter.manifest import Reported
 from reconcile.reporter.page_tables import Cell, Row, View, text_cell
 from reconcile.reporter.plain import plain
 from reconcile.reporter.words import counted, half_up, listed, minus, moment
@@ -70,10 +71,10 @@ def _calculated(audit: Audit) -> list[tuple[str, str]]:
     ]
 
 
-def sheets_view(audit: Audit) -> View:
+def sheets_view(result: Reported) -> View:
     """How each sheet was understood."""
     rows = []
-    for sheet in audit.records.sheets:
+    for sheet in result.records.sheets:
         found = ", ".join(f"{count:,} {plain(kind)}" for kind, count in sheet.rows.items())
         rows.append(
             Row(
@@ -100,7 +101,7 @@ def sheets_view(audit: Audit) -> View:
     return View("sheets", "How the files were understood", headings, rows, tool=False, captioned=True)
 
 
-def notes(audit: Audit) -> tuple[list[str], int]:
+def notes(result: Reported) -> tuple[list[str], int]:
     """Accepted repairs and notices, the first twenty, and how many more there are."""
-    messages = [plain(p.message()) for p in audit.records.notes]
+    messages = [plain(p.message()) for p in result.records.notes]
     return messages[:MOST_NOTES], max(len(messages) - MOST_NOTES, 0)

@@ -12,6 +12,7 @@ import numpy as np
 from reconcile.records.arrays import IntArray
 from reconcile.records.results import Audit, Finding
 from reconcile.reporter.lookups import Lookups
+from reconcile.reporter.manifest import Reported
 from reconcile.reporter.plain import plain
 from reconcile.reporter.tables import Column, Table
 from reconcile.reporter.words import STATUSES, half_up, minus, moment, signed, significant
@@ -199,9 +200,9 @@ def _tells(table: Table, key: str) -> bool:
     return len(set(values.tolist())) > 1
 
 
-def set_aside_view(audit: Audit) -> View:
+def set_aside_view(result: Reported) -> View:
     """Rows set aside: where, why, and what to do; the cell that caused it where that is another place."""
-    aside = audit.records.set_aside
+    aside = result.records.set_aside
     rows = []
     for one in aside[:MOST_SET_ASIDE]:
         elsewhere = (one.cause.file, one.cause.sheet, one.cause.row) != (one.place.file, one.place.sheet, one.place.row)

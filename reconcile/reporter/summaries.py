@@ -10,6 +10,7 @@ import numpy as np
 from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.results import Audit, Silence
 from reconcile.reporter.lookups import METER_TYPES, Lookups
+from reconcile.reporter.manifest import Reported
 from reconcile.reporter.plain import plain
 from reconcile.reporter.stocks import Stock, stocks
 from reconcile.reporter.tables import Column, Table, table_of
@@ -206,9 +207,9 @@ def _setting(value: Any) -> str:
     return f"{value:g}" if isinstance(value, float) else plain(str(value))
 
 
-def settings(audit: Audit) -> Table:
+def settings(result: Reported) -> Table:
     """Every setting with its unit and reason; what differs from the defaults is marked by a word."""
-    rows = audit.settings.rows()
+    rows = result.settings.rows()
     table = table_of(
         "settings",
         "Settings",

@@ -9,6 +9,7 @@ from typing import Any, Literal
 import numpy as np
 
 from reconcile.records.arrays import BoolArray, IntArray
+from reconcile.records.book import BatchRecords
 from reconcile.records.results import Audit
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.plain import plain
@@ -153,25 +154,25 @@ def residuals(audit: Audit, lookups: Lookups | None = None) -> Table:
 
 def set_aside(audit: Audit) -> Table:
     """One row a reading that was set aside, with its reason, in file order."""
-    return table_of(
-        "set_aside",
-        "Set aside",
-        SET_ASIDE,
-        [
-            (
-                plain(s.place.file),
-                plain(s.place.sheet),
-                s.place.row,
-                plain(s.batch),
-                plain(s.meter),
-                plain(s.lot),
-                plain(s.cause.file),
-                plain(s.cause.sheet),
-                plain(s.cause.cell),
-                plain(s.read),
-                plain(s.reason),
-                plain(s.advice),
-            )
-            for s in audit.records.set_aside
-        ],
-    )
+    return table_of("set_aside", "Set aside", SET_ASIDE, set_aside_rows(audit.records))
+
+
+def set_aside_rows(records: BatchRecords) -> list[tuple[Any, ...]]:
+    """Cells of the table of readings set aside, in file order."""
+    return [
+        (
+            plain(s.place.file),
+            plain(s.place.sheet),
+            s.place.row,
+            plain(s.batch),
+            plain(s.meter),
+            plain(s.lot),
+            plain(s.cause.file),
+            plain(s.cause.sheet),
+            plain(s.cause.cell),
+            plain(s.read),
+            plain(s.reason),
+            plain(s.advice),
+        )
+        for s in records.set_aside
+    ]

@@ -40,7 +40,8 @@ def prose(text: str) -> Markup:
 
 
 @cache
-def _environment() -> Environment:
+def environment() -> Environment:
+    """The templates, with everything that they show escaped."""
     made = Environment(
         loader=PackageLoader("reconcile.reporter"),
         autoescape=True,
@@ -53,11 +54,13 @@ def _environment() -> Environment:
     return made
 
 
-def _asset(name: str) -> str:
+def asset(name: str) -> str:
+    """A file of the templates' folder, as text."""
     return (files("reconcile.reporter") / "templates" / name).read_text(encoding="utf-8")
 
 
-def _digest(text: str) -> str:
+def digest(text: str) -> str:
+    """The hash by which the page's policy knows its own style and script."""
     return "sha256-" + base64.b64encode(hashlib.sha256(text.encode("utf-8")).digest()).decode("ascii")
 
 
@@ -68,15 +71,15 @@ def page(audit: Audit, lookups: Lookups, residuals: Table, drawn: list[Drawn]) -
     drawn : pictures, whose SVG goes into the page
     """
     identity = report_id(audit)
-    style = _asset("report.css").replace("REPORT-ID", identity)
-    script = _asset("report.js")
+    style = asset("report.css").replace("REPORT-ID", identity)
+    script = asset("report.js")
     targets = {plain(f.id): anchor(f, i) for i, f in enumerate(audit.findings)}
     messages, more_messages = page_scope.notes(audit)
     pictures = {d.name: page_findings.picture(d) for d in drawn if d.finding < 0}
-    text = _environment().get_template("report.html").render(
+    text = environment().get_template("report.html").render(
         report_id=identity,
         version=__version__,
-        policy=f"default-src 'none'; img-src data:; style-src '{_digest(style)}'; script-src '{_digest(script)}'; "
+        policy=f"default-src 'none'; img-src data:; style-src '{digest(style)}'; script-src '{digest(script)}'; "
         "base-uri 'none'; form-action 'none'",
         style=Markup(style),  # our own files, nothing of the record
         script=Markup(script),

@@ -10,9 +10,11 @@ import shutil
 from collections.abc import Callable, Mapping
 from pathlib import Path
 
+from reconcile.records.meter_results import MeterHistory
 from reconcile.records.results import Audit
 from reconcile.reporter.contents import contents
-from reconcile.reporter.manifest import MANIFEST, manifest
+from reconcile.reporter.manifest import AUDIT, MANIFEST, manifest
+from reconcile.reporter.meter_contents import METERS, meter_contents
 
 Progress = Callable[[str, float], None]
 """Called with what is being done and the share done, 0 to 1."""
@@ -23,11 +25,14 @@ class ReportExists(FileExistsError):
     """There is something at the place of the report that must not be replaced without being told to, or at all."""
 
 
-def write_report(audit: Audit, out: Path | str, *, replace: bool = False, progress: Progress | None = None) -> Path:
+def write_report(
+    result: Audit | MeterHistory, out: Path | str, *, replace: bool = False, progress: Progress | None = None
+) -> Path:
     """Write the whole report folder and return its path.
 
     Parameters
     ----------
+    result : what `reconcile.audit` or `reconcile.meters` gave
     out : folder to make; its parents are made too
     replace : an existing report (or an empty folder) is replaced; anything else at that place never is
     progress : told what is being done
@@ -39,8 +44,12 @@ def write_report(audit: Audit, out: Path | str, *, replace: bool = False, progre
     """
     folder = Path(out).resolve()
     check_place(folder, replace)
-    files = contents(audit, progress or (lambda _what, _share: None))
-    files[MANIFEST] = manifest(audit, files)
+    say = progress or (lambda _what, _share: None)
+    if isinstance(result, MeterHistory):
+        files, command = meter_contents(result, say), METERS
+    else:
+        files, command = contents(result, say), AUDIT
+    files[MANIFEST] = manifest(result, files, command=command)
     _put(folder, files, replace)
     return folder
 

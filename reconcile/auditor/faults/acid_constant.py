@@ -9,6 +9,7 @@ from reconcile.auditor.proposals import Context, Proposal, Told, linear
 
 
 class AcidConstant:
+    steady = True
     name, alarm_class = "acid_constant", "chemistry"
 
     def propose(self, context: Context) -> Proposal | None:

@@ -2,15 +2,14 @@
 
 from __future__ import annotations
 
-import itertools
-
 import numpy as np
 from scipy import sparse
 
 from reconcile.auditor.exact import points, secants
-from reconcile.auditor.layout import one_hot
+from reconcile.auditor.layout import Layout, one_hot
 from reconcile.auditor.proposals import Context, Proposal, Told, stack
 from reconcile.auditor.retrial import Supposed
+from reconcile.records.arrays import FloatArray, IntArray
 
 ROOM = 2.5
 """Score of a batch's shift from which its exact profiles are computed."""
@@ -20,13 +19,22 @@ DOUBLED, LEFT_OUT = 2.0, 1e-9
 def batches_with_room(context: Context) -> set[int]:
     """Batches whose readings share a shift."""
     layout = context.layout
-    score = context.screen(one_hot(layout.batch, len(layout.batches)))
-    return {int(i) for i in np.flatnonzero(np.abs(score) > ROOM)}
+    x = context.kept("batches", lambda: one_hot(layout.batch, len(layout.batches)))
+    room = context.room(ROOM, len(layout.batches))
+    return {int(i) for i in np.flatnonzero(np.abs(context.screen(x, steady=True)) > room)}
 
 
-def components(context: Context) -> list[tuple[int, int, np.ndarray, np.ndarray]]:
-    """(batch, contribution, rows, dpH/d ln amount) for every component that moves a reading."""
+def components(context: Context, of: set[int] | None = None) -> list[tuple[int, int, np.ndarray, np.ndarray]]:
+    """(batch, contribution, rows, dpH/d ln amount) for every component that moves a reading, of some batches or all."""
     layout = context.layout
+    batch, column, rows, value, cuts = context.kept("components", lambda: _components(layout))
+    chosen = np.arange(len(batch)) if of is None else np.flatnonzero(np.isin(batch, sorted(of)))
+    spans = [(int(i), int(cuts[i]), int(cuts[i + 1])) for i in chosen.tolist()]
+    return [(int(batch[i]), int(column[i]), rows[a:b], value[a:b]) for i, a, b in spans]
+
+
+def _components(layout: Layout) -> tuple[IntArray, IntArray, IntArray, FloatArray, IntArray]:
+    """Batch and contribution of every component, the rows it moves and how far, and where each component begins."""
     t = layout.prediction.contributions
     row_of = np.full(len(layout.prediction), -1, np.intp)
     row_of[layout.reading] = np.arange(len(layout))
@@ -35,7 +43,7 @@ def components(context: Context) -> list[tuple[int, int, np.ndarray, np.ndarray]
     order = np.lexsort((rows, column))
     rows, column, value = rows[order], column[order], value[order]
     cuts = np.flatnonzero(np.r_[True, column[1:] != column[:-1], True]) if len(column) else np.zeros(1, np.intp)
-    return [(int(layout.batch[rows[a]]), int(column[a]), rows[a:b], value[a:b]) for a, b in itertools.pairwise(cuts)]
+    return layout.batch[rows[cuts[:-1]]], column[cuts[:-1]], rows, value, cuts
 
 
 def component_name(context: Context, contribution: int) -> str:
@@ -49,11 +57,12 @@ class BatchPreparation:
 
     def propose(self, context: Context) -> Proposal | None:
         layout = context.layout
-        found = components(context)
-        if not found:
+        room = batches_with_room(context)
+        found = components(context, room if context.model.long else None)
+        blocks = len(layout.batches) if context.model.long else 0
+        if not found and not blocks:
             return None
         x = stack([(rows, value) for _, _, rows, value in found], len(layout))
-        room = batches_with_room(context)
         promising = [i for i, (batch, *_) in enumerate(found) if batch in room]
         if promising:
             exact = secants(context, [(found[i][1],) for i in promising], x[:, promising])
@@ -95,6 +104,7 @@ class BatchPreparation:
             point,
             tell,
             same=[component_name(context, found[i][1]) for i in of],
+            blocks=blocks,
         )
 
 

@@ -45,6 +45,7 @@ def reading_error(ph: FloatArray, at: float, buffers: list[float]) -> FloatArray
 
 
 class CalibrationBuffer:
+    steady = True
     name, alarm_class = "calibration_buffer", "meter"
 
     def propose(self, context: Context) -> Proposal | None:

@@ -9,6 +9,7 @@ from reconcile.auditor.alternatives import Alternative, alternatives
 from reconcile.auditor.exact import points
 from reconcile.auditor.proposals import Context, Proposal, Told
 from reconcile.auditor.retrial import Supposed
+from reconcile.records.arrays import FloatArray
 from reconcile.records.substances import Form
 
 ROOM = 2.5
@@ -26,14 +27,19 @@ def known_acids(context: Context) -> frozenset[str]:
 def lots_with_room(context: Context) -> list[int]:
     """Lots (positions in lots_used) whose readings share a shift of any common shape."""
     layout = context.layout
-    x = sparse.csc_array(layout.lot_columns)
+    x = layout.lot_columns
+    least = context.room(ROOM, x.shape[1])
+    room = np.zeros(x.shape[1], bool)
+    for shape in context.kept("lot shapes", lambda: _shapes(x, layout.ph)):
+        room |= np.abs(context.screen(shape, steady=True)) > least
+    return [int(i) for i in np.flatnonzero(room)]
+
+
+def _shapes(x: sparse.csc_array, ph: FloatArray) -> list[sparse.csc_array]:
+    """Common shapes of an error of each lot: as of its strength, equal everywhere, by sign, by distance from pH 7."""
     touched = sparse.csc_array((np.ones(len(x.data)), x.indices, x.indptr), shape=x.shape)
     sign = sparse.csc_array((np.sign(x.data), x.indices, x.indptr), shape=x.shape)
-    tilt = sparse.csc_array(sparse.diags_array(layout.ph - 7.0) @ touched)
-    room = np.zeros(x.shape[1], bool)
-    for shape in (x, touched, sign, tilt):
-        room |= np.abs(context.screen(sparse.csc_array(shape))) > ROOM
-    return [int(i) for i in np.flatnonzero(room)]
+    return [x, touched, sign, sparse.csc_array(sparse.diags_array(ph - 7.0) @ touched)]
 
 
 def contents(

@@ -18,8 +18,10 @@ class LotStrength:
     def propose(self, context: Context) -> Proposal | None:
         layout = context.layout
         names = [str(layout.records.lots.name[i]) for i in layout.lots_used]
-        x = sparse.csc_array(layout.lot_columns)
-        promising = np.flatnonzero(np.abs(context.screen(x)) > ROOM)
+        x = layout.lot_columns
+        own = [layout.own("lot", i) for i in range(len(names))]
+        score = context.screen(x, steady=True, own=np.array(own, np.intp).ravel())
+        promising = np.flatnonzero(np.abs(score) > context.room(ROOM, len(names)))
         if len(promising):
             groups = [context.retrial.contributions_of_lot(int(layout.lots_used[i])) for i in promising]
             exact = secants(context, groups, x[:, promising])
@@ -31,7 +33,6 @@ class LotStrength:
             factor = float(np.exp(np.clip(a, -7, 7)))
             return Told(factor, "factor", {"factor": factor}, scale=lambda v: float(np.exp(np.clip(v, -7, 7))))
 
-        own = [layout.own("lot", i) for i in range(len(names))]
         return linear(self.name, self.alarm_class, "lot", x, names, tell, prior_sd=0.3, own=own)
 
 

@@ -2,10 +2,22 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 
+from reconcile.auditor.layout import Layout
 from reconcile.auditor.proposals import Context, Proposal, Told, linear, stack
-from reconcile.auditor.through_time import calibration_days, courses, moment
+from reconcile.auditor.through_time import (
+    COARSE_ONSETS,
+    MOST_ONSETS,
+    Course,
+    Onset,
+    calibration_days,
+    courses,
+    moment,
+    refined,
+)
 
 AFTER = 5
 """Readings needed from the onset on."""
@@ -14,15 +26,23 @@ TOTAL_SD = 0.15
 
 
 class MeterDrift:
+    steady = True
     name, alarm_class = "meter_drift", "meter"
 
     def propose(self, context: Context) -> Proposal | None:
-        layout = context.layout
+        layout, most = context.layout, COARSE_ONSETS if context.model.long else MOST_ONSETS
+        wide = [c for c in courses(layout) if len(c.rows) > AFTER and c.day[-1] - c.day[0] >= 1.0]
+        return self.of(layout, [(c, [(0, float(c.day[0])), *c.onsets(1, AFTER, most)]) for c in wide])
+
+    def refine(self, context: Context, coarse: Proposal) -> Proposal | None:
+        """Further dates for the meters of a long record that come near significance."""
+        dates = refined(context, coarse, (1, AFTER), lambda course, i, day: np.maximum(course.day[i:] - day, 0.0))
+        return self.of(context.layout, dates)
+
+    def of(self, layout: Layout, dates: Sequence[tuple[Course, list[Onset]]]) -> Proposal | None:
+        """Drifts of some meters from some dates on; a drift is as likely to begin at any of the dates first tried."""
         columns, subject, since, total, prior_sd, log_prior = [], [], [], [], [], []
-        for course in courses(layout):
-            if len(course.rows) < AFTER + 1 or course.day[-1] - course.day[0] < 1.0:
-                continue
-            onsets = [(0, float(course.day[0])), *course.onsets(1, AFTER)]
+        for course, onsets in dates:
             calibrations = calibration_days(layout, course.meter)
             inside = calibrations[(calibrations > course.day[0]) & (calibrations < course.day[-1])]
             ways = [np.zeros(0), inside] if len(inside) else [np.zeros(0)]
@@ -39,7 +59,7 @@ class MeterDrift:
                     since.append(onset if position else np.nan)
                     total.append(float(ramp.max()))
                     prior_sd.append(TOTAL_SD / max(float(ramp.max()), 1e-6))
-                    log_prior.append(-np.log(len(onsets) * len(ways)))
+                    log_prior.append(-np.log(min(len(onsets), MOST_ONSETS + 1) * len(ways)))
 
         def tell(k: int, a: float) -> Told:
             begun = moment(layout, since[k]) if np.isfinite(since[k]) else None

@@ -7,6 +7,7 @@ from reconcile.auditor.proposals import Context, Proposal, Told, linear
 
 
 class MeterOffset:
+    steady = True
     name, alarm_class = "meter_offset", "meter"
 
     def propose(self, context: Context) -> Proposal | None:

@@ -13,6 +13,7 @@ LEAST_SPREAD = 1.0
 
 
 class MeterSpan:
+    steady = True
     name, alarm_class = "meter_span", "meter"
 
     def propose(self, context: Context) -> Proposal | None:

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import itertools
-
 import numpy as np
 
 from reconcile.auditor.proposals import Context, Proposal, Told, stack
@@ -26,9 +24,10 @@ class MeterStuck:
             step = np.nan_to_num(layout.resolution[course.rows], nan=0.0) / 2 + 1e-9
             same = np.abs(np.diff(value)) <= step[1:]
             cuts = np.flatnonzero(np.r_[True, ~same, True])
-            for first, last in itertools.pairwise(cuts):
+            runs = np.flatnonzero(np.diff(cuts) >= LEAST_RUN)
+            for first, last in zip(cuts[runs].tolist(), cuts[runs + 1].tolist(), strict=True):
                 rows = course.rows[first:last]
-                if len(rows) < LEAST_RUN or np.ptp(layout.ph[rows]) < MOVED * float(np.median(spread[rows])):
+                if np.ptp(layout.ph[rows]) < MOVED * float(np.median(spread[rows])):
                     continue
                 display = float(np.median(value[first:last]))
                 columns.append((rows, display - layout.ph[rows]))

@@ -20,6 +20,7 @@ LEAST_SPREAD_K = 4.0
 
 
 class MeterTemperature:
+    steady = True
     name, alarm_class = "meter_temperature", "meter"
 
     def propose(self, context: Context) -> Proposal | None:

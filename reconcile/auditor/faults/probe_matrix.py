@@ -22,6 +22,7 @@ def holds(family: str, kind: str) -> bool:
 
 
 class ProbeMatrix:
+    steady = True
     name, alarm_class = "probe_matrix", "meter"
 
     def propose(self, context: Context) -> Proposal | None:

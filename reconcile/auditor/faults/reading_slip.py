@@ -54,18 +54,24 @@ class ReadingSlip:
         layout = context.layout
         n = len(layout)
         records = layout.records
+        x = context.kept(self.name, lambda: sparse.csc_array(sparse.eye_array(n)))
+        rows = np.arange(n)
+        if context.model.long:
+            rows = np.flatnonzero(np.abs(context.screen(x, steady=True)) > context.room(0.0, n))
+            x = sparse.csc_array(x[:, rows])
         subject = [
             (
                 layout.batches[layout.batch[i]],
                 layout.meters[layout.meter[i]] if layout.meter[i] >= 0 else "",
                 str(records.readings.row[layout.reading[i]]),
             )
-            for i in range(n)
+            for i in rows.tolist()
         ]
         spread = 3.0 * np.sqrt(context.model.variance())
 
         def tell(k: int, a: float) -> Told:
-            meant = intended(layout, k, float(spread[k]))
+            row = int(rows[k])
+            meant = intended(layout, row, float(spread[row]))
             detail = "" if meant is None else str(meant["slip"])
             return Told(a, "pH", meant, detail=detail)
 
@@ -73,11 +79,12 @@ class ReadingSlip:
             self.name,
             self.alarm_class,
             "reading",
-            sparse.csc_array(sparse.eye_array(n)),
+            x,
             subject,
             tell,
             prior_sd=0.5,
-            block=[str(i) for i in layout.reading.tolist()],
+            block=[str(i) for i in layout.reading[rows].tolist()],
+            blocks=n,
         )
 
 

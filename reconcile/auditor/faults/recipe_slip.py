@@ -46,8 +46,7 @@ class RecipeSlip:
         room = batches_with_room(context)
         blocks = [
             (batch, contribution, *self.of_component(context, contribution))
-            for batch, contribution, _, _ in components(context)
-            if batch in room
+            for batch, contribution, _, _ in components(context, room)
         ]
         meant = [(batch, contribution, *slip) for batch, contribution, slips, _ in blocks for slip in slips]
         if not meant:

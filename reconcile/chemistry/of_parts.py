@@ -1,0 +1,47 @@
+"""The prediction for one solution given in words, once its parts are made up."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from reconcile.chemistry.predict import predict_ph
+from reconcile.chemistry.water import HIGH_C, LOW_C
+from reconcile.records.parts import Composition
+from reconcile.records.places import Place
+from reconcile.records.problems import InputProblems, Problem
+from reconcile.records.results import Prediction
+from reconcile.records.settings import Settings
+
+
+@dataclass(frozen=True)
+class PredictedParts:
+    """The prediction for one solution given in words.
+
+    composition : the parts once made up
+    prediction : Prediction of one row
+    settings : with which it was made
+    """
+
+    composition: Composition
+    prediction: Prediction
+    settings: Settings
+
+
+def predict_composition(composition: Composition, at: float, settings: Settings) -> PredictedParts:
+    """The predicted pH of parts once made up, with the uncertainties that the settings give to their amounts."""
+    if not LOW_C <= at <= HIGH_C:
+        words = (("name", "the temperature"), ("low", f"{LOW_C:g} °C"), ("high", f"{HIGH_C:g} °C"))
+        raise InputProblems([Problem("at-out-of-range", Place(""), f"{at:g} °C", words)])
+    strength = settings["uncertainty.lot_strength_percent"] / 100.0 / 3.0**0.5
+    taking = settings["uncertainty.preparation_percent"] / 100.0 / 3.0**0.5
+    prediction = predict_ph(
+        [part.form.name for part in composition.parts],
+        np.array([composition.amounts]),
+        at,
+        unit=composition.unit,
+        settings=settings,
+        u_amounts=np.full((1, len(composition.parts)), (strength**2 + taking**2) ** 0.5),
+    )
+    return PredictedParts(composition, prediction, settings)

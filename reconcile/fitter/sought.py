@@ -1,0 +1,125 @@
+"""Which parameters are sought: the steps that the readings bear on, enthalpies, strength and offset."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from reconcile.chemistry.water import ZERO_CELSIUS
+from reconcile.fitter.common_errors import taking_variance
+from reconcile.fitter.evidence import Evidence
+from reconcile.fitter.fitting import Fitted, Task, fit
+from reconcile.fitter.model import Shape, found_at, predict
+from reconcile.fitter.question import Studied
+from reconcile.fitter.rejection import fit_without
+from reconcile.fitter.scatter import FIRST_SIGMA, Scatter, estimated_sigma
+from reconcile.records.arrays import BoolArray, FloatArray
+
+SPAN_K = 10.0
+"""Span of temperatures from which an enthalpy is sought [K]."""
+WORTH = 0.10
+"""u of a library acid's constant above which a step is held at the library's value instead of being sought."""
+
+
+@dataclass(frozen=True)
+class Structure:
+    """One number of steps: shape, start and parameters that are free; AICc once it is fitted."""
+
+    shape: Shape
+    held: FloatArray
+    free: BoolArray
+
+
+def structure(evidence: Evidence, studied: Studied, steps: int, free: tuple[str, ...]) -> Structure:
+    """Shape of one number of steps at the readings' mean temperature, with what is sought."""
+    kelvin = float(evidence.temperature.mean()) + ZERO_CELSIUS
+    acids = studied.table(steps)
+    i = acids.index[studied.acid]
+    own = slice(int(acids.first[i]), int(acids.first[i]) + steps)
+    rows = acids.rows[own]
+    dcp = np.nan_to_num(np.array([row.dcp_j_k_mol for row in rows], float))
+    dh = np.nan_to_num(np.array([row.dh_kj_mol for row in rows], float)) + dcp * (kelvin - 298.15) / 1000.0
+    shape = Shape(steps, studied.charge, kelvin, dcp)
+    pka = acids.p[own] + acids.q[own] / kelvin + acids.r[own] * np.log(kelvin)
+    held = np.concatenate([pka, dh, [0.0, 0.0]])
+    warm = float(np.ptp(evidence.temperature)) >= SPAN_K
+    mask = np.array([True] * steps + [warm] * steps + ["strength" in free, "offset" in free])
+    if studied.known:
+        mask = _worth_seeking(evidence, shape, held, mask)
+    return Structure(shape, held, mask)
+
+
+def _worth_seeking(evidence: Evidence, shape: Shape, held: FloatArray, free: BoolArray) -> BoolArray:
+    """Of a library acid, the steps that the readings would tell, one at least; the others keep the library's values.
+
+    Judged by the slopes at the library's constants: u of the step if it alone were sought.
+    """
+    _, jacobian = predict(evidence.medium, evidence.cases, shape, held[None])
+    slopes = np.nan_to_num(jacobian[:, shape.pka]) / np.maximum(evidence.floor, FIRST_SIGMA)[:, None]
+    u = 1.0 / np.sqrt(np.maximum((slopes**2).sum(axis=0), 1e-300))
+    worth = (u <= WORTH) | (u == u.min())
+    free = free.copy()
+    free[shape.pka] &= worth
+    free[shape.dh] &= worth
+    return free
+
+
+@dataclass(frozen=True)
+class Outcome:
+    """A fit with one number of steps: with all readings, and without those rejected.
+
+    aicc : of the fit without, each rejected reading counted as a parameter of its own; NaN where it cannot be had
+    """
+
+    structure: Structure
+    task: Task
+    whole: Fitted
+    fitted: Fitted
+    aicc: float
+
+
+def outcome(evidence: Evidence, studied: Studied, structure: Structure) -> Outcome:
+    """Fits one number of steps: noise, amounts taken, rejected readings."""
+    n = len(evidence)
+    scatter = Scatter(evidence.floor, evidence.averaged, np.zeros(n), evidence.given)
+    task = Task(
+        evidence.medium, evidence.cases, structure.shape, evidence.observed, scatter, structure.free, structure.held,
+        near=studied.known,
+    )  # fmt: skip
+    whole = fit(task)
+    for _ in range(2):
+        found = found_at(evidence.medium, evidence.cases, structure.shape, whole.theta)
+        scatter = Scatter(evidence.floor, evidence.averaged, taking_variance(evidence, found), evidence.given)
+        task = Task(
+            evidence.medium, evidence.cases, structure.shape, evidence.observed, scatter, structure.free,
+            structure.held, near=studied.known,
+        )  # fmt: skip
+        whole = fit(task, whole.theta)
+    fitted = fit_without(task, whole)
+    return Outcome(structure, task, whole, fitted, aicc(task, fitted))
+
+
+def aicc(task: Task, fitted: Fitted) -> float:
+    """Akaike's criterion corrected for few readings, of a single case.
+
+    Notes
+    -----
+    -2 ln L + 2k + 2k(k + 1)/(n - k - 1), at the noise of greatest likelihood but not under its floor. k counts every
+    parameter that is free, the noise where it is estimated, and one for each rejected reading, whose own residual is
+    then nothing.
+
+    References
+    ----------
+    Hurvich and Tsai 1989, Biometrika 76:297, doi:10.1093/biomet/76.2.297.
+    """
+    kept = fitted.data.kept
+    n, rejected = len(kept), int(np.count_nonzero(~kept))
+    given = bool(task.scatter.known_in(task.cases)[0])
+    k = int(task.free.sum()) + rejected + (0 if given else 1)
+    if n - k - 1 <= 0:
+        return float("nan")
+    most = estimated_sigma(task.cases, task.scatter, fitted.residual, kept, np.array([float(kept.sum())]))
+    variance = task.scatter.variance(task.cases.spread(most))
+    loss = float(np.sum(np.log(2.0 * np.pi * variance)) + np.sum(np.where(kept, fitted.residual**2 / variance, 0.0)))
+    return loss + 2.0 * k + 2.0 * k * (k + 1.0) / (n - k - 1.0)

@@ -11,7 +11,7 @@ from scipy import sparse
 from reconcile.auditor.alarm import Alarm, single_p
 from reconcile.auditor.components import Components, Model
 from reconcile.auditor.layout import Layout
-from reconcile.auditor.mixed import estimate, model_of
+from reconcile.auditor.mixed import SHORT, estimate, model_of
 from reconcile.auditor.proposals import Context, FaultKind
 from reconcile.auditor.retrial import Retrial
 from reconcile.auditor.scoring import Candidate, Pool, Scores, gain_if_unsure, pool_of, score, without
@@ -65,7 +65,12 @@ class Judge:
         return (sparse.csc_array(sparse.hstack(free)) if free else None), r
 
     def layout_with(self, candidates: Sequence[Candidate]) -> Layout:
-        """The layout with what is unsure about supposed substances among its random effects."""
+        """The layout with what is unsure about supposed substances among its random effects.
+
+        A long record keeps its factored covariance instead: there each substance's own score alone carries it.
+        """
+        if len(self.layout) > SHORT:
+            return self.layout
         columns = [c.unsure for c in candidates if c.unsure is not None and c.unsure.shape[1]]
         if not columns:
             return self.layout

@@ -10,6 +10,7 @@ import numpy as np
 from reconcile.fitter.checks import bent, disagreement
 from reconcile.fitter.common_errors import extended
 from reconcile.fitter.evidence import Evidence
+from reconcile.fitter.gaps import composition
 from reconcile.fitter.meters import SuspectMeter
 from reconcile.fitter.question import Studied
 from reconcile.fitter.sought import Outcome
@@ -68,7 +69,7 @@ def account(
     if studied.known and any(step.standing == "found" for step in steps) and (own is None or not own.explains):
         flags.append("differs_from_library")
     cautions = [sentence for _, sentence in said]
-    conclusion = " ".join([*values, *cautions, *told, *ranking])
+    conclusion = " ".join([*dict.fromkeys(values), *cautions, *told, *ranking])
     return conclusion, tuple(cautions), tuple(dict.fromkeys(flags))
 
 
@@ -108,21 +109,17 @@ def _identifiability(judged: Judged, steps: Sequence[PkaStep], degrees: FloatArr
     shape, fitted = judged.shape, judged.fitted
     kept, out = fitted.data.kept, []
     observed = judged.evidence.observed[kept]
-    plain = False
     also = np.zeros(shape.size, bool)
     also[shape.strength] = True
+    _, base = composition(judged.evidence)
+    plain = bool(np.all(np.abs(base[kept]) <= PLAIN))
     if not fitted.free[0, shape.strength]:
         covariance = extended(judged.evidence, fitted, also)
         for step in np.flatnonzero(fitted.seen[0, shape.pka]).tolist():
             if abs(correlation(covariance, step, shape.strength)) >= LIMIT_CORRELATION:
                 slope = covariance[step, shape.strength] / covariance[shape.strength, shape.strength]
-                name = constant_name(step + 1, shape.steps)
-                out.append(("ka_times_c", say("ka-times-c", name=name, move=f"{abs(slope) * 0.01:.4f}")))
-                plain = True
-    else:
-        plain = any(
-            abs(correlation(fitted.covariance[0], j, shape.strength)) >= LIMIT_CORRELATION for j in range(shape.steps)
-        )
+                name, key = constant_name(step + 1, shape.steps), "ka-times-c" if plain else "rests-on-strength"
+                out.append((key.replace("-", "_"), say(key, name=name, move=f"{abs(slope) * 0.01:.4f}")))
     if not plain:
         for one in steps:
             percent = 100.0 * degrees[kept, one.step - 1]
@@ -143,7 +140,7 @@ def _of_readings(
     kept = fitted.data.kept
     count = int(kept.sum())
     if count < FEW:
-        out.append(("few", say("few", count=str(count))))
+        out.append(("few", say("few", count=counted(count))))
     rejected = np.flatnonzero(~kept)
     if len(rejected):
         records = evidence.records

@@ -34,6 +34,10 @@ from reconcile.records.substances import Form
 Progress = Callable[[str, float | None], None]
 
 
+ALIKE = 2.0
+"""AICc above the least within which fewer steps are as well supported (Burnham and Anderson 2002, section 2.6)."""
+
+
 def fit_pka(
     records: BatchRecords, question: PkaQuestion, settings: Settings, progress: Progress | None = None
 ) -> PkaFit:
@@ -115,7 +119,8 @@ def _chosen(every: Evidence, studied: Studied, question: PkaQuestion) -> tuple[O
         tried[number] = outcome(used, studied, plan)
     aicc = {number: one.aicc for number, one in tried.items()}
     finite = {number: value for number, value in aicc.items() if np.isfinite(value)}
-    number = min(finite, key=lambda n: (finite[n], n)) if finite else min(tried)
+    least = min(finite.values(), default=0.0)
+    number = min((n for n, value in finite.items() if value <= least + ALIKE), default=min(tried))
     return tried[number], aicc if len(studied.numbers) > 1 else {}
 
 

@@ -8,13 +8,14 @@ import numpy as np
 from scipy import special
 
 from reconcile.fitter.cases import Cases, Medium
-from reconcile.fitter.least_squares import Data, Point, bounds, normal, search
+from reconcile.fitter.least_squares import STEPS, Data, Point, bounds, normal, search
 from reconcile.fitter.model import Shape
 from reconcile.fitter.scatter import FIRST_SIGMA, Scatter, estimated_sigma
 from reconcile.fitter.starts import starts
 from reconcile.records.arrays import BoolArray, FloatArray
 
 STRETCH = 0.01
+QUICK_STEPS = 6
 ROUNDS = 3
 """Times that noise and fit are brought into agreement."""
 UNSEEN = (3.0, 300.0, 1.5, 1.5)
@@ -84,21 +85,25 @@ def fit(task: Task, theta: FloatArray | None = None) -> Fitted:
     return settle(task, data, point)
 
 
-def refit(task: Task, fitted: Fitted, kept: BoolArray) -> Fitted:
-    """The same with other readings kept, from where it ended."""
+def refit(task: Task, fitted: Fitted, kept: BoolArray, quickly: bool = False) -> Fitted:
+    """The same with other readings kept, from where it ended.
+
+    quickly : a few steps, which do where the fit is only to show which reading lies furthest from it
+    """
     data = replace(fitted.data, kept=kept)
-    point = search(task.medium, task.cases, task.shape, data, fitted.theta, fitted.free)
-    return settle(task, data, point)
+    most = QUICK_STEPS if quickly else STEPS
+    point = search(task.medium, task.cases, task.shape, data, fitted.theta, fitted.free, most)
+    return settle(task, data, point, 1 if quickly else ROUNDS)
 
 
-def settle(task: Task, data: Data, point: Point) -> Fitted:
+def settle(task: Task, data: Data, point: Point, rounds: int = ROUNDS) -> Fitted:
     """Brings noise and fit into agreement, and works out covariance, leverage and studentised residuals."""
     medium, cases, shape = task.medium, task.cases, task.shape
     free = np.tile(task.free, (len(cases), 1))
     count = cases.sums(data.kept.astype(float))
     given = task.scatter.known_in(cases)
     sigma = np.zeros(len(cases))
-    for turn in range(ROUNDS):
+    for turn in range(rounds):
         seen = _seen(cases, shape, data, point, free)
         left = count - seen.sum(axis=1)
         sigma = estimated_sigma(cases, task.scatter, point.residual, data.kept, left)
@@ -109,7 +114,9 @@ def settle(task: Task, data: Data, point: Point) -> Fitted:
         whole = cases.spread(cases.sums(ratio) / np.diff(cases.first))
         if turn and float(np.abs(ratio).max(initial=0.0)) < 1e-6:
             break
-        if float(np.abs(ratio - whole).max(initial=0.0)) > 1e-9:  # weights have moved against one another
+        if (
+            rounds > 1 and float(np.abs(ratio - whole).max(initial=0.0)) > 1e-9
+        ):  # weights have moved against one another
             point = search(medium, cases, shape, data, point.theta, free)
     seen = _seen(cases, shape, data, point, free)
     left = count - seen.sum(axis=1)

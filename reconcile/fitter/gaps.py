@@ -24,6 +24,8 @@ RANGES = ((10.0, 30.0), (30.0, 70.0), (70.0, 90.0))
 """Percent neutralised: the useful window of a step, its middle and the two sides of it."""
 WORTH = 0.7
 """A gap is told when one reading in it would leave at most this share of the interval."""
+USEFUL = 0.4
+"""Width of an interval above which one more reading settles nothing."""
 TRIED = 161
 HARMLESS = {"corrosive", "irritant"}
 """Hazard words with which a gap is still told; any other word, or a gas given off with acid, keeps it unsaid."""
@@ -86,8 +88,8 @@ def gaps(
             after = 2.0 * t_then * u_then
             if np.isfinite(width):
                 after = width * t_then * u_then / (t_now * u_now)
-                if after > WORTH * width:
-                    continue
+            if after > min(WORTH * width, USEFUL):
+                continue
             found.append(Gap(step + 1, low, high, width if np.isfinite(width) else None, after))
     return tuple(sorted(found, key=lambda gap: (gap.after / (gap.before or np.inf), gap.step, gap.low)))
 

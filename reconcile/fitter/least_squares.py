@@ -15,6 +15,9 @@ PKA_LOW, PKA_HIGH = -2.0, 16.0
 """Constants that are looked for: beyond them water itself leaves nothing to see."""
 SMALL = 1e-9  # a step that ends the search, in each parameter's own scale
 SMALL_EFFECT = 1e-7  # or one whose effect is so small a part of the noise
+SMALL_GAIN = 1e-9  # or that would lower the weighted sum of squares by so little, as in a valley that leads nowhere
+TURN = 0.3  # ratio of successive steps from which on the next is stretched or shortened
+LIGHT = 1e-2  # damping up to which the gain of a step is that of the undamped one
 SLACK = 1e-8  # of the weighted sum of squares: what the engine's own rounding may do to it
 
 
@@ -100,11 +103,14 @@ def search(
 
     Notes
     -----
-    Levenberg-Marquardt with Marquardt's scaling; steps are cut at the bounds. Cases that are done take no further part.
+    Levenberg-Marquardt with Marquardt's scaling; steps are cut at the bounds. Where steps follow one another in a fixed
+    ratio, as in curved valleys, the next is stretched or shortened to the end of that series. Cases that are done take
+    no further part.
 
     References
     ----------
-    Marquardt 1963, J. Soc. Indust. Appl. Math. 11:431, doi:10.1137/0111030.
+    Marquardt 1963, J. Soc. Indust. Appl. Math. 11:431, doi:10.1137/0111030; Aitken 1926, Proc. R. Soc. Edinb. 46:289,
+    doi:10.1017/S0370164600022070 (the end of a geometric series).
     """
     low, high, widest = bounds(shape)
     scale = np.where(widest > 10.0, 100.0, 1.0)
@@ -112,21 +118,29 @@ def search(
     point = at(medium, cases, shape, data, theta)
     residual, jacobian, chi2 = point.residual, point.jacobian, point.chi2
     damping, converged = np.full(len(cases), 1e-4), np.zeros(len(cases), bool)
+    before, eased = np.zeros_like(theta), np.zeros(len(cases), bool)
     left: IntArray = np.arange(len(cases))
     part, rows, own = cases, np.arange(cases.readings), data
     for _ in range(steps):
         matrix, right = normal(part, own, residual[rows], jacobian[rows])
-        step = _step(matrix, right, free[left], damping[left], theta[left], low, high, widest)
+        step = _step(shape, matrix, right, free[left], damping[left], theta[left])
+        small = _is_small(matrix, right, step, scale, damping[left])
+        ratio = np.where(eased[left] | (damping[left] > LIGHT), 0.0, _ratio(matrix, step, before[left]))
+        eased[left] = np.abs(ratio) > TURN
+        factor = np.where(eased[left], 1.0 / (1.0 - np.clip(ratio, -1.5, 0.8)), 1.0)
+        step = np.clip(theta[left] + step * factor[:, None], low, high) - theta[left]
         trial = theta[left] + step
         new = at(medium, part, shape, own, trial)
-        good = new.chi2 <= chi2[left] + SLACK * (1.0 + chi2[left])
-        diagonal = np.sqrt(np.maximum(np.einsum("pkk->pk", matrix), 0.0))
-        small = np.all((np.abs(step) < SMALL * scale) | (np.abs(step) * diagonal < SMALL_EFFECT), axis=1)
+        slack = SLACK * (1.0 + chi2[left])
+        good = new.chi2 <= chi2[left] + slack
+        promised = 2.0 * np.sum(right * step, axis=1) - np.einsum("pi,pij,pj->p", step, matrix, step)
+        poor = (chi2[left] - new.chi2 < 0.25 * promised) & (promised > slack)  # a step that went too far
+        before[left] = np.where(good[:, None], step, 0.0)
         taken = left[good]
         theta[taken], chi2[taken] = trial[good], new.chi2[good]
         moved = good[part.case]
         residual[rows[moved]], jacobian[rows[moved]] = new.residual[moved], new.jacobian[moved]
-        damping[left] = np.clip(np.where(good, damping[left] * 0.1, damping[left] * 8.0), 1e-14, 1e16)
+        damping[left] = np.clip(np.where(good & ~poor, damping[left] * 0.1, damping[left] * 8.0), 1e-14, 1e16)
         done = small | (damping[left] > 1e14)
         converged[left[small]] = True
         if np.any(done):
@@ -139,18 +153,30 @@ def search(
     return Point(theta, residual, jacobian, chi2, converged)
 
 
+def _is_small(
+    matrix: FloatArray, right: FloatArray, step: FloatArray, scale: FloatArray, damping: FloatArray
+) -> BoolArray:
+    """Whether a step (P, k) is so small, or changes so little, that the search may end with it."""
+    diagonal = np.sqrt(np.maximum(np.einsum("pkk->pk", matrix), 0.0))
+    small = np.all((np.abs(step) < SMALL * scale) | (np.abs(step) * diagonal < SMALL_EFFECT), axis=1)
+    gain = np.abs(np.sum(right * step, axis=1))
+    return np.asarray(small | ((gain < SMALL_GAIN) & (damping <= LIGHT)))
+
+
+def _ratio(matrix: FloatArray, step: FloatArray, before: FloatArray) -> FloatArray:
+    """Ratio of a step to the one before, along the one before, (P,); 0 where there is none."""
+    size = np.einsum("pi,pij,pj->p", before, matrix, before)
+    along = np.einsum("pi,pij,pj->p", step, matrix, before)
+    return np.where(size > 0.0, along / np.where(size > 0.0, size, 1.0), 0.0)
+
+
 def _step(
-    matrix: FloatArray,
-    right: FloatArray,
-    free: BoolArray,
-    damping: FloatArray,
-    theta: FloatArray,
-    low: FloatArray,
-    high: FloatArray,
-    widest: FloatArray,
+    shape: Shape, matrix: FloatArray, right: FloatArray, free: BoolArray, damping: FloatArray, theta: FloatArray
 ) -> FloatArray:
-    """Damped steps (P, k); a parameter at its bound that would leave it stays there."""
+    """Damped steps (P, k); a parameter at its bound that would leave it stays there, and its enthalpy with it."""
+    low, high, widest = bounds(shape)
     stuck = ((theta <= low) & (right < 0.0)) | ((theta >= high) & (right > 0.0))
+    stuck[:, shape.dh] |= stuck[:, shape.pka]
     moving = free & ~stuck
     k = matrix.shape[1]
     both = moving[:, :, None] & moving[:, None, :]

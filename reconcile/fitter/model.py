@@ -6,11 +6,12 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from reconcile.chemistry.acids import AcidTable, usual_size
+from reconcile.chemistry.acids import AcidTable
 from reconcile.chemistry.engine import Answers, run
 from reconcile.chemistry.temperature import GAS_CONSTANT, LN10
 from reconcile.chemistry.water import ZERO_CELSIUS
 from reconcile.fitter.cases import Cases, Medium
+from reconcile.fitter.further_acids import with_further
 from reconcile.records.arrays import FloatArray, IntArray
 
 TOGETHER = 64
@@ -119,32 +120,17 @@ def table_with(medium: Medium, shape: Shape, pka: FloatArray, dh: FloatArray) ->
     -----
     pKa(T) = p + q/T + r ln T as in temperature.van_t_hoff, referred to the reference temperature of the shape.
     """
-    base = medium.acids
-    count, steps = pka.shape
+    base, count = medium.acids, len(pka)
     enthalpy, capacity = PER_DH * dh, np.broadcast_to(shape.dcp / (GAS_CONSTANT * LN10), pka.shape)
-    p = pka - enthalpy / shape.kelvin + capacity * (np.log(shape.kelvin) + 1.0)
-    q = enthalpy - capacity * shape.kelvin
-    zero = np.zeros(count * steps)
-    names = len(base.names)
-    own = base.first[medium.studied] + medium.studied
-    known = base.size[own : own + int(base.steps[medium.studied]) + 1]
-    sizes = [known[lost] if len(known) == steps + 1 else usual_size(shape.charge - lost) for lost in range(steps + 1)]
-    table = AcidTable(
-        names=(*base.names, *(f"case {k}" for k in range(count))),
-        charge=np.concatenate([base.charge, np.full(count, float(shape.charge))]),
-        steps=np.concatenate([base.steps, np.full(count, steps, np.intp)]),
-        first=np.concatenate([base.first, len(base.pka) + steps * np.arange(count)]).astype(np.intp),
-        rows=base.rows,
-        pka=np.concatenate([base.pka, pka.ravel()]),
-        u=np.concatenate([base.u, zero]),
-        u_dh=np.concatenate([base.u_dh, zero]),
-        u_dcp=np.concatenate([base.u_dcp, zero]),
-        p=np.concatenate([base.p, p.ravel()]),
-        q=np.concatenate([base.q, q.ravel()]),
-        r=np.concatenate([base.r, -capacity.ravel()]),
-        size=np.concatenate([base.size, np.tile(np.array(sizes, float), count)]),
-    )
-    return table, np.arange(names, names + count)
+    columns = {
+        "pka": pka,
+        "p": pka - enthalpy / shape.kelvin + capacity * (np.log(shape.kelvin) + 1.0),
+        "q": enthalpy - capacity * shape.kelvin,
+        "r": -capacity,
+    }
+    names = tuple(f"case {k}" for k in range(count))
+    table = with_further(base, names, shape.charge, columns, like=medium.studied)
+    return table, len(base.names) + np.arange(count)
 
 
 def predict(medium: Medium, cases: Cases, shape: Shape, theta: FloatArray) -> tuple[FloatArray, FloatArray]:

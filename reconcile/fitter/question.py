@@ -9,7 +9,8 @@ from functools import cached_property
 
 import numpy as np
 
-from reconcile.chemistry.acids import AcidTable, Ionization, acid_table, build
+from reconcile.chemistry.acids import AcidTable, acid_table
+from reconcile.fitter.further_acids import with_further
 from reconcile.records.pka_results import PkaQuestion
 from reconcile.records.places import Place
 from reconcile.records.problems import InputProblems, Problem
@@ -83,22 +84,9 @@ class Studied:
         """The library's acids, with the unfamiliar one behind; its constants stand at 7 until they are found."""
         if self.known:
             return acid_table()
-        library = acid_table()
-        rows = [
-            Ionization(self.acid, "", "", self.charge, j + 1, 7.0, 1.0, math.nan, math.nan, "under study", "", "")
-            for j in range(steps)
-        ]
-        own = build(rows)
-        joined = {
-            name: np.concatenate([getattr(library, name), getattr(own, name)])
-            for name in ("charge", "steps", "pka", "u", "u_dh", "u_dcp", "p", "q", "r", "size")
-        }
-        return AcidTable(
-            names=(*library.names, self.acid),
-            rows=(*library.rows, *own.rows),
-            first=np.append(library.first, len(library.pka)).astype(np.intp),
-            **joined,
-        )
+        pka = np.full((1, steps), 7.0)
+        columns = {"pka": pka, "p": pka, "u": np.ones((1, steps))}
+        return with_further(acid_table(), (self.acid,), self.charge, columns)
 
 
 def refusal(code: str, read: str = "", **words: str) -> InputProblems:

@@ -53,7 +53,7 @@ def fit_without(task: Task, fitted: Fitted) -> Fitted:
         chance[open_, stage] = np.minimum(p, 1.0)[open_]
         kept = now.data.kept.copy()
         kept[worst[open_]] = False
-        now = refit(task, now, kept)
+        now = refit(task, now, kept, quickly=True)
     number = _rejected(chance)
     if not number.any():
         return fitted

@@ -37,9 +37,11 @@ def structure(evidence: Evidence, studied: Studied, steps: int, free: tuple[str,
     acids = studied.table(steps)
     i = acids.index[studied.acid]
     own = slice(int(acids.first[i]), int(acids.first[i]) + steps)
-    rows = acids.rows[own]
-    dcp = np.nan_to_num(np.array([row.dcp_j_k_mol for row in rows], float))
-    dh = np.nan_to_num(np.array([row.dh_kj_mol for row in rows], float)) + dcp * (kelvin - 298.15) / 1000.0
+    dcp, dh = np.zeros(steps), np.zeros(steps)
+    if studied.known:
+        rows = acids.rows[own]
+        dcp = np.nan_to_num(np.array([row.dcp_j_k_mol for row in rows], float))
+        dh = np.nan_to_num(np.array([row.dh_kj_mol for row in rows], float)) + dcp * (kelvin - 298.15) / 1000.0
     shape = Shape(steps, studied.charge, kelvin, dcp)
     pka = acids.p[own] + acids.q[own] / kelvin + acids.r[own] * np.log(kelvin)
     held = np.concatenate([pka, dh, [0.0, 0.0]])

@@ -206,10 +206,8 @@ def _relation(judged: Judged, step: int, bounds: tuple[float | None, float | Non
                 u_mean = float(np.sqrt(along @ judged.budget.whole @ along))
                 if u_mean <= min(LIMIT_U, 0.5 * u):
                     mean = float(along @ fitted.theta[0])
-                    return say(
-                        "with-step", name=name, other=constant_name(other + 1, shape.steps), value=figure(mean),
-                        u=uncertainty(u_mean),
-                    )  # fmt: skip
+                    first, second = (constant_name(j + 1, shape.steps) for j in sorted((step, other)))
+                    return say("with-step", name=first, other=second, value=figure(mean), u=uncertainty(u_mean))
     if low is not None and high is not None:
         return say(
             "wide", name=name, limit=f"{LIMIT_U:.2f}", low=figure(low, 2), high=figure(high, 2), u=uncertainty(u)

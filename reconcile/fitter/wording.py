@@ -23,6 +23,8 @@ SENTENCES: Mapping[str, str] = {
     "{name} {sign} {slope} times the offset = {value} (u {u}).",
     "with-step": "{name} and {other} lie closer together than these readings can part; their mean is known: {value} "
     "(u {u}).",
+    "rests-on-strength": "{name} rests on the stated strength, which these readings cannot tell from it: 1 % of error "
+    "in the strength moves {name} by {move}.",
     "ka-times-c": "These readings fix only Ka times C, the product of ionization constant and concentration: {name} "
     "rests on the stated strength, and 1 % of error in it moves {name} by {move}.",
     "strength-found": "Strength factor (actual over stated) {value}, u {u}.",
@@ -32,7 +34,7 @@ SENTENCES: Mapping[str, str] = {
     "one-side": "All readings lie on one side of half neutralisation of step {step} ({low} to {high} % neutralised): "
     "an error of strength or titrant goes into {name} undiminished.",
     "span": "The readings span only {span} pH; under 0.5 pH a wrong strength, a wrong step and noise look alike.",
-    "few": "Only {count} readings; from five on the scatter itself tells something.",
+    "few": "Only {count} left to fit; from five on the scatter itself tells something.",
     "no-scatter": "As many unknowns as readings: the scatter cannot be judged, and a noise of {noise} pH is taken "
     "instead.",
     "meter": "Meter {meter} is itself suspect: {reason}. An offset of the meter goes into {name} {how}.",

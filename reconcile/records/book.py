@@ -7,6 +7,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
+from reconcile.records.adjusting import OpenAmounts, Solved
 from reconcile.records.arrays import AnyArray, FloatArray, IntArray, TextArray
 from reconcile.records.places import Place
 from reconcile.records.problems import Problem
@@ -160,6 +161,7 @@ class BatchRecords:
     rows_read : rows of the readings sheets that hold anything in a reading's columns
     set_aside : rows_read == len(readings) + len(set_aside), always
     notes : accepted repairs and notices, none of which leaves a row out
+    open_amounts : amounts left to a pH, whose contributions are NaN until `solved` says what they are
     """
 
     sheets: tuple[SheetSource, ...]
@@ -179,6 +181,8 @@ class BatchRecords:
     set_aside: tuple[SetAside, ...]
     notes: tuple[Problem, ...]
     without_effect: tuple[str, ...] = ()
+    open_amounts: OpenAmounts = field(default_factory=OpenAmounts)
+    solved: Solved = field(default_factory=Solved)
 
     def place(self, table: Table, index: int, name: str = "") -> Place:
         """Place of a row of a table, or of one field in it."""

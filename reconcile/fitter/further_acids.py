@@ -1,0 +1,63 @@
+"""The table of acids with further acids behind, whatever columns the table has."""
+
+from __future__ import annotations
+
+from dataclasses import fields
+from typing import Any
+
+import numpy as np
+
+from reconcile.chemistry.acids import AcidTable, usual_size
+from reconcile.records.arrays import FloatArray
+
+
+def with_further(
+    base: AcidTable, names: tuple[str, ...], charge: int, columns: dict[str, FloatArray], like: int = -1
+) -> AcidTable:
+    """The table with more acids of one charge and one number of steps behind those it has.
+
+    Parameters
+    ----------
+    base : AcidTable
+        a acids, q constants.
+    names : (m,)
+    charge : int
+        Of the fully protonated form.
+    columns : mapping of str to ndarray (m, s)
+        What is known of their constants: pka, p, q, r, u. Every other column is 0 for them.
+    like : int
+        Acid of the base whose states they share, so that they take its ion sizes and whatever else belongs to a state;
+        -1 for usual sizes.
+
+    Returns
+    -------
+    AcidTable
+    """
+    m, s = columns["pka"].shape
+    a, q = len(base.names), len(base.pka)
+    given: dict[str, Any] = {
+        "names": (*base.names, *names),
+        "charge": np.concatenate([base.charge, np.full(m, float(charge))]),
+        "steps": np.concatenate([base.steps, np.full(m, s)]).astype(np.intp),
+        "first": np.concatenate([base.first, q + s * np.arange(m)]).astype(np.intp),
+    }
+    own = np.zeros(0, np.intp)
+    if like >= 0 and int(base.steps[like]) == s and float(base.charge[like]) == charge:
+        own = int(base.first[like]) + like + np.arange(s + 1)
+    sizes = np.array([usual_size(charge - lost) for lost in range(s + 1)], float)
+    made = {}
+    for field in fields(AcidTable):
+        value = getattr(base, field.name)
+        if field.name in given:
+            made[field.name] = given[field.name]
+        elif not isinstance(value, np.ndarray) or value.ndim != 1:
+            made[field.name] = value
+        elif len(value) == q:
+            more = columns.get(field.name, np.zeros((m, s)))
+            made[field.name] = np.concatenate([value, more.ravel()])
+        elif len(value) == a:
+            made[field.name] = np.concatenate([value, np.zeros(m, value.dtype)])
+        else:  # of every protonation state
+            state = value[own] if len(own) else sizes if field.name == "size" else np.zeros(s + 1)
+            made[field.name] = np.concatenate([value, np.tile(state, m)])
+    return AcidTable(**made)

@@ -9,9 +9,9 @@ import numpy as np
 from scipy import sparse
 
 from reconcile.auditor.alarm import Alarm, single_p
-from reconcile.auditor.components import Components, Model
+from reconcile.auditor.components import SHORT, Components, Model
 from reconcile.auditor.layout import Layout
-from reconcile.auditor.mixed import SHORT, estimate, model_of
+from reconcile.auditor.mixed import estimate, model_of
 from reconcile.auditor.proposals import Context, FaultKind
 from reconcile.auditor.retrial import Retrial
 from reconcile.auditor.scoring import Candidate, Pool, Scores, gain_if_unsure, pool_of, score, without

@@ -22,28 +22,34 @@ def gains(model: Model, x: sparse.csc_array) -> FloatArray:
     return np.asarray(x.T @ model.pr).ravel() - 0.5 * model.quadratic(x)
 
 
-def secants(context: Context, groups: Sequence[tuple[int, ...]], tangents: sparse.csc_array) -> sparse.csc_array:
-    """Columns of effect per unit of ln factor, exact at each group's own most likely factor.
+def secants(
+    context: Context, groups: Sequence[tuple[int, ...]], tangents: sparse.csc_array
+) -> tuple[sparse.csc_array, list[Supposed | None]]:
+    """Columns of effect per unit of ln factor, exact at each group's own most likely factor, which comes with them.
 
     groups : contributions that share one factor, one group a column of `tangents` (dpH/d ln factor).
     A group that cannot be solved anywhere keeps its tangent.
     """
     n, k = len(context.layout), len(groups)
     if not k:
-        return tangents
+        return tangents, []
     grid = [Supposed(group, factor=float(np.exp(v))) for group in groups for v in LN_FACTORS]
     found = context.retrial.shifts(grid)
     gain = _gains_or_never(context, found, n).reshape(k, len(LN_FACTORS))
     best = [_refined(np.array(LN_FACTORS), gain[i]) for i in range(k)]
-    last = context.retrial.shifts([Supposed(g, factor=float(np.exp(v))) for g, v in zip(groups, best, strict=True)])
+    at: list[Supposed | None] = []
+    likely = [Supposed(g, factor=float(np.exp(v))) for g, v in zip(groups, best, strict=True)]
+    last = context.retrial.shifts(likely)
     columns: list[Column] = []
     for index, (value, (rows, shift)) in enumerate(zip(best, last, strict=True)):
         if np.isfinite(shift).all() and len(rows):
             columns.append((rows, shift / value))
+            at.append(likely[index])
         else:
+            at.append(None)
             begin, end = tangents.indptr[index], tangents.indptr[index + 1]
             columns.append((tangents.indices[begin:end].astype(np.intp), tangents.data[begin:end]))
-    return stack(columns, n)
+    return stack(columns, n), at
 
 
 def _gains_or_never(context: Context, found: Sequence[Column], n: int) -> FloatArray:

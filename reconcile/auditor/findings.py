@@ -184,7 +184,7 @@ def build(
         told: list[Finding] = []
         tried = [(one.candidate, amplitude)]
         for k, other in rivals:
-            support = search.support(other, pool, model)
+            support = search.support(other, pool, model, others)
             own = search.model(state.components, others, other.own)
             own_estimate = interval_of(search, other, pool, model, own, None)
             size, ends = (float(scores.amplitude[k]), None) if own_estimate is None else own_estimate

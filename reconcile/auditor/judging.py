@@ -13,15 +13,18 @@ from reconcile.auditor.components import SHORT, Components, Model
 from reconcile.auditor.layout import Layout
 from reconcile.auditor.mixed import estimate, model_of
 from reconcile.auditor.proposals import Context, FaultKind
-from reconcile.auditor.retrial import Retrial
-from reconcile.auditor.scoring import Candidate, Pool, Scores, gain_if_unsure, pool_of, score, without
+from reconcile.auditor.relinearised import relinearised
+from reconcile.auditor.retrial import Retrial, Supposed
+from reconcile.auditor.scoring import Candidate, Pool, Scores, pool_of, score, without
 from reconcile.records.arrays import FloatArray
 from reconcile.records.settings import Settings
 
 AGAIN, AGAIN_FROM, AGAIN_READINGS = 3, 2.0, 3
 """How many candidates of a round are judged again, from which marginal gain and number of readings on."""
-UNSURE, UNSURE_GAP, UNSURE_SHARE = 40, 60.0, 0.3
-"""Supposed substances of one lot whose own uncertainty is reckoned: how many, and how far below the best at first."""
+RECOMPUTED, RECOMPUTED_FROM, RECOMPUTED_GAP, RECOMPUTED_SHARE = 12, 1.0, 60.0, 0.3
+"""Suppositions about one subject whose variance is recomputed: how many, from which marginal gain on, how far below the
+best of the subject at first."""
+MOST_LAYOUTS = 400
 ONE_EACH = ("lot", "batch")
 """Classes in which one subject has one explanation at a time: a bottle holds one thing, a batch was spoilt once."""
 TRIED = 12
@@ -54,6 +57,7 @@ class Judge:
         self.rate = float(settings["audit.alarm_rate"])
         self.progress = progress or (lambda _: None)
         self.tried = 0
+        self._layouts: dict[tuple[Supposed, ...], Layout] = {}
 
     def fixed_and_rest(self, candidates: Sequence[Candidate]) -> tuple[sparse.csc_array | None, FloatArray]:
         """Columns of free amplitude, and the residuals after what has none is taken off."""
@@ -65,18 +69,21 @@ class Judge:
         return (sparse.csc_array(sparse.hstack(free)) if free else None), r
 
     def layout_with(self, candidates: Sequence[Candidate]) -> Layout:
-        """The layout with what is unsure about supposed substances among its random effects.
+        """The layout with sensitivities and variances recomputed under what candidates suppose of recipes.
 
-        A long record keeps its factored covariance instead: there each substance's own score alone carries it.
+        A long record keeps its factored covariance instead.
         """
-        if len(self.layout) > SHORT:
+        supposed = tuple(c.supposed for c in candidates if c.supposed is not None)
+        if not supposed or len(self.layout) > SHORT:
             return self.layout
-        columns = [c.unsure for c in candidates if c.unsure is not None and c.unsure.shape[1]]
-        if not columns:
-            return self.layout
-        z = sparse.csr_array(sparse.hstack([self.layout.z, *columns]))
-        more = z.shape[1] - self.layout.z.shape[1]
-        return replace(self.layout, z=z, prior=np.r_[self.layout.prior, np.ones(more)])
+        if supposed not in self._layouts:
+            layout = self.layout
+            for one in supposed:
+                layout = relinearised(layout, *self.retrial.prediction(one))
+            if len(self._layouts) > MOST_LAYOUTS:
+                self._layouts.clear()
+            self._layouts[supposed] = layout
+        return self._layouts[supposed]
 
     def model(self, components: Components, candidates: Sequence[Candidate], own: tuple[int, ...] = ()) -> Model:
         fixed, r = self.fixed_and_rest(candidates)
@@ -92,30 +99,46 @@ class Judge:
         taken = {(c.alarm_class, c.subject) for c in candidates if c.alarm_class in ONE_EACH}
         pool = pool_of(Context(self.layout, self.settings, model, self.retrial), self.kinds)
         self.tried += len(pool)
-        scores = self.made_unsure(pool, model, pool.scores(model))
+        scores = self.recomputed(pool, model, pool.scores(model), candidates)
         return pool, model, without(scores, pool.concerning(taken)) if taken else scores
 
-    @staticmethod
-    def made_unsure(pool: Pool, model: Model, scores: Scores) -> Scores:
-        """Scores in which supposed substances that come near the best of their block carry their own uncertainty."""
+    def recomputed(self, pool: Pool, model: Model, scores: Scores, beside: Sequence[Candidate]) -> Scores:
+        """Scores in which the best few suppositions about each lot and batch have their variance recomputed under them.
+
+        Only those near the best of their subject are worth it; on a long record none is.
+        """
+        if model.long:
+            return scores
         gain, marginal = scores.gain.copy(), scores.marginal.copy()
+        blocks: dict[tuple[str, str], list[int]] = {}
         for p, offset in zip(pool.proposals, pool.offsets, strict=False):
-            if p.unsure is None or not len(p):
-                continue
-            own = scores.marginal[offset : offset + len(p)]
-            blocks = np.array([str(b) for b in p.block], object)
-            for block in np.unique(blocks.astype(str)):
-                inside = np.flatnonzero(blocks == block)
-                ranked = inside[np.argsort(-own[inside], kind="stable")]
-                best = float(own[ranked[0]])
-                for i in ranked[:UNSURE]:
-                    if own[i] < 1.0 or own[i] < best - UNSURE_GAP - UNSURE_SHARE * abs(best):
-                        break
-                    k = int(offset + i)
-                    now = gain_if_unsure(model, pool.columns(np.array([k], np.intp)), p.unsure(int(i)))
+            if p.supposed is not None:
+                for i in np.flatnonzero(scores.marginal[offset : offset + len(p)] > RECOMPUTED_FROM).tolist():
+                    blocks.setdefault((p.alarm_class, str(p.block[i])), []).append(int(offset + i))
+        for inside in blocks.values():
+            ranked = sorted(inside, key=lambda k: -scores.marginal[k])
+            best = float(scores.marginal[ranked[0]])
+            for k in ranked[:RECOMPUTED]:
+                if scores.marginal[k] < best - RECOMPUTED_GAP - RECOMPUTED_SHARE * best:
+                    break
+                candidate = pool.candidate(k)
+                if candidate.supposed is not None:
+                    now = self.gain_recomputed(candidate, model, beside)
                     marginal[k] += now - gain[k]
                     gain[k] = max(now, 0.0)
         return replace(scores, gain=gain, marginal=marginal)
+
+    def gain_recomputed(self, candidate: Candidate, model: Model, beside: Sequence[Candidate]) -> float:
+        """Log-likelihood gain of a supposed truth with mean, sensitivities and variance recomputed under it."""
+        fixed, r = self.fixed_and_rest(beside)
+        layout = self.layout_with([*beside, candidate])
+        under = model_of(layout, model.components, fixed, (), r)
+        x = candidate.x.toarray().ravel()
+        px = under.project(x)
+        size = float(x @ px)
+        amplitude = 1.0 if candidate.point or size <= 0 else float(x @ under.pr) / size
+        left = float(r @ under.pr) - 2.0 * amplitude * float(x @ under.pr) + amplitude**2 * size
+        return 0.5 * (float(r @ model.pr) + model.log_det - left - under.log_det)
 
     def supported(self, pool: Pool, model: Model, scores: Scores, beside: Sequence[Candidate]) -> list[Chosen]:
         """The best candidates with their family-wise probability at or under the alarm rate, best first.
@@ -153,9 +176,9 @@ class Judge:
     def judged_again(self, candidate: Candidate, pool: Pool, model: Model, beside: Sequence[Candidate]) -> Chosen:
         """Support of a candidate with the variance components estimated beside it."""
         components = self.components([*beside, candidate], model.components)
-        return self.support(candidate, pool, self.model(components, beside))
+        return self.support(candidate, pool, self.model(components, beside), beside)
 
-    def support(self, candidate: Candidate, pool: Pool, model: Model) -> Chosen:
+    def support(self, candidate: Candidate, pool: Pool, model: Model, beside: Sequence[Candidate]) -> Chosen:
         """Support of one candidate under a model that lacks it, charged as a member of the pool's block of its own."""
         s = score(
             model,
@@ -164,8 +187,8 @@ class Judge:
             np.array([candidate.prior_sd]),
             np.array([candidate.log_prior]),
         )
-        if candidate.unsure is not None:
-            now = gain_if_unsure(model, candidate.x, candidate.unsure)
+        if candidate.supposed is not None and not model.long:
+            now = self.gain_recomputed(candidate, model, beside)
             s = replace(s, gain=np.array([max(now, 0.0)]), marginal=s.marginal + now - s.gain)
         gain = float(s.gain[0])
         p = float(single_p(model, candidate.x, np.array([np.sqrt(2.0 * gain)]))[0])

@@ -39,10 +39,13 @@ class ShortModel(Model):
         scaled = layout.dense * np.sqrt(self.g)
         v = scaled @ scaled.T + np.where(layout.same_batch, np.outer(tau, tau), 0.0)
         v[np.diag_indices(len(tau))] += self.d
-        p = linalg.cho_solve(linalg.cho_factor(v, lower=True), np.eye(len(tau))) if len(tau) else v
+        root = linalg.cho_factor(v, lower=True) if len(tau) else (v, True)
+        p = linalg.cho_solve(root, np.eye(len(tau))) if len(tau) else v
+        self.log_det = 2.0 * float(np.log(np.diag(root[0])).sum())
         if fixed is not None and fixed.shape[1]:
             px = p @ fixed.toarray()
             inner = fixed.T @ px
+            self.log_det += float(np.linalg.slogdet(inner)[1])
             p = p - px @ np.linalg.pinv(inner, rcond=1e-10, hermitian=True) @ px.T
         self.p = (p + p.T) / 2
         self.pr = self.p @ self.r

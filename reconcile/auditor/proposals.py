@@ -12,7 +12,7 @@ from scipy import sparse, stats
 
 from reconcile.auditor.components import Model
 from reconcile.auditor.layout import Layout
-from reconcile.auditor.retrial import Retrial
+from reconcile.auditor.retrial import Retrial, Supposed
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 from reconcile.records.settings import Settings
 
@@ -116,8 +116,8 @@ class Proposal:
     """What tells apart candidates of one kind and subject in a list of rivals (a substance); () when nothing does."""
     at: Callable[[int, Site], float] | None = None
     """Effect at amplitude 1 on a further reading of the subject meter; None for kinds that are no meter's."""
-    unsure: Callable[[int], sparse.csc_array] | None = None
-    """What remains unsure about a candidate's effect, as columns of unit variance (n, m) [pH]; None for nothing."""
+    supposed: Callable[[int], Supposed | None] | None = None
+    """The truth a candidate supposes of recipes, so that variances can be recomputed under it."""
     df: IntArray | None = None
     """Degrees of freedom of a candidate drawn from the readings themselves; None: one each."""
     blocks: int = 0
@@ -173,6 +173,7 @@ def linear(
     own: Sequence[tuple[int, ...]] = (),
     at: Callable[[int, Site], float] | None = None,
     blocks: int = 0,
+    supposed: Callable[[int], Supposed | None] | None = None,
 ) -> Proposal | None:
     """A proposal whose candidates all have a free amplitude; None when there is no candidate and none was looked at."""
     k = len(subject)
@@ -192,4 +193,5 @@ def linear(
         own,
         at=at,
         blocks=blocks,
+        supposed=supposed,
     )

@@ -7,7 +7,6 @@ from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
-from scipy import sparse
 
 from reconcile.auditor.layout import Layout
 from reconcile.records.arrays import FloatArray, IntArray
@@ -42,7 +41,6 @@ class Retrial:
     def __init__(self, layout: Layout, repredict: Repredict) -> None:
         self.layout, self.repredict = layout, repredict
         self._known: dict[Supposed, tuple[IntArray, FloatArray]] = {}
-        self._unsure: dict[Supposed, dict[tuple[str, int], tuple[IntArray, FloatArray]]] = {}
         self.kept: dict[object, Any] = {}
         """What fault kinds worked out once for this record, under keys of their own."""
         solutions = layout.records.solutions
@@ -66,6 +64,16 @@ class Retrial:
         rows = [self._rows_of[int(i)] for i in solutions]
         return np.sort(np.concatenate(rows)).astype(np.intp) if rows else np.zeros(0, np.intp)
 
+    def _change(self, supposed: Supposed, rows: IntArray) -> Change:
+        """A supposed truth as the prediction engine is asked for it."""
+        return Change(
+            rows=self.layout.reading[rows],
+            contributions=np.array(supposed.contributions, np.intp),
+            form=supposed.form,
+            factor=np.full(len(supposed.contributions), supposed.factor),
+            dissolved_co2=supposed.co2,
+        )
+
     def shifts(self, supposed: Sequence[Supposed]) -> list[tuple[IntArray, FloatArray]]:
         """For each supposed truth the evidence rows it touches and how far their predictions move [pH].
 
@@ -75,44 +83,16 @@ class Retrial:
         if new:
             layout = self.layout
             touched = [self._rows(s) for s in new]
-            changes = [
-                Change(
-                    rows=layout.reading[rows],
-                    contributions=np.array(s.contributions, np.intp),
-                    form=s.form,
-                    factor=np.full(len(s.contributions), s.factor),
-                    dissolved_co2=s.co2,
-                )
-                for s, rows in zip(new, touched, strict=True)
-            ]
+            changes = [self._change(s, rows) for s, rows in zip(new, touched, strict=True)]
             for s, rows, prediction in zip(new, touched, self.repredict(changes), strict=True):
                 self._known[s] = (rows, prediction.ph - layout.ph[rows])
-                if s.form:
-                    self._unsure[s] = _of_constants(prediction, rows)
         return [self._known[s] for s in supposed]
 
-    def unsure(self, supposed: Supposed, beside: frozenset[str]) -> sparse.csc_array:
-        """What the constants of a supposed form leave unsure: u(pKa) dpH/dpKa, one column a constant [pH].
-
-        beside : acids whose constants are in the model already. Columns have unit variance; (n, number of constants)
-        """
-        self.shifts([supposed])
-        parts = [part for (acid, _), part in sorted(self._unsure.get(supposed, {}).items()) if acid not in beside]
-        n = len(self.layout)
-        if not parts:
-            return sparse.csc_array((n, 0))
-        rows = np.concatenate([rows for rows, _ in parts])
-        column = np.repeat(np.arange(len(parts)), [len(rows) for rows, _ in parts])
-        values = np.concatenate([value for _, value in parts])
-        return sparse.csc_array((values, (rows, column)), shape=(n, len(parts)))
-
-
-def _of_constants(prediction: Prediction, rows: IntArray) -> dict[tuple[str, int], tuple[IntArray, FloatArray]]:
-    """By constant: the evidence rows that feel it, and by how much for one standard uncertainty [pH]."""
-    t = prediction.constants
-    moved = t.value * prediction.constant_u[t.column]
-    found = {}
-    for column in np.unique(t.column[np.abs(moved) > 1e-4]).tolist():
-        mine = t.column == column
-        found[prediction.constant_names[column]] = (rows[t.row[mine]], moved[mine])
-    return found
+    def prediction(self, supposed: Supposed) -> tuple[IntArray, Prediction]:
+        """The evidence rows a supposed truth touches, and their whole prediction under it; kept for few."""
+        key = ("prediction", supposed)
+        if key not in self.kept:
+            rows = self._rows(supposed)
+            self.kept[key] = (rows, self.repredict([self._change(supposed, rows)])[0])
+        found: tuple[IntArray, Prediction] = self.kept[key]
+        return found

@@ -12,6 +12,7 @@ from scipy import sparse
 
 from reconcile.auditor.components import Model
 from reconcile.auditor.proposals import CLASSES, Context, FaultKind, Proposal, Told
+from reconcile.auditor.retrial import Supposed
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 
 LEAST_INFORMATION = 1e-6
@@ -22,7 +23,7 @@ class Candidate:
     """One explanation, taken out of the pool: its effect, and how to tell it.
 
     x : sparse (n, 1), effect at amplitude 1
-    unsure : sparse (n, m), what its own constants leave unsure about it, as columns of unit variance; None for nothing
+    supposed : the truth it supposes of recipes, None where it supposes none
     """
 
     kind: str
@@ -39,7 +40,7 @@ class Candidate:
     own: tuple[int, ...]
     proposal: Proposal
     index: int
-    unsure: sparse.csc_array | None = None
+    supposed: Supposed | None = None
 
     @property
     def key(self) -> tuple[object, ...]:
@@ -137,7 +138,7 @@ class Pool:
             own=p.own[i] if len(p.own) else (),
             proposal=p,
             index=i,
-            unsure=None if p.unsure is None else p.unsure(i),
+            supposed=None if p.supposed is None else p.supposed(i),
         )
 
 
@@ -168,22 +169,6 @@ def _own(proposal: Proposal) -> IntArray | None:
     if not len(proposal.own):
         return None
     return np.array([own[0] if len(own) == 1 else -1 for own in proposal.own], np.intp)
-
-
-def gain_if_unsure(model: Model, x: sparse.csc_array, unsure: sparse.csc_array) -> float:
-    """Log-likelihood gain of a supposed truth whose effect is not sure: the variance is recomputed under it.
-
-    x : sparse (n, 1); unsure : sparse (n, m) columns of unit variance that join V under the supposition
-    """
-    effect = x.toarray().ravel()
-    p_effect = model.project(effect)
-    at_one = float(effect @ model.pr - 0.5 * effect @ p_effect)
-    if not unsure.shape[1]:
-        return at_one
-    columns = unsure.toarray()
-    inner = np.eye(columns.shape[1]) + columns.T @ model.project(columns)
-    left = columns.T @ (model.pr - p_effect)
-    return at_one + 0.5 * float(left @ np.linalg.solve(inner, left)) - 0.5 * float(np.linalg.slogdet(inner)[1])
 
 
 @dataclass(frozen=True)

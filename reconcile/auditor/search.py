@@ -71,7 +71,7 @@ class Search(Judge):
                     continue
                 others = [c.candidate for i, c in enumerate(chosen) if i != j]
                 pool, model, scores = self.scored(components, others)
-                present = self.support(chosen[j].candidate, pool, model)
+                present = self.support(chosen[j].candidate, pool, model, others)
                 found = self.supported(pool, model, scores, others)
                 if found and found[0].marginal > present.marginal + SWAP_GAIN:
                     changed |= found[0].candidate.key != chosen[j].candidate.key
@@ -95,7 +95,7 @@ class Search(Judge):
         _, r = self.fixed_and_rest([c for c in candidates if c.point])
         free = [c for c in candidates if not c.point]
         model = model_of(self.layout_with(candidates), components, None, (), r)
-        value = -0.5 * float(r @ model.pr)
+        value = -0.5 * (float(r @ model.pr) + model.log_det)
         if free:
             x = sparse.csc_array(sparse.hstack([c.x for c in free]))
             slope = np.asarray(x.T @ model.pr).ravel()
@@ -148,5 +148,5 @@ class Search(Judge):
         for j, one in enumerate(state.chosen):
             others = [c.candidate for i, c in enumerate(state.chosen) if i != j]
             pool, model, _ = self.scored(state.components, others)
-            chosen.append(self.support(one.candidate, pool, model))
+            chosen.append(self.support(one.candidate, pool, model, others))
         return replace(state, chosen=tuple(sorted(chosen, key=lambda c: (-c.gain, str(c.candidate.key)))))

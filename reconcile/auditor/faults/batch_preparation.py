@@ -64,14 +64,17 @@ class BatchPreparation:
             return None
         x = stack([(rows, value) for _, _, rows, value in found], len(layout))
         promising = [i for i, (batch, *_) in enumerate(found) if batch in room]
+        likely: dict[int, Supposed | None] = {}
         if promising:
-            exact = secants(context, [(found[i][1],) for i in promising], x[:, promising])
+            exact, at = secants(context, [(found[i][1],) for i in promising], x[:, promising])
+            likely = dict(zip(promising, at, strict=True))
             rest = np.setdiff1d(np.arange(len(found)), promising)
             order = np.argsort(np.r_[promising, rest])
             x = sparse.csc_array(sparse.csc_array(sparse.hstack([exact, x[:, rest]]))[:, order])
         whole = [Supposed((found[i][1],), factor=f) for i in promising for f in (DOUBLED, LEFT_OUT)]
         kept, at_one = points(context, whole)
         of = list(range(len(found))) + [promising[k // 2] for k in kept]
+        likely.update({len(found) + i: whole[k] for i, k in enumerate(kept)})
         factors = [float("nan")] * len(found) + [whole[k].factor for k in kept]
         count = np.bincount([b for b, *_ in found], minlength=len(layout.batches))
 
@@ -105,6 +108,7 @@ class BatchPreparation:
             tell,
             same=[component_name(context, found[i][1]) for i in of],
             blocks=blocks,
+            supposed=likely.get,
         )
 
 

@@ -93,7 +93,7 @@ class LotIdentity:
             np.array([m[3] for m in meant]),
             np.ones(len(meant), bool),
             tell,
-            unsure=lambda k: context.retrial.unsure(meant[k][-1], acids),
+            supposed=lambda k: meant[k][-1],
             same=[f"{m[1].form.name} {m[2]:.3g}" for m in meant],
         )
 

@@ -77,6 +77,7 @@ class RecipeSlip:
             -np.log(count[batch]) - np.log(2.0),
             np.ones(len(meant), bool),
             tell,
+            supposed=lambda k: meant[k][2],
             same=[f"{component_name(context, m[1])} {m[3]} {m[2].form}" for m in meant],
         )
 

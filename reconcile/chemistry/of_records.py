@@ -80,7 +80,7 @@ def laid_out(records: BatchRecords, settings: Settings) -> Record:
     return Record(
         records,
         settings,
-        acid_table(),
+        acid_table(settings["prediction.pk_equations"]),
         activity_model(settings["prediction.activity_model"]),
         temperature,
         u_temperature,

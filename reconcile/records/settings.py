@@ -92,6 +92,9 @@ SETTINGS: tuple[Setting, ...] = (
     Setting("uncertainty", "preparation_percent", 0.3, "%, half-width", "common practice, no source"),
     Setting("uncertainty", "temperature_k", 0.5, "K, half-width", "common practice, no source"),
     Setting("uncertainty", "room_temperature_k", 2.0, "K, half-width", "common practice, no source"),
+    Setting(
+        "uncertainty", "stock_ph", 0.05, "pH, half-width", "a stock's stated pH has one decimal, and it was read once"
+    ),
     Setting("uncertainty", "noise_floor", 0.005, "pH, standard deviation", "common practice, no source"),
     Setting("uncertainty", "davies_coefficient", 0.1, "-, standard uncertainty", "Davies' 0.3 is quoted as 0.2 to 0.4"),
     Setting(

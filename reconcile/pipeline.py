@@ -60,10 +60,8 @@ def read(*paths: FilePath, settings: SettingsLike = None, columns: ColumnsLike =
 
     Raises
     ------
-    InputProblems
-        A file is refused; all that stops the import is in `problems`.
-    SettingsError
-        The settings name a key that does not exist, or a value that it cannot take.
+    InputProblems, SettingsError
+        A file is refused (all that stops the import is in `problems`); no such setting, or no such value of it.
     """
     return _read(paths, settings_of(settings), columns)
 
@@ -103,7 +101,8 @@ def predict_records(records: BatchRecords, settings: SettingsLike = None) -> Pre
     """Predicted pH of every used reading of a record, (n,), in the order of `records.readings`."""
     from reconcile.chemistry.predict import predict_records as predict
 
-    return predict(records, settings_of(settings))
+    chosen = settings_of(settings)
+    return predict(_record([records], chosen, None), chosen)
 
 
 def audit(
@@ -155,14 +154,15 @@ def audit(
 def _record(
     source: Sequence[FilePath | BatchRecords], settings: Settings, columns: ColumnsLike, names: Catalogue | None = None
 ) -> BatchRecords:
-    """The record that files hold, or the one that was given; raises TypeError for a mixture."""
+    """The record of files, or the one given, with the amounts that a pH settles; raises TypeError for a mixture."""
+    from reconcile.chemistry.adjusted import with_adjustments
     from reconcile.records.book import BatchRecords
 
     books = [one for one in source if isinstance(one, BatchRecords)]
     paths = [one for one in source if not isinstance(one, BatchRecords)]
     if books and (paths or len(books) > 1):
         raise TypeError("expected files, or one BatchRecords")
-    return books[0] if books else _read(paths, settings, columns, names)
+    return with_adjustments(books[0] if books else _read(paths, settings, columns, names), settings)
 
 
 def meters(

@@ -10,7 +10,7 @@ from scipy import linalg, optimize, sparse, special, stats
 from reconcile.auditor.components import Model
 from reconcile.auditor.scoring import Candidate, Pool
 from reconcile.auditor.tails import TAILS
-from reconcile.records.arrays import BoolArray, FloatArray
+from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 
 PRIOR_DF = 30.0
 """Degrees of freedom behind a stated accuracy or tolerance: reliable to about 13 % (JCGM 100:2008, G.4.2, eq. G.3)."""
@@ -25,15 +25,15 @@ CERTAIN = 1e-6
 """Family-wise probability under which the plain Bonferroni bound is given instead of a simulated one."""
 
 
-def score_df(model: Model, x: sparse.csc_array) -> FloatArray:
+def score_df(model: Model, x: sparse.csc_array, own: IntArray | None = None) -> FloatArray:
     """Degrees of freedom of the t law that each column's score follows in a clean record, FloatArray (laws, k).
 
     One row for each law of the noise in tails.TAILS. The score is normal only if the spreads are known and the noise is
     normal. Spreads known with limited degrees of freedom and heavy-tailed noise are met by a t law of the same
     kurtosis, their contributions weighted by their shares of the score's variance (Welch-Satterthwaite, JCGM 100:2008,
-    G.4.1, for the first).
+    G.4.1, for the first). own : column of layout.z that each column is, where they are such.
     """
-    shares = model.shares(x)
+    shares = model.shares(x, own)
     share = shares.noise
     df_known = np.full(len(model.g), PRIOR_DF)
     constants = model.layout.effects["constant"]

@@ -67,8 +67,12 @@ class BaseModel:
         if not self.m.size:
             return np.asarray(self.m)
         half, _ = linalg.lapack.dpotri(self.factor, lower=1)
-        lower = np.tril(half, -1)
-        return np.asarray(lower + lower.T + np.diag(np.diag(half)))
+        for first in range(0, len(half), CHUNK):  # mirrored a strip at a time
+            last = first + CHUNK
+            corner = half[first:last, first:last]
+            corner[:] = np.tril(corner) + np.tril(corner, -1).T
+            half[first:last, last:] = half[last:, first:last].T
+        return np.asarray(half, float)
 
     @cached_property
     def variance(self) -> FloatArray:
@@ -95,6 +99,19 @@ class BaseModel:
         """Z' W x of sparse columns, (q, k)."""
         shared = sparse.csc_array(self.grouped.block.T @ x)
         return sparse.csc_array(self.weighted.T @ x - self.shared.T @ shared)
+
+    def taken_up(self, x: sparse.csc_array, own: IntArray | None) -> FloatArray:
+        """Z' K x = M^-1 Z' W x, (q, k); for columns of the design itself it is read off the inverse."""
+        at = np.full(x.shape[1], -1) if own is None else np.where(own >= 0, self.place[own], -1)
+        found = np.empty((len(self.m), x.shape[1]))
+        mine, others = np.flatnonzero(at >= 0), np.flatnonzero(at < 0)
+        if len(mine):
+            effects = -self.inverse[:, at[mine]]
+            effects[at[mine], np.arange(len(mine))] += 1.0
+            found[:, mine] = effects / np.sqrt(self.g[own[mine]] if own is not None else 1.0)
+        if len(others):
+            found[:, others] = self.solved(self.cross(sparse.csc_array(x[:, others])).toarray())
+        return found
 
     def quadratic(self, x: sparse.csc_array, cross: sparse.csc_array | None = None) -> FloatArray:
         """x' K x of each sparse column, (k,)."""

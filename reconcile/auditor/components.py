@@ -101,8 +101,8 @@ class Model:
         """X' P X, FloatArray (k, k)."""
         return np.asarray(x.T @ self.project(x.toarray()))
 
-    def shares(self, x: sparse.csc_array) -> Shares:
-        """What each column's score is made of in a clean record."""
+    def shares(self, x: sparse.csc_array, own: IntArray | None = None) -> Shares:
+        """What each column's score is made of in a clean record; own : column of layout.z that each one is."""
         column = x.toarray()
         px = self.project(column)
         size = np.einsum("ij,ij->j", px, column)

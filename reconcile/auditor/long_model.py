@@ -108,7 +108,7 @@ class LongModel(Model):
         half = self.u[rows].T @ dense
         return np.asarray(found + half.T @ self.core @ half, float)
 
-    def shares(self, x: sparse.csc_array) -> Shares:
+    def shares(self, x: sparse.csc_array, own: IntArray | None = None) -> Shares:
         """As for a short model; of what is left beside meters, lots and constants, noise has its local share."""
         grouped, k = self.base.grouped, x.shape[1]
         px = sparse.csc_array(sparse.diags_array(1.0 / grouped.d) @ x - grouped.block @ (grouped.block.T @ x))
@@ -117,14 +117,14 @@ class LongModel(Model):
         total = np.asarray(of_noise.sum(axis=0)).ravel()
         fourth = np.asarray(of_noise.multiply(of_noise).sum(axis=0)).ravel()
         local = np.maximum(grouped.quadratic(x), 1e-12)
-        size = np.maximum(self.quadratic(x), 1e-12)
+        size = np.maximum(self.information(x, np.full(k, np.inf), own), 1e-12)
         known = np.zeros((len(self.columns), k))
-        c = self.base.cross(x)
+        carried = np.asarray(self.base.z.T @ self.u)
         for first in range(0, k if self.base.factor.size else 0, CHUNK):
             part = slice(first, min(first + CHUNK, k))
-            effects = self.base.inverse @ c[:, part].toarray()
+            effects = self.base.taken_up(sparse.csc_array(x[:, part]), None if own is None else own[part])
             if self.core.size:
-                effects += (self.base.z.T @ self.u) @ (self.core @ np.asarray(self.u.T @ x[:, part]))
+                effects += carried @ (self.core @ np.asarray(self.u.T @ x[:, part]))
             known[:, part] = effects[: len(self.columns)] ** 2 / size[part]
         rest = np.clip(1.0 - known.sum(axis=0), 0.0, 1.0)
         return Shares(rest * np.minimum(total / local, 1.0), fourth / np.maximum(total, 1e-12) ** 2, known)

@@ -14,8 +14,9 @@ from reconcile.auditor.estimates import critical_score
 from reconcile.auditor.faults.meter_span import LEAST_SPREAD
 from reconcile.auditor.faults.meter_temperature import LEAST_SPREAD_K
 from reconcile.auditor.layout import Layout, matrix, one_hot
+from reconcile.auditor.long_critical import critical_scores
 from reconcile.auditor.scoring import Pool
-from reconcile.records.arrays import FloatArray
+from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.results import Silence
 
 FEW = 3
@@ -94,8 +95,9 @@ def smallest_detectable(layout: Layout, model: Model, pool: Pool, power: float, 
     ):
         if not names:
             continue
-        needed = _critical(model, pool, kind, names, x, rate)
-        information = model.quadratic(x)
+        own = np.arange(len(names)) + layout.effects[subject_type].first
+        needed = _critical(model, pool, kind, names, x, own, rate)
+        information = model.information(x, np.full(len(names), np.inf), own)
         with np.errstate(divide="ignore"):
             size = (needed + stats.norm.ppf(power)) / np.sqrt(np.maximum(information, 1e-12))
         for name, value in zip(names, size.tolist(), strict=True):
@@ -110,7 +112,7 @@ def smallest_detectable(layout: Layout, model: Model, pool: Pool, power: float, 
 
 
 def _critical(
-    model: Model, pool: Pool, kind: str, names: tuple[str, ...], x: sparse.csc_array, rate: float
+    model: Model, pool: Pool, kind: str, names: tuple[str, ...], x: sparse.csc_array, own: IntArray, rate: float
 ) -> FloatArray:
     """Score that a fault of each subject must pass, with the tails of its own law."""
     alarm = Alarm(pool, model)
@@ -120,7 +122,10 @@ def _critical(
         if proposal.kind == kind:
             members.update({str(s): offset + i for i, s in enumerate(proposal.subject)})
         offset += len(proposal)
-    df = score_df(model, x)
+    df = score_df(model, x, own)
+    if model.long:
+        at = np.array([members.get(name, -1) for name in names], np.intp)
+        return critical_scores(alarm, at, df, rate, zlib.crc32(b"meter" if kind.startswith("meter") else b"lot"))
     needed = np.empty(len(names))
     for i, name in enumerate(names):
         k = members.get(name)

@@ -10,6 +10,8 @@ from pathlib import Path
 
 import numpy as np
 
+from reconcile.chemistry.ion_data import interaction_matrix, read_sizes, truesdell_jones
+from reconcile.chemistry.pka_law import NEVER, Laws, Terms, laws
 from reconcile.chemistry.temperature import U_KNOWN_DCP, U_KNOWN_DH, U_MISSING_DCP, U_MISSING_DH, van_t_hoff
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 
@@ -67,6 +69,7 @@ class AcidTable:
     pka, u, u_dh, u_dcp : FloatArray (q,)   at 25 °C and I = 0; u of enthalpy and heat capacity as temperature.py has it
     p, q, r : FloatArray (q,)  pKa(T) = p + q/T + r ln T
     size : FloatArray (a + q,) ion size [angstrom] of every protonation state; those of acid i start at first[i] + i
+    use_equations : whether published equations give pKa(T) where there is one (pka_law.py)
     """
 
     names: tuple[str, ...]
@@ -82,25 +85,71 @@ class AcidTable:
     q: FloatArray
     r: FloatArray
     size: FloatArray
+    use_equations: bool = False
 
     @cached_property
     def index(self) -> Mapping[str, int]:
         return {name: i for i, name in enumerate(self.names)}
 
     @cached_property
-    def by_step(self) -> tuple[FloatArray, FloatArray, FloatArray, IntArray]:
-        """p, q, r of pKa(T) and the index of the constant, (steps, a + 1): one row a step, the last column for no acid.
+    def laws(self) -> Laws:
+        """pKa against temperature of every constant; of those behind `rows`, p, q and r alone."""
+        owner = np.repeat(np.arange(len(self.names)), self.steps)
+        charge = self.charge[owner] - (np.arange(len(owner)) - self.first[owner])
+        return laws(self.p, self.q, self.r, charge, self.constant_names, self.use_equations)
 
-        A step that an acid does not have gets an infinite pKa (its constant is then 0) and the index -1.
+    def pka_at(self, constant: IntArray, temperature_c: FloatArray) -> FloatArray:
+        """pKa at I = 0 of some constants (indices), each at its temperature [°C]."""
+        return self.laws.value(constant, temperature_c)
+
+    @cached_property
+    def by_step(self) -> tuple[Terms, FloatArray, IntArray]:
+        """Terms of pKa(T), the upper ends of the equations, and the index of each constant, one row a step.
+
+        Columns (a + 1) are acids, the last one for no acid; the Terms have them twice, first within, then beyond the
+        range of an equation, and an acid's range ends where that of any of its equations does. A step that an acid
+        does not have gets an infinite pKa (its constant is then 0) and the index -1.
         """
-        shape = (int(self.steps.max(initial=1)), len(self.names) + 1)
-        p, q, r = np.full(shape, np.inf), np.zeros(shape), np.zeros(shape)
-        which = np.full(shape, -1, np.intp)
+        width = len(self.names) + 1
+        shape = (int(self.steps.max(initial=1)), 2 * width)
+        known = self.laws
+        parts = {name: np.zeros(shape) for name in ("p", "q", "r", "t", "w")}
+        parts["p"][:] = np.inf
+        which = np.full((shape[0], width), -1, np.intp)
+        edge = np.full(width, NEVER)
         for step in range(shape[0]):
             has = np.flatnonzero(self.steps > step)
             at = self.first[has] + step
-            p[step, has], q[step, has], r[step, has], which[step, has] = self.p[at], self.q[at], self.r[at], at
-        return p, q, r, which
+            which[step, has] = at
+            edge[has] = np.maximum(edge[has], known.edge_c[at])
+            for name, values in parts.items():
+                values[step, has] = getattr(known.within, name)[at]
+                values[step, width + has] = getattr(known.beyond, name)[at]
+        return Terms(**parts), edge, which
+
+    @cached_property
+    def states(self) -> tuple[tuple[str, int, int], ...]:
+        """(acid, protons lost, charge) of every protonation state, in the order of `size`."""
+        return tuple(
+            (name, lost, int(charge) - lost)
+            for name, charge, steps in zip(self.names, self.charge, self.steps, strict=True)
+            for lost in range(int(steps) + 1)
+        )
+
+    def state_of(self, acid: IntArray, lost: int) -> IntArray:
+        """Index of a protonation state of some acids; an acid's last state where it cannot lose as many protons."""
+        safe = np.minimum(acid, len(self.names) - 1)
+        return np.asarray(self.first[safe] + safe + np.minimum(lost, self.steps[safe]))
+
+    @cached_property
+    def sizes_and_linear(self) -> tuple[FloatArray, FloatArray]:
+        """Size [angstrom] and linear coefficient over charge squared [kg/mol] of every state (a + q,)."""
+        return truesdell_jones(self.states, self.size)
+
+    @cached_property
+    def interactions(self) -> FloatArray:
+        """Coefficient of specific interaction of every state, then of H+ and OH-, with every strong ion [kg/mol]."""
+        return interaction_matrix(self.states)
 
     @property
     def constant_names(self) -> tuple[tuple[str, int], ...]:
@@ -162,7 +211,11 @@ def _check(acid: str, rows: list[Ionization]) -> None:
             raise ValueError(f"acids: {acid}, step {r.step} has no source")
 
 
-def build(rows: Iterable[Ionization], sizes: Mapping[tuple[str, int], float] | None = None) -> AcidTable:
+def build(
+    rows: Iterable[Ionization],
+    sizes: Mapping[tuple[str, int], float] | None = None,
+    use_equations: bool = False,
+) -> AcidTable:
     """An AcidTable from rows grouped by acid; raises ValueError for steps, charges or constants that cannot be."""
     grouped: dict[str, list[Ionization]] = {}
     for row in rows:
@@ -197,6 +250,7 @@ def build(rows: Iterable[Ionization], sizes: Mapping[tuple[str, int], float] | N
             ],
             float,
         ),
+        use_equations=use_equations,
     )
 
 
@@ -205,13 +259,7 @@ def usual_size(charge: int) -> float:
     return {0: 4.5, 1: 4.5, 2: 5.0}.get(abs(charge), 5.0)
 
 
-def read_sizes(path: Path) -> dict[tuple[str, int], float]:
-    """Published ion sizes [angstrom], (acid, protons lost) -> size."""
-    with path.open(encoding="utf-8", newline="") as file:
-        return {(r["acid"], int(r["protons_lost"])): float(r["size_angstrom"]) for r in csv.DictReader(file)}
-
-
 @cache
-def acid_table() -> AcidTable:
-    """The acids that come with the package."""
-    return build(read_acids(FOLDER / "acids.csv"), read_sizes(FOLDER / "ion_sizes.csv"))
+def acid_table(use_equations: bool = True) -> AcidTable:
+    """The acids that come with the package, with or without published equations for pKa(T)."""
+    return build(read_acids(FOLDER / "acids.csv"), read_sizes(), use_equations)

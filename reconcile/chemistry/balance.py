@@ -3,13 +3,16 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from reconcile.chemistry.activity import SIZE_HYDROGEN, SIZE_HYDROXIDE, ActivityModel
-from reconcile.chemistry.composition import Chunk, Slot
 from reconcile.chemistry.temperature import LN10
 from reconcile.records.arrays import FloatArray
+
+if TYPE_CHECKING:
+    from reconcile.chemistry.composition import Chunk, Slot
 
 
 @dataclass(frozen=True)
@@ -53,14 +56,18 @@ def activity(chunk: Chunk, model: ActivityModel, strength: FloatArray) -> Activi
         return Activity(d, d_i, d, d, None, g2)
     h = model.exponent(chunk.a, chunk.b, strength, np.array(SIZE_HYDROGEN))[0]
     oh = model.exponent(chunk.a, chunk.b, strength, np.array(SIZE_HYDROXIDE))[0]
-    return Activity(d, d_i, h, oh, [model.exponent(chunk.a, chunk.b, strength, s.size)[0] for s in chunk.slots], g2)
+    states = [
+        model.exponent(chunk.a, chunk.b, strength, s.size, s.linear if model.linear else 0.0)[0] for s in chunk.slots
+    ]
+    return Activity(d, d_i, h, oh, states, g2)
 
 
 def free_ions(chunk: Chunk, act: Activity, ph: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
     """Molality of H+ and of OH-, and 10^(pH + D), from which the weights of the states are made."""
     raised = np.exp(LN10 * (ph + act.d))
     if act.states is None:
-        return act.g2 / raised, chunk.kw * raised, raised
+        h = act.g2 / raised
+        return h if chunk.hydrogen is None else h * chunk.hydrogen, chunk.kw * raised, raised
     return np.exp(LN10 * (act.hydrogen - ph)), chunk.kw * np.exp(LN10 * (act.hydroxide + ph)), raised
 
 

@@ -8,6 +8,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from reconcile.chemistry.acids import AcidTable
+from reconcile.chemistry.activity import ActivityModel
+from reconcile.chemistry.ion_data import strong_ions
+from reconcile.chemistry.specific import interact
 from reconcile.chemistry.temperature import LN10, Solvent
 from reconcile.chemistry.water import ZERO_CELSIUS
 from reconcile.records.arrays import FloatArray, IntArray
@@ -22,12 +25,20 @@ class FormTable:
     square : FloatArray (f,)     sum of their number times charge squared
     acid : IntArray (w, f)       acids brought; -1 for none
     units : FloatArray (w, f)    units of each
+    strong : FloatArray (f, i)   number of each strong ion, in the order of ion_data.strong_ions; where it is left out,
+                                 ions of a form do not interact
     """
 
     charge: FloatArray
     square: FloatArray
     acid: IntArray
     units: FloatArray
+    strong: FloatArray | None = None
+
+    @property
+    def brings(self) -> FloatArray:
+        """Number of each strong ion in each form (f, i); 0 where that is not known."""
+        return np.zeros((len(self.charge), len(strong_ions()))) if self.strong is None else self.strong
 
 
 def form_table(forms: Sequence[Form], acids: AcidTable) -> FormTable:
@@ -37,8 +48,11 @@ def form_table(forms: Sequence[Form], acids: AcidTable) -> FormTable:
     width = max((len(f.acids) for f in forms), default=0) or 1
     charge, square = np.zeros(len(forms)), np.zeros(len(forms))
     acid, units = np.full((width, len(forms)), -1, np.intp), np.zeros((width, len(forms)))
+    place = {name: i for i, name in enumerate(strong_ions())}
+    strong = np.zeros((len(forms), len(place)))
     for i, form in enumerate(forms):
         for ion, number in form.strong_ions.items():
+            strong[i, place[ion]] += number
             charge[i] += number * charges[ion]
             square[i] += number * charges[ion] ** 2
         for slot, (name, number) in enumerate(form.acids.items()):
@@ -46,7 +60,7 @@ def form_table(forms: Sequence[Form], acids: AcidTable) -> FormTable:
                 raise ValueError(f"{form.name} brings {name}, which the table of acids does not hold")
             acid[slot, i] = index[name]
             units[slot, i] = number
-    return FormTable(charge, square, acid, units)
+    return FormTable(charge, square, acid, units, strong)
 
 
 @dataclass(frozen=True)
@@ -81,6 +95,7 @@ class Slot:
     closed : FloatArray (m,)     1; 0 where the air holds the first state's molality. None where all are closed
     acid : IntArray (m,)         index of the acid; the number of acids where the row has none here
     size : FloatArray (s + 1, m) ion size of each state [angstrom]; empty unless the model asks for it
+    linear : FloatArray (s + 1, m) linear coefficient over charge squared [kg/mol]; empty unless the model asks for it
     """
 
     k: FloatArray
@@ -90,6 +105,7 @@ class Slot:
     closed: FloatArray | None
     acid: IntArray
     size: FloatArray
+    linear: FloatArray
 
     def take(self, keep: IntArray) -> Slot:
         return Slot(
@@ -100,6 +116,7 @@ class Slot:
             None if self.closed is None else self.closed.take(keep),
             self.acid.take(keep),
             self.size.take(keep, axis=1) if self.size.size else self.size,
+            self.linear.take(keep, axis=1) if self.linear.size else self.linear,
         )
 
 
@@ -110,6 +127,7 @@ class Chunk:
     charge : net charge of the strong ions and of every acid if fully protonated [mol/kg]
     strong : net charge of the strong ions alone; square : their sum of molality times charge squared
     a, b : Debye-Hueckel coefficients; kw : ionization constant of water. All (m,).
+    hydrogen : what multiplies the molality of hydrogen ions beside D; None for 1
     """
 
     charge: FloatArray
@@ -119,6 +137,7 @@ class Chunk:
     b: FloatArray
     kw: FloatArray
     slots: list[Slot]
+    hydrogen: FloatArray | None = None
 
     def __len__(self) -> int:
         return len(self.charge)
@@ -132,6 +151,7 @@ class Chunk:
             self.b.take(keep),
             self.kw.take(keep),
             [slot.take(keep) for slot in self.slots],
+            None if self.hydrogen is None else self.hydrogen.take(keep),
         )
 
 
@@ -165,7 +185,7 @@ def entries_at(start: IntArray, rows: IntArray) -> tuple[IntArray, IntArray]:
 
 
 def pad(
-    contents: Contents, rows: IntArray, forms: FormTable, acids: AcidTable, water: Solvent, sized: bool
+    contents: Contents, rows: IntArray, forms: FormTable, acids: AcidTable, water: Solvent, model: ActivityModel
 ) -> tuple[Chunk, Padding]:
     """The padded layout of some solutions; `water` has one entry for each of the rows."""
     m = len(rows)
@@ -198,12 +218,18 @@ def pad(
         short = np.any(cells.reshape(m, count + 1) < -ROUNDING, axis=1)
         strong = np.where(short, np.nan, strong)
         np.maximum(cells, 0.0, out=cells)
-    slots = _slots(cells, m, columns, opened if air else None, carbonic, acids, water, sized)
+    slots = _slots(cells, m, columns, opened if air else None, carbonic, acids, water, model)
     charge = strong
     for slot in slots:
         if not slot.neutral:
             charge = charge + slot.total * slot.charge
     chunk = Chunk(charge, strong, square, water.a, water.b, np.exp(-LN10 * water.pkw), slots)
+    if model.pairwise:
+        brings = forms.brings
+        molality = np.zeros((m, brings.shape[1]))
+        for ion in np.flatnonzero(brings.any(axis=0)):
+            molality[:, ion] = np.bincount(row, amount * brings[form, ion], m)
+        interact(chunk, molality, acids)
     return chunk, Padding(rows, entry, row, columns, place)
 
 
@@ -215,7 +241,7 @@ def _slots(
     carbonic: int,
     acids: AcidTable,
     water: Solvent,
-    sized: bool,
+    model: ActivityModel,
 ) -> list[Slot]:
     width = len(columns) + 1
     held = np.flatnonzero(totals != 0.0)  # over one axis and as truth values: several times faster
@@ -233,9 +259,10 @@ def _slots(
     total.ravel()[cell] = totals.take(held)
     kelvin = water.temperature_c + ZERO_CELSIUS
     same = m > 0 and bool(np.all(kelvin == kelvin[0]))
-    p, q, r, _ = acids.by_step
+    terms, edge, _ = acids.by_step
+    beyond = len(acids.names) + 1  # how far behind an acid's terms within the range of an equation stand the others
     if same:
-        at = np.exp(-LN10 * (p + q / kelvin[0] + r * np.log(kelvin[0])))
+        at = np.exp(-LN10 * terms.value(kelvin[0], water.pkw[0]))
     inverse, log = 1.0 / kelvin, np.log(kelvin)
     # the entry for no acid is the last of each of these, and of the columns of by_step
     charges, counted = np.append(acids.charge, 0.0), np.append(acids.steps, 0)
@@ -243,23 +270,29 @@ def _slots(
     for which, amount in zip(acid, total, strict=True):
         steps = counted.take(which)
         k = np.empty((int(steps.max(initial=0)), m))
+        column = which + beyond * (water.temperature_c > edge.take(which))
         for j in range(len(k)):
             if same:
-                k[j] = at[j].take(which)
+                k[j] = at[j].take(column)
                 continue
-            pka = q[j].take(which)
+            pka = terms.q[j].take(column)
             pka *= inverse
-            pka += p[j].take(which)
-            pka += r[j].take(which) * log
+            pka += terms.p[j].take(column)
+            pka += terms.r[j].take(column) * log
+            pka += terms.t[j].take(column) * kelvin
+            pka += terms.w[j].take(column) * water.pkw
             pka *= -LN10
             np.exp(pka, out=k[j])
-        size = np.zeros((0, m))
-        if sized:
-            safe = np.minimum(which, len(acids.names) - 1)
-            size = acids.size[acids.first[safe] + safe + np.minimum(np.arange(len(k) + 1)[:, None], steps)]
+        size = linear = np.zeros((0, m))
+        if model.sized:
+            state = np.stack([acids.state_of(which, lost) for lost in range(len(k) + 1)])
+            size = acids.size[state]
+            if model.linear:
+                own, over_square = acids.sizes_and_linear
+                size, linear = own[state], over_square[state]
         charge = charges.take(which)
         closed = None
         if opened is not None:
             closed = np.where((opened > 0.0) & (which == carbonic), 0.0, 1.0)
-        slots.append(Slot(k, charge, not charge.any(), amount, closed, which, size))
+        slots.append(Slot(k, charge, not charge.any(), amount, closed, which, size, linear))
     return slots

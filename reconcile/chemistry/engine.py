@@ -11,7 +11,8 @@ from reconcile.chemistry.activity import ActivityModel
 from reconcile.chemistry.composition import Contents, FormTable, pad
 from reconcile.chemistry.sensitivities import Slopes, slopes
 from reconcile.chemistry.solve import solve
-from reconcile.chemistry.temperature import U_PKW, Solvent, solvent, spread_factors
+from reconcile.chemistry.temperature import U_PKW, Solvent, solvent, spread_between
+from reconcile.chemistry.water import ZERO_CELSIUS
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 
 CHUNK = 8192
@@ -99,11 +100,13 @@ def _u_of_constants(some: Slopes, acids: AcidTable, water: Solvent) -> FloatArra
 
     Steps count as independent: published constants of one acid seldom come with their covariance.
     """
-    by_dh, by_dcp = spread_factors(water.temperature_c)
     at, value = some.constant, some.constant_value  # the index -1, for none, meets a slope of 0
+    kelvin = water.temperature_c[:, None] + ZERO_CELSIUS
+    reference = np.clip(kelvin, acids.laws.low_k[at], acids.laws.high_k[at])
+    by_dh, by_dcp = spread_between(kelvin, reference)
     u2 = (acids.u**2)[at]
-    u2 += (acids.u_dh**2)[at] * (by_dh**2)[:, None]
-    u2 += (acids.u_dcp**2)[at] * (by_dcp**2)[:, None]
+    u2 += (acids.u_dh**2)[at] * by_dh**2
+    u2 += (acids.u_dcp**2)[at] * by_dcp**2
     u2 *= value
     u2 *= value
     return np.asarray(np.sqrt(u2.sum(axis=1) + (some.d_pkw * U_PKW) ** 2))
@@ -141,7 +144,7 @@ def run(contents: Contents, forms: FormTable, acids: AcidTable, model: ActivityM
     for begin in range(0, n, CHUNK):
         rows = order[begin : begin + CHUNK]
         here = water_at(water, which[rows])
-        chunk, padding = pad(contents, rows, forms, acids, here, model.sized)
+        chunk, padding = pad(contents, rows, forms, acids, here, model)
         ph, strength, fine = solve(chunk, model)
         some = slopes(chunk, padding, contents, forms, acids, here, model, ph, strength)
         out["ph"][rows], out["ionic_strength"][rows], solved[rows] = ph, strength, fine

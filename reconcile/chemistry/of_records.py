@@ -11,9 +11,10 @@ from reconcile.chemistry.acids import AcidTable, acid_table
 from reconcile.chemistry.activity import ActivityModel, activity_model
 from reconcile.chemistry.composition import CARBONIC, Contents, entries_at, form_table
 from reconcile.chemistry.engine import Answers, Ragged, run
+from reconcile.chemistry.linked import linked
 from reconcile.chemistry.prediction import assemble, regrouped, triplets
 from reconcile.chemistry.solve import rows_alike
-from reconcile.chemistry.uncertainty import ROOT3, of_independent, of_lots
+from reconcile.chemistry.uncertainty import ROOT3, combined, of_independent, of_lots
 from reconcile.chemistry.water import DENSITY_20C, co2_solubility
 from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.book import BatchRecords
@@ -80,7 +81,7 @@ def laid_out(records: BatchRecords, settings: Settings) -> Record:
     return Record(
         records,
         settings,
-        acid_table(),
+        acid_table(settings["prediction.pk_equations"]),
         activity_model(settings["prediction.activity_model"]),
         temperature,
         u_temperature,
@@ -190,7 +191,19 @@ def predict_rows(record: Record, changes: Sequence[Change], change: IntArray, re
         record.model,
         record.settings,
     )
-    return _certified(record, prediction, solution)
+    chain = record.chain_start, record.chain_lot, record.u_lot
+    prediction = linked(records, prediction, reading, record.acids, record.u_taking, chain)
+    return _certified(record, _with_allowance(record, prediction, solution), solution)
+
+
+def _with_allowance(record: Record, prediction: Prediction, solution: IntArray) -> Prediction:
+    """The same, with the allowance of solutions that hold a substance declared without effect."""
+    marked = record.records.solutions.without_effect
+    if not len(marked) or not marked[solution].any():
+        return prediction
+    allowance = np.where(marked[solution], record.settings["substances.without_effect_allowance"], 0.0)
+    budget = {**prediction.budget, "declared without effect": allowance}
+    return replace(prediction, budget=budget, u=combined(budget))
 
 
 def _own(answers: Answers, supposed: _Supposed) -> Ragged:

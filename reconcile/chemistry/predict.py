@@ -100,8 +100,8 @@ def predict_ph(
         Temperature of the solution [°C]; NaN, or a value outside 0 to 100 °C, gives status not_solved.
     unit : {"mol/L", "mol/kg"}
         Unit of the amounts; mol/L is turned into mol/kg with the density of water at 20 °C.
-    activity_model : {"davies", "extended", "ideal"}, optional
-        By default that of the settings, davies.
+    activity_model : str, optional
+        A name of ACTIVITY_MODELS; by default that of the settings.
     settings : Settings, optional
         Defaults, statuses and uncertainties.
     u_amounts : array_like, optional
@@ -144,7 +144,7 @@ def predict_ph(
     if unit not in UNITS:
         raise ValueError(f"no unit of amounts is called {unit!r}; there are: {', '.join(UNITS)}")
     model = model_named(activity_model or settings["prediction.activity_model"])
-    acids = acids or acid_table()
+    acids = acids or acid_table(settings["prediction.pk_equations"])
     temperature = _per_row(temperature_c, n, "temperature_c")
     with np.errstate(invalid="ignore"):
         bad = ~np.all(np.isfinite(table) & (table >= 0.0), axis=1)

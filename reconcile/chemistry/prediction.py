@@ -7,7 +7,7 @@ from collections.abc import Mapping
 import numpy as np
 
 from reconcile.chemistry.acids import AcidTable
-from reconcile.chemistry.activity import ActivityModel
+from reconcile.chemistry.activity import DAVIES_RANGE, ActivityModel
 from reconcile.chemistry.composition import entries_at
 from reconcile.chemistry.engine import Answers, Ragged
 from reconcile.chemistry.uncertainty import combined, rows_of
@@ -18,7 +18,8 @@ from reconcile.records.settings import Settings
 
 def u_of_model(model: ActivityModel, settings: Settings) -> float:
     """Standard uncertainty of the model's uncertain coefficient."""
-    return float(settings["uncertainty.davies_coefficient"]) if model.u_coefficient is None else model.u_coefficient
+    u = model.u_coefficient
+    return float(settings[u]) if isinstance(u, str) else u
 
 
 def regrouped(part: Ragged, which: IntArray) -> Ragged:
@@ -40,7 +41,7 @@ def statuses(
 ) -> TextArray:
     """Status of every row: not_solved before outside_model, outside_electrode_range, unbuffered and ok."""
     highest = float(settings["status.outside_model_ionic_strength"])
-    if model.u_coefficient is not None or model.sized:
+    if model.highest < DAVIES_RANGE:
         highest = min(highest, model.highest)
     status = np.full(len(ph), "ok", object)
     with np.errstate(invalid="ignore"):

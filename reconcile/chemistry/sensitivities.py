@@ -2,15 +2,17 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
 from reconcile.chemistry.acids import AcidTable
 from reconcile.chemistry.activity import SIZE_HYDROGEN, SIZE_HYDROXIDE, ActivityModel
-from reconcile.chemistry.balance import Activity, activity, free_ions, weights
+from reconcile.chemistry.balance import activity, free_ions
 from reconcile.chemistry.composition import Chunk, Contents, FormTable, Padding
+from reconcile.chemistry.fractions import Found, fractions, spread
+from reconcile.chemistry.ion_data import TITRANT, strong_ions
+from reconcile.chemistry.specific import interaction_slopes
 from reconcile.chemistry.temperature import LN10, Solvent
 from reconcile.chemistry.water import DENSITY_20C, ZERO_CELSIUS, co2_solubility
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
@@ -35,16 +37,6 @@ class Slopes:
     constant: IntArray
     degree: FloatArray
     degree_acid: IntArray
-
-
-@dataclass(frozen=True)
-class _Found:
-    """Fractions of the states of one slot at the answer, and their means."""
-
-    f: list[FloatArray]
-    closed: FloatArray
-    lost: FloatArray
-    squares: FloatArray
 
 
 def slopes(
@@ -82,14 +74,14 @@ def slopes(
     """
     act = activity(chunk, model, strength)
     h, oh, raised = free_ions(chunk, act, ph)
-    found = _fractions(chunk, act, ph, raised)
+    found = fractions(chunk, act, ph, raised)
 
     by_i, by_t, by_c = _activity_slopes(chunk, model, water, strength, h, oh, found)
     f_ph, s_ph = -(h + oh), oh - h
     for slot, x in zip(chunk.slots, found, strict=True):
         lost = [np.array(float(j)) for j in range(len(x.f))]
-        var = _spread(x, lost, lost)
-        cov = _spread(x, lost, [(slot.charge - j) ** 2 for j in range(len(x.f))])
+        var = spread(x, lost, lost)
+        cov = spread(x, lost, [(slot.charge - j) ** 2 for j in range(len(x.f))])
         f_ph = f_ph - slot.total * var
         s_ph = s_ph + slot.total * cov
     f_ph, g_ph = LN10 * f_ph, -0.5 * LN10 * s_ph
@@ -108,7 +100,13 @@ def slopes(
             air = np.where(x.closed > 0.0, 0.0, slot.total * slope / solubility)
             d_temperature = d_temperature + air * (on_charge * (slot.charge - x.lost) + on_squares * x.squares)
 
-    entry = _entries(chunk, padding, contents, forms, found, on_charge, on_squares)
+    by_ion = None
+    if model.pairwise:
+        by_ion = interaction_slopes(chunk, forms, acids, h, oh, found, on_charge, on_squares)
+    entry = _entries(chunk, padding, contents, forms, found, on_charge, on_squares, by_ion)
+    d_titrant = on_charge + on_squares
+    if by_ion is not None:
+        d_titrant = d_titrant + by_ion[:, strong_ions().index(TITRANT)]
     degree = np.zeros((len(chunk), len(chunk.slots)))
     degree_acid = np.full(degree.shape, -1, np.intp)
     for number, (slot, x) in enumerate(zip(chunk.slots, found, strict=True)):
@@ -121,7 +119,7 @@ def slopes(
         d_temperature,
         on_charge * by_c[0] + on_squares * by_c[1],
         d_pkw,
-        (on_charge + on_squares) / DENSITY_20C,
+        d_titrant / DENSITY_20C,
         entry,
         constant_value,
         constant,
@@ -130,48 +128,17 @@ def slopes(
     )
 
 
-def _fractions(chunk: Chunk, act: Activity, ph: FloatArray, raised: FloatArray) -> list[_Found]:
-    out = []
-    for i, slot in enumerate(chunk.slots):
-        some = weights(slot, ph, act, raised, i)
-        whole = np.ones_like(ph)
-        for w in some:
-            whole += w
-        whole = 1.0 / whole
-        closed = np.array(1.0)
-        if slot.closed is not None:
-            closed = slot.closed
-            whole = np.where(closed > 0.0, whole, 1.0)
-        f = [whole, *(w * whole for w in some)]
-        lost, squares = np.zeros_like(ph), slot.charge**2 * whole
-        for j, share in enumerate(f[1:], start=1):
-            lost += j * share
-            squares += (slot.charge - j) ** 2 * share
-        out.append(_Found(f, closed, lost, squares))
-    return out
-
-
-def _spread(x: _Found, a: Sequence[FloatArray], b: Sequence[FloatArray]) -> FloatArray:
-    """Covariance of two quantities over the states; for an acid whose first state the air holds, the raw moment."""
-    mean_a, mean_b, both = (np.zeros_like(x.lost) for _ in range(3))
-    for share, p, q in zip(x.f, a, b, strict=True):
-        mean_a = mean_a + share * p
-        mean_b = mean_b + share * q
-        both = both + share * p * q
-    return both - x.closed * mean_a * mean_b
-
-
 Pair = tuple[FloatArray, FloatArray]
 
 
-def _response(chunk: Chunk, h: FloatArray, oh: FloatArray, found: list[_Found], e: list[list[FloatArray]]) -> Pair:
+def _response(chunk: Chunk, h: FloatArray, oh: FloatArray, found: list[Found], e: list[list[FloatArray]]) -> Pair:
     """Slopes of charge and of the sum of m z^2 when D changes by e: [hydrogen, hydroxide], then a list a slot."""
     charge, squares = h * e[0][0] - oh * e[0][1], h * e[0][0] + oh * e[0][1]
     for slot, x, d in zip(chunk.slots, found, e[1:], strict=True):
         z = [slot.charge - j for j in range(len(x.f))]
         moved = [c * c * slope for c, slope in zip(z, d, strict=True)]
-        charge = charge + slot.total * _spread(x, z, moved)
-        squares = squares + slot.total * _spread(x, [c * c for c in z], moved)
+        charge = charge + slot.total * spread(x, z, moved)
+        squares = squares + slot.total * spread(x, [c * c for c in z], moved)
     return LN10 * charge, LN10 * squares
 
 
@@ -182,12 +149,12 @@ def _activity_slopes(
     strength: FloatArray,
     h: FloatArray,
     oh: FloatArray,
-    found: list[_Found],
+    found: list[Found],
 ) -> tuple[Pair, Pair, Pair]:
     """Slopes of charge and sum of m z^2 in ionic strength, in temperature through A and B, in the coefficient."""
 
-    def three(size: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
-        _, d_i, d_a, d_b, d_c = model.exponent(chunk.a, chunk.b, strength, size)
+    def three(size: FloatArray, linear: FloatArray | float = 0.0) -> tuple[FloatArray, FloatArray, FloatArray]:
+        _, d_i, d_a, d_b, d_c = model.exponent(chunk.a, chunk.b, strength, size, linear)
         return d_i, d_a * water.d_a + d_b * water.d_b, d_c
 
     if not model.sized:
@@ -196,7 +163,7 @@ def _activity_slopes(
         d_i, d_t, d_c = three(np.array(0.0))
         return (charge * d_i, squares * d_i), (charge * d_t, squares * d_t), (charge * d_c, squares * d_c)
     hydrogen, hydroxide = three(np.array(SIZE_HYDROGEN)), three(np.array(SIZE_HYDROXIDE))
-    states = [three(slot.size) for slot in chunk.slots]
+    states = [three(slot.size, slot.linear if model.linear else 0.0) for slot in chunk.slots]
     i, t, c = (
         _response(chunk, h, oh, found, [[hydrogen[n], hydroxide[n]], *(list(s[n]) for s in states)]) for n in range(3)
     )
@@ -205,7 +172,7 @@ def _activity_slopes(
 
 def _constants(
     chunk: Chunk,
-    found: list[_Found],
+    found: list[Found],
     acids: AcidTable,
     water: Solvent,
     on_charge: FloatArray,
@@ -218,7 +185,8 @@ def _constants(
     d_temperature = np.zeros(len(chunk))
     kelvin = water.temperature_c + ZERO_CELSIUS
     cell = 0
-    which_constant = acids.by_step[3]
+    terms, edge, which_constant = acids.by_step
+    inverse, beyond = 1.0 / kelvin, len(acids.names) + 1
     for slot, x in zip(chunk.slots, found, strict=True):
         tail, tail_lost, tail_squares = (np.zeros(len(chunk)) for _ in range(3))
         for step in range(len(slot.k), 0, -1):
@@ -236,9 +204,12 @@ def _constants(
             )
             has = slot.k[step - 1] > 0.0
             q = which_constant[step - 1].take(slot.acid)
+            column = slot.acid + beyond * (water.temperature_c > edge.take(slot.acid))
+            warming = (terms.r[step - 1].take(column) - terms.q[step - 1].take(column) * inverse) * inverse
+            warming += terms.t[step - 1].take(column) + terms.w[step - 1].take(column) * water.d_pkw
             value[:, cell + step - 1] = slope
             which[:, cell + step - 1] = q
-            d_temperature += np.where(has, slope * (acids.r[q] / kelvin - acids.q[q] / kelvin**2), 0.0)
+            d_temperature += np.where(has, slope * warming, 0.0)
         cell += len(slot.k)
     return value, which, d_temperature
 
@@ -248,9 +219,10 @@ def _entries(
     padding: Padding,
     contents: Contents,
     forms: FormTable,
-    found: list[_Found],
+    found: list[Found],
     on_charge: FloatArray,
     on_squares: FloatArray,
+    by_ion: FloatArray | None,
 ) -> FloatArray:
     """dpH/d ln(amount) of every contribution, through its strong ions and its acids."""
     m = len(chunk)
@@ -268,4 +240,6 @@ def _entries(
         acid = forms.acid[w][form]
         column = padding.place[acid]  # -1, for none, finds the last place, which is that of none
         per_mole = per_mole + forms.units[w][form] * effect[row, column]
+    if by_ion is not None:
+        per_mole = per_mole + np.einsum("ei,ei->e", forms.brings[form], by_ion[row])
     return contents.amount[entry] * per_mole

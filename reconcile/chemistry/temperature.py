@@ -129,11 +129,15 @@ def spread_factors(temperature_c: FloatArray) -> tuple[FloatArray, FloatArray]:
     tuple of ndarray (n,)
         dpKa/d(dH) [mol/kJ] and -dpKa/d(dCp) [K mol/J]; both 0 at 25 °C.
     """
-    kelvin = temperature_c + ZERO_CELSIUS
+    return spread_between(np.asarray(temperature_c + ZERO_CELSIUS), np.array(T_REFERENCE))
+
+
+def spread_between(kelvin: FloatArray, reference: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """dpKa/d(dH) [mol/kJ] and -dpKa/d(dCp) [K mol/J] at a temperature [K], for values that hold at a reference [K]."""
     scale = 1.0 / (GAS_CONSTANT * LN10)
-    by_dh = 1000.0 * scale * (1.0 / kelvin - 1.0 / T_REFERENCE)
-    by_dcp = scale * (np.log(kelvin / T_REFERENCE) + T_REFERENCE / kelvin - 1.0)
-    return by_dh, by_dcp
+    by_dh = 1000.0 * scale * (1.0 / kelvin - 1.0 / reference)
+    by_dcp = scale * (np.log(kelvin / reference) + reference / kelvin - 1.0)
+    return np.asarray(by_dh), np.asarray(by_dcp)
 
 
 def u_at(u_25c: FloatArray, u_dh: FloatArray, u_dcp: FloatArray, temperature_c: FloatArray) -> FloatArray:

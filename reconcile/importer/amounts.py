@@ -23,6 +23,7 @@ _ADJUST = re.compile(
     r"adjust.*|ph\s*(?:to\s*)?[\d.,]+|titrate.*|drop\s?wise|a\.?r\.?|qs ph",
     re.IGNORECASE,
 )
+_STATED_PH = re.compile(r"ph\D{0,4}(\d[\d.,]*)", re.IGNORECASE)
 
 
 @dataclass
@@ -31,7 +32,8 @@ class Amounts:
 
     parsed : numbers, with the cells that are none of the kinds below in `bad`
     units : TextArray (n,), canonical unit written in the cell itself, "" where none
-    special : TextArray (n,), "adjust" (amount left to a pH), "fill" (made up to this), or ""
+    special : TextArray (n,), "adjust" (amount left to a pH, which is the number where it is said), "fill" (made up to
+        this), or ""
     """
 
     parsed: Parsed
@@ -70,7 +72,9 @@ def parse_amounts(cells: Sequence[Any], decimal: str, text_is_usual: bool) -> Am
 def _with_unit(text: str, bare: str, mark: str) -> Fault | tuple[float, str, str] | None:
     """(value, unit, special) of a text that is more than a number; None for anything that parse_numbers judges."""
     if _ADJUST.fullmatch(bare):
-        return np.nan, "", "adjust"
+        stated = _STATED_PH.search(bare)
+        number = number_of(stated.group(1).rstrip(".,"), mark) if stated else None
+        return (number[0] if number else np.nan), "", "adjust"
     if _FILL_ONLY.fullmatch(bare):
         return np.nan, "", "fill"
     fill = _FILL.match(bare)

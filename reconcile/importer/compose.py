@@ -11,6 +11,14 @@ from reconcile.importer.amounts import amount_words
 from reconcile.importer.cells import Fault
 from reconcile.importer.line_parts import Basis, LineReader, Part, anhydrous_mass, fraction_of
 from reconcile.importer.lines import QUANTITIES
+from reconcile.importer.open_amounts import (
+    OpenList,
+    adjusting_parts,
+    counter_parts,
+    is_open,
+    of_adjusted_stock,
+    settled_contents,
+)
 from reconcile.importer.stocks import Stock
 from reconcile.records.problems import Problem
 from reconcile.records.units import UNITS
@@ -39,6 +47,8 @@ class Composer:
         for i, group in enumerate(self.lines.group.tolist()):
             self.by_group.setdefault(group, []).append(i)
         self.group_of_batch: dict[str, int] = {}
+        self.batch_names: Sequence[str] = ()
+        self.open = OpenList()
         self._stocks: dict[tuple[str, str], list[tuple[Part, float]] | Problem] = {}
         self._open: list[str] = []
 
@@ -59,7 +69,14 @@ class Composer:
         stock = found.taken.stock
         if stock is not None and stock.batch:
             return self._from_batch(line, stock)
+        if found.form is not None:
+            return of_adjusted_stock(self, line, found)
         return self._multiple(line, found)
+
+    def batch_of(self, line: int) -> str:
+        """Batch whose recipe a line belongs to."""
+        group = int(self.lines.group[line])
+        return self.batch_names[group] if 0 <= group < len(self.batch_names) else ""
 
     def _multiple(self, line: int, basis: Basis) -> list[Part] | Problem:
         """A line such as "10x" of a stock of one substance."""
@@ -75,13 +92,14 @@ class Composer:
         u = float(np.hypot(self.reader.u_volume, self.reader.u_volume))
         chain = (taken.lot,) if taken.lot >= 0 else ()
         solute = anhydrous_mass(taken.form, self.resolver.catalogue.by_name)
-        return [Part(line, taken.form, taken.lot, "molar", molarity * fraction, solute, u, False, chain)]
+        part = Part(line, taken.form, taken.lot, "molar", molarity * fraction, solute, u, False, chain)
+        return [part, *(counter_parts(self, part, stock, molarity) if stock.adjusted else ())]
 
     # -- stocks made as batches -----------------------------------------------------------------------------------
 
     def _from_batch(self, line: int, stock: Stock) -> list[Part] | Problem:
         """A stock that is itself a batch: its parts, diluted."""
-        contents = self._contents(stock)
+        contents = self.contents(stock)
         if isinstance(contents, Problem):
             return contents
         L, u = self.lines, self.reader.u_volume
@@ -95,7 +113,7 @@ class Composer:
             how, factor, u = "molar", fraction, twice
         else:
             form = self.resolver.catalogue.look_up(L.substance[line]).form
-            inside = sum(c for p, c in contents if form is not None and p.form == form)
+            inside = sum(c for p, c in contents if form is not None and p.form == form and p.open < 0)
             if unit.measures != "molar" or not inside:
                 return self._fault(line, "batch-stock-amount")
             how, factor, u = "molar", x / inside, twice
@@ -116,7 +134,7 @@ class Composer:
             )
         return parts
 
-    def _contents(self, stock: Stock) -> list[tuple[Part, float]] | Problem:
+    def contents(self, stock: Stock) -> list[tuple[Part, float]] | Problem:
         """Parts of a stock with their concentration [mol/L] in it."""
         key = (stock.lot, stock.batch)
         if key in self._stocks:
@@ -138,7 +156,7 @@ class Composer:
                 return Problem("unit-needs", stock.place, "mol/kg", (("name", "the density of the lot"),))
             grams = sum(a * anhydrous_mass(p.form, self.resolver.catalogue.by_name) for p, a, _ in mixture.parts)
             scale = stock.density / (1.0 + grams / 1000.0)
-        contents = [(replace(p, u=u), a * scale) for p, a, u in mixture.parts]
+        contents = settled_contents(self, stock, [(replace(p, u=u), a * scale) for p, a, u in mixture.parts])
         self._stocks[key] = contents
         return contents
 
@@ -148,7 +166,10 @@ class Composer:
         """All lines of one solution put together."""
         L = self.lines
         parts: list[Part] = []
+        adjusting = [line for line in lines if self.leaves_open(line)]
         for line in lines:
+            if line in adjusting:
+                continue
             found = self.parts_of(line)
             if isinstance(found, Problem):
                 return Mixture(problem=found)
@@ -156,6 +177,12 @@ class Composer:
         total, measure, problem = self._total(lines)
         if problem is not None:
             return Mixture(problem=problem)
+        by_mass = any(p.how in ("molal", "w") for p in parts) or measure == "mass"
+        for line in adjusting:
+            found = adjusting_parts(self, line, measure, by_mass)
+            if isinstance(found, Problem):
+                return Mixture(problem=found)
+            parts.extend(found)
         declared = any(self.reader.basis(L.substance[i], L.lot[i], L.unit[i]).taken.without_effect for i in lines)
         taken = [p for p in parts if p.how == "taken"]
         if taken and not measure:
@@ -178,6 +205,13 @@ class Composer:
             ],
             without_effect=declared,
         )
+
+    def leaves_open(self, line: int) -> bool:
+        """Whether a line adds something until a pH is reached."""
+        L = self.lines
+        if L.problem[line] is not None or not is_open(L.special[line], float(L.value[line])):
+            return False
+        return not self.reader.basis(L.substance[line], L.lot[line], L.unit[line]).nothing
 
     def _per_kilogram(self, parts: list[Part], total: float) -> Mixture:
         """mol per kg of water.
@@ -232,7 +266,7 @@ class Composer:
         has_water = False
         for line in lines:
             unit = UNITS.get(L.unit[line])
-            if np.isnan(L.value[line]) or unit is None:
+            if np.isnan(L.value[line]) or unit is None or L.special[line]:
                 continue
             water = self.resolver.taken(L.substance[line], L.lot[line], unit.measures).water
             if unit.measures == "mass":

@@ -7,8 +7,10 @@ from collections.abc import Sequence
 import numpy as np
 
 from reconcile.importer.line_parts import stated_words
+from reconcile.importer.open_amounts import open_amounts
 from reconcile.importer.resolve import LotList
 from reconcile.importer.solutions import Assigner
+from reconcile.records.adjusting import OpenAmounts
 from reconcile.records.arrays import AnyArray, FloatArray, IntArray, TextArray
 from reconcile.records.book import Lots, Solutions
 from reconcile.records.places import Place
@@ -16,8 +18,8 @@ from reconcile.records.settings import Settings
 from reconcile.records.substances import Form
 
 
-def solutions_of(assigner: Assigner) -> tuple[Solutions, tuple[Form, ...], IntArray]:
-    """The arrays of every solution, sorted by solution; the forms they refer to; the lots that are used."""
+def solutions_of(assigner: Assigner) -> tuple[Solutions, tuple[Form, ...], IntArray, OpenAmounts]:
+    """The arrays of every solution, sorted by solution; the forms; the lots that are used; the amounts left open."""
     made, plain, composer = assigner.made, assigner.plain, assigner.composer
     group = np.array(made.plain_group, np.intp)
     bulk = np.flatnonzero(group >= 0)
@@ -43,6 +45,7 @@ def solutions_of(assigner: Assigner) -> tuple[Solutions, tuple[Form, ...], IntAr
     by_mass = np.concatenate([mass_of[basis_index], np.array([p.by_mass for _, p, *_ in odd], bool)])
     amount = np.concatenate([plain.amount[lines], np.array([a for _, _, a, _ in odd], np.float64)])
     u = np.concatenate([plain.u[lines], np.array([x for *_, x in odd], np.float64)])
+    owner_of = np.concatenate([np.full(len(lines), -1, np.intp), np.array([p.open for _, p, *_ in odd], np.intp)])
     own = np.flatnonzero(lot[: len(lines)] >= 0)
     deep = [(len(lines) + k, chained) for k, (_, p, *_) in enumerate(odd) for chained in p.chain]
     pairs = np.concatenate([np.column_stack([own, lot[own]]), np.array(deep, np.intp).reshape(-1, 2)])
@@ -54,7 +57,10 @@ def solutions_of(assigner: Assigner) -> tuple[Solutions, tuple[Form, ...], IntAr
     used = np.unique(pairs[:, 1])
     new = np.full(len(composer.resolver.lots.forms) + 1, -1, np.intp)  # the last entry keeps -1 at -1
     new[used] = np.arange(len(used))
-    line = line[order]
+    line, owner_of, amount = line[order], owner_of[order], amount[order]
+    scaled = np.flatnonzero(owner_of >= 0)
+    left_open = open_amounts(composer, scaled, owner_of[scaled], amount[scaled], forms)
+    amount[scaled] = np.nan
     known = np.full((len(made.batch), 2), np.nan)
     for s, value in made.known.items():
         known[s] = value
@@ -72,17 +78,17 @@ def solutions_of(assigner: Assigner) -> tuple[Solutions, tuple[Form, ...], IntAr
         solution=solution[order],
         form=form[order],
         lot=new[lot[order]],
-        amount=amount[order],
+        amount=amount,
         u_amount=u[order],
         by_mass=by_mass[order],
         recipe_row=L.table_row[line],
         place=_places(assigner, line),
-        stated=_stated(L.value[line], L.unit[line], L.lot[line]),
+        stated=_stated(np.where(L.special[line] == "", L.value[line], np.nan), L.unit[line], L.lot[line]),
         chain_contribution=pairs[:, 0],
         chain_lot=new[pairs[:, 1]],
         without_effect=declared,
     )
-    return result, tuple(forms), used
+    return result, tuple(forms), used, left_open
 
 
 def _lines_of(order: IntArray, first: IntArray, count: IntArray, owners: IntArray) -> tuple[IntArray, IntArray]:

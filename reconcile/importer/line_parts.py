@@ -43,12 +43,16 @@ class Basis:
 
     @property
     def plain(self) -> bool:
-        return self.form is not None and self.fault is None
+        adjusted = self.taken.stock is not None and self.taken.stock.adjusted
+        return self.form is not None and self.fault is None and not adjusted
 
 
 @dataclass(frozen=True, slots=True)
 class Part:
-    """One form that one recipe line brings; fields as in Basis. chain: every lot that it came through."""
+    """One form that one recipe line brings; fields as in Basis. chain: every lot that it came through.
+
+    open : the open amount (a number of OpenList) for one unit of which `amount` stands; -1 where the amount is written
+    """
 
     line: int
     form: Form
@@ -59,6 +63,7 @@ class Part:
     u: float
     by_mass: bool
     chain: tuple[int, ...]
+    open: int = -1
 
 
 class LineReader:
@@ -159,18 +164,19 @@ class LineReader:
         value = float(L.value[line])
         if value == 0.0:
             return None
-        if not basis.plain:
-            return basis
+        return self.part_of(line, basis) if basis.plain else basis
+
+    def part_of(self, line: int, basis: Basis) -> Part:
+        """The part of a line whose basis has a form."""
         assert basis.form is not None
-        chain = (taken.lot,) if taken.lot >= 0 else ()
-        amount = value * basis.k
-        return Part(line, basis.form, taken.lot, basis.how, amount, basis.solute, basis.u, basis.by_mass, chain)
+        lot = basis.taken.lot
+        chain = (lot,) if lot >= 0 else ()
+        amount = float(self.lines.value[line]) * basis.k
+        return Part(line, basis.form, lot, basis.how, amount, basis.solute, basis.u, basis.by_mass, chain)
 
     def _line_fault(self, line: int, basis: Basis) -> Fault | None:
         L = self.lines
         value = float(L.value[line])
-        if L.special[line] == "adjust":
-            return Fault("adjustment-unwritten", "as needed")
         if L.special[line] == "fill":
             return Fault("fill-not-water", L.substance[line])
         if np.isnan(value):
@@ -184,7 +190,7 @@ class LineReader:
 
 def stated_words(value: float, unit: str, lot: str) -> str:
     """An amount as written, with its unit and lot: 25 mL of lot X."""
-    words = amount_words(value, unit)
+    words = "as needed" if np.isnan(value) else amount_words(value, unit)
     return f"{words} of lot {lot}" if lot else words
 
 

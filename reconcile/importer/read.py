@@ -25,6 +25,7 @@ from reconcile.importer.series import SeriesList, read_series
 from reconcile.importer.sheets import Book, read_sheets
 from reconcile.importer.solutions import Assigner
 from reconcile.importer.stocks import StockRoom, read_stocks
+from reconcile.records.adjusting import Solved
 from reconcile.records.arrays import AnyArray
 from reconcile.records.book import BatchRecords, Table
 from reconcile.records.columns import BY_SHEET, READING_EXTRA
@@ -118,6 +119,7 @@ def _understood(book: Book, settings: Settings, names: Catalogue) -> BatchRecord
     files = [(s.file, s.sheet) for s in book.sources]
     composer = Composer(LineReader(recipes.lines(), resolver, settings, files))
     composer.group_of_batch = {b: groups[0] for b, groups in recipes.by_batch.items()}
+    composer.batch_names = recipes.batch
     return _records(book, rows, recipes, composer, known, series, settings)
 
 
@@ -163,7 +165,7 @@ def _records(
         return Place(sheet.file, sheet.sheet, int(number[i]), ph_column[i])
 
     book.notes.extend(notices(columns, place_of, _lot_places(composer)))
-    solutions, forms, used_lots = solutions_of(assigner)
+    solutions, forms, used_lots, left_open = solutions_of(assigner)
     lots, forms = lots_of(composer.resolver.lots, used_lots, forms, settings)
     readings = Table("readings", {k: v[used] for k, v in columns.items()}, source[used], number[used])
     return BatchRecords(
@@ -178,6 +180,8 @@ def _records(
         set_aside=tuple(aside),
         notes=tuple(book.notes),
         without_effect=tuple(composer.resolver.used_without_effect),
+        open_amounts=left_open,
+        solved=Solved(),
     )
 
 

@@ -11,6 +11,7 @@ from reconcile.importer.bulk import Plain, compose_plain
 from reconcile.importer.compose import Composer, Mixture
 from reconcile.importer.known import KnownSolutions
 from reconcile.importer.lines import Recipes
+from reconcile.importer.open_amounts import unsettled
 from reconcile.importer.series import SeriesList
 from reconcile.records.arrays import AnyArray, IntArray
 from reconcile.records.columns import heading_key
@@ -53,6 +54,7 @@ class Assigner:
         self.stepped = set(stepped.tolist())
         self.made = SolutionList()
         self._additions: dict[tuple[str, str, float], int | Problem] = {}
+        self.lost: dict[int, Problem] = {}
         self.first_group = {b: groups[0] for b, groups in recipes.by_batch.items()}
 
     def assign(
@@ -84,7 +86,24 @@ class Assigner:
                 problems[i] = found
             else:
                 solution[i] = found
+        problems.update(self._unsettled(columns, solution))
         return solution, problems
+
+    def _unsettled(self, columns: Mapping[str, AnyArray], solution: IntArray) -> dict[int, Problem]:
+        """Readings whose solution holds an amount that no pH settles; they lose it."""
+        opens = {s: sorted({p.open for p, *_ in m.parts if p.open >= 0}) for s, m in self.made.mixtures.items()}
+        waiting = {s: some for s, some in opens.items() if some}
+        if not waiting:
+            return {}
+        speaks = (solution >= 0) & (columns["standing"] != "void")
+        while True:
+            read = {self.made.batch[s] for s in solution[speaks & (solution >= 0)].tolist()}
+            why = {s: found for s, some in waiting.items() if (found := unsettled(self.composer, some, read))}
+            lost = [i for i in np.flatnonzero(solution >= 0).tolist() if int(solution[i]) in why]
+            if not lost:
+                return self.lost
+            self.lost.update({i: why[int(solution[i])] for i in lost})
+            solution[lost] = -1
 
     def _recipe(self, group: int, batch: str, stage: str) -> int | Problem:
         partial = stage != "" and group in self.stepped

@@ -14,6 +14,11 @@ from reconcile.records.problems import Problem
 from reconcile.records.substances import Catalogue, Form
 from reconcile.records.units import UNITS, Unit
 
+_TRUSTED = (
+    "lot", "strength", "density", "assay", "factor", "tolerance", "substance", "batch", "adjusted_to", "adjusted_at"
+)  # fmt: skip
+"""Columns whose bad cells leave the lot unusable."""
+
 
 @dataclass
 class Stock:
@@ -22,6 +27,7 @@ class Stock:
     form : what the label says, None for a lot that is named by the batch it was made as
     strength : as written, in `unit`. density [g/mL], assay [%], factor, tolerance [%]; NaN when unstated
     row : row of the stocks table; problem : why the lot cannot be used, or None
+    adjusted_to, adjusted_at : pH that it was adjusted to, and at which temperature [°C]; NaN when unstated
     """
 
     lot: str
@@ -36,10 +42,17 @@ class Stock:
     row: int
     place: Place
     problem: Problem | None = None
+    adjusted_to: float = np.nan
+    adjusted_at: float = np.nan
 
     @property
     def is_solution(self) -> bool:
         return self.unit is not None and not np.isnan(self.strength)
+
+    @property
+    def adjusted(self) -> bool:
+        """Whether it holds a counter-ion that its pH alone tells."""
+        return self.is_solution and not self.batch and not np.isnan(self.adjusted_to)
 
     def molarity(self, form: Form) -> tuple[float, str]:
         """Amount of substance in a litre of the stock [mol/L], or NaN and the name of what is missing.
@@ -104,7 +117,9 @@ class StockRoom:
 
 
 def _content(stock: Stock) -> tuple[object, ...]:
-    numbers = (stock.strength, stock.density, stock.assay, stock.factor)
+    numbers = (
+        stock.strength, stock.density, stock.assay, stock.factor, stock.adjusted_to, stock.adjusted_at
+    )  # fmt: skip
     return (stock.unit, *(None if np.isnan(x) else x for x in numbers))
 
 
@@ -128,7 +143,7 @@ def read_stocks(table: TableCells, first_table_row: int, catalogue: Catalogue, r
         if table.summary[i] or not lot[i]:
             continue
         problem: Problem | None = None
-        for name in ("lot", "strength", "density", "assay", "factor", "tolerance", "substance", "batch"):
+        for name in _TRUSTED:
             if name in table.columns and i in table.columns[name].bad:
                 problem = problem or table.problem(i, name, table.columns[name].bad[i])
         if i in faults and problem is None:
@@ -147,7 +162,7 @@ def read_stocks(table: TableCells, first_table_row: int, catalogue: Catalogue, r
             Stock(
                 lot[i], form, batch[i], float(strength[i]), unit if not np.isnan(strength[i]) else None,
                 number("density", i), number("assay", i), number("factor", i), number("tolerance", i),
-                first_table_row + i, table.place(i, "lot"), problem,
+                first_table_row + i, table.place(i, "lot"), problem, number("adjusted_to", i), number("adjusted_at", i),
             )
         )  # fmt: skip
 

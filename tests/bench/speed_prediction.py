@@ -143,7 +143,7 @@ def against_row_by_row() -> None:
     forms = form_table(forms_named(SUBSTANCES), acids)
     contents = engine_contents(amounts / DENSITY_20C, temperature)
     sample = np.random.default_rng(2).choice(ROWS, SAMPLE, replace=False)
-    whole, _ = pad(contents, sample, forms, acids, solvent(temperature[sample]), model.sized)
+    whole, _ = pad(contents, sample, forms, acids, solvent(temperature[sample]), model)
     slow, taken = row_by_row(whole, range(SAMPLE))
     one_by_one = taken / SAMPLE * ROWS
 
@@ -152,7 +152,7 @@ def against_row_by_row() -> None:
         water, order = solvent(temperatures), alike_together(contents, forms, acids)
         for begin in range(0, ROWS, CHUNK):
             some = order[begin : begin + CHUNK]
-            chunk, _ = pad(contents, some, forms, acids, water_at(water, which[some]), model.sized)
+            chunk, _ = pad(contents, some, forms, acids, water_at(water, which[some]), model)
             solve(chunk, model)
 
     fast = best_of(3, engine)

@@ -21,12 +21,14 @@ class Acid:
 
 
 def exponent(model: str, a: float, b: float, strength: mpf, size: float) -> mpf:
-    """-lg gamma of an ion of charge 1, written out from the equations of Davies and of Kielland."""
+    """-lg gamma of an ion of charge 1: the equations of Davies, of Bates and Guggenheim, of Kielland."""
     root = mp.sqrt(strength)
     if model == "ideal":
         return mpf(0)
     if model == "davies":
         return mpf(a) * (root / (1 + root) - mpf(3) / 10 * min(strength, mpf(1) / 2))
+    if model == "bates-guggenheim":
+        return mpf(a) * root / (1 + mpf(3) / 2 * root)
     return mpf(a) * root / (1 + mpf(b) * mpf(size) * root)
 
 

@@ -18,9 +18,8 @@ PUBLISHED = Path(__file__).parents[1] / "published"
 
 
 def pka(acid: str, step: int, temperature_c: float) -> float:
-    table, kelvin = acid_table(), temperature_c + 273.15
-    q = table.first[table.index[acid]] + step - 1
-    return float(table.p[q] + table.q[q] / kelvin + table.r[q] * np.log(kelvin))
+    table = acid_table()
+    return float(table.pka_at(table.first[table.index[acid]] + step - 1, np.array(temperature_c)))
 
 
 def emf_rows() -> list[dict[str, str]]:

@@ -94,7 +94,7 @@ def test_identical_rows_are_solved_once(monkeypatch: pytest.MonkeyPatch) -> None
 def test_a_pad_of_rows_without_acids() -> None:
     forms = form_table(forms_named(["NaCl", "acetic acid"]), acid_table())
     contents = Contents(np.array([0, 1, 1, 2]), np.array([0, 1]), np.array([0.1, 0.2]), np.full(3, 25.0), np.zeros(3))
-    chunk, _ = pad(contents, np.arange(3), forms, acid_table(), solvent(np.full(3, 25.0)), False)
+    chunk, _ = pad(contents, np.arange(3), forms, acid_table(), solvent(np.full(3, 25.0)), ACTIVITY_MODELS["davies"])
     assert len(chunk.slots) == 1
     assert chunk.slots[0].total.tolist() == [0.0, 0.0, 0.2]
     assert chunk.square.tolist() == [0.2, 0.0, 0.0]

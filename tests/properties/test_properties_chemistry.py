@@ -43,7 +43,7 @@ def chunk_of(mixture: Mixture, model: str) -> Chunk:
     contents = Contents(
         np.array([0, len(mixture.names)]), np.arange(len(mixture.names)), np.array(mixture.amounts), t, np.zeros(1)
     )
-    return pad(contents, np.arange(1), forms, acid_table(), solvent(t), ACTIVITY_MODELS[model].sized)[0]
+    return pad(contents, np.arange(1), forms, acid_table(), solvent(t), ACTIVITY_MODELS[model])[0]
 
 
 @SOME

@@ -1,0 +1,66 @@
+"""The usual amount of titrant of like batches, beside which an odd one stands out."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from reconcile.records.adjusting import Solved
+from reconcile.records.arrays import BoolArray, FloatArray, IntArray
+from reconcile.records.book import BatchRecords
+
+SAME_AMOUNT, SAME_PH = 0.05, 0.1
+"""Like batches: every written amount within 5 % of the other's, adjusted to within 0.1 pH (no source)."""
+LEAST_LIKE = 3
+FAR = 3.0
+"""An amount is odd when it lies over three times the scatter of the like ones, and over three times u, from them."""
+Key = tuple[object, ...]
+
+
+def usual_amounts(
+    records: BatchRecords, solved: Solved
+) -> tuple[FloatArray, FloatArray, FloatArray, IntArray, BoolArray]:
+    """Median, least and greatest amount of the other like batches, their number, and whether the own one is odd; (k,).
+
+    Notes
+    -----
+    The scatter is 1.483 times the median absolute deviation (ISO 13528:2022, C.2.2), never under the median u of the
+    like amounts. From three like batches on.
+    """
+    k = len(solved)
+    usual, low, high = (np.full(k, np.nan) for _ in range(3))
+    like, odd = np.zeros(k, np.intp), np.zeros(k, bool)
+    by_kind: dict[Key, list[tuple[int, FloatArray]]] = {}
+    for j in range(k):
+        if solved.reading[j] >= 0 and np.isfinite(solved.amount[j]) and solved.amount[j] != 0.0:
+            key, amounts = _recipe(records, solved, j)
+            by_kind.setdefault(key, []).append((j, amounts))
+    for some in by_kind.values():
+        for j, amounts in some:
+            others = [i for i, other in some if i != j and _alike(amounts, other)]
+            others = [i for i in others if abs(solved.ph[i] - solved.ph[j]) <= SAME_PH]
+            like[j] = len(others)
+            if len(others) < LEAST_LIKE:
+                continue
+            values = solved.amount[others]
+            usual[j], low[j], high[j] = float(np.median(values)), float(values.min()), float(values.max())
+            scatter = 1.483 * float(np.median(np.abs(values - usual[j])))
+            scatter = max(scatter, float(np.median(solved.u[others])), float(solved.u[j]))
+            odd[j] = abs(solved.amount[j] - usual[j]) > FAR * scatter
+    return usual, low, high, like, odd
+
+
+def _recipe(records: BatchRecords, solved: Solved, j: int) -> tuple[Key, FloatArray]:
+    """What the batch of an open amount holds otherwise: its forms, and their amounts in the order of the forms."""
+    opens, solutions = records.open_amounts, records.solutions
+    s = int(records.readings_solution[solved.reading[j]])
+    inside = np.flatnonzero(solutions.solution == s)
+    mine = opens.contribution[opens.owner == j]
+    written = inside[~np.isin(inside, opens.contribution)]
+    titrant = sorted({int(solutions.form[c]) for c in np.intersect1d(inside, mine).tolist()})
+    order = written[np.lexsort((solutions.amount[written], solutions.form[written]))]
+    key = (str(opens.unit[j]), tuple(titrant), tuple(solutions.form[order].tolist()))
+    return key, np.asarray(solutions.amount[order], float)
+
+
+def _alike(one: FloatArray, other: FloatArray) -> bool:
+    return bool(np.all(np.abs(one - other) <= SAME_AMOUNT * np.maximum(np.abs(one), np.abs(other))))

@@ -21,6 +21,8 @@ from reconcile.records.settings import Settings
 
 AGAIN, AGAIN_FROM, AGAIN_READINGS = 3, 2.0, 3
 """How many candidates of a round are judged again, from which marginal gain and number of readings on."""
+RECOMPUTED_BLOCKS = 3
+"""Subjects whose suppositions are recomputed in a round, best first: one of them is chosen."""
 RECOMPUTED, RECOMPUTED_FROM, RECOMPUTED_GAP, RECOMPUTED_SHARE = 12, 1.0, 60.0, 0.3
 """Suppositions about one subject whose variance is recomputed: how many, from which marginal gain on, how far below the
 best of the subject at first."""
@@ -115,8 +117,9 @@ class Judge:
             if p.supposed is not None:
                 for i in np.flatnonzero(scores.marginal[offset : offset + len(p)] > RECOMPUTED_FROM).tolist():
                     blocks.setdefault((p.alarm_class, str(p.block[i])), []).append(int(offset + i))
-        for inside in blocks.values():
-            ranked = sorted(inside, key=lambda k: -scores.marginal[k])
+        by_rank = [sorted(inside, key=lambda k: -scores.marginal[k]) for inside in blocks.values()]
+        by_rank.sort(key=lambda ranked: -scores.marginal[ranked[0]])
+        for ranked in by_rank[:RECOMPUTED_BLOCKS]:
             best = float(scores.marginal[ranked[0]])
             for k in ranked[:RECOMPUTED]:
                 if scores.marginal[k] < best - RECOMPUTED_GAP - RECOMPUTED_SHARE * best:

@@ -7,6 +7,7 @@ from dataclasses import replace
 
 import numpy as np
 
+from reconcile.auditor.adjusted import only_adjusted
 from reconcile.auditor.components import Components, Model, noise_of
 from reconcile.auditor.faults import KINDS
 from reconcile.auditor.findings import build, with_impact
@@ -119,8 +120,10 @@ def statuses(
     status[out] = "stands_out"
     told = np.array([bool(b) for b in by])
     status[told & out & (np.abs(left) <= limit)] = "explained"
-    for name in ("outside_model", "outside_electrode_range", "unbuffered", "not_solved"):
+    for name in ("outside_model", "outside_electrode_range", "unbuffered"):
         status[prediction.status == name] = name
+    status[only_adjusted(records)] = "adjusted"
+    status[prediction.status == "not_solved"] = "not_solved"
     status[~np.isfinite(prediction.ph)] = "not_solved"
     status[records.readings["standing"] == "void"] = "void"
     return status, np.array([" ".join(b) for b in by], object)

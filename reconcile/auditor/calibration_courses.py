@@ -142,9 +142,9 @@ def _cross(line: Line, fit: Fit, limit: Limit) -> Crossing:
         line.probe,
         line.quantity,
         limit,
-        time_of(at),
-        time_of(early),
-        time_of(late),
+        time_of(np.floor(at)),
+        time_of(np.floor(early)),
+        time_of(np.ceil(late)),
         bool(ahead),
         f"{line.subject_type.capitalize()} {line.subject}: its {line.quantity} "
         + _in_words(line, limit, dates, (first, end), bool(beyond)),
@@ -166,7 +166,7 @@ def _in_words(line: Line, limit: Limit, dates: Dates, drawn: tuple[float, float]
     if dates.latest < first:
         return f"{course}; the line lies beyond {bound} from the first calibration on."
     low = _day(dates.earliest) if dates.earliest >= first else f"before {_day(first)}"
-    high = _day(dates.latest) if dates.latest <= end else f"after {_day(end)}"
+    high = _day(np.ceil(dates.latest)) if dates.latest <= end else f"after {_day(end)}"
     when = f"about {_day(dates.at)}" if first <= dates.at <= end else ("after " if dates.at > end else "before ")
     if when.endswith(" "):
         when += _day(end if dates.at > end else first)

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from scipy import sparse
 
+from reconcile.auditor.adjusted import contrast_variance
 from reconcile.auditor.layout import Layout
 from reconcile.records.arrays import FloatArray, IntArray
 
@@ -123,4 +124,5 @@ class Model:
     def variance(self) -> FloatArray:
         """Diagonal of V [pH^2]: the full spread of each residual in a clean record."""
         z2 = self.layout.z.multiply(self.layout.z)
-        return np.asarray(self.d + self.batch_sd() ** 2 + z2 @ self.g, float)
+        whole = np.asarray(self.d + self.batch_sd() ** 2 + z2 @ self.g, float)
+        return contrast_variance(self.layout, whole, self.d, self.g)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
@@ -10,6 +10,8 @@ from typing import Any
 import numpy as np
 from scipy import sparse
 
+from reconcile.auditor.adjusted import UNKNOWN_SD, anchor_of, speaking, stock_columns, with_anchors
+from reconcile.auditor.subjects import codes, family_names, sessions_of, solution_names
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray, TextArray, Triplets
 from reconcile.records.book import BatchRecords
 from reconcile.records.results import Prediction
@@ -45,7 +47,8 @@ class Layout:
     ph : FloatArray (n,)        predicted pH
     day : FloatArray (n,)       time of reading [d] from the first one; NaN where unknown
     meter, batch, family, session, solution : IntArray (n,)   index; -1 where there is none
-    meters, families : names; z : FloatArray (n, q) columns of the random effects with a prior
+    meters, families, batches : names; one of a batch may occur twice
+    z : FloatArray (n, q)       columns of the random effects with a prior
     prior : FloatArray (q,)     prior variances; NaN for those estimated from the record (sessions)
     other : FloatArray (n,)     variance of temperature, certificate and allowance of each reading [pH^2]
     shared : FloatArray (n,)    variance shared by the readings of a batch whatever the preparation [pH^2]
@@ -53,6 +56,7 @@ class Layout:
     first_of_batch : IntArray   where each batch begins
     lots_used : IntArray (k,), lots met; lot_columns : sparse (n, k), dpH/d ln strength of each
     start : time of the first reading
+    anchor : IntArray (n,)      row of the reading that the solution was adjusted by, its own for that reading; -1
     """
 
     records: BatchRecords
@@ -82,6 +86,7 @@ class Layout:
     lots_used: IntArray
     lot_columns: sparse.csc_array
     start: np.datetime64
+    anchor: IntArray
 
     def __len__(self) -> int:
         return len(self.r)
@@ -108,38 +113,12 @@ class Layout:
 
 
 def evidence(records: BatchRecords, prediction: Prediction) -> BoolArray:
-    """Readings that may speak: solved, inside model and electrode, buffered, not void, with a finite residual."""
+    """Readings that may speak: solved, inside model and electrode, buffered, not void nor adjusted, with a residual."""
     usable: BoolArray = (
         np.isin(prediction.status, EVIDENCE) & np.isfinite(prediction.ph) & np.isfinite(records.readings["ph"])
     )
     standing: TextArray = records.readings["standing"]
-    return np.asarray(usable & (standing != "void") & (prediction.u > 0), bool)
-
-
-def _codes(values: Iterable[object]) -> tuple[IntArray, tuple[str, ...]]:
-    """Index of each value among the sorted distinct ones; -1 for an empty text."""
-    texts = [str(v) for v in values]
-    names = sorted({v for v in texts if v})
-    index = {name: i for i, name in enumerate(names)}
-    return np.array([index.get(v, -1) for v in texts], np.intp), tuple(names)
-
-
-def solution_names(records: BatchRecords) -> TextArray:
-    """Batch or known solution that each reading was taken on."""
-    readings = records.readings
-    return np.where(readings["batch"] == "", readings["known"], readings["batch"])
-
-
-def family_names(records: BatchRecords) -> list[str]:
-    """Kind of each solution: the acids in it, in alphabetical order; "no weak acid" where there is none."""
-    acids: list[set[str]] = [set() for _ in range(len(records.solutions))]
-    forms = records.forms
-    for solution, form in zip(records.solutions.solution.tolist(), records.solutions.form.tolist(), strict=True):
-        acids[solution].update(forms[form].acids)
-    return [
-        "known solution" if np.isfinite(known) else (" + ".join(sorted(found)) or "no weak acid")
-        for found, known in zip(acids, records.solutions.known_ph, strict=True)
-    ]
+    return speaking(records, np.asarray(usable & (standing != "void") & (prediction.u > 0), bool))
 
 
 def matrix(t: Triplets) -> sparse.csc_array:
@@ -172,43 +151,28 @@ def felt(block: sparse.csc_array, weight: FloatArray | float = 1.0, least: float
     return np.flatnonzero(largest * weight > least).astype(np.intp)
 
 
-def sessions_of(
-    records: BatchRecords, meters: Sequence[str], meter: IntArray, rows: IntArray
-) -> tuple[IntArray, tuple[str, ...]]:
-    """Calibration session of each reading; the meter's day where no calibration of the meter is recorded before it."""
-    at = records.readings["read_at"][rows]
-    days = at.astype("datetime64[D]").astype(str)
-    labels = [f"{meters[m]} {t}" if m >= 0 and t != "NaT" else "" for m, t in zip(meter, days, strict=True)]
-    table = records.calibrations
-    named = np.array([str(m) for m in table["meter"]], object) if len(table) else np.zeros(0, object)
-    for index, name in enumerate(meters):
-        calibrated = np.sort(table["calibrated_at"][named == name]) if len(named) else np.zeros(0, "datetime64[s]")
-        calibrated = calibrated[~np.isnat(calibrated)]
-        mine = np.flatnonzero((meter == index) & ~np.isnat(at)) if len(calibrated) else np.zeros(0, np.intp)
-        for row, session in zip(mine, np.searchsorted(calibrated, at[mine], side="right"), strict=True):
-            if session:
-                labels[row] = f"{name} calibrated {calibrated[session - 1]}"
-    return _codes(labels)
-
-
 def build_layout(records: BatchRecords, prediction: Prediction, settings: Settings, usable: BoolArray) -> Layout:
-    """The evidence of a record as the model sees it.
+    """The evidence of a record as the model sees it, with the readings that its solutions were adjusted by.
 
     Raises nothing for a record without evidence: the layout is then empty.
     """
     names = solution_names(records)
-    chosen = np.flatnonzero(usable)
-    order = np.argsort(np.array([str(n) for n in names[chosen]], dtype=str), kind="stable") if len(chosen) else chosen
+    chosen, anchors = np.flatnonzero(with_anchors(records, usable)), anchor_of(records)
+    order = np.lexsort((anchors[chosen], names[chosen].astype(str))) if len(chosen) else chosen
     rows = chosen[order].astype(np.intp)
     n = len(rows)
     readings = records.readings
     at = readings["read_at"][rows]
     start = np.min(at[~np.isnat(at)]) if n and (~np.isnat(at)).any() else np.datetime64("1970-01-01", "s")
     day = np.where(np.isnat(at), np.nan, (at - start) / np.timedelta64(1, "s") / DAY)
-    meter, meters = _codes(readings["meter"][rows])
-    batch, batches = _codes(names[rows])
+    meter, meters = codes(readings["meter"][rows])
+    new = np.r_[True, (names[rows][1:] != names[rows][:-1]) | (np.diff(anchors[rows]) != 0)] if n else np.zeros(0, bool)
+    batch = (np.cumsum(new) - 1).astype(np.intp)  # a batch before and after it was adjusted counts as two
+    row_of = np.full(len(readings) + 1, -1, np.intp)
+    row_of[rows] = np.arange(n)
+    anchor = row_of[anchors[rows]]
     solution = records.readings_solution[rows]
-    family_of_solution, families = _codes(family_names(records))
+    family_of_solution, families = codes(family_names(records))
     family = family_of_solution[solution] if n else np.zeros(0, np.intp)
     session, sessions = sessions_of(records, meters, meter, rows)
     ph = prediction.ph[rows]
@@ -237,6 +201,9 @@ def build_layout(records: BatchRecords, prediction: Prediction, settings: Settin
     add("constant", constant_names, constants[:, met], [float(u) ** 2 for u in prediction.constant_u[met]])
     model_column = one_hot(family, len(families), prediction.d_model[rows])
     add("model", families, model_column, [prediction.u_model**2] * len(families))
+    adjusted_stocks, stock_block, stock_variance = stock_columns(records, prediction)
+    if adjusted_stocks:
+        add("adjusted stock", adjusted_stocks, stock_block.tocsr()[rows].tocsc(), stock_variance.tolist())
     counts = np.bincount(session[session >= 0], minlength=len(sessions)) if n else np.zeros(0, np.intp)
     repeated = np.flatnonzero(counts > 1)  # a session with one reading cannot be told from its noise
     session_block = one_hot(session, len(sessions))[:, repeated]
@@ -247,6 +214,7 @@ def build_layout(records: BatchRecords, prediction: Prediction, settings: Settin
     display = np.where(np.isfinite(resolution), resolution, 0.0) ** 2 / 12.0
     u_temperature = _budget(prediction, "temperature")[rows]
     known = _budget(prediction, "certificate")[rows]
+    declared = _budget(prediction, "declared without effect")[rows]
     return Layout(
         records=records,
         prediction=prediction,
@@ -264,14 +232,15 @@ def build_layout(records: BatchRecords, prediction: Prediction, settings: Settin
         solution=solution,
         meters=meters,
         families=families,
-        batches=batches,
+        batches=tuple(str(name) for name in names[rows][new]),
         z=sparse.csr_array(sparse.hstack(columns)),
         prior=np.array(prior, float),
         effects=effects,
         other=u_temperature**2 + known**2 + _allowance(records)[rows],
-        shared=taken[rows] + display,
+        shared=taken[rows] + display + declared**2 + np.where(anchor >= 0, UNKNOWN_SD**2, 0.0),
         preparation=np.sqrt(square[rows]),
-        first_of_batch=np.flatnonzero(np.r_[True, batch[1:] != batch[:-1]]) if n else np.zeros(0, np.intp),
+        first_of_batch=np.flatnonzero(new),
+        anchor=anchor,
         lots_used=lots_used,
         lot_columns=lot_columns,
         start=start,

@@ -91,6 +91,8 @@ def _not_shown(
         found.append(("slope and offset", "the record holds no calibrations"))
     elif (undated := int(np.isnan(days_of(table["calibrated_at"])).sum())) > 0:
         found.append(("slope and offset", f"{undated} of {len(table)} calibrations have no date and are on no line"))
+    if unnamed := sum(not str(m) for m in table["meter"]):
+        found.append(("slope and offset", f"{unnamed} of {len(table)} calibrations name no meter"))
     what = "noise, agreement, and residuals between calibrations"
     if audit is None:
         found.append((what, "the record holds no used readings"))

@@ -10,7 +10,7 @@ from typing import Annotated, Any
 import typer
 from typer.core import TyperGroup
 
-from reconcile.cli import audit, meters, predict, read, substances
+from reconcile.cli import audit, meters, pka, predict, read, substances
 from reconcile.cli.exits import INTERRUPTED, REFUSED, USAGE
 from reconcile.cli.options import DEBUG
 from reconcile.records.problems import InputProblems, Problem
@@ -18,7 +18,7 @@ from reconcile.records.settings import SettingsError
 
 SHOWN = 20
 """Problems printed before the rest is only counted."""
-WRITE_REPORTS = ("audit", "meters")
+WRITE_REPORTS = ("audit", "meters", "pka")
 """Commands that leave a whole report folder or nothing."""
 
 
@@ -109,7 +109,7 @@ def reconcile(
     """Audits pH readings against batch recipes by full chemical equilibrium."""
 
 
-for module in (read, predict, audit, meters, substances):
+for module in (read, predict, audit, meters, pka, substances):
     module.add_to(app)
 
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections import Counter
 from collections.abc import Sequence
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -21,13 +22,25 @@ from reconcile.records.pka_results import Gap, Nuisance, PkaCandidate, PkaQuesti
 
 FEW = 5
 SPAN = 0.5
-HALF = 50.0
+HALF = (45.0, 55.0)
+"""Percent neutralised between which a reading counts as at half neutralisation."""
 MOST_GAPS = 3
 MOST_ALIKE = 3
 PLAIN = 0.05
 """Largest strong base per acid of a plain dilution [mol/mol]."""
 Said = list[tuple[str, str]]
 """Short name and sentence."""
+
+
+@dataclass(frozen=True)
+class Account:
+    """Sentences by what they are about, as in PkaFit."""
+
+    values: tuple[str, ...]
+    cautions: tuple[str, ...]
+    gap_words: tuple[str, ...]
+    ranking: tuple[str, ...]
+    flags: tuple[str, ...]
 
 
 def account(
@@ -44,8 +57,8 @@ def account(
     degrees: FloatArray,
     doubted: Sequence[SuspectMeter],
     every: Evidence,
-) -> tuple[str, tuple[str, ...], tuple[str, ...]]:
-    """Conclusion, cautions, and the short names of what was flagged."""
+) -> Account:
+    """Everything that the fit says in words, and the short names of what was flagged."""
     warm = judged.evidence.temperature
     values = [_of_step(step, len(steps), (float(warm.min()), float(warm.max()))) for step in steps]
     values += [_of_nuisance(one) for one in (strength, offset) if one.sought]
@@ -68,9 +81,13 @@ def account(
     own = next((one for one in ranked if one.acid == studied.acid), None)
     if studied.known and any(step.standing == "found" for step in steps) and (own is None or not own.explains):
         flags.append("differs_from_library")
-    cautions = [sentence for _, sentence in said]
-    conclusion = " ".join([*dict.fromkeys(values), *cautions, *told, *ranking])
-    return conclusion, tuple(cautions), tuple(dict.fromkeys(flags))
+    return Account(
+        tuple(dict.fromkeys(values)),
+        tuple(sentence for _, sentence in said),
+        tuple(told),
+        tuple(ranking),
+        tuple(dict.fromkeys(flags)),
+    )
 
 
 def _of_step(step: PkaStep, count: int, temperatures: tuple[float, float]) -> str:
@@ -123,7 +140,7 @@ def _identifiability(judged: Judged, steps: Sequence[PkaStep], degrees: FloatArr
     if not plain:
         for one in steps:
             percent = 100.0 * degrees[kept, one.step - 1]
-            if one.standing != "held" and (percent.max() < HALF or percent.min() > HALF):
+            if one.standing != "held" and (percent.max() < HALF[0] or percent.min() > HALF[1]):
                 name = constant_name(one.step, len(steps))
                 low, high = f"{percent.min():.0f}", f"{percent.max():.0f}"
                 out.append(("one_side", say("one-side", step=str(one.step), low=low, high=high, name=name)))

@@ -156,7 +156,7 @@ def _told(
     missing = gaps(used, fitted, shape, degrees, intervals) if may_be_told(forms) else ()
     doubted = suspects(used, acids, float(max(fitted.sigma[0], used.floor.min())))
     say("wording", 0.9)
-    conclusion, cautions, flags = account(
+    said = account(
         judged, best, studied, question, results, strength, offset, aicc, ranked, missing, degrees, doubted, every
     )
     return PkaFit(
@@ -177,9 +177,11 @@ def _told(
         candidates=ranked,
         gaps=missing,
         series=series_alone(used, task, fitted),
-        conclusion=conclusion,
-        cautions=cautions,
-        flags=flags,
+        values=said.values,
+        cautions=said.cautions,
+        gap_words=said.gap_words,
+        ranking=said.ranking,
+        flags=said.flags,
         hazards=_hazards(forms),
         constants=_constants(forms, studied),
         curves=fitted_curves(used, shape, fitted),

@@ -27,12 +27,12 @@ WORTH = 0.7
 USEFUL = 0.4
 """Width of an interval above which one more reading settles nothing."""
 TRIED = 161
-HARMLESS = {"corrosive", "irritant"}
-"""Hazard words with which a gap is still told; any other word, or a gas given off with acid, keeps it unsaid."""
+HARMLESS = {"corrosive"}
+"""Hazard word with which a gap is still told; any other word, or a gas given off with acid, keeps it unsaid."""
 
 
 def may_be_told(forms: Iterable[Form]) -> bool:
-    """Whether nothing in the solutions has a hazard word beyond corrosive (or the milder irritant)."""
+    """Whether nothing in the solutions has a hazard word beyond corrosive, or gives off a gas with acid."""
     return all(set(form.hazard.split()) <= HARMLESS and not form.gas_with_acid for form in forms)
 
 

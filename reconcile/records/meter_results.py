@@ -76,7 +76,8 @@ class Line:
 class Crossing:
     """When the latest line of a subject crosses a limit; NaT where the calibrations give no such date.
 
-    at : date of the fitted line; earliest, latest : 95 % interval of the date on which the true line crosses
+    at : date of the fitted line; earliest, latest : 95 % interval of the date on which the true line crosses, in whole
+        days outwards
     ahead : crossing lies after the last calibration
     text : in words
     """

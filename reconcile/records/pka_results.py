@@ -165,7 +165,8 @@ class PkaFit:
     acid : name in the library, or as asked; formula_words : what was weighed, in words
     steps_chosen : steps -> AICc of each number tried, empty where the number was given or known
     noise, noise_origin : standard deviation of a reading [pH] and "estimated", "floor", "given" or "assumed"
-    cautions : what a reader must know before using the figures, a sentence each; flags : the short names of these
+    values : what was found or is known, a sentence or more each; cautions : what a reader must know before using them;
+        flags : short names of what was flagged; gap_words, ranking : the gaps and the candidates in words
     gaps : empty also where a hazard word keeps them unsaid
     """
 
@@ -198,8 +199,10 @@ class PkaFit:
     candidates: tuple[PkaCandidate, ...]
     gaps: tuple[Gap, ...]
     series: tuple[SeriesFit, ...]
-    conclusion: str
+    values: tuple[str, ...]
     cautions: tuple[str, ...]
+    gap_words: tuple[str, ...]
+    ranking: tuple[str, ...]
     flags: tuple[str, ...]
     hazards: tuple[Hazard, ...]
     constants: tuple[Constant, ...]
@@ -216,6 +219,21 @@ class PkaFit:
             "read": self.records.rows_read,
             "used": len(self.records.readings),
             "set_aside": len(self.records.set_aside),
+        }
+
+    @property
+    def conclusion(self) -> str:
+        """All of it in words."""
+        return " ".join([*self.values, *self.cautions, *self.gap_words, *self.ranking])
+
+    @property
+    def identifiable(self) -> dict[str, bool]:
+        """Whether these readings tell the constants sought (all of them), the strength and the meter's offset."""
+        sought = [step.standing == "found" for step in self.steps if step.standing != "held"]
+        return {
+            "pKa": bool(sought) and all(sought),
+            "strength": self.strength.identifiable,
+            "offset": self.offset.identifiable,
         }
 
     @property

@@ -7,7 +7,7 @@ from typing import Any
 
 import numpy as np
 
-from reconcile.records.meter_results import QUANTITIES, WHOLE_RECORD, Agreement, MeterHistory
+from reconcile.records.meter_results import QUANTITIES, WHOLE_RECORD, Agreement, Crossing, MeterHistory
 from reconcile.reporter.plain import plain
 from reconcile.reporter.tables import SET_ASIDE, Column, Table, set_aside_rows, table_of
 
@@ -57,7 +57,7 @@ CROSSINGS: tuple[Column, ...] = (
     Column("at", "Line crosses", "time", width=17),
     Column("earliest", "95 % interval from", "time", width=17),
     Column("latest", "95 % interval to", "time", width=17),
-    Column("ahead", "After the last calibration", width=10),
+    Column("ahead", "Seen from the last calibration", width=12),
     Column("text", "In words", width=60),
 )
 STEPS: tuple[Column, ...] = (
@@ -179,12 +179,18 @@ def crossings(history: MeterHistory) -> Table:
     rows = [
         (
             plain(x.subject), x.subject_type, plain(x.probe), x.quantity, x.limit.value, QUANTITIES[x.quantity],
-            "settings" if x.limit.judged else "shown beside", x.at, x.earliest, x.latest, "yes" if x.ahead else "no",
+            "settings" if x.limit.judged else "shown beside", x.at, x.earliest, x.latest, _when(x),
             f"{plain(x.text)} {NO_LEAVE}",
         )
         for x in history.crossings
     ]  # fmt: skip
     return table_of("crossings", "When lines cross limits", CROSSINGS, rows)
+
+
+def _when(crossing: Crossing) -> str:
+    if not crossing.ahead:
+        return "before it"
+    return "" if np.isnat(crossing.at) else "after it"
 
 
 def steps(history: MeterHistory) -> Table:

@@ -11,10 +11,13 @@ from collections.abc import Callable, Mapping
 from pathlib import Path
 
 from reconcile.records.meter_results import MeterHistory
+from reconcile.records.pka_results import PkaFit
 from reconcile.records.results import Audit
 from reconcile.reporter.contents import contents
 from reconcile.reporter.manifest import AUDIT, MANIFEST, manifest
 from reconcile.reporter.meter_contents import METERS, meter_contents
+from reconcile.reporter.pka_contents import pka_contents
+from reconcile.reporter.pka_gist import command as pka_command
 
 Progress = Callable[[str, float], None]
 """Called with what is being done and the share done, 0 to 1."""
@@ -26,13 +29,17 @@ class ReportExists(FileExistsError):
 
 
 def write_report(
-    result: Audit | MeterHistory, out: Path | str, *, replace: bool = False, progress: Progress | None = None
+    result: Audit | MeterHistory | PkaFit,
+    out: Path | str,
+    *,
+    replace: bool = False,
+    progress: Progress | None = None,
 ) -> Path:
     """Write the whole report folder and return its path.
 
     Parameters
     ----------
-    result : what `reconcile.audit` or `reconcile.meters` gave
+    result : what `reconcile.audit`, `reconcile.meters` or `reconcile.fit_pka` gave
     out : folder to make; its parents are made too
     replace : an existing report (or an empty folder) is replaced; anything else at that place never is
     progress : told what is being done
@@ -47,6 +54,8 @@ def write_report(
     say = progress or (lambda _what, _share: None)
     if isinstance(result, MeterHistory):
         files, command = meter_contents(result, say), METERS
+    elif isinstance(result, PkaFit):
+        files, command = pka_contents(result, say), pka_command(result)
     else:
         files, command = contents(result, say), AUDIT
     files[MANIFEST] = manifest(result, files, command=command)

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
 from reconcile.auditor.proposals import Context, Proposal, Told, stack
@@ -20,6 +22,8 @@ class MeterStuck:
         spread = np.sqrt(context.model.variance())
         columns, subject, shown, span = [], [], [], []
         for course in courses(layout):
+            read = layout.anchor[course.rows] != course.rows  # what was adjusted shows its target again and again
+            course = replace(course, rows=course.rows[read], day=course.day[read])
             value = layout.observed[course.rows]
             step = np.nan_to_num(layout.resolution[course.rows], nan=0.0) / 2 + 1e-9
             same = np.abs(np.diff(value)) <= step[1:]

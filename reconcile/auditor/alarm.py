@@ -72,9 +72,12 @@ def equivalent_z(p: float) -> float:
 
 
 def root_of(correlation: FloatArray) -> FloatArray:
-    """A square root of a correlation matrix, for draws with that correlation."""
+    """The symmetric square root of a correlation matrix, for draws with that correlation.
+
+    It is unique, so that the order of rows and rounding do not turn the draws.
+    """
     values, vectors = linalg.eigh(correlation)
-    return np.asarray(vectors * np.sqrt(np.maximum(values, 0.0)))
+    return np.asarray((vectors * np.sqrt(np.maximum(values, 0.0))) @ vectors.T)
 
 
 def block_p(correlation: FloatArray, root: FloatArray, one_sided: BoolArray, threshold: float, seed: int) -> float:

@@ -6,12 +6,11 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from reconcile.chemistry.acids import AcidTable, acid_table
-from reconcile.chemistry.temperature import u_at
-from reconcile.chemistry.water import ZERO_CELSIUS
+from reconcile.chemistry.acids import AcidTable
 from reconcile.fitter.common_errors import Common
 from reconcile.fitter.evidence import Evidence
 from reconcile.fitter.fitting import Fitted
+from reconcile.fitter.library_constants import u_constant
 from reconcile.fitter.model import evaluate
 from reconcile.fitter.scatter import quantile_f
 from reconcile.records.arrays import FloatArray, IntArray
@@ -30,7 +29,12 @@ TOGETHER = 40
 
 
 def candidates(
-    evidence: Evidence, fitted: Fitted, errors: Sequence[Common], free: Sequence[FloatArray], sought: int
+    evidence: Evidence,
+    fitted: Fitted,
+    errors: Sequence[Common],
+    free: Sequence[FloatArray],
+    sought: int,
+    table: AcidTable,
 ) -> tuple[PkaCandidate, ...]:
     """The acids of the library that explain the readings best, best first.
 
@@ -44,6 +48,8 @@ def candidates(
         Effects of what was set free beside the constants; every candidate may use them too.
     sought : int
         Number of constants found.
+    table : AcidTable
+        The library with its uncertainties; an unfamiliar acid behind it is not tried.
 
     Returns
     -------
@@ -61,7 +67,6 @@ def candidates(
     ----------
     Seber and Wild 1989, Nonlinear Regression, section 5.3 (likelihood ratio of a subset of parameters).
     """
-    table = acid_table()
     possible = _possible(evidence, table)
     kept = np.flatnonzero(fitted.data.kept)
     if len(kept) > SCREENED:
@@ -74,12 +79,12 @@ def candidates(
     best = _quadratic(fitted.residual[kept], fitted.data.variance[kept], columns)
     ratio = -0.5 * (misfit - best)
     within = float(quantile_f(max(sought, 1), fitted.freedom, LEVEL)[0])
-    mean = float(evidence.temperature[kept].mean()) + ZERO_CELSIUS
+    mean = float(evidence.temperature[kept].mean())
     found = []
     for place in np.argsort(-ratio, kind="stable")[:MOST].tolist():
         acid = int(possible[place])
-        steps = slice(int(table.first[acid]), int(table.first[acid] + table.steps[acid]))
-        pka = table.p[steps] + table.q[steps] / mean + table.r[steps] * np.log(mean)
+        constant = int(table.first[acid]) + np.arange(int(table.steps[acid]))
+        pka = table.pka_at(constant, np.full(len(constant), mean))
         explains = bool(-2.0 * ratio[place] <= within)
         found.append(
             PkaCandidate(table.names[acid], float(ratio[place]), explains, float(rms[place]), tuple(pka.tolist()))
@@ -92,7 +97,7 @@ def _possible(evidence: Evidence, table: AcidTable) -> IntArray:
     medium = evidence.medium
     name, charge = medium.acids.names[medium.studied], medium.acids.charge[medium.studied]
     low, high = table.charge - table.steps - 1e-9, table.charge + 1e-9
-    fits = np.ones(len(table.names), bool)
+    fits = np.arange(len(table.names)) < len({row.acid for row in table.rows})
     for f in medium.bringing.tolist():
         form = evidence.records.forms[f]
         carried = [float(ions()[ion].charge) for ion in form.ions if ions()[ion].acid == name]
@@ -138,7 +143,7 @@ def _constants(slopes: FloatArray, acid: int, table: AcidTable, temperature: Flo
     out = []
     for step in range(int(table.steps[acid])):
         q = np.full(len(temperature), int(table.first[acid]) + step)
-        out.append(slopes[:, step] * u_at(table.u[q], table.u_dh[q], table.u_dcp[q], temperature))
+        out.append(slopes[:, step] * u_constant(table, q, temperature))
     return out
 
 

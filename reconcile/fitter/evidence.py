@@ -24,7 +24,7 @@ class Evidence:
     """n readings of solutions that hold the studied acid, and what is needed to fit and to judge them.
 
     index : IntArray (n,)        readings of the record
-    status : TextArray (n,)      "used", "void", "outside_electrode_range", "not_solved"; only "used" ones are fitted
+    status : TextArray (n,)      "used", "void", "adjusted", "outside_electrode_range" or "not_solved"
     cases : Cases                all n readings as one case
     origin : IntArray (c,)       contribution of the record behind every contribution of the cases
     observed, temperature, u_temperature : FloatArray (n,)
@@ -137,6 +137,13 @@ def evidence(
     )
 
 
+def _left_open(records: BatchRecords, index: IntArray) -> BoolArray:
+    """Readings of solutions with an amount that the record leaves to a pH: that pH is no evidence for constants."""
+    held = np.zeros(len(records.solutions), bool)
+    held[records.solutions.solution[records.open_amounts.contribution]] = True
+    return held[np.asarray(records.readings_solution, np.intp)[index]]
+
+
 def _statuses(records: BatchRecords, settings: Settings, index: IntArray, cases: Cases) -> TextArray:
     table = records.readings
     ph = np.asarray(table["ph"], float)[index]
@@ -146,5 +153,6 @@ def _statuses(records: BatchRecords, settings: Settings, index: IntArray, cases:
     unknown = np.bincount(cases.reading, ~np.isfinite(cases.amount), cases.readings) > 0.0
     unknown |= ~((cases.temperature_c >= 0.0) & (cases.temperature_c <= 100.0)) | ~np.isfinite(ph)
     status[unknown] = "not_solved"
+    status[_left_open(records, index)] = "adjusted"
     status[table["standing"][index] == "void"] = "void"
     return status

@@ -72,7 +72,7 @@ def fit_pka(
     Bates and Watts 1988, Nonlinear Regression Analysis and Its Applications; JCGM 100:2008; see each part for its own.
     """
     say = progress or (lambda doing, share: None)
-    studied = understood(question)
+    studied = understood(question, settings["prediction.pk_equations"])
     say("gathering the readings", 0.3)
     every = evidence(records, settings, studied.table(studied.numbers[-1]), studied.acid, question.noise)
     _check(every, studied, question)
@@ -149,7 +149,7 @@ def _told(
     say("trying the acids of the library", 0.75)
     free = [fitted.jacobian[:, j] for j in (shape.strength, shape.offset) if fitted.free[0, j]]
     sought = sum(step.standing == "found" for step in results) or int(fitted.free[0, shape.pka].sum())
-    ranked = candidates(used, fitted, errors, free, sought)
+    ranked = candidates(used, fitted, errors, free, sought, acids)
     shift = apparent_shift(used.medium.model, shape.charge, shape.steps, used.temperature, found.ionic_strength)
     degrees = neutralised(found.ph, fitted.theta[0, shape.pka] + shift)
     forms = _forms(used)

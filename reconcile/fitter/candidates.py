@@ -3,15 +3,19 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 
 import numpy as np
 
 from reconcile.chemistry.acids import AcidTable
+from reconcile.chemistry.composition import form_table
+from reconcile.fitter.cases import Medium
 from reconcile.fitter.common_errors import Common
 from reconcile.fitter.evidence import Evidence
 from reconcile.fitter.fitting import Fitted
+from reconcile.fitter.further_acids import with_further
 from reconcile.fitter.library_constants import u_constant
-from reconcile.fitter.model import evaluate
+from reconcile.fitter.model import evaluate, without_uncertainty
 from reconcile.fitter.scatter import quantile_f
 from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.pka_results import PkaCandidate
@@ -49,7 +53,7 @@ def candidates(
     sought : int
         Number of constants found.
     table : AcidTable
-        The library with its uncertainties; an unfamiliar acid behind it is not tried.
+        The library with its uncertainties.
 
     Returns
     -------
@@ -97,7 +101,7 @@ def _possible(evidence: Evidence, table: AcidTable) -> IntArray:
     medium = evidence.medium
     name, charge = medium.acids.names[medium.studied], medium.acids.charge[medium.studied]
     low, high = table.charge - table.steps - 1e-9, table.charge + 1e-9
-    fits = np.arange(len(table.names)) < len({row.acid for row in table.rows})
+    fits = np.ones(len(table.names), bool)
     for f in medium.bringing.tolist():
         form = evidence.records.forms[f]
         carried = [float(ions()[ion].charge) for ion in form.ions if ions()[ion].acid == name]
@@ -106,6 +110,18 @@ def _possible(evidence: Evidence, table: AcidTable) -> IntArray:
         for z in carried:
             fits &= (low <= z) & (z <= high)
     return np.flatnonzero(fits)
+
+
+def _wide(evidence: Evidence, table: AcidTable) -> Medium:
+    """The chemistry of the solutions with the whole library; an unfamiliar acid stands behind it."""
+    own = evidence.medium
+    name, place = own.acids.names[own.studied], own.studied
+    wide = table
+    if name not in table.index:
+        shape = (1, int(own.acids.steps[place]))
+        wide = with_further(table, (name,), int(own.acids.charge[place]), {"pka": np.full(shape, 7.0)})
+    plain = without_uncertainty(wide)
+    return replace(own, forms=form_table(evidence.records.forms, plain), acids=plain, studied=plain.index[name])
 
 
 def _misfits(
@@ -122,11 +138,12 @@ def _misfits(
     observed, variance = evidence.observed[rows], fitted.data.variance[rows]
     shared = [error.effect[rows] * error.u for error in errors if not error.own]
     shared += [WIDE * column[rows] for column in free]
+    medium = _wide(evidence, table)
     misfit, rms = np.empty(len(possible)), np.empty(len(possible))
     for begin in range(0, len(possible), TOGETHER):
         some = possible[begin : begin + TOGETHER]
         many = cases.take(np.zeros(len(some), np.intp))
-        found = evaluate(evidence.medium, many, evidence.medium.acids, some, np.ones(len(some)))
+        found = evaluate(medium, many, medium.acids, some, np.ones(len(some)))
         ph = found.ph.reshape(len(some), len(rows))
         slopes = found.slopes.reshape(len(some), len(rows), -1)
         for k, acid in enumerate(some.tolist()):

@@ -162,7 +162,8 @@ def _record(
     paths = [one for one in source if not isinstance(one, BatchRecords)]
     if books and (paths or len(books) > 1):
         raise TypeError("expected files, or one BatchRecords")
-    return with_adjustments(books[0] if books else _read(paths, settings, columns, names), settings)
+    record = books[0] if books else _read(paths, settings, columns, names)
+    return with_adjustments(record, settings) if names is None else record
 
 
 def meters(
@@ -229,8 +230,6 @@ def fit_pka(
 
     chosen, question = settings_of(settings), PkaQuestion(acid, **about)
     names = understood(question).names
-    if progress:
-        progress("reading the record", 0.0)
     return fit(_record(source, chosen, columns, names), question, chosen, progress)
 
 

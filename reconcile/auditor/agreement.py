@@ -15,17 +15,20 @@ STRAGGLER, OUTLIER = 0.05, 0.01
 
 
 def compare(
-    solution: str, meters: list[str], mean: FloatArray, sd: FloatArray, count: IntArray, df: FloatArray, least: float
+    solution: str, meters: list[str], mean: FloatArray, sd: FloatArray, count: IntArray, df: FloatArray, step: float
 ) -> list[Agreement]:
     """The meters that read one solution, each against the others.
 
     mean, sd : FloatArray (p,) of the residuals of each meter [pH], sd NaN where there is none
     count : IntArray (p,) readings; df : FloatArray (p,) degrees of freedom of sd, 0 where there is none
-    least : display's share of the spread [pH], below which no spread between meters is believed
+    step : resolution of the display [pH], 0 where unknown; means that lie within it (over the square root of the number
+        of readings) show no disagreement, and have no h
     """
     p = len(meters)
-    centre = algorithm_a(mean, least)
+    centre = algorithm_a(mean, step / float(np.sqrt(12.0 * count.min())))
     h, k = h_statistics(mean), k_statistics(sd, df)
+    if np.ptp(mean) <= step / float(np.sqrt(count.min())) * (1.0 + 1e-9):
+        h = np.full(p, np.nan)
     h_5, h_1 = h_critical(p, STRAGGLER), h_critical(p, OUTLIER)
     k_5, k_1 = k_critical(df, STRAGGLER), k_critical(df, OUTLIER)
     return [
@@ -61,13 +64,13 @@ def agreement(seen: MeterReadings, noise: tuple[MeterNoise, ...]) -> tuple[Agree
     layout = seen.layout
     found: list[Agreement] = []
     display = layout.resolution[np.isfinite(layout.resolution)]
-    least = float(np.median(display)) / 12.0**0.5 if len(display) else 0.0
+    step = float(np.median(display)) if len(display) else 0.0
     if len(layout.meters) >= LEAST_METERS:
         sd = np.array([n.sd for n in noise])
         df = np.array([n.df if np.isfinite(n.sd) else 0.0 for n in noise])
         count = np.array([n.readings for n in noise], np.intp)
-        found += compare(WHOLE_RECORD, list(layout.meters), meter_means(seen), sd, count, df, 0.0)
-    return (*found, *_by_solution(seen, least))
+        found += compare(WHOLE_RECORD, list(layout.meters), meter_means(seen), sd, count, df, step)
+    return (*found, *_by_solution(seen, step))
 
 
 def solution_labels(seen: MeterReadings) -> TextArray:
@@ -84,7 +87,7 @@ def solution_labels(seen: MeterReadings) -> TextArray:
     return np.array(labels, object)
 
 
-def _by_solution(seen: MeterReadings, least: float) -> list[Agreement]:
+def _by_solution(seen: MeterReadings, step: float) -> list[Agreement]:
     layout, r = seen.layout, seen.of_meters
     width = len(layout.meters)
     names, code = np.unique(solution_labels(seen).astype(str), return_inverse=True)
@@ -107,6 +110,6 @@ def _by_solution(seen: MeterReadings, least: float) -> list[Agreement]:
             sd[level, own],
             count[level, own].astype(np.intp),
             np.maximum(count[level, own] - 1, 0).astype(float),
-            least,
+            step,
         )
     return found

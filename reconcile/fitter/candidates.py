@@ -3,16 +3,19 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 
 import numpy as np
 
-from reconcile.chemistry.acids import AcidTable, acid_table
-from reconcile.chemistry.temperature import u_at
-from reconcile.chemistry.water import ZERO_CELSIUS
+from reconcile.chemistry.acids import AcidTable
+from reconcile.chemistry.composition import form_table
+from reconcile.fitter.cases import Medium
 from reconcile.fitter.common_errors import Common
 from reconcile.fitter.evidence import Evidence
 from reconcile.fitter.fitting import Fitted
-from reconcile.fitter.model import evaluate
+from reconcile.fitter.further_acids import with_further
+from reconcile.fitter.library_constants import u_constant
+from reconcile.fitter.model import evaluate, without_uncertainty
 from reconcile.fitter.scatter import quantile_f
 from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.pka_results import PkaCandidate
@@ -30,7 +33,12 @@ TOGETHER = 40
 
 
 def candidates(
-    evidence: Evidence, fitted: Fitted, errors: Sequence[Common], free: Sequence[FloatArray], sought: int
+    evidence: Evidence,
+    fitted: Fitted,
+    errors: Sequence[Common],
+    free: Sequence[FloatArray],
+    sought: int,
+    table: AcidTable,
 ) -> tuple[PkaCandidate, ...]:
     """The acids of the library that explain the readings best, best first.
 
@@ -44,6 +52,8 @@ def candidates(
         Effects of what was set free beside the constants; every candidate may use them too.
     sought : int
         Number of constants found.
+    table : AcidTable
+        The library with its uncertainties.
 
     Returns
     -------
@@ -61,7 +71,6 @@ def candidates(
     ----------
     Seber and Wild 1989, Nonlinear Regression, section 5.3 (likelihood ratio of a subset of parameters).
     """
-    table = acid_table()
     possible = _possible(evidence, table)
     kept = np.flatnonzero(fitted.data.kept)
     if len(kept) > SCREENED:
@@ -74,12 +83,12 @@ def candidates(
     best = _quadratic(fitted.residual[kept], fitted.data.variance[kept], columns)
     ratio = -0.5 * (misfit - best)
     within = float(quantile_f(max(sought, 1), fitted.freedom, LEVEL)[0])
-    mean = float(evidence.temperature[kept].mean()) + ZERO_CELSIUS
+    mean = float(evidence.temperature[kept].mean())
     found = []
     for place in np.argsort(-ratio, kind="stable")[:MOST].tolist():
         acid = int(possible[place])
-        steps = slice(int(table.first[acid]), int(table.first[acid] + table.steps[acid]))
-        pka = table.p[steps] + table.q[steps] / mean + table.r[steps] * np.log(mean)
+        constant = int(table.first[acid]) + np.arange(int(table.steps[acid]))
+        pka = table.pka_at(constant, np.full(len(constant), mean))
         explains = bool(-2.0 * ratio[place] <= within)
         found.append(
             PkaCandidate(table.names[acid], float(ratio[place]), explains, float(rms[place]), tuple(pka.tolist()))
@@ -103,6 +112,18 @@ def _possible(evidence: Evidence, table: AcidTable) -> IntArray:
     return np.flatnonzero(fits)
 
 
+def _wide(evidence: Evidence, table: AcidTable) -> Medium:
+    """The chemistry of the solutions with the whole library; an unfamiliar acid stands behind it."""
+    own = evidence.medium
+    name, place = own.acids.names[own.studied], own.studied
+    wide = table
+    if name not in table.index:
+        shape = (1, int(own.acids.steps[place]))
+        wide = with_further(table, (name,), int(own.acids.charge[place]), {"pka": np.full(shape, 7.0)})
+    plain = without_uncertainty(wide)
+    return replace(own, forms=form_table(evidence.records.forms, plain), acids=plain, studied=plain.index[name])
+
+
 def _misfits(
     evidence: Evidence,
     fitted: Fitted,
@@ -117,11 +138,12 @@ def _misfits(
     observed, variance = evidence.observed[rows], fitted.data.variance[rows]
     shared = [error.effect[rows] * error.u for error in errors if not error.own]
     shared += [WIDE * column[rows] for column in free]
+    medium = _wide(evidence, table)
     misfit, rms = np.empty(len(possible)), np.empty(len(possible))
     for begin in range(0, len(possible), TOGETHER):
         some = possible[begin : begin + TOGETHER]
         many = cases.take(np.zeros(len(some), np.intp))
-        found = evaluate(evidence.medium, many, evidence.medium.acids, some, np.ones(len(some)))
+        found = evaluate(medium, many, medium.acids, some, np.ones(len(some)))
         ph = found.ph.reshape(len(some), len(rows))
         slopes = found.slopes.reshape(len(some), len(rows), -1)
         for k, acid in enumerate(some.tolist()):
@@ -138,7 +160,7 @@ def _constants(slopes: FloatArray, acid: int, table: AcidTable, temperature: Flo
     out = []
     for step in range(int(table.steps[acid])):
         q = np.full(len(temperature), int(table.first[acid]) + step)
-        out.append(slopes[:, step] * u_at(table.u[q], table.u_dh[q], table.u_dcp[q], temperature))
+        out.append(slopes[:, step] * u_constant(table, q, temperature))
     return out
 
 

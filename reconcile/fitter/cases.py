@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Callable
+from dataclasses import dataclass, fields, replace
 from functools import cached_property
+from typing import Any
 
 import numpy as np
 
@@ -76,6 +78,29 @@ class Cases:
         return np.asarray(values)[self.case]
 
 
+_ACROSS = ("acid", "units")
+"""Columns of a FormTable that have the forms along their second axis; the others have them along the first."""
+
+
+def _by_form(table: FormTable, change: Callable[[AnyArray, int, str], AnyArray]) -> FormTable:
+    changed: dict[str, Any] = {}
+    for field in fields(FormTable):
+        value = getattr(table, field.name)
+        if isinstance(value, np.ndarray):
+            changed[field.name] = change(value, 1 if field.name in _ACROSS else 0, field.name)
+    return replace(table, **changed)
+
+
+def forms_taken(table: FormTable, which: IntArray) -> FormTable:
+    """Some forms of a table, in this order."""
+    return _by_form(table, lambda value, axis, _: np.take(value, which, axis=axis))
+
+
+def forms_joined(table: FormTable, further: FormTable) -> FormTable:
+    """The forms of two tables, one behind the other."""
+    return _by_form(table, lambda value, axis, name: np.concatenate([value, getattr(further, name)], axis=axis))
+
+
 @dataclass(frozen=True)
 class Medium:
     """What all cases share: the forms in the solutions, the acids they bring, and which of these is studied.
@@ -106,15 +131,9 @@ class Medium:
     def forms_with(self, stands_in: IntArray) -> FormTable:
         """The forms, then for each case those that bring the studied acid, with the acid that stands in for it."""
         own = self.bringing
-        times = len(stands_in)
-        acid = np.tile(self.forms.acid[:, own], times)
-        acid = np.where(acid == self.studied, np.repeat(stands_in, len(own)), acid)
-        return FormTable(
-            np.concatenate([self.forms.charge, np.tile(self.forms.charge[own], times)]),
-            np.concatenate([self.forms.square, np.tile(self.forms.square[own], times)]),
-            np.concatenate([self.forms.acid, acid], axis=1),
-            np.concatenate([self.forms.units, np.tile(self.forms.units[:, own], times)], axis=1),
-        )
+        further = forms_taken(self.forms, np.tile(own, len(stands_in)))
+        acid = np.where(further.acid == self.studied, np.repeat(stands_in, len(own)), further.acid)
+        return forms_joined(self.forms, replace(further, acid=acid))
 
     def contents(self, cases: Cases, factor: FloatArray) -> Contents:
         """What every reading holds when the amount of the studied acid is `factor` (P,) times what is stated."""

@@ -10,11 +10,12 @@ import numpy as np
 from reconcile.chemistry.acids import AcidTable
 from reconcile.chemistry.composition import entries_at
 from reconcile.chemistry.prediction import u_of_model
-from reconcile.chemistry.temperature import U_KNOWN_DH, U_MISSING_DH, u_at
+from reconcile.chemistry.temperature import U_KNOWN_DH, U_MISSING_DH
 from reconcile.chemistry.uncertainty import ROOT3
 from reconcile.fitter.evidence import Evidence
 from reconcile.fitter.fitting import Fitted, inverse
 from reconcile.fitter.least_squares import normal
+from reconcile.fitter.library_constants import u_constant
 from reconcile.fitter.model import Found, Shape, per_enthalpy
 from reconcile.records.arrays import BoolArray, FloatArray
 from reconcile.records.substances import Form
@@ -72,6 +73,11 @@ def common_errors(
         Whether the library holds the studied acid, so that steps not sought are held at its values.
     """
     out = [*_lots(evidence, found), *_series(evidence, found), *_meters(evidence, found.ph)]
+    marked = evidence.records.solutions.without_effect
+    if len(marked):
+        allowance = float(evidence.settings["substances.without_effect_allowance"])
+        held = marked[np.asarray(evidence.records.readings_solution, np.intp)[evidence.index]]
+        out.append(Common("declared without effect", np.asarray(held, float), allowance))
     out.append(Common("temperature", np.nan_to_num(found.d_temperature) * evidence.u_temperature, 1.0))
     out.append(Common("activity model", found.d_model, u_of_model(evidence.medium.model, evidence.settings)))
     out += _constants(evidence, found, acids)
@@ -84,8 +90,7 @@ def common_errors(
             u = U_MISSING_DH if unknown else U_KNOWN_DH
             out.append(Common("temperature", found.slopes[:, step] * apart, u))
         if known and not seen[step]:
-            q = slice(first + step, first + step + 1)
-            u = float(u_at(acids.u[q], acids.u_dh[q], acids.u_dcp[q], mean)[0])
+            u = float(u_constant(acids, np.array([first + step]), mean)[0])
             out.append(Common("other constants", found.slopes[:, step], u, own=True))
     return out
 
@@ -149,10 +154,7 @@ def _constants(evidence: Evidence, found: Found, acids: AcidTable) -> Iterable[C
     for q in np.unique(constants.column[others]).tolist():
         mine = constants.column == q
         effect = np.bincount(row[mine], constants.value[mine], n).astype(float)
-        some = slice(q, q + 1)
-        yield Common(
-            "other constants", effect, float(u_at(acids.u[some], acids.u_dh[some], acids.u_dcp[some], mean)[0])
-        )
+        yield Common("other constants", effect, float(u_constant(acids, np.array([q]), mean)[0]))
     yield Common("other constants", found.answers.u_constants, 1.0)  # of pKw alone, see model.without_uncertainty
 
 
@@ -190,7 +192,7 @@ def budget(evidence: Evidence, fitted: Fitted, errors: Iterable[Common]) -> Budg
     parts[READING] = fitted.covariance[0]
     for error in errors:
         shift = spread @ np.nan_to_num(error.effect) * error.u
-        parts[error.source] = parts[error.source] + np.outer(shift, shift)
+        parts[error.source] = parts.get(error.source, 0.0) + np.outer(shift, shift)
     return Budget(parts)
 
 

@@ -8,11 +8,12 @@ import numpy as np
 
 from reconcile.chemistry.acids import AcidTable
 from reconcile.chemistry.activity import activity_model
-from reconcile.chemistry.composition import entries_at, form_table
+from reconcile.chemistry.composition import CARBONIC, entries_at, form_table
 from reconcile.chemistry.of_records import Record, laid_out
 from reconcile.chemistry.uncertainty import ROOT3
 from reconcile.chemistry.water import co2_solubility
 from reconcile.fitter.cases import Cases, Medium
+from reconcile.fitter.further_acids import only
 from reconcile.fitter.model import without_uncertainty
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray, TextArray
 from reconcile.records.book import BatchRecords
@@ -24,18 +25,20 @@ class Evidence:
     """n readings of solutions that hold the studied acid, and what is needed to fit and to judge them.
 
     index : IntArray (n,)        readings of the record
-    status : TextArray (n,)      "used", "void", "outside_electrode_range", "not_solved"; only "used" ones are fitted
+    status : TextArray (n,)      "used", "void", "adjusted", "outside_electrode_range" or "not_solved"
     cases : Cases                all n readings as one case
     origin : IntArray (c,)       contribution of the record behind every contribution of the cases
     observed, temperature, u_temperature : FloatArray (n,)
     floor, averaged, given : FloatArray (n,)   as in Scatter
     series : TextArray (n,)      name of the titration series, "" for a solution made by itself
     record : Record              what the record says, with lots and their uncertainties
+    acids : AcidTable            acids of the medium, with their uncertainties
     """
 
     records: BatchRecords
     settings: Settings
     medium: Medium
+    acids: AcidTable
     index: IntArray
     status: TextArray
     cases: Cases
@@ -57,7 +60,7 @@ class Evidence:
         rows = np.flatnonzero(keep)
         entry, _ = entries_at(self.cases.start, rows)
         return Evidence(
-            self.records, self.settings, self.medium, self.index[rows], self.status[rows],
+            self.records, self.settings, self.medium, self.acids, self.index[rows], self.status[rows],
             self.cases.of_readings(rows, np.array([len(rows)])), self.origin[entry], self.observed[rows],
             self.temperature[rows], self.u_temperature[rows], self.floor[rows], self.averaged[rows], self.given[rows],
             self.series[rows], self.record,
@@ -72,6 +75,11 @@ def holds(records: BatchRecords, acid: str) -> BoolArray:
         some = brings[records.solutions.form] & ~(records.solutions.amount == 0.0)
         found[records.solutions.solution[some]] = True
     return found
+
+
+def met(records: BatchRecords, acids: AcidTable, acid: str) -> AcidTable:
+    """Of a table, the acids that the forms of a record bring, with the one under study."""
+    return only(acids, [acid, CARBONIC, *(name for form in records.forms for name in form.acids)])
 
 
 def medium_of(records: BatchRecords, settings: Settings, acids: AcidTable, acid: str) -> Medium:
@@ -108,7 +116,7 @@ def evidence(
 
     noise : standard deviation of a reading [pH], where it is given; else the record's own statement, or an estimate
     """
-    record = laid_out(records, settings)
+    record, acids = laid_out(records, settings), met(records, acids, acid)
     table = records.readings
     index = np.flatnonzero(holds(records, acid)[np.asarray(records.readings_solution, np.intp)])
     temperature = record.temperature_c[index]
@@ -122,6 +130,7 @@ def evidence(
         records,
         settings,
         medium_of(records, settings, acids, acid),
+        acids,
         index,
         _statuses(records, settings, index, cases),
         cases,
@@ -137,6 +146,13 @@ def evidence(
     )
 
 
+def _left_open(records: BatchRecords, index: IntArray) -> BoolArray:
+    """Readings of solutions with an amount that the record leaves to a pH: that pH is no evidence for constants."""
+    held = np.zeros(len(records.solutions), bool)
+    held[records.solutions.solution[records.open_amounts.contribution]] = True
+    return held[np.asarray(records.readings_solution, np.intp)[index]]
+
+
 def _statuses(records: BatchRecords, settings: Settings, index: IntArray, cases: Cases) -> TextArray:
     table = records.readings
     ph = np.asarray(table["ph"], float)[index]
@@ -146,5 +162,6 @@ def _statuses(records: BatchRecords, settings: Settings, index: IntArray, cases:
     unknown = np.bincount(cases.reading, ~np.isfinite(cases.amount), cases.readings) > 0.0
     unknown |= ~((cases.temperature_c >= 0.0) & (cases.temperature_c <= 100.0)) | ~np.isfinite(ph)
     status[unknown] = "not_solved"
+    status[_left_open(records, index)] = "adjusted"
     status[table["standing"][index] == "void"] = "void"
     return status

@@ -9,6 +9,7 @@ from typing import Any
 
 import numpy as np
 
+from reconcile.chemistry.acids import acid_table
 from reconcile.fitter.account import account
 from reconcile.fitter.apparent import apparent_shift, neutralised
 from reconcile.fitter.candidates import candidates
@@ -72,7 +73,7 @@ def fit_pka(
     Bates and Watts 1988, Nonlinear Regression Analysis and Its Applications; JCGM 100:2008; see each part for its own.
     """
     say = progress or (lambda doing, share: None)
-    studied = understood(question)
+    studied = understood(question, settings["prediction.pk_equations"])
     say("gathering the readings", 0.3)
     every = evidence(records, settings, studied.table(studied.numbers[-1]), studied.acid, question.noise)
     _check(every, studied, question)
@@ -138,7 +139,7 @@ def _told(
 ) -> PkaFit:
     used = every.only(every.status == "used")
     shape, fitted, task = best.structure.shape, best.fitted, best.task
-    acids = studied.table(shape.steps)
+    acids = used.acids
     found = _found(used, best)
     errors = common_errors(used, found, shape, acids, fitted.seen[0], studied.known)
     shares = budget(used, fitted, errors)
@@ -149,7 +150,7 @@ def _told(
     say("trying the acids of the library", 0.75)
     free = [fitted.jacobian[:, j] for j in (shape.strength, shape.offset) if fitted.free[0, j]]
     sought = sum(step.standing == "found" for step in results) or int(fitted.free[0, shape.pka].sum())
-    ranked = candidates(used, fitted, errors, free, sought)
+    ranked = candidates(used, fitted, errors, free, sought, acid_table(studied.equations))
     shift = apparent_shift(used.medium.model, shape.charge, shape.steps, used.temperature, found.ionic_strength)
     degrees = neutralised(found.ph, fitted.theta[0, shape.pka] + shift)
     forms = _forms(used)

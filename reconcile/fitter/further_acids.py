@@ -1,7 +1,8 @@
-"""The table of acids with further acids behind, whatever columns the table has."""
+"""The table of acids with further acids behind, or with some of its acids only, whatever columns it has."""
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import fields
 from typing import Any
 
@@ -60,4 +61,30 @@ def with_further(
         else:  # of every protonation state
             state = value[own] if len(own) else sizes if field.name == "size" else np.zeros(s + 1)
             made[field.name] = np.concatenate([value, np.tile(state, m)])
+    return AcidTable(**made)
+
+
+def only(base: AcidTable, names: Iterable[str]) -> AcidTable:
+    """The table with these acids only, in its own order: its width is the cost of every call of the engine."""
+    wanted = set(names)
+    acids = np.array([i for i, name in enumerate(base.names) if name in wanted], np.intp)
+    steps = base.steps[acids]
+    ends = np.cumsum(steps)
+    within = np.arange(ends[-1] if len(ends) else 0) - np.repeat(ends - steps, steps)
+    constants = np.repeat(base.first[acids], steps) + within
+    states = np.concatenate([base.first[i] + i + np.arange(base.steps[i] + 1) for i in acids.tolist()])
+    a, q = len(base.names), len(base.pka)
+    made: dict[str, Any] = {}
+    for field in fields(AcidTable):
+        value = getattr(base, field.name)
+        if field.name == "names":
+            made[field.name] = tuple(base.names[i] for i in acids.tolist())
+        elif field.name == "first":
+            made[field.name] = (ends - steps).astype(np.intp)
+        elif field.name == "rows":  # an acid behind those of the library has no rows
+            made[field.name] = tuple(base.rows[i] for i in constants.tolist() if i < len(base.rows))
+        elif not isinstance(value, np.ndarray) or value.ndim != 1:
+            made[field.name] = value
+        else:
+            made[field.name] = value[{q: constants, a: acids}.get(len(value), states)]
     return AcidTable(**made)

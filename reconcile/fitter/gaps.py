@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
+from dataclasses import replace
 
 import numpy as np
 
-from reconcile.chemistry.composition import FormTable
+from reconcile.chemistry.composition import form_table
 from reconcile.chemistry.water import ZERO_CELSIUS
 from reconcile.fitter.apparent import apparent_shift, neutralised
-from reconcile.fitter.cases import Cases, Medium
+from reconcile.fitter.cases import Cases, forms_joined
 from reconcile.fitter.evidence import Evidence
 from reconcile.fitter.fitting import Fitted, inverse
 from reconcile.fitter.least_squares import normal
@@ -18,7 +19,7 @@ from reconcile.fitter.profile import Interval
 from reconcile.fitter.scatter import quantile_t
 from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.pka_results import Gap
-from reconcile.records.substances import Form
+from reconcile.records.substances import Form, catalogue
 
 RANGES = ((10.0, 30.0), (30.0, 70.0), (70.0, 90.0))
 """Percent neutralised: the useful window of a step, its middle and the two sides of it."""
@@ -27,6 +28,7 @@ WORTH = 0.7
 USEFUL = 0.4
 """Width of an interval above which one more reading settles nothing."""
 TRIED = 161
+STRONG = ("sodium hydroxide", "hydrochloric acid")
 HARMLESS = {"corrosive"}
 """Hazard word with which a gap is still told; any other word, or a gas given off with acid, keeps it unsaid."""
 
@@ -105,12 +107,9 @@ def _supposed(evidence: Evidence, fitted: Fitted, shape: Shape) -> tuple[FloatAr
     own = amount[middle]
     ends = np.array([-shape.charge - 0.1, shape.steps - shape.charge + 0.1]) * own
     wanted = np.linspace(ends[0], ends[1], TRIED) - charge[middle]
-    forms = FormTable(
-        np.append(medium.forms.charge, [1.0, -1.0]),
-        np.append(medium.forms.square, [1.0, 1.0]),
-        np.pad(medium.forms.acid, ((0, 0), (0, 2)), constant_values=-1),
-        np.pad(medium.forms.units, ((0, 0), (0, 2))),
-    )
+    strong = form_table([catalogue().by_name[name] for name in STRONG], medium.acids)
+    strong = replace(strong, acid=np.full((len(medium.forms.acid), 2), -1), units=np.zeros((len(medium.forms.acid), 2)))
+    forms = forms_joined(medium.forms, strong)
     count = len(one.form)
     form = np.tile(np.append(one.form, 0), (TRIED, 1))
     form[:, -1] = len(medium.forms.charge) + (wanted < 0.0)
@@ -125,7 +124,7 @@ def _supposed(evidence: Evidence, fitted: Fitted, shape: Shape) -> tuple[FloatAr
         np.full(TRIED, mean),
         np.full(TRIED, float(one.open_co2[0])),
     )
-    found = found_at(Medium(forms, medium.acids, medium.studied, medium.model), supposed, shape, fitted.theta)
+    found = found_at(replace(medium, forms=forms), supposed, shape, fitted.theta)
     rows = np.zeros((TRIED, shape.size))
     rows[:, shape.pka] = found.slopes
     rows[:, shape.dh] = found.slopes * per_enthalpy(supposed.temperature_c, shape)[:, None]

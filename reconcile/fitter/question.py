@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 
 import numpy as np
@@ -66,6 +66,7 @@ class Studied:
     charge : of the fully protonated form; numbers : numbers of steps to try, ascending
     form : what was weighed, None for an acid of the library (its forms are those of the catalogue)
     words : what was weighed, in words
+    equations : whether published equations give the library's pKa(T) where there is one
     """
 
     acid: str
@@ -74,6 +75,7 @@ class Studied:
     numbers: tuple[int, ...]
     form: UnfamiliarForm | None
     words: str
+    equations: bool = True
 
     @property
     def names(self) -> Catalogue:
@@ -82,11 +84,12 @@ class Studied:
 
     def table(self, steps: int) -> AcidTable:
         """The library's acids, with the unfamiliar one behind; its constants stand at 7 until they are found."""
+        library = acid_table(self.equations)
         if self.known:
-            return acid_table()
+            return library
         pka = np.full((1, steps), 7.0)
         columns = {"pka": pka, "p": pka, "u": np.ones((1, steps))}
-        return with_further(acid_table(), (self.acid,), self.charge, columns)
+        return with_further(library, (self.acid,), self.charge, columns)
 
 
 def refusal(code: str, read: str = "", **words: str) -> InputProblems:
@@ -94,7 +97,7 @@ def refusal(code: str, read: str = "", **words: str) -> InputProblems:
     return InputProblems([Problem(code, Place(""), read, tuple(words.items()))])
 
 
-def understood(question: PkaQuestion) -> Studied:
+def understood(question: PkaQuestion, equations: bool = True) -> Studied:
     """What the question means; raises InputProblems where it contradicts itself or the library."""
     _check_numbers(question)
     name = question.acid.strip()
@@ -102,8 +105,8 @@ def understood(question: PkaQuestion) -> Studied:
         raise refusal("pka-option", name="the acid", wanted="the name of a substance, such as acetic acid")
     known = _in_library(name)
     if known:
-        return _of_library(question, known)
-    return _unfamiliar(question, name)
+        return replace(_of_library(question, known), equations=equations)
+    return replace(_unfamiliar(question, name), equations=equations)
 
 
 def _check_numbers(question: PkaQuestion) -> None:

@@ -10,6 +10,7 @@ from reconcile.chemistry.water import ZERO_CELSIUS
 from reconcile.fitter.common_errors import taking_variance
 from reconcile.fitter.evidence import Evidence
 from reconcile.fitter.fitting import Fitted, Task, fit
+from reconcile.fitter.library_constants import heats
 from reconcile.fitter.model import Shape, found_at, predict
 from reconcile.fitter.question import Studied
 from reconcile.fitter.rejection import fit_without
@@ -36,14 +37,12 @@ def structure(evidence: Evidence, studied: Studied, steps: int, free: tuple[str,
     kelvin = float(evidence.temperature.mean()) + ZERO_CELSIUS
     acids = studied.table(steps)
     i = acids.index[studied.acid]
-    own = slice(int(acids.first[i]), int(acids.first[i]) + steps)
+    constant = int(acids.first[i]) + np.arange(steps)
     dcp, dh = np.zeros(steps), np.zeros(steps)
     if studied.known:
-        rows = acids.rows[own]
-        dcp = np.nan_to_num(np.array([row.dcp_j_k_mol for row in rows], float))
-        dh = np.nan_to_num(np.array([row.dh_kj_mol for row in rows], float)) + dcp * (kelvin - 298.15) / 1000.0
+        dh, dcp = heats(acids, constant, kelvin - ZERO_CELSIUS)
     shape = Shape(steps, studied.charge, kelvin, dcp)
-    pka = acids.p[own] + acids.q[own] / kelvin + acids.r[own] * np.log(kelvin)
+    pka = acids.pka_at(constant, np.full(steps, kelvin - ZERO_CELSIUS))
     held = np.concatenate([pka, dh, [0.0, 0.0]])
     warm = float(np.ptp(evidence.temperature)) >= SPAN_K
     mask = np.array([True] * steps + [warm] * steps + ["strength" in free, "offset" in free])

@@ -7,12 +7,13 @@ from dataclasses import dataclass
 import numpy as np
 
 from reconcile.chemistry.acids import AcidTable
-from reconcile.chemistry.temperature import GAS_CONSTANT, LN10, U_KNOWN_DH, u_at
+from reconcile.chemistry.temperature import GAS_CONSTANT, LN10, U_KNOWN_DH
 from reconcile.chemistry.water import ZERO_CELSIUS
 from reconcile.fitter.apparent import apparent_shift
 from reconcile.fitter.common_errors import Budget, extended
 from reconcile.fitter.evidence import Evidence
 from reconcile.fitter.fitting import Fitted
+from reconcile.fitter.library_constants import u_constant
 from reconcile.fitter.model import PER_DH, Shape
 from reconcile.fitter.profile import Interval
 from reconcile.fitter.wording import constant_name, figure, say, uncertainty
@@ -129,11 +130,10 @@ def _library(judged: Judged, step: int) -> tuple[float, float] | None:
     """The library's constant at the readings' mean temperature, with its standard uncertainty."""
     if not judged.known:
         return None
-    acids, kelvin = judged.acids, judged.shape.kelvin
-    q = int(acids.first[judged.evidence.medium.studied]) + step
-    some, mean = slice(q, q + 1), np.array([kelvin - ZERO_CELSIUS])
-    value = float(acids.p[q] + acids.q[q] / kelvin + acids.r[q] * np.log(kelvin))
-    return value, float(u_at(acids.u[some], acids.u_dh[some], acids.u_dcp[some], mean)[0])
+    acids = judged.acids
+    constant = np.array([int(acids.first[judged.evidence.medium.studied]) + step])
+    mean = np.array([judged.shape.kelvin - ZERO_CELSIUS])
+    return float(acids.pka_at(constant, mean)[0]), float(u_constant(acids, constant, mean)[0])
 
 
 def _informative_strength(judged: Judged, step: int) -> float:

@@ -62,6 +62,7 @@ REASONS: Mapping[str, str] = {
     "void": "void",
     "outside_electrode_range": "outside the range of the glass electrode",
     "outside_model": "beyond the ionic strength of the activity model",
+    "adjusted": "of a solution brought to a pH with an amount that is not written",
     "not_solved": "not solved",
 }
 """Why a reading took no part, by its status."""

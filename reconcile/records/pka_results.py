@@ -156,7 +156,7 @@ class PkaFit:
     """A fit of the constants of one acid.
 
     All arrays are (n,), one element a reading of a solution that holds the acid, in file order.
-    index : reading of records.readings; status : "used", "rejected", "void", "outside_electrode_range",
+    index : reading of records.readings; status : "used", "rejected", "void", "adjusted", "outside_electrode_range",
         "outside_model", "not_solved"
     observed, fitted, residual [pH]; u_reading : standard deviation of the reading about the fit [pH]
     leverage : 0 to 1, NaN where the reading took no part; studentised : externally studentised residual

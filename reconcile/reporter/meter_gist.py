@@ -77,7 +77,7 @@ def _crossings(history: MeterHistory) -> str:
         more = f", and {len(ahead) - 3} more." if ahead[3:] else "."
         parts.append(f"Ahead, soonest first: {listed([_crossing(x) for x in ahead[:3]])}{more}")
     if not parts:
-        parts.append("No line reaches a limit within twice the length of its calibrations.")
+        parts.append("No line is known to reach a limit within twice the length of its calibrations.")
     return " ".join([*parts, NO_LEAVE])
 
 

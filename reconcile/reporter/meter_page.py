@@ -113,9 +113,9 @@ def paragraphs(history: MeterHistory) -> list[str]:
         "h and k are those of ISO 5725-2, computed from residuals so that a difference in temperature is no "
         "disagreement, from four meters on. Their 5 % and 1 % values come from the exact laws (Wilrich 2013, "
         "doi:10.1007/s10182-011-0185-y), for k with each meter’s own number of readings; h takes the means of all "
-        "meters as equally well known. The robust centre and its standard deviation follow Algorithm A (ISO 13528, "
-        "Annex C). With many solutions some values lie beyond 1 % by chance; one meter beyond on most of them is what "
-        "to look for.",
+        "meters as equally well known, and is left out where they lie within a step of the display. The robust centre "
+        "and its standard deviation follow Algorithm A (ISO 13528, Annex C). With many solutions some values lie "
+        "beyond 1 % by chance; one meter beyond on most of them is what to look for.",
         ROUNDING_NOTE,
         FORMULA_NOTE,
     ]

@@ -22,6 +22,7 @@ STATUSES = {
     "used": "used",
     "rejected": "rejected",
     "void": "void",
+    "adjusted": "adjusted",
     "outside_electrode_range": "outside electrode range",
     "outside_model": "outside model",
     "not_solved": "not solved",

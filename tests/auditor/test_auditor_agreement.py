@@ -77,10 +77,18 @@ def test_three_meters_cannot_show_anything_in_h() -> None:
 
 def test_one_meter_far_off_stands_out_and_leaves_the_centre() -> None:
     mean = np.array([0.001, -0.002, 0.002, 0.0, 0.001, 0.10])
-    cells = compare("borax", list("ABCDEF"), mean, np.full(6, np.nan), np.ones(6, np.intp), np.zeros(6), 0.003)
+    cells = compare("borax", list("ABCDEF"), mean, np.full(6, np.nan), np.ones(6, np.intp), np.zeros(6), 0.01)
     far = cells[-1]
     assert far.h > far.h_1
     assert abs(far.centre) < 0.003
     assert far.from_centre == pytest.approx(0.10, abs=0.003)
     assert all(abs(c.h) < c.h_5 for c in cells[:-1])
     assert all(np.isnan(c.k) for c in cells)
+
+
+def test_one_step_of_the_display_is_no_disagreement() -> None:
+    """Four single readings at 0.01, one of which shows the next figure: by the law of h alone it is beyond 1 %."""
+    mean = np.array([0.0, 0.01, 0.01, 0.01])
+    assert abs(h_statistics(mean)[0]) > h_critical(4, 0.01)
+    cells = compare("phosphate", list("ABCD"), mean, np.full(4, np.nan), np.ones(4, np.intp), np.zeros(4), 0.01)
+    assert all(np.isnan(c.h) for c in cells)

@@ -11,6 +11,8 @@ from pathlib import Path
 import numpy as np
 
 from reconcile.chemistry.ion_data import interaction_matrix, read_sizes, truesdell_jones
+from reconcile.chemistry.pair_table import Pair
+from reconcile.chemistry.pair_table import pairs as pairs_chosen
 from reconcile.chemistry.pka_law import NEVER, Laws, Terms, laws
 from reconcile.chemistry.temperature import U_KNOWN_DCP, U_KNOWN_DH, U_MISSING_DCP, U_MISSING_DH, van_t_hoff
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
@@ -70,6 +72,7 @@ class AcidTable:
     p, q, r : FloatArray (q,)  pKa(T) = p + q/T + r ln T
     size : FloatArray (a + q,) ion size [angstrom] of every protonation state; those of acid i start at first[i] + i
     use_equations : whether published equations give pKa(T) where there is one (pka_law.py)
+    pairs : ion pairs and condensed species that may take part (pair_table.py)
     """
 
     names: tuple[str, ...]
@@ -86,6 +89,7 @@ class AcidTable:
     r: FloatArray
     size: FloatArray
     use_equations: bool = False
+    pairs: tuple[Pair, ...] = ()
 
     @cached_property
     def index(self) -> Mapping[str, int]:
@@ -215,6 +219,7 @@ def build(
     rows: Iterable[Ionization],
     sizes: Mapping[tuple[str, int], float] | None = None,
     use_equations: bool = False,
+    pairs: tuple[Pair, ...] = (),
 ) -> AcidTable:
     """An AcidTable from rows grouped by acid; raises ValueError for steps, charges or constants that cannot be."""
     grouped: dict[str, list[Ionization]] = {}
@@ -251,6 +256,7 @@ def build(
             float,
         ),
         use_equations=use_equations,
+        pairs=pairs,
     )
 
 
@@ -260,6 +266,6 @@ def usual_size(charge: int) -> float:
 
 
 @cache
-def acid_table(use_equations: bool = True) -> AcidTable:
-    """The acids that come with the package, with or without published equations for pKa(T)."""
-    return build(read_acids(FOLDER / "acids.csv"), read_sizes(), use_equations)
+def acid_table(use_equations: bool = True, ion_pairs: str = "complexes") -> AcidTable:
+    """The acids that come with the package; published equations for pKa(T) and ion pairs as the settings choose."""
+    return build(read_acids(FOLDER / "acids.csv"), read_sizes(), use_equations, pairs_chosen(ion_pairs))

@@ -9,9 +9,10 @@ import numpy as np
 from reconcile.chemistry.acids import AcidTable
 from reconcile.chemistry.activity import ActivityModel
 from reconcile.chemistry.composition import Contents, FormTable, pad
+from reconcile.chemistry.pair_rows import with_pairs
 from reconcile.chemistry.sensitivities import Slopes, slopes
 from reconcile.chemistry.solve import solve
-from reconcile.chemistry.temperature import U_PKW, Solvent, solvent, spread_between
+from reconcile.chemistry.temperature import U_PKW, Solvent, solvent, spread_between, water_at
 from reconcile.chemistry.water import ZERO_CELSIUS
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 
@@ -67,11 +68,6 @@ def alike_together(contents: Contents, forms: FormTable, acids: AcidTable) -> In
     return np.argsort(np.diff(sums[contents.start]).astype(np.uint16), kind="stable")
 
 
-def water_at(water: Solvent, rows: IntArray) -> Solvent:
-    """The entries of a Solvent named by `rows`, in that order."""
-    return Solvent(*(getattr(water, name)[rows] for name in Solvent.__dataclass_fields__))
-
-
 class _Rows:
     """Gathers (row, column, value) triplets chunk by chunk and lays them out row by row at the end."""
 
@@ -96,7 +92,7 @@ class _Rows:
 
 
 def _u_of_constants(some: Slopes, acids: AcidTable, water: Solvent) -> FloatArray:
-    """Root-sum-square of dpH/dpKa times u(pKa) at temperature, over all constants and pKw [pH] (m,).
+    """Root-sum-square of dpH/dpKa times u(pKa) at temperature, over all constants, pKw and those of pairs [pH] (m,).
 
     Steps count as independent: published constants of one acid seldom come with their covariance.
     """
@@ -109,7 +105,7 @@ def _u_of_constants(some: Slopes, acids: AcidTable, water: Solvent) -> FloatArra
     u2 += (acids.u_dcp**2)[at] * by_dcp**2
     u2 *= value
     u2 *= value
-    return np.asarray(np.sqrt(u2.sum(axis=1) + (some.d_pkw * U_PKW) ** 2))
+    return np.asarray(np.sqrt(u2.sum(axis=1) + (some.d_pkw * U_PKW) ** 2 + some.of_pairs))
 
 
 def run(contents: Contents, forms: FormTable, acids: AcidTable, model: ActivityModel) -> Answers:
@@ -122,7 +118,7 @@ def run(contents: Contents, forms: FormTable, acids: AcidTable, model: ActivityM
     forms : FormTable
         Forms that the contributions name.
     acids : AcidTable
-        Ionization constants.
+        Ionization constants, and the ion pairs that may take part.
     model : ActivityModel
         Activity model.
 
@@ -147,6 +143,8 @@ def run(contents: Contents, forms: FormTable, acids: AcidTable, model: ActivityM
         chunk, padding = pad(contents, rows, forms, acids, here, model)
         ph, strength, fine = solve(chunk, model)
         some = slopes(chunk, padding, contents, forms, acids, here, model, ph, strength)
+        if acids.pairs:
+            with_pairs(chunk, padding, contents, forms, acids, here, model, (ph, strength, fine), some)
         out["ph"][rows], out["ionic_strength"][rows], solved[rows] = ph, strength, fine
         out["temperature"][rows], out["model"][rows] = some.d_temperature, some.d_model
         out["titrant"][rows] = some.d_titrant

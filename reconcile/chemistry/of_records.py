@@ -81,7 +81,7 @@ def laid_out(records: BatchRecords, settings: Settings) -> Record:
     return Record(
         records,
         settings,
-        acid_table(settings["prediction.pk_equations"]),
+        acid_table(settings["prediction.pk_equations"], settings["prediction.ion_pairs"]),
         activity_model(settings["prediction.activity_model"]),
         temperature,
         u_temperature,

@@ -110,7 +110,7 @@ def predict_ph(
     u_temperature : array_like, optional
         Standard uncertainty of temperature [K], one or (n,).
     acids : AcidTable, optional
-        Ionization constants; by default the table of the package.
+        Ionization constants and ion pairs; by default the tables of the package, as the settings have it.
 
     Returns
     -------
@@ -144,7 +144,7 @@ def predict_ph(
     if unit not in UNITS:
         raise ValueError(f"no unit of amounts is called {unit!r}; there are: {', '.join(UNITS)}")
     model = model_named(activity_model or settings["prediction.activity_model"])
-    acids = acids or acid_table(settings["prediction.pk_equations"])
+    acids = acids or acid_table(settings["prediction.pk_equations"], settings["prediction.ion_pairs"])
     temperature = _per_row(temperature_c, n, "temperature_c")
     with np.errstate(invalid="ignore"):
         bad = ~np.all(np.isfinite(table) & (table >= 0.0), axis=1)

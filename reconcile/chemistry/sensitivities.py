@@ -8,10 +8,11 @@ import numpy as np
 
 from reconcile.chemistry.acids import AcidTable
 from reconcile.chemistry.activity import SIZE_HYDROGEN, SIZE_HYDROXIDE, ActivityModel
-from reconcile.chemistry.balance import activity, free_ions
+from reconcile.chemistry.balance import Balance, activity, free_ions
 from reconcile.chemistry.composition import Chunk, Contents, FormTable, Padding
 from reconcile.chemistry.fractions import Found, fractions, spread
 from reconcile.chemistry.ion_data import TITRANT, strong_ions
+from reconcile.chemistry.pair_slopes import Solution, adjoint
 from reconcile.chemistry.specific import interaction_slopes
 from reconcile.chemistry.temperature import LN10, Solvent
 from reconcile.chemistry.water import DENSITY_20C, ZERO_CELSIUS, co2_solubility
@@ -26,6 +27,7 @@ class Slopes:
     entry : FloatArray (e,)           dpH/d ln(amount) of each contribution of the chunk
     constant_value, constant : (m, cells), with `constant` -1 where a cell holds none
     degree, degree_acid : (m, slots), with `degree_acid` -1 where a slot holds no acid
+    of_pairs : FloatArray (m,)        square of the share of the pairs' constants in the uncertainty [pH^2]
     """
 
     d_temperature: FloatArray
@@ -37,6 +39,7 @@ class Slopes:
     constant: IntArray
     degree: FloatArray
     degree_acid: IntArray
+    of_pairs: FloatArray
 
 
 def slopes(
@@ -49,6 +52,7 @@ def slopes(
     model: ActivityModel,
     ph: FloatArray,
     strength: FloatArray,
+    solution: Solution | None = None,
 ) -> Slopes:
     """Slopes of pH with respect to everything that the balance rests on, at its answer.
 
@@ -58,6 +62,8 @@ def slopes(
         As they were solved; `water` has one entry for each row of the chunk.
     ph, strength : ndarray (m,)
         The answer: pH [-] and ionic strength [mol/kg]; NaN rows give NaN slopes.
+    solution : Solution, optional
+        Where pairs take part; the chunk is then what its layout leaves to be counted by fractions.
 
     Returns
     -------
@@ -89,9 +95,20 @@ def slopes(
     with np.errstate(divide="ignore", invalid="ignore"):
         inverse = 1.0 / (f_ph * g_i - f_i * g_ph)
     on_charge, on_squares = -g_i * inverse, -0.5 * f_i * inverse  # dpH = on_charge F_p + on_squares (sum m z^2)_p
+    paired = None
+    if solution is not None:
+        closed = np.zeros_like(ph)
+        paired = adjoint(solution, model, ph, strength, Balance(closed, closed, f_ph, f_i, g_ph, g_i))
+        on_charge, on_squares = paired.on_charge, paired.on_squares
 
-    constant_value, constant, d_temperature = _constants(chunk, found, acids, water, on_charge, on_squares)
-    d_pkw = LN10 * oh * (on_charge - on_squares)
+    constant_value, constant, warming = _constants(chunk, found, acids, water, on_charge, on_squares)
+    d_temperature = (constant_value * warming).sum(axis=1)
+    d_pkw, d_model = LN10 * oh * (on_charge - on_squares), on_charge * by_c[0] + on_squares * by_c[1]
+    if paired is not None:
+        first_cell = np.cumsum([0, *(len(slot.k) for slot in chunk.slots)])[:-1].tolist()
+        d_temperature += paired.fill_constants(constant_value, warming, first_cell) + paired.temperature(water)
+        by_a, by_coefficient = paired.activity_slopes(model, water, strength)
+        d_temperature, d_model, d_pkw = d_temperature + by_a, d_model + by_coefficient, d_pkw + paired.on_pkw()
     d_temperature = d_temperature + d_pkw * water.d_pkw + on_charge * by_t[0] + on_squares * by_t[1]
     opened = contents.open_co2[padding.rows] > 0.0
     if opened.any():
@@ -103,7 +120,14 @@ def slopes(
     by_ion = None
     if model.pairwise:
         by_ion = interaction_slopes(chunk, forms, acids, h, oh, found, on_charge, on_squares)
-    entry = _entries(chunk, padding, contents, forms, found, on_charge, on_squares, by_ion)
+    if paired is not None:
+        by_ion = paired.on_metals() + (0.0 if by_ion is None else by_ion + paired.on_interactions())
+    effect = _effects(chunk, padding, found, on_charge, on_squares)
+    if paired is not None:
+        for a, acid in enumerate(paired.layout.acids):
+            if padding.place[acid] < len(padding.columns):
+                effect[:, padding.place[acid]] = paired.on_total[a]
+    entry = _entries(padding, contents, forms, effect, on_charge, on_squares, by_ion)
     d_titrant = on_charge + on_squares
     if by_ion is not None:
         d_titrant = d_titrant + by_ion[:, strong_ions().index(TITRANT)]
@@ -115,9 +139,11 @@ def slopes(
         whole = np.where(x.closed > 0.0, 1.0, sum(x.f, np.zeros_like(ph)))
         degree[:, number] = x.lost / whole / steps
         degree_acid[:, number] = np.where(has, slot.acid, -1)
+    if paired is not None:
+        paired.fill_degree(degree)
     return Slopes(
         d_temperature,
-        on_charge * by_c[0] + on_squares * by_c[1],
+        d_model,
         d_pkw,
         d_titrant / DENSITY_20C,
         entry,
@@ -125,6 +151,7 @@ def slopes(
         constant,
         degree,
         degree_acid,
+        np.zeros(len(chunk)) if paired is None else paired.u_squared(water.temperature_c + ZERO_CELSIUS),
     )
 
 
@@ -178,11 +205,11 @@ def _constants(
     on_charge: FloatArray,
     on_squares: FloatArray,
 ) -> tuple[FloatArray, IntArray, FloatArray]:
-    """dpH/dpKa of every cell, which constant each cell holds, and their part of dpH/dT."""
+    """dpH/dpKa of every cell, which constant each cell holds, and dpKa/dT of each."""
     cells = sum(len(slot.k) for slot in chunk.slots)
     value = np.zeros((len(chunk), cells))
     which = np.full(value.shape, -1, np.intp)
-    d_temperature = np.zeros(len(chunk))
+    warm = np.zeros(value.shape)
     kelvin = water.temperature_c + ZERO_CELSIUS
     cell = 0
     terms, edge, which_constant = acids.by_step
@@ -209,30 +236,36 @@ def _constants(
             warming += terms.t[step - 1].take(column) + terms.w[step - 1].take(column) * water.d_pkw
             value[:, cell + step - 1] = slope
             which[:, cell + step - 1] = q
-            d_temperature += np.where(has, slope * warming, 0.0)
+            warm[:, cell + step - 1] = np.where(has, warming, 0.0)
         cell += len(slot.k)
-    return value, which, d_temperature
+    return value, which, warm
 
 
-def _entries(
-    chunk: Chunk,
-    padding: Padding,
-    contents: Contents,
-    forms: FormTable,
-    found: list[Found],
-    on_charge: FloatArray,
-    on_squares: FloatArray,
-    by_ion: FloatArray | None,
+def _effects(
+    chunk: Chunk, padding: Padding, found: list[Found], on_charge: FloatArray, on_squares: FloatArray
 ) -> FloatArray:
-    """dpH/d ln(amount) of every contribution, through its strong ions and its acids."""
+    """dpH of one mol/kg of each acid, (m, acids of the chunk + 1); the last column, of 0, is for none."""
     m = len(chunk)
-    effect = np.zeros((m, len(padding.columns) + 1))  # of one mol/kg of each acid; the last column is for none
+    effect = np.zeros((m, len(padding.columns) + 1))
     everyone = np.arange(m)
     for slot, x in zip(chunk.slots, found, strict=True):
         column = padding.place.take(slot.acid)
         free: BoolArray = x.closed > 0.0
         effect[everyone, column] = np.where(free, on_charge * (slot.charge - x.lost) + on_squares * x.squares, 0.0)
     effect[:, -1] = 0.0
+    return effect
+
+
+def _entries(
+    padding: Padding,
+    contents: Contents,
+    forms: FormTable,
+    effect: FloatArray,
+    on_charge: FloatArray,
+    on_squares: FloatArray,
+    by_ion: FloatArray | None,
+) -> FloatArray:
+    """dpH/d ln(amount) of every contribution, through its strong ions and its acids."""
     row, entry = padding.row, padding.entry
     form = contents.form[entry]
     per_mole = on_charge[row] * forms.charge[form] + on_squares[row] * forms.square[form]

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from reconcile.chemistry.water import HIGH_C, LOW_C, ZERO_CELSIUS, density, permittivity, pkw
-from reconcile.records.arrays import FloatArray
+from reconcile.records.arrays import FloatArray, IntArray
 
 GAS_CONSTANT = 8.31446261815324  # J/(K mol), CODATA 2018, exact
 T_REFERENCE = 298.15  # K
@@ -74,6 +74,11 @@ def solvent(temperature_c: FloatArray) -> Solvent:
     ionization, d_ionization = pkw(inside)
     a, d_a, b, d_b = debye_hueckel(inside)
     return Solvent(inside, ionization, d_ionization, a, d_a, b, d_b)
+
+
+def water_at(water: Solvent, rows: IntArray) -> Solvent:
+    """The entries of a Solvent named by `rows`, in that order."""
+    return Solvent(*(getattr(water, name)[rows] for name in Solvent.__dataclass_fields__))
 
 
 def van_t_hoff(pka_25c: FloatArray, dh: FloatArray, dcp: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:

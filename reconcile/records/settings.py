@@ -72,6 +72,15 @@ SETTINGS: tuple[Setting, ...] = (
         "",
         "published equations from emf cells, within their range, before a constant heat capacity",
     ),
+    Setting(
+        "prediction",
+        "ion_pairs",
+        "complexes",
+        "",
+        "hydrogen difluoride, hydroxides of calcium and magnesium, polyborates; all: sodium and potassium pairs too, "
+        "whose effect the activity coefficients hold already",
+        ("none", "complexes", "all"),
+    ),
     Setting("prediction", "room_temperature_c", 22.0, "°C", "common practice, no source"),
     Setting("prediction", "open_to_air", False, "", "closed vessels are the rule; carbon dioxide is then left out"),
     Setting("prediction", "co2_partial_pressure_atm", 4.2e-4, "atm", "present outdoor air, about 420 ppm"),

@@ -22,10 +22,10 @@ from reconcile.chemistry.acids import acid_table
 from reconcile.chemistry.activity import ACTIVITY_MODELS
 from reconcile.chemistry.balance import balance
 from reconcile.chemistry.composition import Contents, form_table, pad
-from reconcile.chemistry.engine import CHUNK, alike_together, water_at
+from reconcile.chemistry.engine import CHUNK, alike_together
 from reconcile.chemistry.predict import forms_named, predict_ph
 from reconcile.chemistry.solve import solve
-from reconcile.chemistry.temperature import solvent
+from reconcile.chemistry.temperature import solvent, water_at
 from reconcile.chemistry.water import DENSITY_20C
 
 SUBSTANCES = (

@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Hashable
 from functools import cached_property
+from typing import Any
 
 import numpy as np
 from scipy import linalg, sparse
@@ -11,21 +12,13 @@ from scipy import linalg, sparse
 from reconcile.auditor.components import Components
 from reconcile.auditor.grouped import Local, local
 from reconcile.auditor.layout import Layout
-from reconcile.records.arrays import BoolArray, FloatArray, IntArray
+from reconcile.auditor.sparse_columns import column_keys, squared
+from reconcile.records.arrays import FloatArray, IntArray
 
 KEPT = 3
 """Factored covariances kept at a time for one record."""
-FEW_ROWS = 12
-"""Rows up to which a column is short: what meters and lots take up of it is a few per cent at most."""
+KEPT_COLUMNS = 60
 CHUNK = 512
-
-
-@dataclass
-class Bound:
-    """x' K x of columns: never less than the truth; equal to it where `exact`. (k,) each."""
-
-    value: FloatArray
-    exact: BoolArray
 
 
 class BaseModel:
@@ -40,7 +33,7 @@ class BaseModel:
         self.layout, self.components = layout, components
         self.g = np.where(np.isnan(layout.prior), components.session, layout.prior)
         found: Local = local(layout, components)
-        self.grouped = found.grouped
+        self.grouped, self.wide = found.grouped, found.wide_batches
         kept = self.g > 0
         if not found.sessions:
             sessions = layout.effects["session"]
@@ -51,7 +44,7 @@ class BaseModel:
         own = layout.z.tocsc()[:, self.columns] * np.sqrt(self.g[self.columns])
         self.z = sparse.csr_array(sparse.hstack([own, found.wide]))
         self.weighted = sparse.csr_array(sparse.diags_array(1.0 / self.grouped.d) @ self.z)
-        self.shared = sparse.csr_array(self.grouped.block.T @ self.z)
+        self.shared = sparse.csr_array(self.grouped.across.T @ self.z)
         inner = sparse.csr_array(self.z.T @ self.weighted) - sparse.csr_array(self.shared.T @ self.shared)
         self.m = np.asarray(inner.toarray().T, float)  # symmetric: the transpose is as good, and in LAPACK's order
         self.m[np.diag_indices(len(self.m))] += 1.0
@@ -59,7 +52,9 @@ class BaseModel:
         inside = np.concatenate([np.isnan(layout.prior)[self.columns], np.ones(found.wide.shape[1], bool)])
         self.inside = sparse.csc_array(self.z[:, np.flatnonzero(inside)])
         self.taken = float((1.0 - 1.0 / np.diag(self.m)[~inside]).sum())
-        self._bounds: dict[int, tuple[sparse.csc_array, Bound]] = {}
+        self.remembered: dict[Hashable, Any] = {}
+        """What was worked out for columns that are asked for again, beside the columns themselves."""
+        self._weighed: dict[Hashable, FloatArray] = {}
 
     @cached_property
     def inverse(self) -> FloatArray:
@@ -77,15 +72,23 @@ class BaseModel:
     @cached_property
     def variance(self) -> FloatArray:
         """Diagonal of what the effects with a prior add to the spread of each residual, (n,) [pH^2]."""
-        layout = self.layout
-        return np.asarray(layout.z.multiply(layout.z) @ self.g, float)
+        return np.asarray(squared(self.layout.z) @ self.g, float)
 
     def weigh(self, y: FloatArray) -> FloatArray:
         """K y; y (n,) or (n, k)."""
         wy = self.grouped.weighed(y)
-        if not self.factor.size:
-            return wy
-        return np.asarray(wy - self.carried(self.solved(self.z.T @ wy)))
+        return np.asarray(wy - self.carried(self.solved(self.z.T @ wy))) if self.factor.size else wy
+
+    def weighed_columns(self, x: sparse.csc_array) -> tuple[FloatArray, list[Hashable]]:
+        """K x of sparse columns, (n, k), and a key for each by which it is known again."""
+        keys = column_keys(x)
+        for k, key in enumerate(keys):
+            if key not in self._weighed:
+                self._weighed[key] = self.weigh(x[:, [k]].toarray().ravel())
+        found = np.stack([self._weighed[key] for key in keys], axis=1)
+        while len(self._weighed) > KEPT_COLUMNS:
+            self._weighed.pop(next(iter(self._weighed)))
+        return found, keys
 
     def solved(self, y: FloatArray) -> FloatArray:
         """M^-1 y; y (q,) or (q, k)."""
@@ -97,7 +100,7 @@ class BaseModel:
 
     def cross(self, x: sparse.csc_array) -> sparse.csc_array:
         """Z' W x of sparse columns, (q, k)."""
-        shared = sparse.csc_array(self.grouped.block.T @ x)
+        shared = self.grouped.across.T @ x
         return sparse.csc_array(self.weighted.T @ x - self.shared.T @ shared)
 
     def taken_up(self, x: sparse.csc_array, own: IntArray | None) -> FloatArray:
@@ -113,95 +116,27 @@ class BaseModel:
             found[:, others] = self.solved(self.cross(sparse.csc_array(x[:, others])).toarray())
         return found
 
-    def quadratic(self, x: sparse.csc_array, cross: sparse.csc_array | None = None) -> FloatArray:
+    def quadratic(self, x: sparse.csc_array) -> FloatArray:
         """x' K x of each sparse column, (k,)."""
         square = self.grouped.quadratic(x)
         if not self.factor.size or not x.shape[1]:
             return square
-        c = self.cross(x) if cross is None else cross
+        c = self.cross(x)
         for first in range(0, x.shape[1], CHUNK):
             part = slice(first, min(first + CHUNK, x.shape[1]))
             half = linalg.solve_triangular(self.factor, c[:, part].toarray(), lower=True, check_finite=False)
             square[part] -= np.einsum("ij,ij->j", half, half)
         return square
 
-    def bound(self, x: sparse.csc_array, own: IntArray | None, steady: bool) -> Bound:
-        """x' K x at little cost: never less than the truth. A steady x is remembered, with what became exact."""
-        if steady and id(x) in self._bounds:
-            return self._bounds[id(x)][1]
-        found = self._bound(x, own)
-        if steady:
-            self._bounds[id(x)] = (x, found)
-        return found
-
-    def _bound(self, x: sparse.csc_array, own: IntArray | None) -> Bound:
-        """Leaving effects out of V can only make x' V^-1 x larger, so any few of them give a bound.
-
-        A column of the design itself is read off the inverse: z' K z = 1 - (M^-1)_jj. For readings of one meter that
-        meter's own offset and span are kept, for any other column the single effect that takes up most of it.
-        """
-        value = self.grouped.quadratic(x)
-        exact = np.zeros(len(value), bool)
-        rows = np.diff(x.indptr)
-        rest = rows > FEW_ROWS
-        if own is not None:
-            at = np.where(own >= 0, self.place[own], -1)
-            mine = np.flatnonzero(at >= 0)
-            j = at[mine]
-            with np.errstate(divide="ignore"):
-                same = np.abs(value[mine] * self.g[self.columns[j]] - (self.m[j, j] - 1.0)) <= 1e-9 * self.m[j, j]
-            mine, j = mine[same], j[same]
-            value[mine] = (1.0 - self.inverse[j, j]) / self.g[self.columns[j]]
-            exact[mine], rest[mine] = True, False
-        single = np.flatnonzero(rest & self._one_meter(x))
-        if len(single):
-            value[single] -= self._of_meter(x if len(single) == x.shape[1] else sparse.csc_array(x[:, single]))
-            rest[single] = False
-        others = np.flatnonzero(rest)
-        if len(others) and self.factor.size:
-            c = self.cross(sparse.csc_array(x[:, others]))
-            taken = c.multiply(c).T @ sparse.diags_array(1.0 / np.diag(self.m))
-            value[others] -= np.asarray(taken.max(axis=1).todense()).ravel()
-        return Bound(np.maximum(value, 0.0), exact)
-
-    def _one_meter(self, x: sparse.csc_array) -> BoolArray:
-        """Columns whose readings are all of one meter, (k,)."""
-        found = np.zeros(x.shape[1], bool)
-        filled = np.flatnonzero(np.diff(x.indptr) > 0)
-        if len(filled):
-            meter = self.layout.meter[x.indices]
-            low, high = (f.reduceat(meter, x.indptr[filled]) for f in (np.minimum, np.maximum))
-            found[filled] = (low == high) & (low >= 0)
-        return found
-
-    def _of_meter(self, x: sparse.csc_array) -> FloatArray:
-        """What the own offset and span of the meter of each column take up of it, (k,)."""
-        meter = self.layout.meter[x.indices[x.indptr[:-1]]]
-        pair = [self.place[self.layout.effects[sort].first + meter] for sort in ("meter", "span")]
-        weights = self._meter_weights
-        a, b = (np.asarray(x.T @ w).ravel() for w in weights)
-        p, q = pair
-        m = self.m
-        there = (p >= 0) & (q >= 0)
-        p, q = np.where(there, p, 0), np.where(there, q, 0)
-        determinant = m[p, p] * m[q, q] - m[p, q] ** 2
-        taken = (a * a * m[q, q] - 2.0 * a * b * m[p, q] + b * b * m[p, p]) / determinant
-        return np.where(there, taken, 0.0)
-
-    @cached_property
-    def _meter_weights(self) -> tuple[FloatArray, FloatArray]:
-        """(W z)_i for the offset and the span column of the meter that reading i was taken on, (n,) each."""
-        layout, found = self.layout, []
-        known = np.flatnonzero(layout.meter >= 0)
-        for sort in ("meter", "span"):
-            at = self.place[layout.effects[sort].first + np.arange(len(layout.meters))]
-            one = np.zeros(len(layout))
-            if (at >= 0).all() and len(at):
-                z = sparse.csc_array(self.z[:, at])
-                w = sparse.csr_array(z / self.grouped.d[:, None] - self.grouped.block @ (self.grouped.block.T @ z))
-                one[known] = np.asarray(w[known, layout.meter[known]]).ravel()
-            found.append(one)
-        return found[0], found[1]
+    def covariance(self, dense: FloatArray, rows: IntArray) -> FloatArray:
+        """X' K X for columns that are zero outside some rows, (k, k); dense (rows, k)."""
+        shared = np.asarray(self.grouped.across[rows].T @ dense)
+        found = dense.T @ (dense / self.grouped.d[rows][:, None]) - shared.T @ shared
+        if self.factor.size:
+            c = self.weighted[rows].T @ dense - self.shared.T @ shared
+            half = linalg.solve_triangular(self.factor, c, lower=True, check_finite=False)
+            found = found - half.T @ half
+        return np.asarray(found, float)
 
 
 def base_of(layout: Layout, components: Components) -> BaseModel:

@@ -15,6 +15,7 @@ from scipy import sparse
 
 from reconcile.auditor.components import Components, noise_of
 from reconcile.auditor.layout import Layout
+from reconcile.auditor.sparse_columns import column_sums, squared
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 
 EXPLICIT = 1500
@@ -48,6 +49,11 @@ class Grouped:
         rows = np.arange(len(self.d))
         return sparse.csc_array((self.scaled, (rows, self.group)), shape=(len(self.d), self.groups))
 
+    @cached_property
+    def across(self) -> sparse.csr_array:
+        """The same by rows: its transpose goes with sparse columns."""
+        return sparse.csr_array(self.block)
+
     def weighed(self, y: FloatArray) -> FloatArray:
         """W y; y (n,) or (n, k)."""
         if y.ndim == 1:
@@ -66,9 +72,8 @@ class Grouped:
 
     def quadratic(self, x: sparse.csc_array) -> FloatArray:
         """x' W x of each sparse column, (k,)."""
-        square = np.asarray(x.multiply(x).T @ (1.0 / self.d)).ravel()
-        shared = sparse.csc_array(self.block.T @ x)
-        return np.asarray(square - np.asarray(shared.multiply(shared).sum(axis=0)).ravel(), float)
+        square = np.asarray(squared(x).T @ (1.0 / self.d)).ravel()
+        return np.asarray(square - column_sums(squared(sparse.csc_array(self.across.T @ x))), float)
 
 
 def repeated_sessions(layout: Layout) -> BoolArray:
@@ -119,12 +124,13 @@ class Local:
     """The grouping chosen, and what has columns of its own beside the effects with a prior.
 
     sessions : True where sessions have columns
-    wide : sparse (n, w) columns of unit variance
+    wide : sparse (n, w) columns of unit variance, one for each of `wide_batches`
     """
 
     grouped: Grouped
     sessions: bool
     wide: sparse.csc_array
+    wide_batches: IntArray
 
 
 def local(layout: Layout, components: Components) -> Local:
@@ -136,11 +142,11 @@ def local(layout: Layout, components: Components) -> Local:
     a little power, estimates stay unbiased.
     """
     n, batches = len(layout), len(layout.batches)
-    none = sparse.csc_array((n, 0))
+    none = sparse.csc_array((n, 0)), np.zeros(0, np.intp)
     sessions = layout.effects["session"]
     whole = by_batches(layout, replace(components, session=0.0))
     if len(sessions.subjects) <= EXPLICIT:
-        return Local(whole, True, none)
+        return Local(whole, True, *none)
     counts = np.bincount(layout.batch, minlength=batches)
     wide = counts > WIDE
     if np.count_nonzero(wide) > EXPLICIT:
@@ -150,13 +156,13 @@ def local(layout: Layout, components: Components) -> Local:
     lost_sessions = float(np.log(plain.d / whole.d).sum())
     lost_batches = float(np.log(other.d / whole.d).sum())
     if lost_sessions <= lost_batches:
-        return Local(plain, False, none)
-    index = np.flatnonzero(wide)
+        return Local(plain, False, *none)
+    index = np.flatnonzero(wide).astype(np.intp)
     if not len(index):
-        return Local(other, False, none)
+        return Local(other, False, *none)
     place = np.full(batches, -1)
     place[index] = np.arange(len(index))
     rows = np.flatnonzero(wide[layout.batch])
     tau = batch_sd(layout, components)[rows]
     columns = sparse.csc_array((tau, (rows, place[layout.batch[rows]])), shape=(n, len(index)))
-    return Local(other, False, columns)
+    return Local(other, False, columns, index)

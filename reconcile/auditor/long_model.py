@@ -2,12 +2,17 @@
 
 from __future__ import annotations
 
+from collections.abc import Hashable
+
 import numpy as np
 from scipy import sparse
 
+from reconcile.auditor.adjusted import contrast_variance
 from reconcile.auditor.base_model import CHUNK, BaseModel, base_of
+from reconcile.auditor.bounds import Bound, bound
 from reconcile.auditor.components import Components, Model, Shares
 from reconcile.auditor.layout import Layout
+from reconcile.auditor.sparse_columns import column_sums, squared
 from reconcile.records.arrays import FloatArray, IntArray
 
 NEAR = 2.5
@@ -19,6 +24,7 @@ class LongModel(Model):
 
     fixed : sparse (n, f) columns of unknown size; own_dropped : columns of Z whose prior is left out
     r : residuals, where they differ from the layout's (a supposed truth was taken off them)
+    more : sparse (n, m), columns of further random effects of unit variance
 
     Between sessions or within batches, whichever matters less, V is taken a little too large (see grouped.local): tests
     are then conservative. Where neither is the case, all results are those of the short model.
@@ -34,34 +40,44 @@ class LongModel(Model):
         fixed: sparse.csc_array | None = None,
         own_dropped: tuple[int, ...] = (),
         r: FloatArray | None = None,
+        more: sparse.csc_array | None = None,
     ) -> None:
         super().__init__(layout, components, own_dropped, r)
         self.base: BaseModel = base_of(layout, components)
         self.columns, self.dropped = self.base.columns, own_dropped
-        n = len(layout)
-        parts: list[FloatArray] = []
-        cores: list[FloatArray] = []
+        self.u, self.core = np.zeros((len(layout), 0)), np.zeros((0, 0))
+        self.keys: list[Hashable] = []
+        """What each column of U is known by in the base; None for one that is of this model alone."""
         at = self.base.place[list(own_dropped)] if own_dropped else np.zeros(0, np.intp)
         at = at[at >= 0]
         if len(at):
             # V - zz' has the inverse K + K z (1 - z'Kz)^-1 z'K, with K Z = W Z M^-1 and 1 - Z'KZ = M^-1
-            parts.append(self.base.carried(self.base.inverse[:, at]))
-            cores.append(np.asarray(np.linalg.inv(self.base.inverse[np.ix_(at, at)]), float))
+            core = np.asarray(np.linalg.inv(self.base.inverse[np.ix_(at, at)]), float)
+            self._join(self.base.carried(self.base.inverse[:, at]), core)
+        if more is not None and more.shape[1]:
+            # V + CC' has the inverse K - K C (I + C'KC)^-1 C'K
+            column, keys = self._projected(more)
+            self._join(column, -np.linalg.inv(np.eye(more.shape[1]) + more.T @ column), keys)
+        self.fixed_effects = 0 if fixed is None else fixed.shape[1]
         if fixed is not None and fixed.shape[1]:
-            column = fixed.toarray()
-            vf = self.base.weigh(column)
-            if parts:
-                vf = vf + parts[0] @ (cores[0] @ (parts[0].T @ column))
-            parts.append(vf)
-            cores.append(-np.linalg.pinv(np.asarray(fixed.T @ vf), rcond=1e-10, hermitian=True))
-        self.u = np.hstack(parts) if parts else np.zeros((n, 0))
-        self.core = np.zeros((self.u.shape[1],) * 2)
-        begin = 0
-        for core in cores:
-            end = begin + len(core)
-            self.core[begin:end, begin:end] = core
-            begin = end
+            column, keys = self._projected(fixed)
+            self._join(column, -np.linalg.pinv(np.asarray(fixed.T @ column), rcond=1e-10, hermitian=True), keys)
         self.pr = self.project(self.r)
+
+    def _projected(self, x: sparse.csc_array) -> tuple[FloatArray, list[Hashable]]:
+        """P x as far as P has come, and the keys of the columns where they are K x."""
+        column, keys = self.base.weighed_columns(x)
+        if not self.core.size:
+            return column, keys
+        return column + self.u @ (self.core @ np.asarray(self.u.T @ x)), [None] * len(keys)
+
+    def _join(self, u: FloatArray, core: FloatArray, keys: list[Hashable] | None = None) -> None:
+        size, width = len(self.core), u.shape[1]
+        self.u = np.hstack([self.u, u]) if size else u
+        whole = np.zeros((size + width, size + width))
+        whole[:size, :size], whole[size:, size:] = self.core, core
+        self.core = whole
+        self.keys = [*self.keys, *(keys or [None] * width)]
 
     def project(self, y: FloatArray) -> FloatArray:
         found = self.base.weigh(y)
@@ -70,26 +86,42 @@ class LongModel(Model):
     def quadratic(self, x: sparse.csc_array) -> FloatArray:
         return self.base.quadratic(x) + self._low_rank(x)
 
-    def _low_rank(self, x: sparse.csc_array) -> FloatArray:
+    def _low_rank(self, x: sparse.csc_array, steady: bool = False) -> FloatArray:
         if not self.core.size:
             return np.zeros(x.shape[1])
-        half = np.asarray(x.T @ self.u)
+        half = np.stack([self._product(x, i, steady) for i in range(len(self.core))], axis=1)
         return np.asarray(np.einsum("ij,jk,ik->i", half, self.core, half), float)
+
+    def _product(self, x: sparse.csc_array, i: int, steady: bool) -> FloatArray:
+        """x' u of the i-th column of U; remembered where both are the same another time."""
+        if not steady or self.keys[i] is None:
+            return np.asarray(x.T @ self.u[:, i]).ravel()
+        key = ("product", id(x), self.keys[i])
+        if key not in self.base.remembered:
+            self.base.remembered[key] = (x, np.asarray(x.T @ self.u[:, i]).ravel())
+        known: FloatArray = self.base.remembered[key][1]
+        return known
+
+    def bound(self, x: sparse.csc_array, own: IntArray | None = None, steady: bool = False) -> Bound:
+        """x' K x as bounded by the base alone."""
+        return bound(self.base, x, own, steady)
+
+    def informed(
+        self, x: sparse.csc_array, slope: FloatArray, known: Bound, least: float, most: float, steady: bool
+    ) -> FloatArray:
+        """x' P x, worked out exactly for columns whose score lies between `least` and `most`, else as bounded."""
+        low = self._low_rank(x, steady)
+        z2 = slope**2 / np.maximum(known.value + low, 1e-12)
+        near = np.flatnonzero(~known.exact & (z2 > least**2) & (z2 <= most**2))
+        if len(near):
+            known.value[near] = self.base.quadratic(sparse.csc_array(x[:, near]))
+            known.exact[near] = True
+        return np.asarray(known.value + low, float)
 
     def information(
         self, x: sparse.csc_array, slope: FloatArray, own: IntArray | None = None, steady: bool = False
     ) -> FloatArray:
-        """x' P x, worked out exactly for every column that comes near significance, never less than it for the others.
-
-        A score of which the information is only bounded is smaller than the true one.
-        """
-        bound = self.base.bound(x, own, steady)
-        low = self._low_rank(x)
-        near = np.flatnonzero(~bound.exact & (slope**2 > NEAR**2 * np.maximum(bound.value + low, 1e-12)))
-        if len(near):
-            bound.value[near] = self.base.quadratic(sparse.csc_array(x[:, near]))
-            bound.exact[near] = True
-        return np.asarray(bound.value + low, float)
+        return self.informed(x, slope, self.bound(x, own, steady), NEAR, np.inf, steady)
 
     def diagonal(self) -> FloatArray:
         """Diagonal of P as bounded from batches or sessions alone; meters and lots take up a few per cent of it."""
@@ -97,37 +129,41 @@ class LongModel(Model):
         return np.asarray(np.maximum(self.base.grouped.diagonal() + low, 1e-12), float)
 
     def covariance(self, x: sparse.csc_array) -> FloatArray:
-        rows = np.unique(x.indices)
-        grouped = self.base.grouped
+        rows = np.unique(x.indices).astype(np.intp)
         dense = x.tocsr()[rows].toarray()
-        shared = np.asarray(sparse.csr_array(grouped.block.tocsr()[rows]).T @ dense)
-        found = dense.T @ (dense / grouped.d[rows][:, None]) - shared.T @ shared
-        if self.base.factor.size:
-            c = self.base.weighted[rows].T @ dense - self.base.shared.T @ shared
-            found = found - c.T @ self.base.solved(c)
         half = self.u[rows].T @ dense
-        return np.asarray(found + half.T @ self.core @ half, float)
+        return np.asarray(self.base.covariance(dense, rows) + half.T @ self.core @ half, float)
 
     def shares(self, x: sparse.csc_array, own: IntArray | None = None) -> Shares:
         """As for a short model; of what is left beside meters, lots and constants, noise has its local share."""
         grouped, k = self.base.grouped, x.shape[1]
-        px = sparse.csc_array(sparse.diags_array(1.0 / grouped.d) @ x - grouped.block @ (grouped.block.T @ x))
-        square = sparse.csc_array(px.multiply(px))
-        of_noise = sparse.csc_array(sparse.diags_array(self.noise) @ square)
-        total = np.asarray(of_noise.sum(axis=0)).ravel()
-        fourth = np.asarray(of_noise.multiply(of_noise).sum(axis=0)).ravel()
-        local = np.maximum(grouped.quadratic(x), 1e-12)
-        size = np.maximum(self.information(x, np.full(k, np.inf), own), 1e-12)
+        local_px = sparse.diags_array(1.0 / grouped.d) @ x - grouped.block @ (grouped.across.T @ x)
+        of_noise = squared(sparse.csc_array(local_px))
+        of_noise.data *= self.noise[of_noise.indices]
+        total, fourth = column_sums(of_noise), column_sums(squared(of_noise))
         known = np.zeros((len(self.columns), k))
+        low = self._low_rank(x)
+        size = np.zeros(k)
         carried = np.asarray(self.base.z.T @ self.u)
-        for first in range(0, k if self.base.factor.size else 0, CHUNK):
+        for first in range(0, k, CHUNK):
             part = slice(first, min(first + CHUNK, k))
-            effects = self.base.taken_up(sparse.csc_array(x[:, part]), None if own is None else own[part])
+            some = x if k <= CHUNK else sparse.csc_array(x[:, part])
+            effects = self.base.taken_up(some, None if own is None else own[part])
+            size[part] = self._size(some, effects)
             if self.core.size:
-                effects += carried @ (self.core @ np.asarray(self.u.T @ x[:, part]))
-            known[:, part] = effects[: len(self.columns)] ** 2 / size[part]
+                effects = effects + carried @ (self.core @ np.asarray(self.u.T @ some))
+            known[:, part] = effects[: len(self.columns)] ** 2
+        known /= np.maximum(size + low, 1e-12)
         rest = np.clip(1.0 - known.sum(axis=0), 0.0, 1.0)
-        return Shares(rest * np.minimum(total / local, 1.0), fourth / np.maximum(total, 1e-12) ** 2, known)
+        share = rest * np.minimum(total / np.maximum(grouped.quadratic(x), 1e-12), 1.0)
+        return Shares(share, fourth / np.maximum(total, 1e-12) ** 2, known)
+
+    def _size(self, x: sparse.csc_array, effects: FloatArray) -> FloatArray:
+        """x' K x = x' W x - c' M^-1 c, from c = Z' W x and M^-1 c."""
+        c = self.base.cross(x)
+        column = np.repeat(np.arange(x.shape[1]), np.diff(c.indptr))
+        taken = np.bincount(column, c.data * effects[c.indices, column], minlength=x.shape[1])
+        return np.asarray(self.base.grouped.quadratic(x) - taken, float)
 
     def remainder(self) -> FloatArray:
         """Residuals less the estimated effects of meters, lots, constants and fixed columns, (n,) [pH]."""
@@ -137,10 +173,10 @@ class LongModel(Model):
 
     def kept_share(self) -> float:
         """Share of the readings' degrees of freedom that these effects leave; about, each taken by itself."""
-        taken = self.base.taken + self.core.shape[0] - len(self.dropped)
-        return float(max(1.0 - taken / max(len(self.layout), 1), 0.2))
+        return float(max(1.0 - (self.base.taken + self.fixed_effects) / max(len(self.layout), 1), 0.2))
 
     def variance(self) -> FloatArray:
         if self.dropped:
             return super().variance()
-        return np.asarray(self.d + self.batch_sd() ** 2 + self.base.variance, float)
+        whole = np.asarray(self.d + self.batch_sd() ** 2 + self.base.variance, float)
+        return contrast_variance(self.layout, whole, self.d, self.g)

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from datetime import datetime
 from typing import Any, Protocol, TypeVar
 
@@ -12,6 +12,7 @@ from scipy import sparse, stats
 
 from reconcile.auditor.components import Model
 from reconcile.auditor.layout import Layout
+from reconcile.auditor.long_model import LongModel
 from reconcile.auditor.retrial import Retrial, Supposed
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 from reconcile.records.settings import Settings
@@ -20,6 +21,8 @@ CLASSES = ("meter", "lot", "batch", "reading", "chemistry")
 """Classes between which the alarm rate is split equally."""
 ROOM_SHARE = 0.75
 """Least correlation between a subject's fault and the common shape it is first looked at with, on a long record."""
+TOP_SHARE = 0.25
+"""Share of the largest score under which a subject of a long record waits until the largest is explained."""
 T = TypeVar("T")
 
 
@@ -39,18 +42,31 @@ class Context:
         """
         score = np.asarray(x.T @ self.model.pr).ravel()
         information = self.model.information(x, score, own, steady)
+        return self._standardized(score, information)
+
+    @staticmethod
+    def _standardized(score: FloatArray, information: FloatArray) -> FloatArray:
         return np.where(information > 1e-9, score / np.sqrt(np.maximum(information, 1e-9)), 0.0)
 
-    def room(self, least: float, tried: int) -> float:
-        """Score from which one of `tried` subjects is looked at closely.
+    def promising(
+        self, x: sparse.csc_array, least: float, steady: bool = False, own: IntArray | None = None
+    ) -> IntArray:
+        """Subjects, a column each, whose fault is looked at closely: those with a score over `least`.
 
-        On a long record many subjects pass any fixed score by chance: there it rises with their number, and stays well
-        below what a finding about any of them needs.
+        On a long record many subjects pass any fixed score by chance, and very many more while a large fault is not yet
+        explained. There the score must come near what a finding about one of so many needs, and near the largest; the
+        others are looked at again once the largest is explained.
         """
-        if not self.model.long:
-            return least
-        rate = float(self.settings["audit.alarm_rate"]) / len(CLASSES) / max(tried, 1)
-        return max(least, ROOM_SHARE * float(stats.norm.isf(rate / 2.0)))
+        if not isinstance(self.model, LongModel):
+            return np.flatnonzero(np.abs(self.screen(x, steady, own)) > least)
+        slope = np.asarray(x.T @ self.model.pr).ravel()
+        bound = self.model.bound(x, own, steady)
+        rate = float(self.settings["audit.alarm_rate"]) / len(CLASSES) / max(x.shape[1], 1)
+        least = max(least, ROOM_SHARE * float(stats.norm.isf(rate / 2.0)))
+        score = self._standardized(slope, self.model.informed(x, slope, bound, np.inf, np.inf, steady))
+        least = max(least, TOP_SHARE * float(np.abs(score).max(initial=0.0)))
+        score = self._standardized(slope, self.model.informed(x, slope, bound, ROOM_SHARE * least, least, steady))
+        return np.flatnonzero(np.abs(score) > least)
 
     def kept(self, key: object, make: Callable[[], T]) -> T:
         """What was made once for this record under a key."""
@@ -133,8 +149,8 @@ class FaultKind(Protocol):
     """One kind of fault: a module-level object in its own small file under faults/.
 
     Two more may stand there. `steady = True`: its candidates depend on the record alone, not on the present model, so
-    that they are made once. `refine(context, proposal)`: on a long record, a second Proposal (or None) with further
-    candidates of the subjects that come near significance.
+    that they are made once. `refine(context, proposal)`: on a long record, further proposals with more candidates of
+    the subjects that come near significance.
     """
 
     name: str
@@ -195,3 +211,8 @@ def linear(
         blocks=blocks,
         supposed=supposed,
     )
+
+
+def steadied(proposal: Proposal | None) -> Proposal | None:
+    """The same proposal, to be used again whatever the model is."""
+    return None if proposal is None else replace(proposal, steady=True)

@@ -11,7 +11,9 @@ import numpy as np
 from scipy import sparse
 
 from reconcile.auditor.components import Model
-from reconcile.auditor.proposals import CLASSES, Context, FaultKind, Proposal, Told
+from reconcile.auditor.long_model import LongModel
+from reconcile.auditor.long_scores import informations
+from reconcile.auditor.proposals import CLASSES, Context, FaultKind, Proposal, Told, steadied
 from reconcile.auditor.retrial import Supposed
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 
@@ -99,12 +101,10 @@ class Pool:
 
     def scores(self, model: Model) -> Scores:
         """Scores of all candidates; on a long record a proposal at a time, steady ones from what is known of them."""
-        if not model.long:
+        if not isinstance(model, LongModel):
             return score(model, self.x, self.point, self.prior_sd, self.log_prior)
         slopes = [np.asarray(p.x.T @ model.pr).ravel() for p in self.proposals]
-        known = [
-            model.information(p.x, slope, _own(p), p.steady) for p, slope in zip(self.proposals, slopes, strict=True)
-        ]
+        known = informations(model, self.proposals, slopes)
         return _scores(self._joined(known), self._joined(slopes), self.point, self.prior_sd, self.log_prior)
 
     @property
@@ -153,22 +153,11 @@ def proposed(context: Context, kind: FaultKind) -> list[Proposal | None]:
     if not getattr(kind, "steady", False):
         return [kind.propose(context)]
     key = ("proposal", kind.name, kind.alarm_class)
-    first = context.kept(key, lambda: _steady(kind.propose(context)))
+    first = context.kept(key, lambda: steadied(kind.propose(context)))
     refine = getattr(kind, "refine", None)
     if refine is None or first is None or not context.model.long:
         return [first]
-    return [first, refine(context, first)]
-
-
-def _steady(proposal: Proposal | None) -> Proposal | None:
-    return None if proposal is None else replace(proposal, steady=True)
-
-
-def _own(proposal: Proposal) -> IntArray | None:
-    """The column of the design that each candidate may be, -1 where it has none or several of its own."""
-    if not len(proposal.own):
-        return None
-    return np.array([own[0] if len(own) == 1 else -1 for own in proposal.own], np.intp)
+    return [first, *refine(context, first)]
 
 
 @dataclass(frozen=True)

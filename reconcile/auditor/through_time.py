@@ -9,7 +9,7 @@ from datetime import datetime
 import numpy as np
 
 from reconcile.auditor.layout import DAY, Layout
-from reconcile.auditor.proposals import Context, Proposal, stack
+from reconcile.auditor.proposals import Context, Proposal, steadied
 from reconcile.records.arrays import FloatArray, IntArray
 
 MOST_ONSETS, COARSE_ONSETS = 60, 12
@@ -56,31 +56,40 @@ def courses(layout: Layout) -> list[Course]:
     return result
 
 
-def refined(
-    context: Context,
-    coarse: Proposal,
-    side: tuple[int, int],
-    effect: Callable[[Course, int, float], FloatArray],
-) -> list[tuple[Course, list[Onset]]]:
-    """Meters of a long record on which a coarse change date comes near significance, with finer dates.
+Make = Callable[[Course, list[Onset]], Proposal | None]
+"""Candidates of one meter that begin at given dates, each touching all its readings from there on."""
 
-    side : readings needed before and after; effect : of a change after so many readings, from a day on, on the rows
-    after it
+
+def refined(context: Context, coarse: Proposal, side: tuple[int, int], make: Make) -> list[Proposal | None]:
+    """For meters of a long record on which a coarse change date comes near significance: all usual dates, and the
+    dates about the best of these.
+
+    side : readings needed before and after
     """
-    layout = context.layout
-    score = np.abs(context.screen(coarse.x, steady=True))
-    room = context.room(ROOM, len(layout.meters))
-    near = {str(coarse.subject[k]) for k in np.flatnonzero(score > room).tolist()}
+    promising = context.promising(coarse.x, ROOM, steady=True)
+    near = {str(coarse.subject[k]) for k in promising.tolist()}
     found = []
-    for course in courses(layout):
-        many = course.onsets(*side) if course.meter in near else []
-        if not many:
+    for course in courses(context.layout):
+        if course.meter not in near:
             continue
-        columns = stack([(course.rows[i:], effect(course, i, day)) for i, day in many], len(layout))
-        best = int(np.argmax(np.abs(context.screen(columns))))
-        ends = many[max(best - 1, 0)][0], many[min(best + 1, len(many) - 1)][0]
-        found.append((course, sorted({*many, *course.between(*ends)})))
+        many = _kept(context, coarse.kind, course, course.onsets(*side), make)
+        if many is None:
+            continue
+        best = int(np.argmax(np.abs(context.screen(many.x, steady=True))))
+        before = len(course.rows) - np.diff(many.x.indptr)  # readings before each candidate's onset
+        places = np.unique(before)
+        at = int(np.searchsorted(places, before[best]))
+        ends = int(places[max(at - 1, 0)]), int(places[min(at + 1, len(places) - 1)])
+        found += [many, _kept(context, coarse.kind, course, course.between(max(ends[0], 1), ends[1]), make)]
     return found
+
+
+def _kept(context: Context, kind: str, course: Course, onsets: list[Onset], make: Make) -> Proposal | None:
+    """The proposal for some dates, made once a record."""
+    if not onsets:
+        return None
+    key = (kind, course.meter, onsets[0][0], onsets[-1][0], len(onsets))
+    return context.kept(key, lambda: steadied(make(course, onsets)))
 
 
 def moment(layout: Layout, day: float) -> datetime:

@@ -20,8 +20,7 @@ def batches_with_room(context: Context) -> set[int]:
     """Batches whose readings share a shift."""
     layout = context.layout
     x = context.kept("batches", lambda: one_hot(layout.batch, len(layout.batches)))
-    room = context.room(ROOM, len(layout.batches))
-    return {int(i) for i in np.flatnonzero(np.abs(context.screen(x, steady=True)) > room)}
+    return set(context.promising(x, ROOM, steady=True).tolist())
 
 
 def components(context: Context, of: set[int] | None = None) -> list[tuple[int, int, np.ndarray, np.ndarray]]:

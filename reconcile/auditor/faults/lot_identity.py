@@ -28,11 +28,10 @@ def lots_with_room(context: Context) -> list[int]:
     """Lots (positions in lots_used) whose readings share a shift of any common shape."""
     layout = context.layout
     x = layout.lot_columns
-    least = context.room(ROOM, x.shape[1])
-    room = np.zeros(x.shape[1], bool)
+    room: set[int] = set()
     for shape in context.kept("lot shapes", lambda: _shapes(x, layout.ph)):
-        room |= np.abs(context.screen(shape, steady=True)) > least
-    return [int(i) for i in np.flatnonzero(room)]
+        room.update(context.promising(shape, ROOM, steady=True).tolist())
+    return sorted(room)
 
 
 def _shapes(x: sparse.csc_array, ph: FloatArray) -> list[sparse.csc_array]:

@@ -21,8 +21,7 @@ class LotStrength:
         names = [str(layout.records.lots.name[i]) for i in layout.lots_used]
         x = layout.lot_columns
         own = [layout.own("lot", i) for i in range(len(names))]
-        score = context.screen(x, steady=True, own=np.array(own, np.intp).ravel())
-        promising = np.flatnonzero(np.abs(score) > context.room(ROOM, len(names)))
+        promising = context.promising(x, ROOM, steady=True, own=np.array(own, np.intp).ravel())
         likely: dict[int, Supposed | None] = {}
         if len(promising):
             groups = [context.retrial.contributions_of_lot(int(layout.lots_used[i])) for i in promising]

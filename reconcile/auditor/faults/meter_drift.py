@@ -34,15 +34,15 @@ class MeterDrift:
         wide = [c for c in courses(layout) if len(c.rows) > AFTER and c.day[-1] - c.day[0] >= 1.0]
         return self.of(layout, [(c, [(0, float(c.day[0])), *c.onsets(1, AFTER, most)]) for c in wide])
 
-    def refine(self, context: Context, coarse: Proposal) -> Proposal | None:
+    def refine(self, context: Context, coarse: Proposal) -> list[Proposal | None]:
         """Further dates for the meters of a long record that come near significance."""
-        dates = refined(context, coarse, (1, AFTER), lambda course, i, day: np.maximum(course.day[i:] - day, 0.0))
-        return self.of(context.layout, dates)
+        return refined(context, coarse, (1, AFTER), lambda course, dates: self.of(context.layout, [(course, dates)]))
 
     def of(self, layout: Layout, dates: Sequence[tuple[Course, list[Onset]]]) -> Proposal | None:
-        """Drifts of some meters from some dates on; a drift is as likely to begin at any of the dates first tried."""
+        """Drifts of some meters from some dates on; a drift is as likely to begin at any of the usual dates."""
         columns, subject, since, total, prior_sd, log_prior = [], [], [], [], [], []
         for course, onsets in dates:
+            usual = len(course.onsets(1, AFTER)) + 1
             calibrations = calibration_days(layout, course.meter)
             inside = calibrations[(calibrations > course.day[0]) & (calibrations < course.day[-1])]
             ways = [np.zeros(0), inside] if len(inside) else [np.zeros(0)]
@@ -59,7 +59,7 @@ class MeterDrift:
                     since.append(onset if position else np.nan)
                     total.append(float(ramp.max()))
                     prior_sd.append(TOTAL_SD / max(float(ramp.max()), 1e-6))
-                    log_prior.append(-np.log(min(len(onsets), MOST_ONSETS + 1) * len(ways)))
+                    log_prior.append(-np.log(usual * len(ways)))
 
         def tell(k: int, a: float) -> Told:
             begun = moment(layout, since[k]) if np.isfinite(since[k]) else None

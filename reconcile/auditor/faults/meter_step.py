@@ -22,21 +22,21 @@ class MeterStep:
         layout, most = context.layout, COARSE_ONSETS if context.model.long else MOST_ONSETS
         return self.of(layout, [(course, course.onsets(SIDE, SIDE, most)) for course in courses(layout)])
 
-    def refine(self, context: Context, coarse: Proposal) -> Proposal | None:
+    def refine(self, context: Context, coarse: Proposal) -> list[Proposal | None]:
         """Further dates for the meters of a long record that come near significance."""
-        dates = refined(context, coarse, (SIDE, SIDE), lambda course, i, day: np.ones(len(course.rows) - i))
-        return self.of(context.layout, dates)
+        return refined(context, coarse, (SIDE, SIDE), lambda course, dates: self.of(context.layout, [(course, dates)]))
 
     def of(self, layout: Layout, dates: Sequence[tuple[Course, list[Onset]]]) -> Proposal | None:
-        """Steps of some meters at some dates; a step is as likely at any of the dates first tried."""
+        """Steps of some meters at some dates; a step is as likely at any of the usual dates."""
         columns, subject, since, log_prior = [], [], [], []
         for course, onsets in dates:
+            usual = len(course.onsets(SIDE, SIDE))
             for position, day in onsets:
                 rows = course.rows[position:]
                 columns.append((rows, np.ones(len(rows))))
                 subject.append(course.meter)
                 since.append(day)
-                log_prior.append(-np.log(min(len(onsets), MOST_ONSETS)))
+                log_prior.append(-np.log(usual))
 
         def tell(k: int, a: float) -> Told:
             return Told(a, "pH", {"step": a}, since=moment(layout, since[k]))

@@ -30,7 +30,7 @@ from reconcile.records.book import BatchRecords
 from reconcile.records.pka_results import PkaFit, PkaQuestion
 from reconcile.records.results import Constant, Hazard
 from reconcile.records.settings import Settings
-from reconcile.records.substances import Form
+from reconcile.records.substances import Form, catalogue
 
 Progress = Callable[[str, float | None], None]
 
@@ -94,7 +94,8 @@ def fit_pka(
 def _check(every: Evidence, studied: Studied, question: PkaQuestion) -> None:
     """Refuses what holds no answer."""
     if not len(every):
-        near = "" if studied.known else "; an unfamiliar acid is named as in the recipes"
+        alike = () if studied.known else catalogue().look_up(question.acid).near
+        near = f"; did you mean {' or '.join(alike)}?" if alike else ""
         raise refusal("pka-not-in-record", question.acid, near=near)
     own = every.medium.place[every.cases.form] >= 0
     if studied.form is not None and question.molar_mass is None and np.any(~np.isfinite(every.cases.amount[own])):

@@ -58,7 +58,7 @@ def gaps(
 
     Notes
     -----
-    A supposed reading of a solution of the readings' median concentration at a degree within the range, as noisy as the
+    A supposed reading of a solution of the readings' median concentration in the middle of the range, as noisy as the
     others, adds h h'/v to the normal matrix, h being its slopes; the interval shrinks as its standard uncertainty and t
     quantile do. Nothing is said of how such a solution might come about.
 
@@ -72,10 +72,9 @@ def gaps(
     variance = float(np.median(fitted.data.variance[fitted.data.kept]))
     inside = (ph > evidence.settings["status.electrode_low_ph"]) & (ph < evidence.settings["status.electrode_high_ph"])
     left = float(fitted.freedom[0])
-    t_now, t_then = (float(quantile_t(np.array([f]))[0]) for f in (left, left + 1.0))
+    t_then = float(quantile_t(np.array([left + 1.0]))[0])
     kept, found = fitted.data.kept, []
     for step in np.flatnonzero(fitted.seen[0][shape.pka]).tolist():
-        u_now = float(np.sqrt(fitted.covariance[0, step, step]))
         width = float(intervals[step].high[0] - intervals[step].low[0])
         for low, high in RANGES:
             percent = 100.0 * degrees[kept, step]
@@ -84,12 +83,10 @@ def gaps(
             there = np.flatnonzero(inside & (100.0 * degree[:, step] >= low) & (100.0 * degree[:, step] <= high))
             if not len(there):
                 continue
-            more = matrix + rows[there][:, :, None] * rows[there][:, None, :] / variance
-            seen = np.repeat(fitted.seen, len(there), axis=0)
-            u_then = float(np.sqrt(inverse(more, seen)[:, step, step]).min())
+            middle = there[np.argmin(np.abs(100.0 * degree[there, step] - 0.5 * (low + high)))]
+            more = matrix + rows[middle][None, :, None] * rows[middle][None, None, :] / variance
+            u_then = float(np.sqrt(inverse(more, fitted.seen)[0, step, step]))
             after = 2.0 * t_then * u_then
-            if np.isfinite(width):
-                after = width * t_then * u_then / (t_now * u_now)
             if after > min(WORTH * width, USEFUL):
                 continue
             found.append(Gap(step + 1, low, high, width if np.isfinite(width) else None, after))

@@ -64,7 +64,7 @@ def _by_readings(evidence: Evidence, acids: AcidTable, noise: float, meters: lis
         spread = float(np.sqrt(1.0 / weight.sum() + (0.5 * u[mine].min()) ** 2))  # predictions share their constants
         accuracy = meter_accuracy(evidence, meter)
         if abs(mean) > SIGMAS * np.hypot(spread, accuracy / ROOT3):
-            reason = f"its {count} readings of other solutions lie {abs(mean):.2f} pH {_side(mean)} of what is expected"
+            reason = f"its {count} readings of other solutions lie {abs(mean):.2f} pH {_side(mean)} what is expected"
             out.append(SuspectMeter(meter, mean, spread, count, reason))
     return out
 

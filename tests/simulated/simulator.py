@@ -48,6 +48,9 @@ NEEDS: Mapping[str, Mapping[str, Any]] = {
 }
 """What the room must have for a fault to be possible; a room setting given by name goes before it."""
 
+LIKE_THE_TRUTH: Mapping[str, Any] = {"prediction.ion_pairs": "none"}
+"""Settings under which the engine knows what the simulator's chemistry knows: it has no polyborates."""
+
 
 @dataclass(frozen=True)
 class Simulated:
@@ -89,4 +92,4 @@ def simulate(
     built.rng = np.random.default_rng([seed, 2])
     shown = built.read(ph_true)
     truth = tuple(p() if callable(p) else p for p in planted)
-    return Simulated(to_records(built, shown), truth, Settings(), built, ph_true)
+    return Simulated(to_records(built, shown), truth, Settings(dict(LIKE_THE_TRUTH)), built, ph_true)

@@ -14,6 +14,7 @@ os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")
 
 from reconcile.auditor.audit import audit
 from reconcile.chemistry.predict import predict_records, repredictor
+from reconcile.chemistry.shortcuts import shortcut_values
 from tests.simulated.matching import match, says
 from tests.simulated.planted import Planted
 from tests.simulated.simulator import simulate
@@ -79,7 +80,13 @@ def run(case: Case) -> Result:
     records, settings = simulated.records, simulated.settings
     prediction = predict_records(records, settings)
     predicted = time.perf_counter()
-    found = audit(records, prediction, repredictor(records, settings), settings).findings
+    found = audit(
+        records,
+        prediction,
+        repredictor(records, settings),
+        settings,
+        shortcuts=lambda rows: shortcut_values(records, settings, rows),
+    ).findings
     done = time.perf_counter()
     matched = match(found, simulated.truth)
     told = []

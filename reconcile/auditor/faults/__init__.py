@@ -35,6 +35,7 @@ KINDS: tuple[FaultKind, ...] = (
     batch_preparation.KIND,
     recipe_slip.KIND,
     reading_slip.KIND,
+    reading_slip.KIND_OF_VALUES,
     acid_constant.KIND,
     carbon_dioxide.KIND,
     carbon_dioxide.KIND_OF_LOTS,

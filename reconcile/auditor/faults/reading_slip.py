@@ -8,7 +8,12 @@ import numpy as np
 from scipy import sparse
 
 from reconcile.auditor.layout import Layout
-from reconcile.auditor.proposals import Context, Proposal, Told, linear
+from reconcile.auditor.proposals import Context, Proposal, Told, linear, stack
+
+ROOM = 3.0
+"""Score from which the entries that a reading may have stood for are tried."""
+ANY_SIZE, UNEXPLAINED = 1.0, -1.0
+"""Usual size of a slip of unknown origin [pH], and its log prior odds to one of a known sort."""
 
 
 def transpositions(text: str) -> list[float]:
@@ -30,62 +35,97 @@ def written(layout: Layout, row: int) -> str:
     return f"{layout.observed[row]:.{decimals}f}"
 
 
-def intended(layout: Layout, row: int, spread: float) -> dict[str, object] | None:
-    """The entry that a slip may have stood for: what fits the prediction within `spread` [pH], nearest first."""
-    text, target, expected = written(layout, row), float(layout.observed[row]), float(layout.ph[row])
-    choices = [(value, "transposed digits") for value in transpositions(text)]
-    choices += [(target * 10.0, "decimal point"), (target / 10.0, "decimal point")]
-    fitting = [(abs(value - expected), value, how) for value, how in choices if abs(value - expected) <= spread]
-    if fitting:
-        _, value, how = min(fitting)
-        return {"pH": round(value, 4), "slip": how}
+def values_meant(layout: Layout, row: int) -> list[tuple[float, str]]:
+    """Entries that are one slip of the pen away from a reading, with the slip's name."""
+    target = float(layout.observed[row])
+    meant = [(value, "transposed digits") for value in transpositions(written(layout, row))]
+    return [*meant, (target * 10.0, "decimal point"), (target / 10.0, "decimal point")]
+
+
+def borrowed_from(layout: Layout, row: int) -> dict[str, object] | None:
+    """Another batch that the same meter read on the same day with the very same value."""
     neighbours = np.flatnonzero((layout.meter == layout.meter[row]) & (layout.batch != layout.batch[row]))
-    same_day = neighbours[np.abs(layout.day[neighbours] - layout.day[row]) < 1.0]
-    for other in same_day:
-        if written(layout, int(other)) == text:
+    for other in neighbours[np.abs(layout.day[neighbours] - layout.day[row]) < 1.0].tolist():
+        if written(layout, other) == written(layout, row):
             return {"pH": None, "slip": "another batch's value", "batch": layout.batches[layout.batch[other]]}
     return None
 
 
+def subject_of(layout: Layout, row: int) -> tuple[str, str, str]:
+    """Batch, meter and row of one reading."""
+    meter = layout.meters[layout.meter[row]] if layout.meter[row] >= 0 else ""
+    return layout.batches[layout.batch[row]], meter, str(layout.records.readings.row[layout.reading[row]])
+
+
 class ReadingSlip:
+    """A slip of any size, unexplained unless another batch of that day has the very same value."""
+
     name, alarm_class = "reading_slip", "reading"
 
     def propose(self, context: Context) -> Proposal | None:
         layout = context.layout
         n = len(layout)
-        records = layout.records
         x = context.kept(self.name, lambda: sparse.csc_array(sparse.eye_array(n)))
         rows = np.arange(n)
         if context.model.long:
             rows = context.promising(x, 0.0, steady=True)
             x = sparse.csc_array(x[:, rows])
-        subject = [
-            (
-                layout.batches[layout.batch[i]],
-                layout.meters[layout.meter[i]] if layout.meter[i] >= 0 else "",
-                str(records.readings.row[layout.reading[i]]),
-            )
-            for i in rows.tolist()
-        ]
-        spread = 3.0 * np.sqrt(context.model.variance())
 
         def tell(k: int, a: float) -> Told:
-            row = int(rows[k])
-            meant = intended(layout, row, float(spread[row]))
-            detail = "" if meant is None else str(meant["slip"])
-            return Told(a, "pH", meant, detail=detail)
+            meant = borrowed_from(layout, int(rows[k]))
+            return Told(a, "pH", meant, detail="" if meant is None else str(meant["slip"]))
 
         return linear(
             self.name,
             self.alarm_class,
             "reading",
             x,
-            subject,
+            [subject_of(layout, i) for i in rows.tolist()],
             tell,
-            prior_sd=0.5,
+            prior_sd=ANY_SIZE,
             block=[str(i) for i in layout.reading[rows].tolist()],
+            log_prior=np.full(len(rows), UNEXPLAINED),
+            blocks=n,
+        )
+
+
+class MistypedValue:
+    """A slip whose intended entry is known but for chance: transposed digits, a moved decimal point."""
+
+    name, alarm_class = "reading_slip", "reading"
+
+    def propose(self, context: Context) -> Proposal | None:
+        layout = context.layout
+        n = len(layout)
+        unit = context.kept(ReadingSlip.name, lambda: sparse.csc_array(sparse.eye_array(n)))
+        rows = context.promising(unit, ROOM, steady=True)
+        meant = [(row, *value) for row in rows.tolist() for value in values_meant(layout, row)]
+        if not meant:
+            return None
+        count = np.bincount([row for row, *_ in meant], minlength=n)
+
+        def tell(k: int, a: float) -> Told:
+            row, value, how = meant[k]
+            size = float(layout.observed[row]) - value
+            return Told(size, "pH", {"pH": round(value, 4), "slip": how}, detail=how)
+
+        k = len(meant)
+        of = np.array([row for row, *_ in meant], np.intp)
+        shift = layout.observed[of] - np.array([value for _, value, _ in meant])
+        return Proposal(
+            self.name,
+            self.alarm_class,
+            "reading",
+            stack([(of[[i]], shift[[i]]) for i in range(k)], n),
+            [subject_of(layout, row) for row in of.tolist()],
+            [str(i) for i in layout.reading[of].tolist()],
+            np.ones(k),
+            -np.log(count[of]),
+            np.ones(k, bool),
+            tell,
             blocks=n,
         )
 
 
 KIND = ReadingSlip()
+KIND_OF_VALUES = MistypedValue()

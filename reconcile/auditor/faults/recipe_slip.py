@@ -14,6 +14,9 @@ from reconcile.auditor.retrial import Supposed
 
 FACTORS = ((10.0, "decimal point"), (0.1, "decimal point"), (1000.0, "unit"), (0.001, "unit"))
 
+OTHER_FORM = -1.5
+"""Log prior odds of another salt or acid form to a slip in the amount: it takes another bottle, not another number."""
+
 
 def misreadings(context: Context, contribution: int) -> list[tuple[Supposed, str]]:
     """Every slip of one component with an exact effect: factors, normality, density, hydrates and other forms."""
@@ -74,7 +77,7 @@ class RecipeSlip:
             subject,
             subject,
             np.ones(len(meant)),
-            -np.log(count[batch]) - np.log(2.0),
+            -np.log(count[batch]) - np.log(2.0) + np.where([m[3] == "form" for m in meant], OTHER_FORM, 0.0),
             np.ones(len(meant), bool),
             tell,
             supposed=lambda k: meant[k][2],

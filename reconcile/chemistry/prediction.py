@@ -39,15 +39,16 @@ def triplets(part: Ragged, columns: int) -> Triplets:
 def statuses(
     ph: FloatArray, strength: FloatArray, capacity: FloatArray, model: ActivityModel, settings: Settings
 ) -> TextArray:
-    """Status of every row: not_solved before outside_model, outside_electrode_range, unbuffered and ok."""
+    """Status of every row: not_solved before outside_model, pH outside the electrode's, unbuffered, too few ions, ok."""
     highest = float(settings["status.outside_model_ionic_strength"])
     if model.highest < DAVIES_RANGE:
         highest = min(highest, model.highest)
     status = np.full(len(ph), "ok", object)
     with np.errstate(invalid="ignore"):
-        status[capacity * 1000.0 < settings["status.unbuffered_mmol_per_ph"]] = "unbuffered"
         outside = (ph < settings["status.electrode_low_ph"]) | (ph > settings["status.electrode_high_ph"])
-        status[outside | (strength < settings["status.electrode_low_ionic_strength"])] = "outside_electrode_range"
+        status[strength < settings["status.electrode_low_ionic_strength"]] = "outside_electrode_range"
+        status[capacity * 1000.0 < settings["status.unbuffered_mmol_per_ph"]] = "unbuffered"
+        status[outside] = "outside_electrode_range"
         status[strength > highest] = "outside_model"
     status[~np.isfinite(ph)] = "not_solved"
     return status

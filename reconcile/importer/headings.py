@@ -7,6 +7,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Any
 
+from reconcile.importer.qualified_headings import staged_limit, stated_at
 from reconcile.records.columns import BY_SHEET, Column, heading_key
 from reconcile.records.substances import Catalogue
 from reconcile.records.units import Unit, find_unit
@@ -40,7 +41,10 @@ class Match:
 
 @dataclass
 class Block:
-    """One table of one sheet: its kind, its heading row, and which column holds what (indices from 0)."""
+    """One table of one sheet: its kind, its heading row, and which column holds what (indices from 0).
+
+    staged : (column, field, stage) of limits that hold for one stage alone
+    """
 
     kind: str
     heading: int
@@ -51,6 +55,7 @@ class Block:
     fixed: dict[str, tuple[tuple[str, str], ...]] = field(default_factory=dict)
     repeats: list[tuple[int, int]] = field(default_factory=list)
     wide: list[tuple[int, str, str, int]] = field(default_factory=list)
+    staged: list[tuple[int, str, str]] = field(default_factory=list)
     time_of_day: int = -1
     ignored: list[int] = field(default_factory=list)
     twice: list[tuple[str, list[int]]] = field(default_factory=list)
@@ -61,6 +66,7 @@ class Block:
     def used(self) -> list[int]:
         """Every column that is read."""
         own = [*self.columns.values(), *(c for c, _ in self.repeats)]
+        own += [c for c, _, _ in self.staged]
         own += [c for c, _, _, _ in self.wide] + [lot for _, _, _, lot in self.wide if lot >= 0]
         return own + ([self.time_of_day] if self.time_of_day >= 0 else [])
 
@@ -109,6 +115,11 @@ def match_heading(text: str, kind: str, column_map: ColumnMap, catalogue: Catalo
         return _mapped(kind, mapped)
     name, unit = split_heading(text)
     keys = _KEYS[kind]
+    if kind == "readings":
+        if at := stated_at(text):
+            return Match(kind, "ph", "", 0, (("reference_temperature", at),))
+        if (staged := staged_limit(text, name, unit)) is not None and heading_key(text) not in keys:
+            return Match("staged", staged[0], "", 0, (("stage", staged[1]),))
     column = keys.get(heading_key(text)) or (keys.get(heading_key(f"{name} {unit}")) if "(" in text else None)
     if column is not None:
         return Match(kind, column.name, unit)
@@ -177,12 +188,16 @@ def understand(row: Sequence[Any], kind: str, column_map: ColumnMap, catalogue: 
             wide.append((index, match.name, match.unit))
         elif match.kind == "wide lot":
             lots[heading_key(match.name)] = index
+        elif match.kind == "staged":
+            block.staged.append((index, match.name, match.fixed[0][1]))
         elif match.kind == "repeat":
             block.repeats.append((index, match.repeat))
             block.fixed[str(index)] = match.fixed
         else:
             places.setdefault(match.name, []).append(index)
             block.units.setdefault(match.name, match.unit)
+            if match.name == "ph" and match.fixed:
+                block.fixed["ph"] = match.fixed
     _separate_date_and_time(row, places, block)
     for name, indices in places.items():
         block.columns[name] = indices[0]

@@ -39,6 +39,19 @@ def notices(
     return found
 
 
+def of_temperatures(
+    columns: Mapping[str, AnyArray], used: AnyArray, place_of: Callable[[int], Place], room_c: float
+) -> list[Problem]:
+    """Notices about used readings without a temperature, and about those stated at a reference temperature."""
+    own, reference = (np.isfinite(columns[name]) for name in ("temperature", "reference_temperature"))
+    found = []
+    for code, rows in (("temperature-missing", ~own & ~reference & used), ("temperature-reference", reference & used)):
+        if rows.any():
+            words = (("count", str(int(rows.sum()))), ("temperature", f"{room_c:g}"))
+            found.append(Problem(code, place_of(int(np.argmax(rows))), "", words))
+    return found
+
+
 def with_grid(columns: Mapping[str, AnyArray]) -> FloatArray:
     """Resolution of every reading [pH]; where unknown, the decimal grid on which all readings of its meter lie.
 

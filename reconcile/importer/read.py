@@ -17,7 +17,7 @@ from reconcile.importer.known import KnownSolutions
 from reconcile.importer.ledger import questions, rows_without_name, set_aside
 from reconcile.importer.line_parts import LineReader
 from reconcile.importer.lines import Recipes, long_lines, wide_lines
-from reconcile.importer.notices import notices, with_grid
+from reconcile.importer.notices import notices, of_temperatures, with_grid
 from reconcile.importer.raw import RawSheet
 from reconcile.importer.readings import ReadingRows, missing_column, read_readings
 from reconcile.importer.resolve import Resolver
@@ -165,6 +165,7 @@ def _records(
         return Place(sheet.file, sheet.sheet, int(number[i]), ph_column[i])
 
     book.notes.extend(notices(columns, place_of, _lot_places(composer)))
+    book.notes.extend(of_temperatures(columns, used, place_of, float(settings["prediction.room_temperature_c"])))
     solutions, forms, used_lots, left_open = solutions_of(assigner)
     lots, forms = lots_of(composer.resolver.lots, used_lots, forms, settings)
     readings = Table("readings", {k: v[used] for k, v in columns.items()}, source[used], number[used])

@@ -58,6 +58,7 @@ def read_readings(table: TableCells, groups: IntArray, settings: Settings) -> tu
     for c in BY_SHEET["readings"]:
         parsed = table.columns.get(c.name)
         columns[c.name] = parsed.values if parsed is not None else missing_column("readings", c.name, n)
+    _stated_by_headings(table, columns, settings, notes)
     problem = np.full(n, None, object)
     for i, why in table.whole_row.items():
         problem[i] = why
@@ -83,6 +84,26 @@ def read_readings(table: TableCells, groups: IntArray, settings: Settings) -> tu
         place = table.sheet.place(int(np.searchsorted(table.sheet.row_numbers, rows.row[i])))
         rows.problem[i] = Problem("summary-row", place, _label(table, int(rows.row[i])))
     return rows, notes
+
+
+def _stated_by_headings(
+    table: TableCells, columns: dict[str, AnyArray], settings: Settings, notes: list[Problem]
+) -> None:
+    """Temperatures that a heading states, and limits that a heading gives to one stage; cells go before headings."""
+    for name, text in table.block.fixed.get("ph", ()):
+        columns[name] = np.where(np.isnan(columns[name]), float(text), columns[name])
+    stages = np.array([heading_key(stage) for stage in columns["stage"].tolist()], object)
+    for index, name, stage in table.block.staged:
+        parsed = parse_numbers(table.cells(index), settings["reading.decimal"], table.sheet.text_cells)
+        table.note(parsed, index)
+        if parsed.bad:
+            first = min(parsed.bad)
+            label = shown_text(label_of(table.sheet, table.block, index))
+            words = (("count", str(len(parsed.bad))), ("name", label))
+            place = table.sheet.place(int(table.rows[first]), index)
+            notes.append(Problem("cell-not-used", place, parsed.bad[first].read, words))
+        holds = (stages == heading_key(stage)) & ~np.isnan(parsed.values)
+        columns[name] = np.where(holds, parsed.values, columns[name])
 
 
 def _label(table: TableCells, row_number: int) -> str:

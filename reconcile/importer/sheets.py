@@ -122,6 +122,8 @@ def _source(table: TableCells) -> SheetSource:
         name = f"ph {number}" if number else f"ph {label_of(sheet, block, index)}"
         columns[name] = cell(index, "")
         columns.setdefault("ph", columns[name])
+    for index, name, stage in block.staged:
+        columns[f"{name} of stage {stage}"] = cell(index, "")
     for index, name, unit, lot in block.wide:
         columns[f"amount of {name}"] = cell(index, unit)
         if lot >= 0:

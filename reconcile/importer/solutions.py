@@ -12,12 +12,14 @@ from reconcile.importer.compose import Composer, Mixture
 from reconcile.importer.known import KnownSolutions
 from reconcile.importer.lines import Recipes
 from reconcile.importer.open_amounts import unsettled
+from reconcile.importer.resolve import WATER_NAMES
 from reconcile.importer.series import SeriesList
 from reconcile.records.arrays import AnyArray, IntArray
 from reconcile.records.columns import heading_key
 from reconcile.records.places import Place
 from reconcile.records.problems import Problem
 from reconcile.records.settings import Settings
+from reconcile.records.substances import name_key
 
 
 @dataclass
@@ -54,6 +56,7 @@ class Assigner:
         self.stepped = set(stepped.tolist())
         self.made = SolutionList()
         self._additions: dict[tuple[str, str, float], int | Problem] = {}
+        self.blanks: dict[str, int] = {}
         self.lost: dict[int, Problem] = {}
         self.first_group = {b: groups[0] for b, groups in recipes.by_batch.items()}
 
@@ -140,9 +143,12 @@ class Assigner:
         name, lot = columns["known"][i], columns["known_lot"][i]
         if not name and not columns["batch"][i]:
             return Problem("series-unknown", place("series"), columns["series"][i])
+        if name_key(name or columns["batch"][i]) in WATER_NAMES:
+            return self._water(name or columns["batch"][i])
         if not name:
             return Problem("batch-without-recipe", place("batch"), columns["batch"][i])
-        stated = float(columns["temperature"][i])
+        reference, own = float(columns["reference_temperature"][i]), float(columns["temperature"][i])
+        stated = own if np.isnan(reference) else reference
         temperature = self.room if np.isnan(stated) else stated
         key = (name, lot, temperature)
         if key not in self.known.solutions:
@@ -155,6 +161,13 @@ class Assigner:
             return self.known.solutions[key]
         code = "known-temperature" if self.known.is_listed(name) else "known-not-known"
         return Problem(code, place("known"), name, (("temperature", f"{temperature:g}"),))
+
+    def _water(self, name: str) -> int:
+        """A reading of water alone: a solution that holds nothing."""
+        if name not in self.blanks:
+            self.blanks[name] = self.made.new(name, "")
+            self.made.mixtures[self.blanks[name]] = Mixture()
+        return self.blanks[name]
 
 
 def _up_to_stage(composer: Composer, lines: list[int], stage: str) -> list[int]:

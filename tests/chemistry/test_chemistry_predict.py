@@ -76,7 +76,8 @@ def test_statuses() -> None:
             [0.2, 0.0, 0.0, 0.0, 0.0],
             [0.0, 0.05, 0.0, 0.0, 0.0],
             [0.0, 0.0, 0.05, 0.0, 0.0],
-            [0.0, 0.0, 0.0, 1e-4, 1e-4],
+            [0.0, 0.0, 0.0, 3e-4, 3e-4],
+            [0.0, 0.0, 0.0, 0.0, 0.0],
         ],
     )
     assert found.status.tolist() == [
@@ -86,6 +87,7 @@ def test_statuses() -> None:
         "outside_electrode_range",
         "unbuffered",
         "outside_electrode_range",
+        "unbuffered",
     ]
 
 

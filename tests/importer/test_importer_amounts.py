@@ -238,9 +238,10 @@ def test_a_cycle_of_stocks_is_found_and_named() -> None:
         (("NaCl", "L9", 5.0, "mL", 1.0, "L"), ("L9", "NaCl", 1.0, None), "Stocks", "C2", "unit-missing"),
         (("NaCl", "L9", 5.0, "mL", 1.0, "L"), ("L9", "NaCl", "strong", "M"), "Stocks", "C2", "amount-not-a-number"),
         (("NaCl", "L9", 5.0, "mL", 1.0, "L"), ("L9", "NaCl", 1.0, "mL"), "Stocks", "C2", "strength-unit"),
-        (("HCl", None, "as needed", None), None, "Recipes", "D2", "adjustment-unwritten"),
-        (("HCl", None, "to pH 7.4", None), None, "Recipes", "D2", "adjustment-unwritten"),
         (("NaCl", None, "q.s. to 1 L", None), None, "Recipes", "D2", "fill-not-water"),
+        (("ethanol", None, 100.0, "g/L"), None, "Recipes", "B2", "solvent-mixed"),
+        (("aluminium hydroxide gel", None, 2.0, "g/L"), None, "Recipes", "B2", "suspension"),
+        (("resin suspension", None, 2.0, "g/L"), None, "Recipes", "B2", "suspension"),
         (("NaCl", None, 2000.0, "g", 1.0, "kg"), None, "Recipes", "D2", "no-water-left"),
     ],
 )

@@ -174,15 +174,19 @@ def to_records(world: World, shown: FloatArray) -> BatchRecords:
 
 
 def _known(world: World) -> Table:
-    values = np.unique(world.known[~np.isnan(world.known)])
+    """Known solutions that were read, and the lots of calibration buffers with their certified values."""
+    values = np.unique(world.known[~np.isnan(world.known)]).tolist()
+    lots = sorted({lot for _, _, some in world.sessions for lot in some.split(",")})
+    names = [f"pH {v:.3f} buffer" for v in values] + [f"pH {lot[3:].split('-')[0]} calibration buffer" for lot in lots]
     return _table(
         "known",
-        len(values),
+        len(names),
         {
-            "name": _texts([f"pH {v:.3f} buffer" for v in values]),
-            "temperature": np.full(len(values), 25.0),
-            "ph": values,
-            "u": np.full(len(values), 0.003),
+            "name": _texts(names),
+            "lot": _texts([""] * len(values) + lots),
+            "temperature": np.full(len(names), 25.0),
+            "ph": np.array(values + [float(lot[3:].split("-")[0]) for lot in lots]),
+            "u": np.full(len(names), 0.003),
         },
     )
 

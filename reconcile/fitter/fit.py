@@ -22,7 +22,7 @@ from reconcile.fitter.meters import suspects
 from reconcile.fitter.model import Found, found_at
 from reconcile.fitter.profile import Interval, interval, reach
 from reconcile.fitter.question import Studied, refusal, understood
-from reconcile.fitter.sought import Outcome, outcome, structure
+from reconcile.fitter.sought import Outcome, compared, outcome, structure
 from reconcile.fitter.step_results import Judged, nuisance, steps
 from reconcile.fitter.wording import REASONS
 from reconcile.records.arrays import FloatArray
@@ -35,8 +35,10 @@ from reconcile.records.substances import Form, catalogue
 Progress = Callable[[str, float | None], None]
 
 
-ALIKE = 2.0
-"""AICc above the least within which fewer steps are as well supported (Burnham and Anderson 2002, section 2.6)."""
+ALIKE, DOUBTFUL = 2.0, 10.0
+"""By how much a further step must lower AICc: differences to 2 leave the simpler model substantial support, beyond 10
+none (Burnham and Anderson 2002, Model Selection and Multimodel Inference, section 2.6). The larger one is asked of a
+step whose constant the readings do not tell."""
 
 
 def fit_pka(
@@ -119,11 +121,22 @@ def _chosen(every: Evidence, studied: Studied, question: PkaQuestion) -> tuple[O
                 raise refusal("pka-too-few", count=str(len(used)), unknowns=str(unknowns), names=" and ".join(names))
             continue
         tried[number] = outcome(used, studied, plan)
-    aicc = {number: one.aicc for number, one in tried.items()}
-    finite = {number: value for number, value in aicc.items() if np.isfinite(value)}
-    least = min(finite.values(), default=0.0)
-    number = min((n for n, value in finite.items() if value <= least + ALIKE), default=min(tried))
+    aicc = compared(tried)
+    number = min(tried)
+    for further, one in tried.items():
+        needed = ALIKE if _tells_all(one) else DOUBTFUL
+        if not np.isfinite(aicc[number]) or aicc[further] < aicc[number] - needed:
+            number = further if np.isfinite(aicc[further]) else number
     return tried[number], aicc if len(studied.numbers) > 1 else {}
+
+
+def _tells_all(one: Outcome) -> bool:
+    """Whether every constant of a fit has a closed interval about it."""
+    pka = range(one.structure.shape.steps)
+    if not all(bool(one.fitted.seen[0, j]) for j in pka):
+        return False
+    ends = [interval(one.task, one.fitted, j) for j in pka]
+    return all(bool(np.isfinite(end.low[0]) and np.isfinite(end.high[0])) for end in ends)
 
 
 def _found(used: Evidence, best: Outcome) -> Found:

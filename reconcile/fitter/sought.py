@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
@@ -9,7 +10,7 @@ import numpy as np
 from reconcile.chemistry.water import ZERO_CELSIUS
 from reconcile.fitter.common_errors import taking_variance
 from reconcile.fitter.evidence import Evidence
-from reconcile.fitter.fitting import Fitted, Task, fit
+from reconcile.fitter.fitting import Fitted, Task, fit, refit
 from reconcile.fitter.library_constants import heats
 from reconcile.fitter.model import Shape, found_at, predict
 from reconcile.fitter.question import Studied
@@ -25,7 +26,7 @@ WORTH = 0.10
 
 @dataclass(frozen=True)
 class Structure:
-    """One number of steps: shape, start and parameters that are free; AICc once it is fitted."""
+    """One number of steps: shape, start and parameters that are free."""
 
     shape: Shape
     held: FloatArray
@@ -68,16 +69,12 @@ def _worth_seeking(evidence: Evidence, shape: Shape, held: FloatArray, free: Boo
 
 @dataclass(frozen=True)
 class Outcome:
-    """A fit with one number of steps: with all readings, and without those rejected.
-
-    aicc : of the fit without, each rejected reading counted as a parameter of its own; NaN where it cannot be had
-    """
+    """A fit with one number of steps: with all readings, and without those rejected."""
 
     structure: Structure
     task: Task
     whole: Fitted
     fitted: Fitted
-    aicc: float
 
 
 def outcome(evidence: Evidence, studied: Studied, structure: Structure) -> Outcome:
@@ -97,8 +94,23 @@ def outcome(evidence: Evidence, studied: Studied, structure: Structure) -> Outco
             structure.held, near=studied.known,
         )  # fmt: skip
         whole = fit(task, whole.theta)
-    fitted = fit_without(task, whole)
-    return Outcome(structure, task, whole, fitted, aicc(task, fitted))
+    return Outcome(structure, task, whole, fit_without(task, whole))
+
+
+def compared(tried: Mapping[int, Outcome]) -> dict[int, float]:
+    """AICc of every number of steps, NaN where it cannot be had.
+
+    What one number of steps rejects every other may reject as well, at the price of a parameter for each reading:
+    otherwise a number would win by nothing but a reading that it alone was rid of.
+    """
+    kept = {one.fitted.data.kept.tobytes(): one.fitted.data.kept for one in tried.values()}
+    out = {}
+    for number, one in tried.items():
+        own = one.fitted
+        fits = [own if np.array_equal(own.data.kept, k) else refit(one.task, own, k) for k in kept.values()]
+        found = [aicc(one.task, fitted) for fitted in fits]
+        out[number] = float(np.nanmin(found)) if np.any(np.isfinite(found)) else float("nan")
+    return out
 
 
 def aicc(task: Task, fitted: Fitted) -> float:

@@ -30,8 +30,9 @@ def paragraphs(fit: PkaFit) -> list[str]:
         "Readings are rejected only by externally studentised residuals in a test at a family-wise 1 % (Rosner 1983, "
         "doi:10.1080/00401706.1983.10487848). Rejected readings are named and stay in the tables; the result with "
         "every reading stands beside.",
-        "Where the number of steps is neither given nor known it is the fewest within 2 of the least AICc (Hurvich and "
-        "Tsai 1989, doi:10.1093/biomet/76.2.297); every rejected reading counts as a parameter there.",
+        "Where the number of steps is neither given nor known it is chosen by AICc (Hurvich and Tsai 1989, "
+        "doi:10.1093/biomet/76.2.297); every rejected reading counts as a parameter there, and a further step must "
+        "lower it by more than 2, or by more than 10 where the readings do not tell its constant.",
         "The thermodynamic constant holds at ionic strength 0 and the readings’ mean temperature. The apparent one is "
         "mixed: activity of the hydrogen ion, molalities of the acid’s forms, at the ionic strength stated. A value at "
         "25 °C is given only with an enthalpy, the library’s or one fitted to readings that span 10 K or more.",

@@ -20,6 +20,7 @@ from reconcile.importer.open_amounts import (
     settled_contents,
 )
 from reconcile.importer.stocks import Stock
+from reconcile.importer.unpredictable import MOST_SOLVENT
 from reconcile.records.problems import Problem
 from reconcile.records.units import UNITS
 
@@ -69,8 +70,10 @@ class Composer:
         stock = found.taken.stock
         if stock is not None and stock.batch:
             return self._from_batch(line, stock)
-        if found.form is not None:
+        if stock is not None and stock.adjusted and found.form is not None:
             return of_adjusted_stock(self, line, found)
+        if found.form is not None:
+            return [self.reader.part_of(line, found)]
         return self._multiple(line, found)
 
     def batch_of(self, line: int) -> str:
@@ -195,9 +198,9 @@ class Composer:
             line = next(p.line for p in parts if p.how != "molar")
             return Mixture(problem=self._fault(line, "litre-and-kilogram"))
         if by_mass:
-            return replace(self._per_kilogram(parts, total), without_effect=declared)
+            return self._in_water(replace(self._per_kilogram(parts, total), without_effect=declared))
         u = self.reader.u_volume
-        return Mixture(
+        whole = Mixture(
             False,
             [
                 (p, p.amount, p.u) if p.how == "molar" else (p, p.amount / (total / 1000.0), float(np.hypot(p.u, u)))
@@ -205,6 +208,17 @@ class Composer:
             ],
             without_effect=declared,
         )
+        return self._in_water(whole)
+
+    def _in_water(self, mixture: Mixture) -> Mixture:
+        """The mixture, or the problem that it holds more of another solvent than leaves it a solution in water."""
+        for part, amount, _ in mixture.parts:
+            grams = amount * part.form.molar_mass
+            if grams > MOST_SOLVENT.get(part.form.name, np.inf):
+                words = (("bare", part.form.name),)
+                fault = Fault("solvent-mixed", f"{part.form.name}, {grams:.3g} g/L", words)
+                return Mixture(problem=self.reader.problem(part.line, fault, self.lines.column[part.line]))
+        return mixture
 
     def leaves_open(self, line: int) -> bool:
         """Whether a line adds something until a pH is reached."""

@@ -12,6 +12,7 @@ from reconcile.importer.cells import Fault
 from reconcile.importer.lines import Lines
 from reconcile.importer.resolve import Resolver, Taken
 from reconcile.importer.stocks import Stock
+from reconcile.importer.unpredictable import MOST_SOLVENT
 from reconcile.records.places import Place
 from reconcile.records.problems import Problem
 from reconcile.records.settings import Settings
@@ -44,7 +45,8 @@ class Basis:
     @property
     def plain(self) -> bool:
         adjusted = self.taken.stock is not None and self.taken.stock.adjusted
-        return self.form is not None and self.fault is None and not adjusted
+        solvent = self.form is not None and self.form.name in MOST_SOLVENT
+        return self.form is not None and self.fault is None and not adjusted and not solvent
 
 
 @dataclass(frozen=True, slots=True)

@@ -9,6 +9,7 @@ import numpy as np
 
 from reconcile.importer.cells import Fault, decimal_mark, number_of
 from reconcile.importer.stocks import Stock, StockRoom, substance_fault
+from reconcile.importer.unpredictable import unpredictable
 from reconcile.records.places import Place
 from reconcile.records.substances import Catalogue, Form, name_key
 from reconcile.records.units import find_unit
@@ -141,40 +142,9 @@ class Resolver:
                     Stock(lot, inner.form, "", value[0], measured, nan, nan, nan, nan, -1, Place("")),
                     None,
                 )
-        if not found.several and (code := _unpredictable(text)):
+        if not found.several and (code := unpredictable(text)):
             return None, None, Fault(code, text, (("bare", text),))
         return None, None, substance_fault(text, found.near, found.several)
-
-
-def _unpredictable(text: str) -> str:
-    """Problem code of what no equilibrium in water describes; "" for any other name."""
-    key = name_key(text)
-    if key in _SOLVENTS:
-        return "solvent-mixed"
-    return "suspension" if key in _SUSPENDED or any(word in key.split() for word in _SAY_SUSPENDED) else ""
-
-
-_SOLVENTS = {
-    name_key(w)
-    for w in (
-        "ethanol", "ethyl alcohol", "ethanol 96 %", "ethanol 95 %", "ethanol absolute", "industrial methylated spirit",
-        "methanol", "propan-2-ol", "2-propanol", "isopropanol", "isopropyl alcohol", "IPA", "propan-1-ol", "1-propanol",
-        "tert-butanol", "benzyl alcohol", "acetone", "acetonitrile", "MeCN", "dimethyl sulfoxide", "DMSO",
-        "dimethylformamide", "DMF", "tetrahydrofuran", "THF", "1,4-dioxane", "dioxane", "glycerol", "glycerin",
-        "glycerine", "propylene glycol", "ethylene glycol", "macrogol 400", "PEG 400", "polyethylene glycol 400",
-        "ethyl acetate", "EtOH", "MeOH",
-    )
-}  # fmt: skip
-"""Solvents other than water: pH and the constants of the library have another meaning in a mixture with them."""
-_SUSPENDED = {
-    name_key(w)
-    for w in (
-        "aluminium hydroxide", "aluminum hydroxide", "aluminium hydroxide gel", "magnesium hydroxide", "kaolin", "talc",
-        "bentonite", "zinc oxide", "titanium dioxide", "calcium phosphate", "tricalcium phosphate",
-        "hydroxyapatite", "activated carbon", "activated charcoal", "silica gel", "barium sulfate",
-    )
-}  # fmt: skip
-_SAY_SUSPENDED = ("suspension", "emulsion", "slurry", "lipid", "cream", "resin")
 
 
 def _rest(stock: Stock) -> Fault:

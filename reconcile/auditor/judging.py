@@ -13,7 +13,7 @@ from reconcile.auditor.components import SHORT, Components, Model
 from reconcile.auditor.layout import Layout
 from reconcile.auditor.mixed import estimate, model_of
 from reconcile.auditor.proposals import Context, FaultKind
-from reconcile.auditor.relinearised import relinearised
+from reconcile.auditor.relinearised import constants_moved, relinearised
 from reconcile.auditor.retrial import Retrial, Supposed
 from reconcile.auditor.scoring import Candidate, Pool, Scores, pool_of, score, without
 from reconcile.records.arrays import FloatArray
@@ -29,6 +29,10 @@ best of the subject at first."""
 MOST_LAYOUTS = 400
 ONE_EACH = ("lot", "batch")
 """Classes in which one subject has one explanation at a time: a bottle holds one thing, a batch was spoilt once."""
+FIRST, FIRST_LONG = 400, 60
+"""Candidates of each round whose single probability is worked out, best first."""
+LATEST = 12
+"""Rounds kept, with all that was tried in them."""
 TRIED = 12
 """Candidates of each round whose family-wise probability is worked out, best first."""
 
@@ -60,6 +64,7 @@ class Judge:
         self.progress = progress or (lambda _: None)
         self.tried = 0
         self._layouts: dict[tuple[Supposed, ...], Layout] = {}
+        self._latest: dict[tuple[int, ...], tuple[Components, list[Candidate], tuple[Pool, Model, Scores]]] = {}
 
     def fixed_and_rest(self, candidates: Sequence[Candidate]) -> tuple[sparse.csc_array | None, FloatArray]:
         """Columns of free amplitude, and the residuals after what has none is taken off."""
@@ -89,14 +94,31 @@ class Judge:
 
     def model(self, components: Components, candidates: Sequence[Candidate], own: tuple[int, ...] = ()) -> Model:
         fixed, r = self.fixed_and_rest(candidates)
-        return model_of(self.layout_with(candidates), components, fixed, own, r)
+        return model_of(self.layout_with(candidates), components, fixed, own, r, self.unsure(candidates))
 
     def components(self, candidates: Sequence[Candidate], start: Components | None = None) -> Components:
         fixed, r = self.fixed_and_rest(candidates)
-        return estimate(self.layout_with(candidates), self.settings, fixed, r, start)
+        return estimate(self.layout_with(candidates), self.settings, fixed, r, start, self.unsure(candidates))
+
+    def unsure(self, candidates: Sequence[Candidate]) -> sparse.csc_array | None:
+        """What constants leave unsure about supposed recipes of a long record, as further random effects."""
+        supposed = [c.supposed for c in candidates if c.supposed is not None]
+        if not supposed or len(self.layout) <= SHORT:
+            return None
+        columns = [constants_moved(self.layout, *self.retrial.prediction(one)) for one in supposed]
+        return sparse.csc_array(sparse.hstack(columns))
 
     def scored(self, components: Components, candidates: Sequence[Candidate]) -> tuple[Pool, Model, Scores]:
-        """All candidates beside the given ones."""
+        """All candidates beside the given ones; the latest few answers are kept."""
+        key = (id(components), *(id(c) for c in candidates))
+        if key not in self._latest:
+            self._latest[key] = (components, list(candidates), self._scored(components, candidates))
+        self._latest[key] = self._latest.pop(key)
+        while len(self._latest) > LATEST:
+            self._latest.pop(next(iter(self._latest)))
+        return self._latest[key][2]
+
+    def _scored(self, components: Components, candidates: Sequence[Candidate]) -> tuple[Pool, Model, Scores]:
         model = self.model(components, candidates)
         taken = {(c.alarm_class, c.subject) for c in candidates if c.alarm_class in ONE_EACH}
         pool = pool_of(Context(self.layout, self.settings, model, self.retrial), self.kinds)
@@ -151,7 +173,8 @@ class Judge:
         """
         floor = np.sqrt(2.0 * np.maximum(scores.gain, 0.0))
         order = np.argsort(-scores.marginal, kind="stable")
-        order = order[(floor[order] > 2.5) & np.isfinite(scores.marginal[order])][:400]
+        first = FIRST_LONG if model.long else FIRST
+        order = order[(floor[order] > 2.5) & np.isfinite(scores.marginal[order])][:first]
         found: list[Chosen] = []
         if not len(order):
             return found

@@ -62,6 +62,22 @@ def relinearised(layout: Layout, rows: IntArray, supposed: Prediction) -> Layout
     )
 
 
+def constants_moved(layout: Layout, rows: IntArray, supposed: Prediction) -> sparse.csc_array:
+    """What constants leave unsure about a supposed truth beyond what the layout holds, (n, m) of unit variance [pH].
+
+    A long record keeps its covariance and takes these columns beside it: u(pKa) times the change of dpH/dpKa, for the
+    constants that the layout holds as well as for those that only the supposed truth knows.
+    """
+    known, fresh, variances = _constants(layout, supposed)
+    constants = layout.effects["constant"]
+    before = layout.z[rows][:, constants.first : constants.last].toarray()
+    prior = layout.prior[constants.first : constants.last]
+    moved = np.hstack([(known - before) * np.sqrt(prior), fresh * np.sqrt(variances)])
+    moved = moved[:, np.abs(moved).max(axis=0, initial=0.0) > 1e-4]
+    entries = sparse.coo_array(moved)
+    return sparse.csc_array((entries.data, (rows[entries.row], entries.col)), shape=(len(layout), moved.shape[1]))
+
+
 def _constants(layout: Layout, supposed: Prediction) -> tuple[FloatArray, FloatArray, FloatArray]:
     """dpH/dpKa of the constants that the layout holds, of those it does not, and the variances of the latter."""
     dense = matrix(supposed.constants).toarray()

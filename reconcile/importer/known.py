@@ -11,16 +11,21 @@ from reconcile.importer.tables import TableCells
 from reconcile.records.columns import heading_key
 from reconcile.records.standards import find_standard, standard_ph
 
+U_CERTIFICATE = 0.01
+"""Standard uncertainty of a known solution's pH where none is stated [pH]; common practice, no source."""
 _BEYOND = 2.0
 """K outside the tabulated temperatures within which the nearest value still stands; common practice, no source."""
 
 
 @dataclass
 class KnownSolutions:
-    """Certified values by name: rows of (lot, temperature [°C], pH, u); and the solutions already made of them."""
+    """Certified values by name: rows of (lot, temperature [°C], pH, u); and the solutions already made of them.
+
+    solutions : (name, lot, temperature, whether that is only the room's) -> solution
+    """
 
     by_name: dict[str, list[tuple[str, float, float, float]]] = field(default_factory=dict)
-    solutions: dict[tuple[str, str, float], int] = field(default_factory=dict)
+    solutions: dict[tuple[str, str, float, bool], int] = field(default_factory=dict)
 
     def add(self, table: TableCells) -> None:
         """Take the rows of one Known solutions sheet."""
@@ -48,6 +53,17 @@ class KnownSolutions:
         if temperature < t[0] - _BEYOND or temperature > t[-1] + _BEYOND:
             return None
         return float(np.interp(temperature, t, ph)), float(np.interp(temperature, t, u))
+
+    def at(self, name: str, lot: str, temperature: float, u_kelvin: float) -> tuple[float, float] | None:
+        """(pH, u) at a temperature that is itself uncertain by u_kelvin [K]."""
+        value = self.certified(name, lot, temperature)
+        if value is None or u_kelvin == 0.0:
+            return value
+        ends = [self.certified(name, lot, temperature + step) for step in (-1.0, 1.0)]
+        known = [ph for ph, _ in (end for end in ends if end is not None)]
+        slope = (known[1] - known[0]) / 2.0 if len(known) == 2 else known[0] - value[0] if known else 0.0
+        u = U_CERTIFICATE if np.isnan(value[1]) else value[1]
+        return value[0], float(np.hypot(u, slope * u_kelvin))
 
     def is_listed(self, name: str) -> bool:
         """Whether the record or the published standards know the name, at any temperature."""

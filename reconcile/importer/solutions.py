@@ -51,6 +51,7 @@ class Assigner:
     ) -> None:
         self.recipes, self.composer, self.known, self.series = recipes, composer, known, series
         self.room = float(settings["prediction.room_temperature_c"])
+        self.u_room = float(settings["uncertainty.room_temperature_k"]) / 3.0**0.5
         self.plain: Plain = compose_plain(composer, len(recipes.batch))
         stepped = np.unique(composer.lines.group[composer.lines.step != ""])
         self.stepped = set(stepped.tolist())
@@ -150,9 +151,9 @@ class Assigner:
         reference, own = float(columns["reference_temperature"][i]), float(columns["temperature"][i])
         stated = own if np.isnan(reference) else reference
         temperature = self.room if np.isnan(stated) else stated
-        key = (name, lot, temperature)
+        key = (name, lot, temperature, bool(np.isnan(stated)))
         if key not in self.known.solutions:
-            value = self.known.certified(name, lot, temperature)
+            value = self.known.at(name, lot, temperature, self.u_room if np.isnan(stated) else 0.0)
             if value is not None:
                 index = self.made.new("", "")
                 self.made.known[index] = value

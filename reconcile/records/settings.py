@@ -33,7 +33,9 @@ SETTINGS: tuple[Setting, ...] = (
         "byte-order mark, then strict UTF-8; anything else must be named",
         (AUTO, "utf-8", "utf-16", "cp1252"),
     ),
-    Setting("reading", "delimiter", AUTO, "", "the one that gives every line the same width", (AUTO, ",", ";", "tab")),
+    Setting(
+        "reading", "delimiter", AUTO, "", "the one that gives every line the same width", (AUTO, ",", ";", "tab", "|")
+    ),
     Setting("reading", "decimal", AUTO, "", "settled per column from its unambiguous cells", (AUTO, ".", ",")),
     Setting(
         "reading",

@@ -14,7 +14,7 @@ from reconcile.records.places import Place
 from reconcile.records.problems import InputProblems, Problem, shown
 from reconcile.records.settings import AUTO, Settings
 
-DELIMITERS = {",": "comma", ";": "semicolon", "\t": "tab"}
+DELIMITERS = {",": "comma", ";": "semicolon", "\t": "tab", "|": "vertical bar"}
 _SAMPLE = 400
 
 

@@ -23,7 +23,7 @@ CHOICES: Mapping[str, str] = {
     "year-short": 'Write years with four digits, or say in the settings: [reading] two_digit_years = "2000".',
     "time-zone": 'Write local wall times, or say in the settings: [reading] time_zone = "ignore".',
     "blank_batch": 'Say it in the settings: [reading] blank_batch = "above" or "missing".',
-    "delimiter": 'Name the delimiter in the settings: [reading] delimiter = ";" (or "," or "tab").',
+    "delimiter": 'Name the delimiter in the settings: [reading] delimiter = ";" (or ",", "tab" or "|").',
 }
 MANY_SHARE, MANY_LEAST = 0.05, 3
 

@@ -183,6 +183,8 @@ def test_59_another_encoding_is_a_question_that_shows_the_line(tmp_path: Path) -
     "sep=;\nBatch;Meter;Remark;pH\nB1;M1;x;4.71\nB1;M2;y;4.70\n",
     "Batch\tMeter\tRemark\tpH\nB1\tM1\ta, b\t4.71\nB1\tM2\tc; d\t4.70\n",
     "Log of the room\n\nBatch,Meter,Remark,pH\nB1,M1,a;b,4.71\nB1,M2,c;d,4.70\n",
+    'Batch|Meter|Remark|pH\nB1|M1|a, b; c|4.71\nB1|M2|"d|e"|4.70\n',
+    "sep=|\nBatch|Meter|Remark|pH\nB1|M1|a,b|4,71\nB1|M2|c,d|4,70\n",
 ])  # fmt: skip
 def test_60_the_delimiter_that_gives_the_headings(tmp_path: Path, text: str) -> None:
     records = read(csv_log(tmp_path, text))
@@ -193,6 +195,13 @@ def test_60_the_delimiter_that_gives_the_headings(tmp_path: Path, text: str) -> 
 def test_60_two_delimiters_that_fit_are_a_question(tmp_path: Path) -> None:
     paths = csv_log(tmp_path, "a;x,b\n1;2,3\n4;5,6\n")
     assert refusal(paths) == {("", "", "delimiter-unclear")}
+
+
+def test_60_a_delimiter_that_the_settings_name_goes_before_all_others(tmp_path: Path) -> None:
+    paths = csv_log(tmp_path, "Batch|Meter|pH\nB1|a,b,c|4.71\nB1|d,e,f|4.70\n")[:1]
+    recipes = tmp_path / "bars.csv"
+    recipes.write_bytes((tmp_path / "recipes.csv").read_bytes().replace(b",", b"|"))
+    assert read([*paths, recipes], delimiter="|").readings["meter"].tolist() == ["a,b,c", "d,e,f"]
 
 
 @pytest.mark.parametrize("line", ['B1,"M1,4.71', 'B1,"M"1,4.71'])

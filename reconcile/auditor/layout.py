@@ -11,6 +11,7 @@ import numpy as np
 from scipy import sparse
 
 from reconcile.auditor.adjusted import UNKNOWN_SD, anchor_of, speaking, stock_columns, with_anchors
+from reconcile.auditor.probes import probe_index
 from reconcile.auditor.subjects import codes, family_names, sessions_of, solution_names
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray, TextArray, Triplets
 from reconcile.records.book import BatchRecords
@@ -188,7 +189,13 @@ def build_layout(records: BatchRecords, prediction: Prediction, settings: Settin
         columns.append(block)
         prior.extend(variances)
 
-    add("meter", meters, one_hot(meter, len(meters)), [a**2 for a in accuracy])
+    probe, probes = probe_index(records, rows)
+    carry = np.array([bool(np.any(probe[meter == i] >= 0)) for i in range(len(meters))], bool)
+    half = np.where(carry, 0.5, 1.0)  # what a meter may be off is half its own, half that of a probe that moves
+    add("meter", meters, one_hot(meter, len(meters)), (half * np.square(accuracy)).tolist())
+    if probes:
+        usual = [0.5 * np.square([accuracy[m] for m in meter[probe == i]]).mean() for i in range(len(probes))]
+        add("probe", probes, one_hot(probe, len(probes)), usual)
     add("span", meters, one_hot(meter, len(meters), ph - 7.0), [span**2] * len(meters))
     every_lot = lot_sensitivities(records, prediction).tocsr()[rows].tocsc()
     lots_used = felt(every_lot)

@@ -9,7 +9,6 @@ from typing import Any
 
 import numpy as np
 
-from reconcile.chemistry.acids import acid_table
 from reconcile.fitter.account import account
 from reconcile.fitter.apparent import apparent_shift, neutralised
 from reconcile.fitter.candidates import candidates
@@ -75,7 +74,7 @@ def fit_pka(
     Bates and Watts 1988, Nonlinear Regression Analysis and Its Applications; JCGM 100:2008; see each part for its own.
     """
     say = progress or (lambda doing, share: None)
-    studied = understood(question, settings["prediction.pk_equations"])
+    studied = understood(question, settings)
     say("gathering the readings", 0.3)
     every = evidence(records, settings, studied.table(studied.numbers[-1]), studied.acid, question.noise)
     _check(every, studied, question)
@@ -97,7 +96,7 @@ def _check(every: Evidence, studied: Studied, question: PkaQuestion) -> None:
     """Refuses what holds no answer."""
     if not len(every):
         alike = () if studied.known else catalogue().look_up(question.acid).near
-        near = f"; did you mean {' or '.join(alike)}?" if alike else ""
+        near = f" (near it in the library: {', '.join(alike)})" if alike else ""
         raise refusal("pka-not-in-record", question.acid, near=near)
     own = every.medium.place[every.cases.form] >= 0
     if studied.form is not None and question.molar_mass is None and np.any(~np.isfinite(every.cases.amount[own])):
@@ -164,7 +163,7 @@ def _told(
     say("trying the acids of the library", 0.75)
     free = [fitted.jacobian[:, j] for j in (shape.strength, shape.offset) if fitted.free[0, j]]
     sought = sum(step.standing == "found" for step in results) or int(fitted.free[0, shape.pka].sum())
-    ranked = candidates(used, fitted, errors, free, sought, acid_table(studied.equations))
+    ranked = candidates(used, fitted, errors, free, sought, studied.library)
     shift = apparent_shift(used.medium.model, shape.charge, shape.steps, used.temperature, found.ionic_strength)
     degrees = neutralised(found.ph, fitted.theta[0, shape.pka] + shift)
     forms = _forms(used)

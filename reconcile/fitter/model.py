@@ -8,6 +8,7 @@ import numpy as np
 
 from reconcile.chemistry.acids import AcidTable
 from reconcile.chemistry.engine import Answers, run
+from reconcile.chemistry.pair_table import Pair
 from reconcile.chemistry.temperature import GAS_CONSTANT, LN10
 from reconcile.chemistry.water import ZERO_CELSIUS
 from reconcile.fitter.cases import Cases, Medium
@@ -130,7 +131,19 @@ def table_with(medium: Medium, shape: Shape, pka: FloatArray, dh: FloatArray) ->
     }
     names = tuple(f"case {k}" for k in range(count))
     table = with_further(base, names, shape.charge, columns, like=medium.studied)
-    return table, len(base.names) + np.arange(count)
+    return replace(table, pairs=base.pairs + _pairs_of(medium, names)), len(base.names) + np.arange(count)
+
+
+def _pairs_of(medium: Medium, names: tuple[str, ...]) -> tuple[Pair, ...]:
+    """Ion pairs and condensed species of the studied acid, again for every acid that stands in for it."""
+    studied = medium.acids.names[medium.studied]
+    own = [pair for pair in medium.acids.pairs if any(acid == studied for acid, _ in pair.states)]
+
+    def renamed(pair: Pair, name: str) -> Pair:
+        states = {(name if acid == studied else acid, lost): n for (acid, lost), n in pair.states.items()}
+        return replace(pair, states=states)
+
+    return tuple(renamed(pair, name) for name in names for pair in own)
 
 
 def predict(medium: Medium, cases: Cases, shape: Shape, theta: FloatArray) -> tuple[FloatArray, FloatArray]:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, field
 from functools import cached_property
 
 import numpy as np
@@ -14,6 +14,7 @@ from reconcile.fitter.further_acids import with_further
 from reconcile.records.pka_results import PkaQuestion
 from reconcile.records.places import Place
 from reconcile.records.problems import InputProblems, Problem
+from reconcile.records.settings import Settings
 from reconcile.records.substances import Catalogue, Form, Ion, catalogue, ions, name_key
 
 MOST_STEPS = 3
@@ -66,7 +67,7 @@ class Studied:
     charge : of the fully protonated form; numbers : numbers of steps to try, ascending
     form : what was weighed, None for an acid of the library (its forms are those of the catalogue)
     words : what was weighed, in words
-    equations : whether published equations give the library's pKa(T) where there is one
+    library : the library's acids, as the settings have them
     """
 
     acid: str
@@ -75,7 +76,7 @@ class Studied:
     numbers: tuple[int, ...]
     form: UnfamiliarForm | None
     words: str
-    equations: bool = True
+    library: AcidTable
 
     @property
     def names(self) -> Catalogue:
@@ -84,12 +85,11 @@ class Studied:
 
     def table(self, steps: int) -> AcidTable:
         """The library's acids, with the unfamiliar one behind; its constants stand at 7 until they are found."""
-        library = acid_table(self.equations)
         if self.known:
-            return library
+            return self.library
         pka = np.full((1, steps), 7.0)
         columns = {"pka": pka, "p": pka, "u": np.ones((1, steps))}
-        return with_further(library, (self.acid,), self.charge, columns)
+        return with_further(self.library, (self.acid,), self.charge, columns)
 
 
 def refusal(code: str, read: str = "", **words: str) -> InputProblems:
@@ -97,16 +97,18 @@ def refusal(code: str, read: str = "", **words: str) -> InputProblems:
     return InputProblems([Problem(code, Place(""), read, tuple(words.items()))])
 
 
-def understood(question: PkaQuestion, equations: bool = True) -> Studied:
+def understood(question: PkaQuestion, settings: Settings | None = None) -> Studied:
     """What the question means; raises InputProblems where it contradicts itself or the library."""
+    chosen = settings or Settings()
+    library = acid_table(chosen["prediction.pk_equations"], chosen["prediction.ion_pairs"])
     _check_numbers(question)
     name = question.acid.strip()
     if not name:
         raise refusal("pka-option", name="the acid", wanted="the name of a substance, such as acetic acid")
     known = _in_library(name)
     if known:
-        return replace(_of_library(question, known), equations=equations)
-    return replace(_unfamiliar(question, name), equations=equations)
+        return _of_library(question, known, library)
+    return _unfamiliar(question, name, library)
 
 
 def _check_numbers(question: PkaQuestion) -> None:
@@ -146,10 +148,9 @@ def _in_library(name: str) -> str:
     return own
 
 
-def _of_library(question: PkaQuestion, acid: str) -> Studied:
-    table = acid_table()
-    i = table.index[acid]
-    charge, steps = int(table.charge[i]), int(table.steps[i])
+def _of_library(question: PkaQuestion, acid: str, library: AcidTable) -> Studied:
+    i = library.index[acid]
+    charge, steps = int(library.charge[i]), int(library.steps[i])
     said = {
         "--steps": question.steps if question.steps != steps else None,
         "--charge": question.charge if question.charge != charge else None,
@@ -166,10 +167,10 @@ def _of_library(question: PkaQuestion, acid: str) -> Studied:
             steps=f"{steps} step{'s' if steps > 1 else ''}",
             charge=f"{charge:+d}" if charge else "0",
         )
-    return Studied(acid, True, charge, (steps,), None, f"{acid}, of the library")
+    return Studied(acid, True, charge, (steps,), None, f"{acid}, of the library", library)
 
 
-def _unfamiliar(question: PkaQuestion, name: str) -> Studied:
+def _unfamiliar(question: PkaQuestion, name: str, library: AcidTable) -> Studied:
     charge = question.charge or 0
     removed = question.protons_removed or 0.0
     fewest = max(1, math.ceil(removed - 1e-9))
@@ -203,7 +204,7 @@ def _unfamiliar(question: PkaQuestion, name: str) -> Studied:
     beside_words = f", with {question.counter_ion}" if question.counter_ion else ""
     sign = f"{charge:+d}" if charge else "0"
     words = f"{name}, not in the library: charge of the fully protonated form {sign}, weighed {lost}{beside_words}"
-    return Studied(name, False, charge, numbers, form, words)
+    return Studied(name, False, charge, numbers, form, words, library)
 
 
 def _counter_ion(text: str, charge: float) -> tuple[str, float, dict[str, float]]:

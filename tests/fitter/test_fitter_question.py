@@ -79,7 +79,7 @@ def test_an_acid_that_no_solution_holds_is_refused_with_near_names(tmp_path: Pat
     with pytest.raises(InputProblems) as caught:
         reconcile.fit_pka(book, acid="acetic acd")
     assert "no reading is of a solution that holds" in str(caught.value)
-    assert "did you mean acetic acid" in str(caught.value)
+    assert "(near it in the library: acetic acid" in str(caught.value)
 
 
 def test_amounts_by_mass_need_a_molar_mass(tmp_path: Path) -> None:

@@ -56,6 +56,8 @@ def show(records: BatchRecords) -> None:
         line(f"Incomplete: {text}")
     for sheet in records.sheets:
         _sheet(sheet)
+    if records.not_read:
+        line(f"Not read, as these sheets say themselves: {', '.join(p.sheet or p.file for p in records.not_read)}")
     if records.set_aside:
         heading("Set aside")
         _first([_aside(row.place.words(), row.cause.words(), row) for row in records.set_aside], "rows set aside")
@@ -94,6 +96,7 @@ def document(records: BatchRecords) -> dict[str, Any]:
             }
             for sheet in records.sheets
         ],
+        "says_not_read": [{"source": place.file, "sheet": place.sheet} for place in records.not_read],
         "set_aside": list(_set_aside(records)),
         "notes": [{"code": note.code, "text": note.message()} for note in records.notes],
     }

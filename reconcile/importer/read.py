@@ -181,6 +181,7 @@ def _records(
         set_aside=tuple(aside),
         notes=tuple(book.notes),
         without_effect=tuple(composer.resolver.used_without_effect),
+        not_read=tuple(book.declared),
         open_amounts=left_open,
         solved=Solved(),
     )

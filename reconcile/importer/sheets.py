@@ -11,7 +11,7 @@ from reconcile.importer.headings import Block, ColumnMap
 from reconcile.importer.raw import RawSheet
 from reconcile.importer.tables import TableCells, read_cells
 from reconcile.records.book import SheetSource
-from reconcile.records.columns import BY_SHEET, column
+from reconcile.records.columns import BY_SHEET, NOT_READ, column
 from reconcile.records.places import Place
 from reconcile.records.problems import Problem, shown
 from reconcile.records.settings import Settings
@@ -22,12 +22,16 @@ _JUDGED_ELSEWHERE = ("readings", "recipes", "stocks")
 
 @dataclass
 class Book:
-    """Everything read so far: parsed tables, their sheet sources, notices, and what stops the import."""
+    """Everything read so far: parsed tables, their sheet sources, notices, and what stops the import.
+
+    declared : sheets that say in their first cell that they are not read
+    """
 
     tables: list[TableCells] = field(default_factory=list)
     sources: list[SheetSource] = field(default_factory=list)
     notes: list[Problem] = field(default_factory=list)
     stops: list[Problem] = field(default_factory=list)
+    declared: list[Place] = field(default_factory=list)
 
     def of_kind(self, kind: str) -> Iterable[tuple[int, TableCells]]:
         """(index of its source, table) of every table of one kind."""
@@ -40,6 +44,9 @@ def read_sheets(
     """Add every table of every sheet; a problem that stops the import where none holds readings."""
     unread = []
     for sheet in sheets:
+        if len(sheet) and sheet.columns and as_text(sheet.columns[0][0]).strip() == NOT_READ:
+            book.declared.append(sheet.place())
+            continue
         book.notes.extend(sheet.notes)
         blocks = find_blocks(sheet, column_map, names)
         if not blocks:

@@ -162,6 +162,7 @@ class BatchRecords:
     set_aside : rows_read == len(readings) + len(set_aside), always
     notes : accepted repairs and notices, none of which leaves a row out
     open_amounts : amounts left to a pH, whose contributions are NaN until `solved` says what they are
+    not_read : sheets that say in their first cell that they are not read (records/columns.py, NOT_READ)
     """
 
     sheets: tuple[SheetSource, ...]
@@ -183,6 +184,7 @@ class BatchRecords:
     without_effect: tuple[str, ...] = ()
     open_amounts: OpenAmounts = field(default_factory=OpenAmounts)
     solved: Solved = field(default_factory=Solved)
+    not_read: tuple[Place, ...] = ()
 
     def place(self, table: Table, index: int, name: str = "") -> Place:
         """Place of a row of a table, or of one field in it."""

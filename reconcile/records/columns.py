@@ -9,6 +9,8 @@ from dataclasses import dataclass
 from pathlib import Path
 
 KINDS = ("number", "text", "time", "amount")
+NOT_READ = "This sheet is not read by reconcile."
+"""What the first cell of a sheet says that is there for its readers alone: notes, lists, an example."""
 
 
 @dataclass(frozen=True)

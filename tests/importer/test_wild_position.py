@@ -24,6 +24,7 @@ from wild_case import (
 )
 
 from reconcile.importer.read import read_books
+from reconcile.records.columns import NOT_READ
 
 SHEET = "xl/worksheets/sheet1.xml"
 
@@ -89,6 +90,16 @@ def test_16_a_workbook_may_hold_several_tables_and_each_is_shown(tmp_path: Path)
     ]
     assert ("Notes", "", "sheet-ignored") in noted(records)
     assert records.rows_read == 5
+
+
+def test_16_a_sheet_that_says_so_itself_is_not_read_and_is_named(tmp_path: Path) -> None:
+    sheets = {"Readings": [HEAD, *readings(2)], "Recipes": RECIPES, "Example": [[NOT_READ], HEAD, *readings(3)]}
+    records = read(workbook(tmp_path / "record.xlsx", sheets))
+    assert (records.rows_read, [p.sheet for p in records.not_read], noted(records)) == (2, ["Example"], set())
+    sheets["Example"][0] = [f"{NOT_READ} Or is it?"]
+    assert read(workbook(tmp_path / "other.xlsx", sheets)).rows_read == 5
+    only = workbook(tmp_path / "only.xlsx", {"Example": sheets["Example"], "Recipes": RECIPES})
+    assert read(only).rows_read == 3
 
 
 def test_16_tables_below_and_beside_each_other_are_told_apart(tmp_path: Path) -> None:

@@ -7,10 +7,10 @@ from collections.abc import Callable, Mapping
 import numpy as np
 from scipy import stats
 
-from reconcile.auditor.wording import number
 from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.book import BatchRecords
 from reconcile.records.results import Finding, Prediction
+from reconcile.records.rounding import half_up, signed
 
 Shortcuts = Callable[[IntArray], Mapping[str, FloatArray]]
 """Given by the pipeline: hand methods' values for some readings, method -> FloatArray (m,)."""
@@ -72,7 +72,7 @@ def record_values(records: BatchRecords, prediction: Prediction, shortcuts: Shor
         degree = degree_of(prediction, row)
         right, given = float(prediction.ph[row]), float(calculated[row])
         words = (
-            f"The record's own calculated pH of batch {batch}, {given:.2f}, is off by {number(error[i])} from the full "
+            f"The record's own calculated pH of batch {batch}, {given:.2f}, is off by {signed(half_up(error[i], 2))} from the full "
             f"balance, {right:.2f}."
         )
         if method:

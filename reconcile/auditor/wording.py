@@ -7,14 +7,15 @@ from datetime import datetime
 
 from reconcile.auditor.proposals import Told
 from reconcile.auditor.scoring import Candidate
+from reconcile.records.rounding import chance_words, decimals_of, half_up, minus, signed
 
 # {subject}, {size}, {interval}, {since}, {detail}, {direction} are filled; each sentence says what and how large
 SENTENCES: Mapping[str, str] = {
     "meter_offset": "Meter {subject} reads {size} pH {direction}{interval}.",
     "meter_span": "Meter {subject} has an error of {size} pH per pH about a {detail}{interval}: it {direction} "
     "differences in pH.",
-    "meter_drift": "Meter {subject} drifts by {size} pH a day{interval}{since}, {total} pH in all.",
-    "meter_step": "Meter {subject} jumped by {size} pH{interval}{since}.",
+    "meter_drift": "Meter {subject} drifts {direction} by {size} pH a day{interval}{since}, {total} pH in all.",
+    "meter_step": "Meter {subject} reads {size} pH {direction} than before{interval}{since}.",
     "meter_temperature": "Meter {subject} behaves as if its temperature compensation were {detail}.",
     "meter_stuck": "The display of meter {subject} stood at {size}{since} while the solutions changed.",
     "probe_matrix": "Meter {subject} reads {size} pH {direction}{interval} in one kind of solution only: {detail}.",
@@ -47,6 +48,13 @@ NAMES: Mapping[str, str] = {
     "acid_constant": "library constant of {subject} off",
     "carbon_dioxide": "carbon dioxide in {subject}",
     "record_value": "calculated pH of batch {subject} wrong",
+}
+SIGNED = ("calibration_buffer", "acid_constant", "meter_span", "record_value")
+"""Kinds told with the sign of their size; the others say its direction in a word."""
+DIRECTIONS: Mapping[str, tuple[str, str]] = {
+    "meter_drift": ("up", "down"),
+    "meter_step": ("higher", "lower"),
+    "meter_span": ("exaggerates", "flattens"),
 }
 
 
@@ -102,7 +110,28 @@ def detail_of(told: Told) -> str:
 
 def name_of(candidate: Candidate, amplitude: float) -> str:
     """A candidate in a few words."""
-    return short_name(candidate.kind, candidate.subject, detail_of(candidate.tell(amplitude)))
+    name = short_name(candidate.kind, candidate.subject, detail_of(candidate.tell(amplitude)))
+    return as_probe(name, candidate.subject) if candidate.subject_type == "probe" else name
+
+
+def as_probe(words: str, subject: str | tuple[str, ...]) -> str:
+    """Words about a meter, said of a probe."""
+    return words.replace(f"Meter {subject}", f"Probe {subject}").replace(f"meter {subject}", f"probe {subject}")
+
+
+def of_subject(
+    subject_type: str,
+    kind: str,
+    subject: str | tuple[str, ...],
+    estimate: float | None,
+    interval: tuple[float, float] | None,
+    since: str,
+    detail: str,
+    total: float | None,
+) -> str:
+    """What a finding says of its subject; a fault of a meter that went with a probe is said of the probe."""
+    words = sentence(kind, subject, estimate, interval, since, detail, total)
+    return as_probe(words, subject) if subject_type == "probe" else words
 
 
 def sentence(
@@ -115,15 +144,9 @@ def sentence(
     total: float | None,
 ) -> str:
     """What a finding says, and how large with its interval."""
-    signed = kind in ("meter_drift", "meter_step", "calibration_buffer", "acid_constant", "meter_span", "record_value")
-    size = "" if estimate is None else number(estimate if signed else abs(estimate))
-    direction = "" if estimate is None else ("high" if estimate > 0 else "low")
-    if kind == "meter_span" and estimate is not None:
-        direction = "exaggerates" if estimate > 0 else "flattens"
-    between = ""
-    if interval is not None:
-        low, high = interval if signed or interval[0] > 0 else (-interval[1], -interval[0])
-        between = f" (95 % interval {number(low)} to {number(high)})"
+    size, between = size_words(estimate, interval, kind in SIGNED)
+    up, down = DIRECTIONS.get(kind, ("high", "low"))
+    direction = "" if estimate is None else (up if estimate > 0 else down)
     if kind == "reading_slip":
         detail = f", consistent with {detail}" if detail else ", unexplained"
     return _fill(
@@ -135,9 +158,27 @@ def sentence(
             "interval": between,
             "since": since,
             "detail": detail,
-            "total": "" if total is None else number(total),
+            "total": "" if total is None else half_up(abs(total), 3),
         },
     )
+
+
+def size_words(estimate: float | None, interval: tuple[float, float] | None, with_sign: bool) -> tuple[str, str]:
+    """A size, and its interval in brackets, with the digits that the interval deserves.
+
+    Without a sign a direction stands beside it; the interval is turned round with it, and shows the sign of an end that
+    lies on the other side of zero.
+    """
+    if estimate is None:
+        return "", ""
+    turned = not with_sign and estimate < 0
+    ends = None if interval is None else (-interval[1], -interval[0]) if turned else interval
+    digits = decimals_of(ends)
+    write = signed if with_sign else minus
+    if ends is None:
+        return write(number(estimate if with_sign else abs(estimate))), ""
+    size = write(half_up(estimate if with_sign else abs(estimate), digits))
+    return size, " (95 % interval {} to {})".format(*(write(half_up(end, digits)) for end in ends))
 
 
 def _fill(template: str, values: Mapping[str, str]) -> str:
@@ -148,10 +189,9 @@ def _fill(template: str, values: Mapping[str, str]) -> str:
 
 def support_words(p: float, readings: int, batches: int, rivals: int) -> str:
     """How sure, on what, and whether the data can decide."""
-    chance = "less than 1 in 10,000" if p < 1e-4 else f"about {number(p, 2)}"
     words = (
         f"It rests on {readings} reading{'s' * (readings != 1)} of {batches} batch{'es' * (batches != 1)}. "
-        f"The chance that a clean record of this size shows anything as striking is {chance}."
+        f"The chance that a clean record of this size shows anything as striking is {chance_words(p)}."
     )
     if rivals:
         words += (

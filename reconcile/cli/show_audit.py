@@ -7,18 +7,15 @@ from typing import TYPE_CHECKING
 
 from reconcile.cli.show import columns, heading, line
 from reconcile.records.completeness import shortfalls
-from reconcile.reporter.text import caution_lines, finding_lines, gist_lines, hazard_lines
+from reconcile.reporter.text import caution_lines, gist_rows, hazard_lines
 
 if TYPE_CHECKING:
     from reconcile.records.results import Audit
 
 
 def show(audit: Audit, folder: Path) -> None:
-    """Gist, findings, what is incomplete, hazard words, cautions, and where the report is."""
-    columns([text.split(": ", 1) for text in gist_lines(audit)], indent=0)
-    if audit.findings:
-        heading("Findings")
-        columns([text.split("  ", 1) for text in finding_lines(audit)])
+    """Gist with a line a finding, what is incomplete, hazard words, cautions, and where the report is."""
+    columns(gist_rows(audit), indent=0)
     short = shortfalls(audit.records)
     if short:
         heading("Incomplete")

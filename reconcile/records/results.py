@@ -84,6 +84,8 @@ class Change:
     dissolved_co2: float = 0.0
 
 
+COULD_ALSO_BE = "It could also be: "
+"""Begins the sentence of a finding's text that names its rivals; left out where they are listed beside it."""
 Repredict = Callable[[Sequence[Change]], list[Prediction]]
 """Given by the pipeline to the auditor: one Prediction (m_i rows) for every change, all solved together."""
 
@@ -94,6 +96,7 @@ class Finding:
 
     readings : IntArray   indices of the readings it rests on
     impact : IntArray     indices of the readings whose place inside or outside their limits would change
+    impact_open : IntArray  of those that would lie within the guard band of a limit: on which side is not sure
     """
 
     kind: str
@@ -115,6 +118,7 @@ class Finding:
     rivals: tuple[Finding, ...] = ()
     next_check: str = ""
     impact: IntArray = field(default_factory=lambda: np.zeros(0, np.intp))
+    impact_open: IntArray = field(default_factory=lambda: np.zeros(0, np.intp))
     shift: FloatArray = field(default_factory=lambda: np.zeros(0))
     """Part of the residual at `readings` that the finding explains [pH], for pictures and `explained` status."""
 

@@ -37,7 +37,7 @@ class Drawn:
 def draw_all(audit: Audit, lookups: Lookups, progress: Callable[[str, float], None]) -> list[Drawn]:
     """Every picture of the table, then one for each finding."""
     found = []
-    findings = audit.findings[:MOST_FINDINGS]
+    findings = lookups.faults[:MOST_FINDINGS]
     steps = len(PICTURES) + len(findings)
     with styled():
         for i, (name, picture) in enumerate(PICTURES.items()):
@@ -45,8 +45,8 @@ def draw_all(audit: Audit, lookups: Lookups, progress: Callable[[str, float], No
             png, svg = images(picture.draw(audit, lookups))
             caption = f"{picture.caption} {picture.rest(audit, lookups)}".strip()
             found.append(Drawn(name, picture.heading, caption, picture.alt, png, svg))
-        for i, finding in enumerate(findings):
-            progress(f"drawing finding {i + 1} of {len(findings)}", (len(PICTURES) + i) / steps)
+        for place, (i, finding) in enumerate(findings):
+            progress(f"drawing finding {place + 1} of {len(findings)}", (len(PICTURES) + place) / steps)
             png, svg = images(finding_picture(audit, lookups, finding))
             words = _alt(audit, lookups, finding)
             found.append(

@@ -2,16 +2,18 @@
 
 from __future__ import annotations
 
+import math
 from collections import Counter
 from dataclasses import dataclass
 
-from reconcile.records.results import Audit
+from reconcile.records.results import Audit, Finding
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.plain import plain
 from reconcile.reporter.words import (
     STATUSES,
     brief_since,
     counted,
+    half_up,
     kind_words,
     listed,
     moment,
@@ -31,6 +33,9 @@ class Line:
     key: str
     label: str
     text: str
+    lead: str = ""
+    items: tuple[tuple[str, str], ...] = ()
+    """Where there is room, lead and items (finding id, words) stand in place of the text."""
 
 
 def gist(audit: Audit, lookups: Lookups | None = None) -> list[Line]:
@@ -38,7 +43,7 @@ def gist(audit: Audit, lookups: Lookups | None = None) -> list[Line]:
     lookups = lookups or Lookups(audit)
     return [
         Line("checked", "What was checked", _checked(audit, lookups)),
-        Line("stands_out", "What stands out", _stands_out(audit)),
+        _stands_out(audit, lookups),
         Line("read_next", "What to read next", _read_next(audit)),
         Line("not_checked", "What could not be checked", _not_checked(audit)),
         Line("complete", "How complete", _complete(audit)),
@@ -66,44 +71,44 @@ def _checked(audit: Audit, lookups: Lookups) -> str:
     return f"{text}. Each was compared with the pH that its recipe predicts."
 
 
-def _stands_out(audit: Audit) -> str:
+def _stands_out(audit: Audit, lookups: Lookups) -> Line:
     outstanding = int((audit.status == "stands_out").sum())
     left = (
         f"{counted(outstanding, 'reading')} {'stands' if outstanding == 1 else 'stand'} out without a finding that "
-        "explains it."
-        if outstanding == 1
-        else f"{counted(outstanding, 'reading')} stand out without a finding that explains them."
+        f"explains {'it' if outstanding == 1 else 'them'}."
     )
-    if not audit.findings:
-        silence = "No fault is supported by the readings; smaller ones than the smallest detectable would not be seen."
-        return f"{silence} {left}" if outstanding else silence
-    named = [
-        ", ".join(filter(None, (f"{plain(f.id)} {_lower(title(f))}", quantity(f), brief_since(f))))
-        for f in audit.findings[:MOST_NAMED]
-    ]
-    more = len(audit.findings) - MOST_NAMED
-    text = f"{counted(len(audit.findings), 'finding')}. {'; '.join(named)}"
-    text += f"; and {more} more." if more > 0 else "."
-    return f"{text} {left}" if outstanding else text
+    wrong = len(lookups.calculations)
+    calculated = (
+        f"{counted(wrong, 'calculated pH', 'calculated pHs')} in the record {'is' if wrong == 1 else 'are'} off."
+    )
+    after = [left] * bool(outstanding) + [calculated] * bool(wrong)
+    faults = [finding for _, finding in lookups.faults]
+    if not faults:
+        return Line("stands_out", "What stands out", " ".join(["No fault is supported by the readings.", *after]))
+    shown = faults[:MOST_NAMED]
+    items = tuple((plain(f.id), in_few_words(f)) for f in shown)
+    number, more = counted(len(faults), "finding"), len(faults) - len(shown)
+    rest = " ".join([f"{more} more stand in the table of findings."] * (more > 0) + after)
+    named = "; ".join(" ".join(item) for item in items)
+    lead = f"{number}, most supported first." if len(shown) > 1 else f"{number}."
+    return Line("stands_out", "What stands out", f"{number}: {named}. {rest}".strip(), f"{lead} {rest}".strip(), items)
 
 
-def _lower(text: str) -> str:
-    return text[:1].lower() + text[1:]
+def in_few_words(finding: Finding) -> str:
+    """A finding as the gist names it: "meter M-3: step, +0.104 pH, since 2025-04-03"."""
+    words = ", ".join(filter(None, (title(finding), quantity(finding), brief_since(finding))))
+    return words[:1].lower() + words[1:]
 
 
 def _read_next(audit: Audit) -> str:
-    checks = [(f.id, f.next_check) for f in audit.findings if f.next_check]
+    checks = [(plain(f.id), plain(f.next_check)) for f in audit.findings if f.next_check.startswith("Read ")]
     if not checks:
-        return (
-            "No reading is named for these findings."
-            if audit.findings
-            else "Nothing in particular; see the smallest detectable faults for what more readings would show."
-        )
-    first_id, first = checks[0]
-    text = f"For {plain(first_id)}: {plain(first)}"
-    if len(checks) > 1:
-        text += f" {counted(len(checks) - 1, 'further check')} with the other findings."
-    return text
+        if audit.findings:
+            return "No reading of what already stands would tell more about these findings."
+        return "Nothing in particular; more readings would lower the smallest detectable faults."
+    text = f"For {checks[0][0]}: {checks[0][1]}"
+    others = [ident for ident, _ in checks[1:]]
+    return f"{text} The checks for {listed(others, MOST_NAMED)} stand with them." if others else text
 
 
 def _not_checked(audit: Audit) -> str:
@@ -117,7 +122,34 @@ def _not_checked(audit: Audit) -> str:
         words = [f"{counted(n, 'reading')} {STATUSES[s]}" for s, n in statuses.most_common()]
         parts.append(f"Shown but no evidence: {listed(words, 6)}.")
     parts.append("pH cannot see a fault that leaves pH unchanged, such as both halves of a buffer off together.")
-    return " ".join(parts)
+    parts.append(silence_in_numbers(audit))
+    return " ".join(filter(None, parts))
+
+
+def silence_in_numbers(audit: Audit) -> str:
+    """What silence means: the smallest offset of the meters and strength error of the lots that would have shown."""
+    words = []
+    offsets, strengths = (_sizes(audit, kind) for kind in ("meter_offset", "lot_strength"))
+    if offsets:
+        words.append(f"a meter offset of {_range(offsets, 3)} pH ({counted(len(offsets), 'meter')})")
+    if strengths:
+        percent = [100.0 * (max(size, 1.0 / size) - 1.0) for size in strengths]
+        words.append(f"a strength {_range(percent, 1)} % off ({counted(len(strengths), 'lot')})")
+    if not words:
+        return ""
+    powers = {s.power for s in audit.smallest_detectable if s.power is not None}
+    how_often = f" in {half_up(100 * min(powers), 0)} of 100 such records" if powers else ""
+    return f"Smallest faults that would have shown{how_often}: {' and '.join(words)}. Smaller ones may be there unseen."
+
+
+def _sizes(audit: Audit, kind: str) -> list[float]:
+    known = [float(s.size) for s in audit.smallest_detectable if s.kind == kind and s.size is not None]
+    return [size for size in known if math.isfinite(size) and size > 0]
+
+
+def _range(values: list[float], decimals: int) -> str:
+    """Smallest to largest, one figure where both round to it."""
+    return " to ".join(dict.fromkeys(half_up(value, decimals) for value in (min(values), max(values))))
 
 
 def _single(audit: Audit, what: str) -> str:

@@ -13,6 +13,8 @@ from reconcile.records.results import Audit, Finding
 from reconcile.reporter.plain import plain
 
 FLAGGED = ("stands_out", "explained")
+CALCULATION = "record_value"
+"""Kind of finding that is about the record's own calculated pH, not about a reading."""
 METER_TYPES = ("meter", "probe", "calibration")
 
 
@@ -129,6 +131,16 @@ class Lookups:
     def about(self, name: str, types: tuple[str, ...]) -> list[Finding]:
         """Findings about one subject."""
         return [f for f in self.audit.findings if f.subject_type in types and f.subject == name]
+
+    @cached_property
+    def faults(self) -> list[tuple[int, Finding]]:
+        """Findings about readings, each with its place in the audit."""
+        return [(i, f) for i, f in enumerate(self.audit.findings) if f.kind != CALCULATION]
+
+    @cached_property
+    def calculations(self) -> list[tuple[int, Finding]]:
+        """Findings about the record's own calculated pH, each with its place in the audit."""
+        return [(i, f) for i, f in enumerate(self.audit.findings) if f.kind == CALCULATION]
 
     @cached_property
     def findings_of_meter(self) -> dict[str, list[str]]:

@@ -7,31 +7,33 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from reconcile.records.book import Table as Records
 from reconcile.records.results import Audit, Finding
 from reconcile.reporter.drawn import Drawn
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.page_tables import Cell, Row, View, anchor, row_id, shown_rows, text_cell
 from reconcile.reporter.plain import plain
+from reconcile.reporter.stocks import Stock, stocks
 from reconcile.reporter.words import (
-    brief_since,
-    certainty_words,
     counted,
     explains_words,
     half_up,
     interval,
+    lead,
     listed,
     minus,
+    moment,
     quantity,
     rival_words,
     signed,
     since_words,
-    size_words,
     title,
+    unsaid,
 )
 
 MOST_LINKS = 30
 MOST_IMPACT = 40
-MOST_BATCHES = 20
+MOST_CALCULATIONS = 200
 MOST_SECTIONS = 100
 """Findings that get a section; the overview lists all."""
 
@@ -49,14 +51,14 @@ class Picture:
 
 @dataclass(frozen=True)
 class Section:
-    """One finding in words and links."""
+    """One finding in words and links; readings by batch, as (batch, [(row, target)])."""
 
     anchor: str
     id: str
     title: str
     text: str
     facts: list[tuple[str, str]]
-    readings: list[tuple[str, str]]
+    readings: list[tuple[str, list[tuple[str, str]]]]
     more_readings: str
     rivals: View | None
     next_check: str
@@ -71,54 +73,52 @@ def picture(drawn: Drawn) -> Picture:
 
 
 def sections(audit: Audit, lookups: Lookups, drawn: list[Drawn]) -> list[Section]:
-    """One section a finding, most supported first."""
+    """One section a finding about readings, most supported first."""
     pictures = {d.finding: picture(d) for d in drawn if d.finding >= 0}
     on_page = set(shown_rows(lookups).tolist())
+    labels = {stock.lot: stock for stock in stocks(audit) if stock.lot}
     return [
-        _section(audit, lookups, finding, i, pictures.get(i), on_page)
-        for i, finding in enumerate(audit.findings[:MOST_SECTIONS])
+        _section(audit, lookups, finding, i, pictures.get(i), on_page, labels)
+        for i, finding in lookups.faults[:MOST_SECTIONS]
     ]
 
 
 def _section(
-    audit: Audit, lookups: Lookups, finding: Finding, index: int, own: Picture | None, on_page: set[int]
+    audit: Audit,
+    lookups: Lookups,
+    finding: Finding,
+    index: int,
+    own: Picture | None,
+    on_page: set[int],
+    labels: dict[str, Stock],
 ) -> Section:
-    facts = [("How large" if finding.estimate is not None else "What would explain it", size_words(finding))]
-    when = since_words(finding)
-    if when:
-        facts.append(("Since when", when))
-    explains = explains_words(finding)
-    if explains and finding.estimate is not None:
-        facts.append(("Would explain it", explains))
-    if finding.also:
-        facts.append(("The same for pH", listed([plain(a) for a in finding.also], 8)))
-    facts.append(("How sure", certainty_words(finding)))
+    facts = unsaid(finding)
+    if finding.subject_type == "lot" and isinstance(finding.subject, str) and plain(finding.subject) in labels:
+        stock = labels[plain(finding.subject)]
+        facts.insert(0, ("On the label", f"{stock.substance}; {stock.hazard}"))
     rows = sorted(int(i) for i in finding.readings)
-    batches = list(dict.fromkeys(b for b in (str(lookups.batch[i]) for i in rows) if b))
-    if finding.subject_type not in ("batch", "reading") and batches:
-        facts.append(("Batches concerned", f"{len(batches):,}: {listed(batches, MOST_BATCHES)}"))
-    links = [(_row_words(audit, lookups, i), row_id(i) if i in on_page else "") for i in rows[:MOST_LINKS]]
-    more = len(rows) - len(links)
+    shown = rows[:MOST_LINKS]
+    by_batch: dict[str, list[tuple[str, str]]] = {}
+    for i in shown:
+        target = row_id(i) if i in on_page else ""
+        name = str(lookups.batch[i])
+        short_name = name if len(name) <= 24 else f"{name[:23]}…"
+        by_batch.setdefault(short_name, []).append((str(int(audit.records.readings.row[i])), target))
+    more = len(rows) - len(shown)
     name = anchor(finding, index)
     return Section(
         name,
         plain(finding.id),
         title(finding),
-        plain(finding.text),
+        lead(finding),
         facts,
-        links,
+        list(by_batch.items()),
         f"and {more:,} more; filter the residuals for {plain(finding.id)}." if more > 0 else "",
         _rivals(finding, name),
         plain(finding.next_check),
         _impact(audit, lookups, finding, name, on_page),
         own,
     )
-
-
-def _row_words(audit: Audit, lookups: Lookups, i: int) -> str:
-    place = audit.records.readings.row[i]
-    name = str(lookups.batch[i])
-    return f"row {int(place)}" + (f" ({name if len(name) <= 24 else name[:23] + '…'})" if name else "")
 
 
 def _rivals(finding: Finding, name: str) -> View | None:
@@ -178,7 +178,8 @@ def _impact(audit: Audit, lookups: Lookups, finding: Finding, name: str, on_page
                     Cell(minus(half_up(float(readings["ph"][i]), int(lookups.decimals[i]))), "n"),
                     Cell(digits(readings["low_limit"][i], i), "n"),
                     Cell(digits(readings["high_limit"][i], i), "n"),
-                    Cell(signed(half_up(shift.get(i, np.nan), 3)), "n"),
+                    Cell(_place(readings, i), "s"),
+                    Cell(signed(half_up(shift.get(i, finding.estimate or np.nan), 3)), "n"),
                 ],
             )
         )
@@ -189,12 +190,21 @@ def _impact(audit: Audit, lookups: Lookups, finding: Finding, name: str, on_page
         ("pH observed", "n"),
         ("Low limit (pH)", "n"),
         ("High limit (pH)", "n"),
+        ("As read", ""),
         ("Share of the finding (pH)", "n"),
     ]
     more = len(chosen) - MOST_IMPACT
     note = f"and {counted(more, 'more reading')} in findings.json" if more > 0 else ""
-    return View(f"{name}-impact", f"Readings whose place in their limits {plain(finding.id)} concerns", headings, rows,
-                note, tool=False)  # fmt: skip
+    caption = f"Readings that would change their place in or out of limits if {plain(finding.id)} holds"
+    return View(f"{name}-impact", caption, headings, rows, note, tool=False)
+
+
+def _place(readings: Records, i: int) -> str:
+    """Where a reading lies against its limits."""
+    value = float(readings["ph"][i])
+    if value < float(readings["low_limit"][i]):
+        return "below"
+    return "above" if value > float(readings["high_limit"][i]) else "inside"
 
 
 def _without_blank(headings: list[tuple[str, str]], rows: list[Row]) -> tuple[list[tuple[str, str]], list[Row]]:
@@ -203,14 +213,15 @@ def _without_blank(headings: list[tuple[str, str]], rows: list[Row]) -> tuple[li
     return [headings[k] for k in kept], [Row(r.id, r.flagged, [r.cells[k] for k in kept]) for r in rows]
 
 
-def overview(audit: Audit) -> View | None:
-    """All findings in one table, each leading to its section."""
-    if not audit.findings:
+def overview(lookups: Lookups) -> View | None:
+    """All findings about readings in one table, each leading to its section."""
+    if not lookups.faults:
         return None
     rows = []
-    for i, finding in enumerate(audit.findings):
+    for place, (i, finding) in enumerate(lookups.faults):
         ident = plain(finding.id)
-        link = ((ident, anchor(finding, i)),) if i < MOST_SECTIONS else ()
+        link = ((ident, anchor(finding, i)),) if place < MOST_SECTIONS else ()
+        batches = {str(lookups.batch[int(k)]) for k in finding.readings} - {""}
         rows.append(
             Row(
                 "",
@@ -218,10 +229,11 @@ def overview(audit: Audit) -> View | None:
                 [
                     Cell(ident, "", link),
                     text_cell(title(finding)),
-                    Cell(quantity(finding) or "–", "s"),
+                    text_cell(quantity(finding) or "–"),
                     Cell(interval(finding) or "–", "s"),
-                    Cell(brief_since(finding) or "–", "s"),
+                    Cell(moment(finding.since)[:10] or "–", "s"),
                     Cell(f"{len(finding.readings):,}", "n"),
+                    Cell(f"{len(batches):,}", "n"),
                     Cell(f"{len(finding.impact):,}", "n"),
                     text_cell(listed([rival_words(finding, r) for r in finding.rivals], 3) or "–"),
                 ],
@@ -232,10 +244,25 @@ def overview(audit: Audit) -> View | None:
         ("What", ""),
         ("How large", ""),
         ("95 % interval", ""),
-        ("When", ""),
+        ("Since", ""),
         ("Readings", "n"),
+        ("Batches", "n"),
         ("Limits concerned", "n"),
         ("What else it could be", ""),
     ]
     headings, rows = _without_blank(headings, rows)
-    return View("findings-table", "Findings, most supported first", headings, rows, tool=len(rows) > 8, captioned=True)
+    return View("findings-table", "Findings, most supported first", headings, rows, tool=len(rows) > 8)
+
+
+def calculated(lookups: Lookups) -> View | None:
+    """The record's own calculated pH where it is off: a line a batch; the rest is for `reconcile predict --trail`."""
+    if not lookups.calculations:
+        return None
+    rows = [
+        Row(anchor(f, i), False, [Cell(plain(f.id)), Cell(quantity(f), "n"), Cell(plain(f.text), "long")])
+        for i, f in lookups.calculations[:MOST_CALCULATIONS]
+    ]
+    left = len(lookups.calculations) - len(rows)
+    note = f"and {left:,} more in findings.json" if left > 0 else ""
+    headings = [("Finding", ""), ("Off by", "n"), ("In words", "long")]
+    return View("calculated", "Calculated pH in the record that is off", headings, rows, note, tool=False)

@@ -258,8 +258,11 @@ def not_testable(audit: Audit) -> Table:
     )
 
 
-def detectable(audit: Audit) -> Table:
-    """The smallest fault of each kind that the record would have shown."""
+def detectable(audit: Audit, but: tuple[str, ...] = ()) -> Table:
+    """The smallest fault of each kind that the record would have shown.
+
+    but : kinds left out, because another table has them
+    """
 
     def power(silence: Silence) -> float:
         return math.nan if silence.power is None else 100.0 * silence.power
@@ -271,5 +274,6 @@ def detectable(audit: Audit) -> Table:
         [
             (subject_words(s), kind_words(s.kind), silence_words(s), power(s), plain(s.reason))
             for s in audit.smallest_detectable
+            if s.kind not in but
         ],
     )

@@ -19,14 +19,25 @@ def gist_lines(audit: Audit) -> list[str]:
     return [f"{line.label}: {line.text}" for line in gist(audit, Lookups(audit))]
 
 
+def gist_rows(audit: Audit) -> list[tuple[str, str]]:
+    """The gist as rows (label, text); each finding has a row of its own, with its interval and its rivals."""
+    rows = []
+    for line in gist(audit, Lookups(audit)):
+        rows.append((line.label, line.lead if line.items else line.text))
+        if line.items:
+            rows += [("", text) for text in finding_lines(audit)]
+    return rows
+
+
 def finding_lines(audit: Audit) -> list[str]:
     """One line a finding: id, what, how large, since when, number of rivals; at most twelve."""
     lines = []
-    for finding in audit.findings[:MOST_FINDINGS]:
-        rivals = counted(len(finding.rivals), "rival") if finding.rivals else ""
+    faults = [finding for _, finding in Lookups(audit).faults]
+    for finding in faults[:MOST_FINDINGS]:
+        rivals = f"{counted(len(finding.rivals), 'rival')} in report.html" if finding.rivals else ""
         parts = (title(finding), size_words(finding), brief_since(finding), rivals)
         lines.append(f"{plain(finding.id)}  {', '.join(filter(None, parts))}")
-    more = len(audit.findings) - MOST_FINDINGS
+    more = len(faults) - MOST_FINDINGS
     return [*lines, f"and {counted(more, 'more finding')} in report.html"] if more > 0 else lines
 
 

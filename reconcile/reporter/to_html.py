@@ -16,7 +16,7 @@ from reconcile.records.results import Audit
 from reconcile.reporter import method, page_findings, page_scope, summaries
 from reconcile.reporter.cautions import CAUTIONS, SHORT_CAUTION, UNSIGNED
 from reconcile.reporter.drawn import Drawn
-from reconcile.reporter.gist import gist
+from reconcile.reporter.gist import gist, silence_in_numbers
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.manifest import inputs, report_id
 from reconcile.reporter.page_tables import anchor, capped, residual_view, set_aside_view, view
@@ -27,6 +27,8 @@ from reconcile.reporter.words import STATUS_MEANINGS, STATUSES
 STOCKS_ON_PAGE = (
     "lot", "substance", "hazard", "strength", "u_strength", "readings", "mean_residual", "smallest_factor", "findings",
 )  # fmt: skip
+ELSEWHERE = ("meter_offset", "lot_strength")
+"""Kinds whose smallest detectable size stands in the tables of meters and of stocks."""
 _UNBROKEN = re.compile(r"\d{4}-\d\d-\d\d(?: \d\d:\d\d)?|[+−]?\d[\d,.]*(?: (?:%|pH|mL|°C))")
 
 
@@ -85,10 +87,12 @@ def page(audit: Audit, lookups: Lookups, residuals: Table, drawn: list[Drawn]) -
         script=Markup(script),
         short_caution=SHORT_CAUTION,
         gist=gist(audit, lookups),
+        anchors=targets,
         scope=page_scope.scope(audit, lookups),
-        overview=page_findings.overview(audit),
+        overview=page_findings.overview(lookups),
+        calculated=page_findings.calculated(lookups),
         sections=page_findings.sections(audit, lookups, drawn),
-        findings_left=max(len(audit.findings) - page_findings.MOST_SECTIONS, 0),
+        findings_left=max(len(lookups.faults) - page_findings.MOST_SECTIONS, 0),
         pictures=[p for name, p in pictures.items() if name != "smallest_detectable"],
         detectable_picture=pictures["smallest_detectable"] if audit.smallest_detectable else None,
         residuals=residual_view(audit, lookups, residuals, targets),
@@ -97,8 +101,12 @@ def page(audit: Audit, lookups: Lookups, residuals: Table, drawn: list[Drawn]) -
         not_testable=capped(
             summaries.not_testable(audit), "not-testable", "Not testable in this record", "findings.json holds all."
         ),
+        silence=silence_in_numbers(audit),
         detectable=capped(
-            summaries.detectable(audit), "detectable", "Smallest detectable faults", "findings.json holds all."
+            summaries.detectable(audit, but=ELSEWHERE),
+            "detectable",
+            "Other smallest detectable faults",
+            "findings.json holds all.",
         ),
         meters=capped(summaries.meters(audit, lookups), "meters", "Meters", "residuals.xlsx holds all."),
         stocks=capped(

@@ -5,12 +5,16 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping
 from datetime import datetime
-from decimal import ROUND_HALF_UP, Decimal
 from typing import Any
 
 import numpy as np
 
-from reconcile.records.results import Finding, Silence
+from reconcile.records.results import COULD_ALSO_BE, Finding, Silence
+from reconcile.records.rounding import chance_words, decimals_of
+from reconcile.records.rounding import half_up as half_up  # the reporter takes its words from here
+from reconcile.records.rounding import minus as minus
+from reconcile.records.rounding import signed as signed
+from reconcile.records.rounding import significant as significant
 from reconcile.reporter.plain import plain
 
 KINDS: Mapping[str, str] = {
@@ -55,40 +59,6 @@ STATUS_MEANINGS: Mapping[str, str] = {
 }
 TIMELESS = ("reading", "batch", "acid", "lot", "buffer")
 """Subjects of which "throughout the record" would say nothing."""
-MINUS = "−"
-
-
-def half_up(value: float, decimals: int) -> str:
-    """The number with fixed decimals, halves away from zero; "" for NaN, and never "-0.00"."""
-    if not math.isfinite(value):
-        return ""
-    rounded = Decimal(repr(float(value))).quantize(Decimal(1).scaleb(-decimals), rounding=ROUND_HALF_UP)
-    return f"{abs(rounded) if rounded == 0 else rounded:f}"
-
-
-def significant(value: float, digits: int = 3) -> str:
-    """The number with so many significant digits, in plain notation where that is readable."""
-    if not math.isfinite(value):
-        return ""
-    if value == 0:
-        return "0"
-    exponent = math.floor(math.log10(abs(value)))
-    if -5 <= exponent < 7:
-        return half_up(value, max(digits - 1 - exponent, 0))
-    mantissa, _, power = f"{value:.{digits - 1}e}".partition("e")
-    return f"{mantissa}e{int(power)}"
-
-
-def signed(text: str) -> str:
-    """A number as shown for a difference: with its sign, and a true minus."""
-    if not text or not any(c in "123456789" for c in text):
-        return text
-    return MINUS + text[1:] if text.startswith("-") else f"+{text}"
-
-
-def minus(text: str) -> str:
-    """A number with a true minus sign."""
-    return MINUS + text[1:] if text.startswith("-") else text
 
 
 def moment(when: datetime | np.datetime64 | None, seconds: bool = False) -> str:
@@ -131,14 +101,8 @@ def unit_words(unit: str) -> str:
 
 
 def _decimals(finding: Finding) -> int:
-    """Digits after the point that the interval deserves: two of its width, and three at least for a pH."""
-    if finding.interval95 is None:
-        return 3
-    width = abs(finding.interval95[1] - finding.interval95[0])
-    if not math.isfinite(width) or width <= 0:
-        return 3
-    digits = min(max(math.ceil(-math.log10(width)) + 1, 0), 6)
-    return max(digits, 3) if finding.unit in ("pH", "factor") else digits
+    """Digits after the point that the interval deserves: two of its width, and three at least for a pH or a factor."""
+    return decimals_of(finding.interval95, 3 if finding.unit == "factor" or _is_difference(finding.unit) else 0)
 
 
 def _is_difference(unit: str) -> bool:
@@ -194,20 +158,30 @@ def since_words(finding: Finding) -> str:
     return "throughout the record"
 
 
-def chance(p: float) -> str:
-    """A small probability in words."""
-    if not math.isfinite(p):
-        return "not stated"
-    return "below 0.0001" if p < 1e-4 else significant(p, 2)
+def lead(finding: Finding) -> str:
+    """A finding's own words, without the sentence that names its rivals: they are listed beside it."""
+    return plain(finding.text.partition(COULD_ALSO_BE)[0] if finding.rivals else finding.text).strip()
 
 
-def certainty_words(finding: Finding) -> str:
-    """How sure: gain, chance, and how many other explanations there are."""
-    rivals = counted(len(finding.rivals), "other explanation") if finding.rivals else "no other explanation"
-    return (
-        f"family-wise p {chance(finding.family_wise_p)}, the chance of a signal this strong anywhere in a record "
-        f"without faults; log-likelihood gain {half_up(finding.log_likelihood_gain, 1)}; {rivals} within reach"
-    )
+def unsaid(finding: Finding) -> list[tuple[str, str]]:
+    """Name and text of each fact about a finding that its own words leave out."""
+    text = finding.text
+    facts = []
+    if finding.estimate is not None and half_up(abs(finding.estimate), _decimals(finding)) not in text:
+        facts.append(("How large", size_words(finding)))
+    explains = [words for value, words in explains_parts(finding) if value not in text]
+    if explains:
+        facts.append(("Would explain it", "; ".join(explains)))
+    when = since_words(finding)
+    dates = [moment(t)[:10] for t in (finding.since, finding.until) if t is not None]
+    if when and dates and not all(date in text for date in dates):
+        facts.append(("When", when))
+    if finding.also:
+        facts.append(("The same for pH", listed([plain(a) for a in finding.also], 8)))
+    chance = chance_words(finding.family_wise_p)
+    gain = f"log-likelihood gain {half_up(finding.log_likelihood_gain, 1)}"
+    facts.append(("How sure", gain if chance in text else f"family-wise p {chance}; {gain}"))
+    return facts
 
 
 def rival_words(finding: Finding, rival: Finding) -> str:
@@ -218,8 +192,8 @@ def rival_words(finding: Finding, rival: Finding) -> str:
 
 
 EXPLAINS: Mapping[str, str] = {
-    "substance": "{} in the bottle",
-    "factor": "a factor of {}",
+    "substance": "acts as {}",
+    "factor": "{} times the amount",
     "component": "in the amount of {}",
     "total": "{} pH in all",
     "offset": "an offset of {} pH",
@@ -237,16 +211,24 @@ DIFFERENCES = ("total", "offset", "step", "span", "pKa_shift")
 SAME_AS_ESTIMATE = ("offset", "step", "factor", "pKa_shift", "pH", "temperature")
 
 
-def explains_words(finding: Finding) -> str:
-    """What would explain it, where that says more than the estimate: "formic acid in the bottle"."""
+def explains_parts(finding: Finding) -> list[tuple[str, str]]:
+    """What would explain it, where that says more than the estimate: value, and value in words."""
     explains = finding.would_explain or {}
     if set(explains) <= set(SAME_AS_ESTIMATE) and len(explains) == 1 and finding.estimate is not None:
-        return ""
-    words = []
+        return []
+    parts = []
     for key, value in explains.items():
+        if value is None:
+            continue
         text = _value(value, key in DIFFERENCES)
-        words.append(EXPLAINS[key].format(text) if key in EXPLAINS else f"{plain(str(key)).replace('_', ' ')} {text}")
-    return "; ".join(words)
+        words = EXPLAINS[key].format(text) if key in EXPLAINS else f"{plain(str(key)).replace('_', ' ')} {text}"
+        parts.append((text.lstrip("+−"), words))
+    return parts
+
+
+def explains_words(finding: Finding) -> str:
+    """What would explain it, where that says more than the estimate: "acts as formic acid"."""
+    return "; ".join(words for _, words in explains_parts(finding))
 
 
 def _value(value: Any, difference: bool) -> str:
@@ -254,7 +236,8 @@ def _value(value: Any, difference: bool) -> str:
         return listed([_value(v, difference) for v in value])
     if isinstance(value, bool) or not isinstance(value, (int, float)):
         return plain(str(value))
-    text = f"{float(value):.4g}"
+    number = float(value)
+    text = f"{number:.3g}" if abs(number) < 1000 else half_up(number, 0)
     return signed(text) if difference else minus(text)
 
 

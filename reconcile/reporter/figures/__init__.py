@@ -79,8 +79,8 @@ PICTURES: Mapping[str, Picture] = {
     "smallest_detectable": Picture(
         detectable,
         "Smallest detectable fault",
-        "A fault smaller than this may be in the record without a finding.",
-        "Smallest detectable fault of each meter and lot. The values are in the table under this heading.",
+        "A fault smaller than its mark may be in the record without a finding. Factors hold in both directions.",
+        "Smallest detectable fault of each meter and lot. The values are in the tables of meters and of stocks.",
     ),
 }
 """Name (and file stem) -> picture, in the order of the page."""

@@ -10,7 +10,8 @@ import numpy as np
 from reconcile.auditor.adjusted import only_adjusted
 from reconcile.auditor.components import Components, Model, noise_of
 from reconcile.auditor.faults import KINDS
-from reconcile.auditor.findings import build, with_impact
+from reconcile.auditor.findings import build
+from reconcile.auditor.impact import with_impact
 from reconcile.auditor.layout import Layout, build_layout, evidence
 from reconcile.auditor.next_check import next_check
 from reconcile.auditor.proposals import FaultKind
@@ -60,7 +61,10 @@ def audit(
         for j, (finding, candidates) in enumerate(pairs)
     ]
     said = record_values(records, prediction, shortcuts)
-    together = sorted([*with_impact(layout, checked), *said], key=lambda f: -f.log_likelihood_gain)
+    found_spreads = spreads(layout, state.components, len(records.readings))
+    together = sorted(
+        [*with_impact(records, checked, found_spreads.noise), *said], key=lambda f: -f.log_likelihood_gain
+    )
     findings = [replace(finding, id=f"F{i + 1}") for i, finding in enumerate(together)]
     say("working out what could not be seen")
     pool, bare, _ = search.scored(state.components, [])
@@ -84,7 +88,7 @@ def audit(
         not_testable=not_testable(layout),
         smallest_detectable=smallest_detectable(layout, bare, pool, power, search.rate),
         hazards=hazards(records),
-        spreads=spreads(layout, state.components, len(records.readings)),
+        spreads=found_spreads,
     )
 
 

@@ -17,17 +17,15 @@ from reconcile.auditor.judging import Chosen
 from reconcile.auditor.layout import Layout
 from reconcile.auditor.scoring import Candidate, Pool, Scores
 from reconcile.auditor.search import Search, State
-from reconcile.auditor.wording import detail_of, name_of, sentence, since_words, support_words
+from reconcile.auditor.wording import detail_of, name_of, of_subject, since_words, support_words
 from reconcile.records.arrays import IntArray
-from reconcile.records.results import Finding
+from reconcile.records.results import COULD_ALSO_BE, Finding
 
 MOST_RIVALS = 8
 INSEPARABLE = 1.0
 """Squared distance of two supposed effects in spreads of the readings: half a unit of log-likelihood is expected."""
 ONSET_DROP = 1.92
 """Half the 95 % point of chi-squared with one degree of freedom: dates closer than this to the best."""
-READING_ERRORS = ("meter", "probe", "reading", "calibration", "buffer")
-"""Subjects that make a reading wrong, so that its place against limits may change."""
 
 
 def rows_of(candidate: Candidate) -> IntArray:
@@ -111,7 +109,8 @@ def described(
     detail = told.detail
     if candidate.kind == "lot_identity" and told.would_explain:
         detail = str(told.would_explain["substance"])
-    text = sentence(
+    text = of_subject(
+        candidate.subject_type,
         candidate.kind,
         candidate.subject,
         told.estimate,
@@ -196,7 +195,7 @@ def build(
         words = [finding.text, support_words(one.p, len(finding.readings), batches, len(told))]
         if told:
             names = "; ".join(name_of(c, a) for c, a in tried[1:4])
-            words.append(f"It could also be: {names}.")
+            words.append(f"{COULD_ALSO_BE}{names}.")
         result.append(
             (
                 replace(
@@ -211,24 +210,3 @@ def build(
 def also_with(finding: Finding, names: Sequence[str]) -> Finding:
     """A finding with further substances that act alike in its place."""
     return replace(finding, also=tuple(dict.fromkeys([*finding.also, *names])))
-
-
-def impact_of(layout: Layout, finding: Finding) -> IntArray:
-    """Readings whose place inside or outside their limits would change if the finding holds."""
-    if finding.subject_type not in READING_ERRORS:
-        return np.zeros(0, np.intp)
-    table = layout.records.readings
-    observed = table["ph"][finding.readings]
-    true = observed - finding.shift
-    low, high = table["low_limit"][finding.readings], table["high_limit"][finding.readings]
-
-    def inside(value: np.ndarray) -> np.ndarray:
-        return ~((value < low) | (value > high))
-
-    limited = np.isfinite(low) | np.isfinite(high)
-    return np.asarray(finding.readings[limited & (inside(observed) != inside(true))], np.intp)
-
-
-def with_impact(layout: Layout, findings: Sequence[Finding]) -> list[Finding]:
-    """Findings with the readings whose place against their limits hangs on them."""
-    return [replace(f, impact=impact_of(layout, f)) for f in findings]

@@ -1,6 +1,6 @@
 """Audits pH readings against batch recipes by full chemical equilibrium.
 
-The doors, each loaded when first used: predict_ph, read, audit, meters, fit_pka, write_report.
+The doors, each loaded when first used: predict_ph, read, audit, meters, fit_pka, write_report, write_newbook.
 """
 
 from __future__ import annotations
@@ -11,10 +11,11 @@ from typing import TYPE_CHECKING, Any
 if TYPE_CHECKING:
     from reconcile.chemistry.predict import predict_ph
     from reconcile.pipeline import audit, fit_pka, meters, read
+    from reconcile.reporter.newbook import write_newbook
     from reconcile.reporter.write import write_report
 
 __version__ = "0.1.0"
-__all__ = ["__version__", "audit", "fit_pka", "meters", "predict_ph", "read", "write_report"]
+__all__ = ["__version__", "audit", "fit_pka", "meters", "predict_ph", "read", "write_newbook", "write_report"]
 
 _DOORS = {
     "predict_ph": "reconcile.chemistry.predict",
@@ -22,6 +23,7 @@ _DOORS = {
     "audit": "reconcile.pipeline",
     "meters": "reconcile.pipeline",
     "fit_pka": "reconcile.pipeline",
+    "write_newbook": "reconcile.reporter.newbook",
     "write_report": "reconcile.reporter.write",
 }
 

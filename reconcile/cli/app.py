@@ -10,7 +10,7 @@ from typing import Annotated, Any
 import typer
 from typer.core import TyperGroup
 
-from reconcile.cli import audit, meters, pka, predict, read, substances
+from reconcile.cli import audit, meters, newbook, pka, predict, read, substances
 from reconcile.cli.exits import INTERRUPTED, REFUSED, USAGE
 from reconcile.cli.options import DEBUG
 from reconcile.records.problems import InputProblems, Problem
@@ -109,7 +109,7 @@ def reconcile(
     """Audits pH readings against batch recipes by full chemical equilibrium."""
 
 
-for module in (read, predict, audit, meters, pka, substances):
+for module in (read, predict, audit, meters, pka, substances, newbook):
     module.add_to(app)
 
 

@@ -72,8 +72,8 @@ def record_values(records: BatchRecords, prediction: Prediction, shortcuts: Shor
         degree = degree_of(prediction, row)
         right, given = float(prediction.ph[row]), float(calculated[row])
         words = (
-            f"The record's own calculated pH of batch {batch}, {given:.2f}, is off by {signed(half_up(error[i], 2))} from the full "
-            f"balance, {right:.2f}."
+            f"The record's own calculated pH of batch {batch}, {given:.2f}, is off by "
+            f"{signed(half_up(error[i], 2))} from the full balance, {right:.2f}."
         )
         if method:
             words += f" The {method} gives {float(values[method][place]):.2f}: {WHY[method]}."

@@ -28,8 +28,12 @@ def scope(audit: Audit, lookups: Lookups) -> list[tuple[str, str]]:
     facts = [
         ("Files", listed(list(dict.fromkeys(plain(s.file) for s in records.sheets)), 8)),
         ("Period", " to ".join(moment(t) for t in period) if period else "no reading has a time"),
-        ("Readings", f"{rows['used']:,} used, {rows['set_aside']:,} set aside, {rows['read']:,} rows read"),
-        ("Batches", f"{len(batches):,}" + (f", and {counted(len(known), 'known solution')}" if known else "")),
+        (
+            "Readings",
+            f"{rows['used']:,} of {counted(len(batches), 'batch', 'batches')}"
+            + (f" and {counted(len(known), 'known solution')}" if known else "")
+            + f"; {rows['set_aside']:,} more set aside",
+        ),
         (
             "Meters",
             f"{len(meters):,}: {listed(meters, 12)}" if meters else "none named; no meter can be found at fault",
@@ -45,7 +49,7 @@ def scope(audit: Audit, lookups: Lookups) -> list[tuple[str, str]]:
     if records.without_effect:
         facts.append(("Declared without effect on pH", listed([plain(w) for w in records.without_effect], 12)))
     facts += [("Incomplete", plain(text)) for text in shortfalls(records)]
-    facts += _calculated(audit)
+    facts += _calculated(audit, lookups)
     return facts
 
 
@@ -54,7 +58,7 @@ def _lots(lookups: Lookups) -> str:
     return f"{len(names):,}: {listed(names, 12)}" if names else "none named; no lot can be found at fault"
 
 
-def _calculated(audit: Audit) -> list[tuple[str, str]]:
+def _calculated(audit: Audit, lookups: Lookups) -> list[tuple[str, str]]:
     """One line on the record's own calculated pH, where it has one."""
     difference = np.asarray(audit.records.readings["ph_calculated"], float) - audit.prediction.ph
     known = np.flatnonzero(np.isfinite(difference))
@@ -62,11 +66,13 @@ def _calculated(audit: Audit) -> list[tuple[str, str]]:
         return []
     most = known[np.argmax(np.abs(difference[known]))]
     row = int(audit.records.readings.row[most])
+    wrong = len(lookups.calculations)
+    judged = f"; of {counted(wrong, 'batch', 'batches')} it is off, see under the findings" if wrong else ""
     return [
         (
             "Calculated pH in the record",
             f"stands beside {counted(len(known), 'reading')}; it differs most from the prediction, by "
-            f"{minus(half_up(float(difference[most]), 2))} pH, in row {row}",
+            f"{minus(half_up(float(difference[most]), 2))} pH, in row {row}{judged}",
         )
     ]
 

@@ -10,6 +10,7 @@ from typing import Any
 import numpy as np
 
 from reconcile.records.arrays import IntArray
+from reconcile.records.places import Place
 from reconcile.records.results import Audit, Finding
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.manifest import Reported
@@ -203,7 +204,15 @@ def _tells(table: Table, key: str) -> bool:
 def set_aside_view(result: Reported) -> View:
     """Rows set aside: where, why, and what to do; the cell that caused it where that is another place."""
     aside = result.records.set_aside
+    files = {sheet.file for sheet in result.records.sheets}
     rows = []
+
+    def words(place: Place, cell: bool) -> str:
+        if len(files) > 1 or not place.sheet:
+            return place.words()
+        where = f"cell {place.cell}" if cell and place.cell else f"row {place.row}"
+        return f"{place.sheet}, {where}"
+
     for one in aside[:MOST_SET_ASIDE]:
         elsewhere = (one.cause.file, one.cause.sheet, one.cause.row) != (one.place.file, one.place.sheet, one.place.row)
         names = [
@@ -214,9 +223,9 @@ def set_aside_view(result: Reported) -> View:
                 "",
                 False,
                 [
-                    text_cell(plain(one.place.words())),
+                    text_cell(plain(words(one.place, False))),
                     text_cell(", ".join(names)),
-                    text_cell(plain(one.cause.words() if elsewhere else f"cell {one.cause.cell}")),
+                    text_cell(plain(words(one.cause, True) if elsewhere else f"cell {one.cause.cell}")),
                     text_cell(plain(one.read)[:LONGEST_CELL]),
                     Cell(plain(one.reason), "long"),
                     Cell(plain(one.advice), "long"),

@@ -14,6 +14,7 @@ from markupsafe import Markup, escape
 from reconcile import __version__
 from reconcile.records.results import Audit
 from reconcile.reporter import method, page_findings, page_scope, summaries
+from reconcile.reporter.adjusted import adjusted_table
 from reconcile.reporter.cautions import CAUTIONS, SHORT_CAUTION, UNSIGNED
 from reconcile.reporter.drawn import Drawn
 from reconcile.reporter.gist import gist, silence_in_numbers
@@ -29,7 +30,7 @@ STOCKS_ON_PAGE = (
 )  # fmt: skip
 ELSEWHERE = ("meter_offset", "lot_strength")
 """Kinds whose smallest detectable size stands in the tables of meters and of stocks."""
-_UNBROKEN = re.compile(r"\d{4}-\d\d-\d\d(?: \d\d:\d\d)?|[+−]?\d[\d,.]*(?: (?:%|pH|mL|°C))")
+_UNBROKEN = re.compile(r"\d{4}-\d\d-\d\d(?: \d\d:\d\d)?|[+−]?\d[\d,.]*(?: (?:%|pH|mL|°C))|\b\w{1,6}-\w{1,8}\b")
 
 
 def prose(text: str) -> Markup:
@@ -97,6 +98,9 @@ def page(audit: Audit, lookups: Lookups, residuals: Table, drawn: list[Drawn]) -
         detectable_picture=pictures["smallest_detectable"] if audit.smallest_detectable else None,
         residuals=residual_view(audit, lookups, residuals, targets),
         statuses=[(STATUSES[s], meaning) for s, meaning in STATUS_MEANINGS.items() if (audit.status == s).any()],
+        adjusted=capped(adjusted_table(audit), "adjusted", "Adjusted to a pH", "findings.json holds all.")
+        if len(audit.records.solved)
+        else None,
         set_aside=set_aside_view(audit) if audit.records.set_aside else None,
         not_testable=capped(
             summaries.not_testable(audit), "not-testable", "Not testable in this record", "findings.json holds all."

@@ -110,7 +110,7 @@ def _is_difference(unit: str) -> bool:
 
 
 def _number(value: float, finding: Finding) -> str:
-    text = half_up(value, _decimals(finding))
+    text = half_up(value, _decimals(finding)) if finding.interval95 else f"{value:.3g}"
     return signed(text) if _is_difference(finding.unit) else minus(text)
 
 
@@ -120,7 +120,7 @@ def quantity(finding: Finding) -> str:
         return explains_words(finding)
     name = unit_words(finding.unit)
     if name in ("", "factor"):
-        return f"a factor of {_number(finding.estimate, finding)}"
+        return f"{_number(finding.estimate, finding)} times as stated"
     return f"{_number(finding.estimate, finding)} {name}"
 
 
@@ -167,7 +167,7 @@ def unsaid(finding: Finding) -> list[tuple[str, str]]:
     """Name and text of each fact about a finding that its own words leave out."""
     text = finding.text
     facts = []
-    if finding.estimate is not None and half_up(abs(finding.estimate), _decimals(finding)) not in text:
+    if finding.estimate is not None and _number(abs(finding.estimate), finding).lstrip("+") not in text:
         facts.append(("How large", size_words(finding)))
     explains = [words for value, words in explains_parts(finding) if value not in text]
     if explains:
@@ -179,8 +179,9 @@ def unsaid(finding: Finding) -> list[tuple[str, str]]:
     if finding.also:
         facts.append(("The same for pH", listed([plain(a) for a in finding.also], 8)))
     chance = chance_words(finding.family_wise_p)
-    gain = f"log-likelihood gain {half_up(finding.log_likelihood_gain, 1)}"
-    facts.append(("How sure", gain if chance in text else f"family-wise p {chance}; {gain}"))
+    if chance not in text:
+        facts.append(("Family-wise p", chance))
+    facts.append(("Log-likelihood gain", half_up(finding.log_likelihood_gain, 1)))
     return facts
 
 

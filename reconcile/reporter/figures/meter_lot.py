@@ -71,6 +71,7 @@ def meter_lot(audit: Audit, lookups: Lookups) -> Figure:
         [label(lookups.lot_names[c], 12 if written else 18) for c in columns],
         rotation=0 if written else 60,
         ha="center" if written else "left",
+        rotation_mode="anchor",
     )
     axes.xaxis.tick_top()
     axes.set_yticks(range(len(rows)), [label(meters[r], 18) for r in rows])

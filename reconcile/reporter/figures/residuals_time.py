@@ -63,7 +63,7 @@ def residuals_time(audit: Audit, lookups: Lookups) -> Figure:
         cloud(axes, line.x[own], inside[own], audit.status[own], total)
         beyond(axes, line.x[own], values[own], half, most=2)
         for finding in lookups.about(name, METER_TYPES):
-            _course(axes, finding, line)
+            _course(axes, finding, line, values, own)
             drew.add("fit")
         drew |= _dated_marks(axes, name, audit, line, half)
         axes.set_title(f"{label(name) or 'meter not named'}   n = {int(own.sum()):,}")
@@ -85,15 +85,28 @@ ENTRIES = {
 }
 
 
-def _course(axes: Axes, finding: Finding, line: Timeline) -> None:
-    """The part of the residual that a finding about this meter accounts for, and when it began."""
+FROM_BEFORE = ("meter_step", "meter_drift")
+"""Kinds whose size counts from where the meter stood before, not from agreement."""
+
+
+def _course(axes: Axes, finding: Finding, line: Timeline, values: FloatArray, rows: BoolArray) -> None:
+    """The part of the residual that a finding about this meter accounts for, and when it began.
+
+    values : (n,) residuals as the strip shows them; rows : (n,) the strip's readings
+    """
     own = np.asarray(finding.readings, np.intp)
     if len(finding.shift) == len(own):
-        placed = own[line.placed[own]]
-        shift = finding.shift[line.placed[own]]
-        order = np.argsort(line.x[placed], kind="stable")
-        if len(order):
-            axes.plot(line.x[placed][order], shift[order], color=OCHRE, linewidth=1.3, zorder=8)
+        part = np.full(len(values), np.nan)
+        part[own] = finding.shift
+        if finding.kind in FROM_BEFORE:
+            part[rows & np.isnan(part)] = 0.0
+            part += float(np.median((values - part)[rows]))
+        placed = np.flatnonzero(np.isfinite(part) & line.placed & rows)
+        inside = np.isin(placed, own)
+        for chosen in (placed[inside], placed[~inside]):
+            order = chosen[np.argsort(line.x[chosen], kind="stable")]
+            if len(order):
+                axes.plot(line.x[order], part[order], color=OCHRE, linewidth=1.3, zorder=8)
     if line.dated and finding.since is not None:
         axes.axvline(day(finding.since), color=OCHRE, linewidth=0.8, zorder=2)
         if finding.since_interval95 is not None:
@@ -114,7 +127,9 @@ def _dated_marks(axes: Axes, meter: str, audit: Audit, line: Timeline, half: flo
         drew.add("calibration")
     events = audit.records.events
     at = days(events["at"])
-    chosen = np.flatnonzero((events["meter"] == meter) & (at >= low) & (at <= high))
+    used = audit.records.readings["probe"][audit.records.readings["meter"] == meter]
+    own = (events["meter"] == meter) | ((events["meter"] == "") & np.isin(events["probe"], sorted({*used} - {""})))
+    chosen = np.flatnonzero(own & (at >= low) & (at <= high))
     for i in chosen[:MOST_EVENTS].tolist():
         axes.axvline(float(at[i]), color=INK, linewidth=0.8, linestyle=(0, (1, 2)), zorder=2)
         drew.add("event")

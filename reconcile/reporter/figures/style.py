@@ -47,7 +47,7 @@ SETTINGS: Any = {
     "ytick.major.size": 2.5,
     "legend.fontsize": 7.0,
     "legend.frameon": False,
-    "legend.handletextpad": 0.2,
+    "legend.handletextpad": 0.4,
     "legend.borderaxespad": 0.0,
     "legend.borderpad": 0.0,
     "text.color": INK,

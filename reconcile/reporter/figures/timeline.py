@@ -45,6 +45,7 @@ class Timeline:
 
     def dress(self, axes: Axes, most: int = 9, x: FloatArray | None = None) -> None:
         """Ticks and limits of the axis; of the whole record, or of these places on it."""
+        air = 0.0
         known = self.x[self.placed] if x is None else x[np.isfinite(x)]
         if len(known):
             low, high = float(known.min()), float(known.max())
@@ -53,6 +54,8 @@ class Timeline:
         if not self.dated:
             axes.xaxis.set_major_locator(MaxNLocator(most - 1, integer=True))
             return
+        # a midnight, labelled with its day, lies in view of any longer stretch
+        within = "%Y" if len(known) and float(np.ptp(known)) + 2 * air >= 1.0 else "%d %b %Y"
         locator = AutoDateLocator(minticks=min(most, 4) - 1, maxticks=most)  # type: ignore[no-untyped-call]
         axes.xaxis.set_major_locator(locator)
         axes.xaxis.set_major_formatter(
@@ -60,7 +63,7 @@ class Timeline:
                 locator,
                 formats=["%Y", "%b", "%d %b", "%H:%M", "%H:%M", "%S"],
                 zero_formats=["", "%b", "%d %b", "%d %b", "%H:%M", "%H:%M"],
-                offset_formats=["", "%Y", "%Y", "%d %b %Y", "%d %b %Y", "%d %b %Y %H:%M"],
+                offset_formats=["", "%Y", "%Y", within, within, "%d %b %Y %H:%M"],
             )
         )
 

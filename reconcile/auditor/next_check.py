@@ -6,17 +6,23 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from scipy import special
+from scipy import sparse, special
 
+from reconcile.auditor.foresight import ahead, foreseen, most_read_meters, most_recent
 from reconcile.auditor.layout import Layout
+from reconcile.auditor.long_model import LongModel
+from reconcile.auditor.probes import latest_probe
 from reconcile.auditor.proposals import Site
 from reconcile.auditor.scoring import Candidate
 from reconcile.auditor.search import Search, State
 from reconcile.auditor.wording import name_of
 from reconcile.records.arrays import FloatArray
+from reconcile.records.rounding import chance_words, significant
 from reconcile.records.standards import standard_ph
 
 MOST_BATCHES, MOST_METERS, MOST_EXPLANATIONS = 25, 12, 4
+LONG_BATCHES, LONG_METERS = 12, 4
+"""On a long record: standing solutions of those concerned and as many others, the meters concerned and a few more."""
 STANDARDS = ("phthalate", "phosphate 1:1", "borax")
 STANDARD_TEMPERATURE = 25.0
 ENOUGH = 2.0
@@ -42,28 +48,38 @@ class Check:
     batch_sd: float
     other: float
     noise: float
+    probe: str = ""
 
 
-def practicable(layout: Layout, noise: FloatArray, batch_sd: FloatArray, also: int = -1) -> list[Check]:
+def practicable(
+    layout: Layout,
+    noise: FloatArray,
+    batch_sd: FloatArray,
+    also: Sequence[int] = (),
+    on: Sequence[int] | None = None,
+    most: int = MOST_BATCHES,
+) -> list[Check]:
     """Every standing solution and standard buffer on every meter, the most recently read solutions first.
 
-    also : evidence row whose batch counts even if it was not read recently (a suspect entry)
+    also : evidence rows whose batches count even if they were not read recently (a suspect entry); on : meters
     """
-    last: dict[int, int] = {}
-    for row in np.argsort(np.nan_to_num(layout.day, nan=-1.0), kind="stable").tolist():
-        last[int(layout.batch[row])] = row
-    recent = sorted(last.values(), key=lambda row: (-np.nan_to_num(layout.day[row], nan=-1.0), int(layout.batch[row])))
+    recent = most_recent(layout, np.arange(len(layout)), most)
     meters, spans, sessions = (layout.effects[name] for name in ("meter", "span", "session"))
+    probes = layout.effects.get("probe")
     z = layout.z
     checks = []
-    for index, meter in enumerate(layout.meters[:MOST_METERS]):
+    for index in range(len(layout.meters[:MOST_METERS])) if on is None else on:
+        meter = layout.meters[index]
         mine = np.flatnonzero(layout.meter == index)
         own_noise = float(np.median(noise[mine]))
+        probe = latest_probe(layout, meter)
 
-        def on_meter(row: FloatArray, ph: float, index: int = index) -> FloatArray:
+        def on_meter(row: FloatArray, ph: float, index: int = index, probe: str = probe) -> FloatArray:
             row = row.copy()
-            for effects in (meters, spans, sessions):
+            for effects in (meters, spans, sessions, *([probes] if probes is not None else [])):
                 row[effects.first : effects.last] = 0.0
+            if probes is not None and probe in probes.subjects:
+                row[probes.column(probes.subjects.index(probe))] = 1.0
             row[meters.column(index)], row[spans.column(index)] = 1.0, ph - 7.0
             return row
 
@@ -74,15 +90,15 @@ def practicable(layout: Layout, noise: FloatArray, batch_sd: FloatArray, also: i
                 site = Site(ph, STANDARD_TEMPERATURE, "known solution")
                 row = on_meter(np.zeros(z.shape[1]), ph)
                 label = f"the {name} standard buffer (pH {ph:.3f} at 25 °C)"
-                checks.append(Check(label, "", meter, ph, site, -1, row, 0.0, u**2, own_noise))
-        for template in dict.fromkeys([*([also] if also >= 0 else []), *recent[:MOST_BATCHES]]):
+                checks.append(Check(label, "", meter, ph, site, -1, row, 0.0, u**2, own_noise, probe))
+        for template in dict.fromkeys([*also, *recent]):
             ph = float(layout.ph[template])
             family = layout.families[layout.family[template]]
             site = Site(ph, float(layout.temperature[template]), family)
             row = on_meter(z[[template]].toarray().ravel(), ph)
             batch = layout.batches[layout.batch[template]]
             sd, other = float(batch_sd[template]), float(layout.other[template])
-            checks.append(Check(f"batch {batch}", batch, meter, ph, site, template, row, sd, other, own_noise))
+            checks.append(Check(f"batch {batch}", batch, meter, ph, site, template, row, sd, other, own_noise, probe))
     return checks
 
 
@@ -90,7 +106,8 @@ def effect_on(candidate: Candidate, check: Check) -> float:
     """Effect at amplitude 1 of an explanation on a reading still to be taken."""
     if candidate.alarm_class == "meter":
         at = candidate.proposal.at
-        return at(candidate.index, check.site) if at is not None and candidate.subject == check.meter else 0.0
+        read_with = check.probe if candidate.subject_type == "probe" else check.meter
+        return at(candidate.index, check.site) if at is not None and candidate.subject == read_with else 0.0
     if candidate.alarm_class == "reading" or check.template < 0:
         return 0.0
     return float(candidate.x[[check.template]].toarray()[0, 0])
@@ -108,6 +125,11 @@ def expected(
     fixed, r = search.fixed_and_rest(candidates)
     model = search.model(state.components, [])
     z_new = np.array([c.z for c in checks])
+    prior = (z_new**2) @ model.g + np.array([check.batch_sd**2 + check.other for check in checks])
+    free = [candidate for candidate in candidates if not candidate.point]
+    if isinstance(model, LongModel):
+        mean, variance = _expected_long(model, candidates, free, fixed, r, checks, z_new)
+        return mean, np.maximum(prior + variance, 0.0)
     shared = np.zeros((len(layout), len(checks)))
     batch_sd = model.batch_sd()
     for j, check in enumerate(checks):
@@ -121,11 +143,9 @@ def expected(
         if candidate.point:
             at_point += [effect_on(candidate, check) for check in checks]
     mean = np.array([check.ph for check in checks]) + at_point
-    variance = (z_new**2) @ model.g + np.array([check.batch_sd**2 + check.other for check in checks])
-    variance -= np.einsum("ij,ij->j", c, weighted)
+    variance = prior - np.einsum("ij,ij->j", c, weighted)
     if fixed is None:
         return np.asarray(mean + weighted.T @ r), np.maximum(variance, 0.0)
-    free = [candidate for candidate in candidates if not candidate.point]
     x_new = np.array([[effect_on(candidate, check) for candidate in free] for check in checks])
     px = model.project(fixed.toarray())
     inverse = np.linalg.pinv(np.asarray(fixed.T @ px), rcond=1e-10, hermitian=True)
@@ -134,6 +154,28 @@ def expected(
     mean = mean + x_new @ beta + weighted.T @ (r - fixed @ beta)
     variance = variance + np.einsum("ji,ik,jk->j", gap, inverse, gap)
     return np.asarray(mean), np.maximum(variance, 0.0)
+
+
+def _expected_long(
+    model: LongModel,
+    candidates: Sequence[Candidate],
+    free: Sequence[Candidate],
+    fixed: sparse.csc_array | None,
+    r: FloatArray,
+    checks: Sequence[Check],
+    z_new: FloatArray,
+) -> tuple[FloatArray, FloatArray]:
+    """The same mean, and what is added to the prior variance, from the factored covariance."""
+    templates = np.array([check.template for check in checks], np.intp)
+    sd_new = np.array([check.batch_sd for check in checks])
+    seen = ahead(model.base, z_new, templates, model.batch_sd(), sd_new)
+    x_new = np.array([[effect_on(candidate, check) for candidate in free] for check in checks]).reshape(len(checks), -1)
+    moved, variance = foreseen(seen, r, fixed, x_new)
+    mean = np.array([check.ph for check in checks]) + moved
+    for candidate in candidates:
+        if candidate.point:
+            mean = mean + np.array([effect_on(candidate, check) for check in checks])
+    return mean, variance
 
 
 def absent(
@@ -168,35 +210,52 @@ def next_check(search: Search, state: State, j: int, candidates: Sequence[tuple[
     others = [c.candidate for i, c in enumerate(state.chosen) if i != j]
     model = search.model(state.components, [])
     suspect = int(candidates[0][0].x.indices[0]) if candidates[0][0].alarm_class == "reading" else -1
-    checks = practicable(layout, model.noise, model.batch_sd(), suspect)
+    tried = candidates[:MOST_EXPLANATIONS]
+    also = [suspect] if suspect >= 0 else []
+    if model.long:
+        touched = np.unique(np.concatenate([c.x.indices for c, _ in tried])).astype(np.intp)
+        also += most_recent(layout, touched, LONG_BATCHES)
+        on = most_read_meters(layout, [str(c.subject) for c, _ in tried], LONG_METERS)
+        checks = practicable(layout, model.noise, model.batch_sd(), also, on, LONG_BATCHES)
+    else:
+        checks = practicable(layout, model.noise, model.batch_sd(), also)
     if not checks:
         return "No check can be named: the record names no meter."
-    tried = candidates[:MOST_EXPLANATIONS]
     names = [name_of(c, amplitude) for c, amplitude in tried]
     predicted = [expected(search, state, [*others, c], checks) for c, _ in tried]
     if len(tried) == 1:
-        names.append("not")
+        names.append("")
         predicted.append(absent(*predicted[0], *tried[0], checks))
     means, fixed_part = np.array([m for m, _ in predicted]), np.array([v for _, v in predicted])
     noise = np.array([check.noise for check in checks])
     d = separation(means, fixed_part + noise)
     best = int(np.nanargmax(np.where(np.isfinite(d), d, -1.0)))
     check = checks[best]
-    outcomes = "; ".join(
-        f"{name}: pH {m:.2f} ± {s:.2f}"
-        for name, m, s in zip(names, means[:, best], np.sqrt(fixed_part[:, best] + noise[best]), strict=True)
+    spread = np.sqrt(fixed_part[:, best] + noise[best])
+    outcomes = ", ".join(
+        f"pH {m:.2f} (u {u:.2f}) {f'for {name}' if name else 'otherwise'}"
+        for name, m, u in zip(names, means[:, best], spread, strict=True)
     )
-    words = f"Read {check.solution} on meter {check.meter}. Expected if {outcomes}."
-    wrong = float(special.ndtr(-d[best] / 2.0))
-    words += f" Separation d = {d[best]:.1f}, chance of a wrong choice {wrong:.2g}."
-    if d[best] < ENOUGH:
-        words += " " + repeats_words(means[:, [best]], fixed_part[:, [best]], float(noise[best]))
-    return f"{words} {CAUTION}"
+    wrong = chance_words(float(special.ndtr(-d[best] / 2.0)))
+    apart = f"Separation d = {significant(d[best], 2 if d[best] >= 1 else 1)}, chance of a wrong choice {wrong}."
+    reading = f"{check.solution} on meter {check.meter}"
+    if d[best] >= ENOUGH:
+        return f"Read {reading}. Expected: {outcomes}. {apart} {CAUTION}"
+    needed = repeats(means[:, [best]], fixed_part[:, [best]], float(noise[best]))
+    if needed:
+        return (
+            f"Read {reading} {needed} times. Expected: {outcomes}. {apart} "
+            f"One such reading would not settle it; the mean of {needed} would. {CAUTION}"
+        )
+    return (
+        f"No practicable reading of what already stands would settle it. The most telling, {reading}, is expected at "
+        f"{outcomes}. {apart}"
+    )
 
 
-def repeats_words(means: FloatArray, fixed_part: FloatArray, noise: float) -> str:
-    """How many repeats of a check would decide, or that none would."""
+def repeats(means: FloatArray, fixed_part: FloatArray, noise: float) -> int:
+    """How many repeats of a check would decide; 0 when none would."""
     for n in range(2, MOST_REPEATS + 1):
         if float(separation(means, fixed_part + noise / n)[0]) >= ENOUGH:
-            return f"One such reading would not settle it; the mean of {n} would."
-    return "No practicable number of such readings would settle it."
+            return n
+    return 0

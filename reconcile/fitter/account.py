@@ -17,7 +17,7 @@ from reconcile.fitter.question import Studied
 from reconcile.fitter.sought import Outcome
 from reconcile.fitter.step_results import LIMIT_CORRELATION, Judged, correlation
 from reconcile.fitter.wording import REASONS, constant_name, counted, figure, listed, say, uncertainty
-from reconcile.records.arrays import FloatArray
+from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.pka_results import Gap, Nuisance, PkaCandidate, PkaQuestion, PkaStep
 
 FEW = 5
@@ -26,6 +26,8 @@ HALF = (45.0, 55.0)
 """Percent neutralised between which a reading counts as at half neutralisation."""
 MOST_GAPS = 3
 MOST_ALIKE = 3
+ALONE = 0.9
+"""Leverage from which a reading decides a parameter by itself."""
 PLAIN = 0.05
 """Largest strong base per acid of a plain dilution [mol/mol]."""
 Said = list[tuple[str, str]]
@@ -160,8 +162,6 @@ def _of_readings(
         out.append(("few", say("few", count=counted(count))))
     rejected = np.flatnonzero(~kept)
     if len(rejected):
-        records = evidence.records
-        places = [records.place(records.readings, int(i)).words() for i in evidence.index[rejected].tolist()]
         values = [
             f"{constant_name(s.step, len(steps))} would be {figure(s.with_all[0])} "
             f"(u of the readings {uncertainty(s.with_all[1])})"
@@ -169,10 +169,15 @@ def _of_readings(
             if s.with_all is not None
         ]
         sentence = say(
-            "rejected", count=counted(len(rejected)), places="; ".join(places),
+            "rejected", count=counted(len(rejected)), places=_places(evidence, rejected),
             values=listed(values) or "no constant would be found either",
         )  # fmt: skip
         out.append(("rejected", sentence))
+    alone = np.flatnonzero(kept & (np.nan_to_num(fitted.leverage) > ALONE))
+    if len(alone) and count >= FEW:
+        verb = "carries" if len(alone) == 1 else "each carry part of"
+        sentence = say("leverage", places=_places(evidence, alone), verb=verb, limit=f"{ALONE:g}")
+        out.append(("leverage", sentence))
     step = int(np.argmax(fitted.seen[0, judged.shape.pka]))
     weight = np.where(kept, 1.0 / fitted.data.variance, 0.0)
     spread = fitted.covariance[0] @ (fitted.jacobian * weight[:, None]).T
@@ -192,6 +197,12 @@ def _of_readings(
     if dilute:
         out.append(("dilute", say("dilute", count=counted(dilute), limit=f"{limit:g}")))
     return out
+
+
+def _places(evidence: Evidence, rows: IntArray) -> str:
+    """Where some readings stand."""
+    records = evidence.records
+    return "; ".join(records.place(records.readings, int(i)).words() for i in evidence.index[rows].tolist())
 
 
 def _of_scatter(judged: Judged, best: Outcome) -> Said:

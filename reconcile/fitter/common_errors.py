@@ -77,7 +77,8 @@ def common_errors(
     if len(marked):
         allowance = float(evidence.settings["substances.without_effect_allowance"])
         held = marked[np.asarray(evidence.records.readings_solution, np.intp)[evidence.index]]
-        out.append(Common("declared without effect", np.asarray(held, float), allowance))
+        if np.any(held):
+            out.append(Common("declared without effect", np.asarray(held, float), allowance))
     out.append(Common("temperature", np.nan_to_num(found.d_temperature) * evidence.u_temperature, 1.0))
     out.append(Common("activity model", found.d_model, u_of_model(evidence.medium.model, evidence.settings)))
     out += _constants(evidence, found, acids)

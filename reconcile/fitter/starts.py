@@ -2,23 +2,23 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
 from itertools import combinations_with_replacement
 
 import numpy as np
 
 from reconcile.fitter.cases import Cases, Medium
-from reconcile.fitter.least_squares import Data, at, search
-from reconcile.fitter.model import Shape
+from reconcile.fitter.least_squares import Data, chi_squared, search
+from reconcile.fitter.model import Shape, evaluate, table_with
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 
-MOST_READINGS = 40
-"""Readings of a case that the grid is tried on."""
-SPACING = {1: 0.5, 2: 1.0, 3: 1.5}
+MOST_READINGS = 10
+"""Readings of a case that the grid is tried on, spread evenly over it."""
+SPACING = {1: 0.75, 2: 1.5, 3: 1.75}
 LOW, HIGH = 0.0, 14.0
 BEST = 3
 """Grid points from which a search sets out, where there is more than one constant."""
-AT_ONCE = 20_000
+STEPS = 8
+AT_ONCE = 40_000
 SHIFTS = np.arange(-4.0, 4.1, 0.5)
 
 
@@ -45,7 +45,8 @@ def starts(
     each = max(1, AT_ONCE // max(len(trials) * MOST_READINGS, 1))
     for begin in range(0, len(cases), each):
         which = np.arange(begin, min(begin + each, len(cases)))
-        found[which] = _best(medium, few.take(which), shape, some, _rows(few, which), trials, free, held)
+        part, own = few.take(which), some.take(np.arange(few.first[begin], few.first[which[-1] + 1]))
+        found[which] = _best(medium, part, shape, own, trials, free, held)
     return found
 
 
@@ -54,51 +55,43 @@ def _counts(cases: Cases) -> IntArray:
 
 
 def _thinned(cases: Cases) -> IntArray:
-    """Readings spread evenly over each case, by index."""
+    """Readings spread evenly over each case, first and last among them, by index."""
     counts, whole = _counts(cases), np.diff(cases.first)
-    place = np.concatenate([np.arange(c) * w // c for c, w in zip(counts.tolist(), whole.tolist(), strict=True)])
-    return np.repeat(cases.first[:-1], counts) + place.astype(np.intp)
-
-
-def _rows(cases: Cases, which: IntArray) -> IntArray:
-    return np.flatnonzero(np.isin(cases.case, which))
+    place = [np.linspace(0, w - 1, c).round() for c, w in zip(counts.tolist(), whole.tolist(), strict=True)]
+    return np.repeat(cases.first[:-1], counts) + np.concatenate(place).astype(np.intp)
 
 
 def _best(
-    medium: Medium,
-    cases: Cases,
-    shape: Shape,
-    data: Data,
-    rows: IntArray,
-    trials: FloatArray,
-    free: BoolArray,
-    held: FloatArray,
+    medium: Medium, cases: Cases, shape: Shape, data: Data, trials: FloatArray, free: BoolArray, held: FloatArray
 ) -> FloatArray:
-    count, own = len(cases), data.take(rows)
-    theta = np.tile(held, (count * len(trials), 1))
-    theta[:, shape.pka] = np.repeat(trials[None], count, axis=0).reshape(-1, shape.steps)
-    many = cases.take(np.repeat(np.arange(count), len(trials)))
-    where = _repeated(cases, len(trials))
-    chi2 = at(medium, many, shape, own.take(where), theta).chi2.reshape(count, len(trials))
-    best = min(BEST if shape.steps > 1 else 1, len(trials))
+    """The best start of every case; where there are several constants, after a few steps from the best few."""
+    count, tries = len(cases), len(trials)
+    chi2 = _tried(medium, cases, shape, data, trials, held)
+    best = min(BEST if int(free[shape.pka].sum()) > 1 else 1, tries)
     order = np.argsort(chi2, axis=1, kind="stable")[:, :best]
     theta = np.tile(held, (count * best, 1))
     theta[:, shape.pka] = trials[order].reshape(-1, shape.steps)
     if best == 1:
         return theta
     many = cases.take(np.repeat(np.arange(count), best))
-    tried = own.take(_repeated(cases, best))
-    tried = replace(tried, kept=np.ones(len(tried.observed), bool))
-    point = search(medium, many, shape, tried, theta, np.tile(free, (len(theta), 1)), steps=12)
+    tried = data.take(_repeated(cases, best))
+    point = search(medium, many, shape, tried, theta, np.tile(free, (len(theta), 1)), STEPS)
     winner = point.chi2.reshape(count, best).argmin(axis=1)
     return np.asarray(point.theta.reshape(count, best, -1)[np.arange(count), winner])
 
 
+def _tried(medium: Medium, cases: Cases, shape: Shape, data: Data, trials: FloatArray, held: FloatArray) -> FloatArray:
+    """Weighted sum of squares of every case at every trial, (P, g); the cases share the acids of the trials."""
+    count, tries = len(cases), len(trials)
+    acids, stands_in = table_with(medium, shape, trials, np.tile(held[shape.dh], (tries, 1)))
+    many = cases.take(np.repeat(np.arange(count), tries))
+    own = data.take(_repeated(cases, tries))
+    factor = np.full(len(many), np.exp(held[shape.strength]))
+    ph = evaluate(medium, many, acids, np.tile(stands_in, count), factor).ph + held[shape.offset]
+    return chi_squared(many, own, own.observed - ph).reshape(count, tries)
+
+
 def _repeated(cases: Cases, times: int) -> IntArray:
     """Readings of every case, each case `times` over, in the order of `take(repeat(...))`."""
-    return np.concatenate(
-        [
-            np.tile(np.arange(a, b), times)
-            for a, b in zip(cases.first[:-1].tolist(), cases.first[1:].tolist(), strict=True)
-        ]
-    )
+    pairs = zip(cases.first[:-1].tolist(), cases.first[1:].tolist(), strict=True)
+    return np.concatenate([np.tile(np.arange(a, b), times) for a, b in pairs])

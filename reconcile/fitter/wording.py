@@ -39,6 +39,7 @@ SENTENCES: Mapping[str, str] = {
     "instead.",
     "meter": "Meter {meter} is itself suspect: {reason}. An offset of the meter goes into {name} {how}.",
     "rejected": "{count} rejected by a test at a family-wise 1 % ({places}); with every reading {values}.",
+    "leverage": "{places} almost alone {verb} what was found (leverage over {limit}): an error there would not show.",
     "steps": "{count} by AICc ({values}); a further step must lower it by more than 2, or by more than 10 where the "
     "readings do not tell its constant.",
     "bent": "The residuals bend with pH beyond chance: a step too few, an impurity, carbon dioxide or an error of the "

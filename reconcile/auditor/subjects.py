@@ -6,7 +6,7 @@ from collections.abc import Iterable, Sequence
 
 import numpy as np
 
-from reconcile.records.arrays import IntArray, TextArray
+from reconcile.records.arrays import IntArray, TextArray, TimeArray
 from reconcile.records.book import BatchRecords
 
 
@@ -42,7 +42,8 @@ def sessions_of(
 ) -> tuple[IntArray, tuple[str, ...]]:
     """Calibration session of each reading; the meter's day where no calibration of the meter is recorded before it.
 
-    A calibration that names a probe begins a session for that probe alone, where the reading names its probe too.
+    A calibration that names a probe begins a session for that probe alone, where the reading names its probe too. A
+    logged event of the meter or of the probe (replaced, cleaned, dropped) ends a session.
     """
     at = records.readings["read_at"][rows]
     probe = records.readings["probe"][rows]
@@ -58,8 +59,23 @@ def sessions_of(
         for own in sorted(set(probe[mine].tolist())):
             fits = dated & ((with_probe == own) | (with_probe == "")) if own else dated
             calibrated = np.sort(table["calibrated_at"][fits])
+            broken = np.sort(_events_of(records, name, own))
             some = mine[probe[mine] == own]
-            for row, session in zip(some, np.searchsorted(calibrated, at[some], side="right"), strict=True):
+            sessions = np.searchsorted(calibrated, at[some], side="right")
+            events = np.searchsorted(broken, at[some], side="right")
+            for row, session, event in zip(some, sessions, events, strict=True):
                 if session:
                     labels[row] = f"{name} calibrated {calibrated[session - 1]}"
+                    if event and broken[event - 1] > calibrated[session - 1]:
+                        labels[row] += f", event {broken[event - 1]}"
     return codes(labels)
+
+
+def _events_of(records: BatchRecords, meter: str, probe: str) -> TimeArray:
+    """When something was done to a meter or to the probe that it was read with."""
+    table = records.events
+    if not len(table):
+        return np.zeros(0, "datetime64[s]")
+    mine = ((table["meter"] == meter) & (table["probe"] == "")) | ((table["probe"] == probe) & (probe != ""))
+    at: TimeArray = table["at"][mine & ~np.isnat(table["at"])]
+    return at

@@ -13,6 +13,7 @@ import numpy as np
 from reconcile import __version__
 from reconcile.records.arrays import IntArray
 from reconcile.records.results import Audit, Finding, Silence
+from reconcile.reporter.adjusted import rows_of
 from reconcile.reporter.cautions import CAUTIONS
 from reconcile.reporter.gist import gist
 from reconcile.reporter.manifest import report_id
@@ -114,6 +115,7 @@ def findings_document(audit: Audit) -> dict[str, Any]:
         "not_testable": [_silence(s) for s in audit.not_testable],
         "smallest_detectable": [_silence(s) for s in audit.smallest_detectable],
         "hazards": [_hazard(s) for s in stocks(audit)],
+        **({"adjusted": [value(row) for row in rows_of(audit)]} if len(audit.records.solved) else {}),
     }
 
 

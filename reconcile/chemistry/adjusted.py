@@ -14,7 +14,7 @@ from reconcile.chemistry.of_records import Record, laid_out, predict_rows
 from reconcile.chemistry.prediction import u_of_model
 from reconcile.chemistry.settling import Job, anchors, jobs_of
 from reconcile.chemistry.uncertainty import ROOT3
-from reconcile.chemistry.usual_amounts import usual_amounts
+from reconcile.chemistry.usual_amounts import amount_notes, usual_amounts
 from reconcile.chemistry.water import DENSITY_20C, co2_solubility
 from reconcile.records.adjusting import Solved
 from reconcile.records.arrays import FloatArray, Triplets
@@ -89,7 +89,8 @@ def with_adjustments(records: BatchRecords, settings: Settings) -> BatchRecords:
     solved = _solved(records, found, jobs)
     usual, low, high, like, odd = usual_amounts(records, solved)
     solved = replace(solved, usual=usual, usual_low=low, usual_high=high, like=like, odd=odd)
-    return _filled(records, solved)
+    kept = tuple(note for note in records.notes if note.code not in ("amount-odd", "amount-none"))
+    return replace(_filled(records, solved), notes=(*kept, *amount_notes(records, solved)))
 
 
 def _filled(records: BatchRecords, solved: Solved) -> BatchRecords:

@@ -7,6 +7,7 @@ import numpy as np
 from reconcile.records.adjusting import Solved
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 from reconcile.records.book import BatchRecords
+from reconcile.records.problems import Problem
 
 SAME_AMOUNT, SAME_PH = 0.05, 0.1
 """Like batches: every written amount within 5 % of the other's, adjusted to within 0.1 pH (no source)."""
@@ -64,3 +65,19 @@ def _recipe(records: BatchRecords, solved: Solved, j: int) -> tuple[Key, FloatAr
 
 def _alike(one: FloatArray, other: FloatArray) -> bool:
     return bool(np.all(np.abs(one - other) <= SAME_AMOUNT * np.maximum(np.abs(one), np.abs(other))))
+
+
+def amount_notes(records: BatchRecords, solved: Solved) -> list[Problem]:
+    """Notices about implied amounts far from the usual one, and about a pH that no amount of the titrant gives."""
+    opens = records.open_amounts
+    found = []
+    for j in range(len(solved)):
+        name = str(opens.batch[j] or opens.stock[j])
+        words = (("name", name), ("titrant", str(opens.substance[j])), ("unit", str(opens.unit[j])))
+        if solved.odd[j]:
+            usual = f"{solved.usual_low[j]:.4g} to {solved.usual_high[j]:.4g}"
+            more = (*words, ("usual", usual), ("count", str(int(solved.like[j]))))
+            found.append(Problem("amount-odd", opens.place[j], f"{solved.amount[j]:.4g} {opens.unit[j]}", more))
+        elif np.isnan(solved.amount[j]) and np.isfinite(solved.ph[j]):
+            found.append(Problem("amount-none", opens.place[j], f"{solved.ph[j]:.2f}", words))
+    return found

@@ -14,7 +14,14 @@ from reconcile.chemistry.ion_data import interaction_matrix, read_sizes, truesde
 from reconcile.chemistry.pair_table import Pair
 from reconcile.chemistry.pair_table import pairs as pairs_chosen
 from reconcile.chemistry.pka_law import NEVER, Laws, Terms, laws
-from reconcile.chemistry.temperature import U_KNOWN_DCP, U_KNOWN_DH, U_MISSING_DCP, U_MISSING_DH, van_t_hoff
+from reconcile.chemistry.temperature import (
+    U_KNOWN_DCP,
+    U_KNOWN_DH,
+    U_MISSING_DCP,
+    U_MISSING_DH,
+    spread_between,
+    van_t_hoff,
+)
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 
 FOLDER = Path(__file__).parent
@@ -105,6 +112,13 @@ class AcidTable:
     def pka_at(self, constant: IntArray, temperature_c: FloatArray) -> FloatArray:
         """pKa at I = 0 of some constants (indices), each at its temperature [°C]."""
         return self.laws.value(constant, temperature_c)
+
+    def u_at(self, constant: IntArray, kelvin: FloatArray) -> FloatArray:
+        """Standard uncertainty of some constants (indices), each at its temperature [K]; they broadcast."""
+        reference = np.clip(kelvin, self.laws.low_k[constant], self.laws.high_k[constant])
+        by_dh, by_dcp = spread_between(kelvin, reference)
+        u2 = (self.u**2)[constant] + (self.u_dh**2)[constant] * by_dh**2 + (self.u_dcp**2)[constant] * by_dcp**2
+        return np.asarray(np.sqrt(u2))
 
     @cached_property
     def by_step(self) -> tuple[Terms, FloatArray, IntArray]:

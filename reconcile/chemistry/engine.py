@@ -9,10 +9,11 @@ import numpy as np
 from reconcile.chemistry.acids import AcidTable
 from reconcile.chemistry.activity import ActivityModel
 from reconcile.chemistry.composition import Contents, FormTable, pad
-from reconcile.chemistry.pair_rows import with_pairs
+from reconcile.chemistry.pair_rows import laid_out, with_pairs
+from reconcile.chemistry.pair_solve import solve_pairs
 from reconcile.chemistry.sensitivities import Slopes, slopes
 from reconcile.chemistry.solve import solve
-from reconcile.chemistry.temperature import U_PKW, Solvent, solvent, spread_between, water_at
+from reconcile.chemistry.temperature import LN10, U_PKW, Solvent, solvent, water_at
 from reconcile.chemistry.water import ZERO_CELSIUS
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 
@@ -35,7 +36,8 @@ class Answers:
 
     ph, ionic_strength [mol/kg], solved
     d_temperature [1/K], d_model, d_titrant [L/mol] : slopes of pH
-    u_constants : share of the ionization constants and of pKw in the uncertainty [pH]
+    u_constants : share of the ionization constants, of pKw and of pairs in the uncertainty [pH]
+    uneven : BoolArray           True where a constant of large uncertainty has a good part in that share
     entry : FloatArray (c,)      dpH/d ln(amount) of every contribution of the contents
     constants : Ragged           dpH/dpKa, columns are constants of the AcidTable
     degree : Ragged              protons lost over those that can be lost, columns are acids of the AcidTable
@@ -48,6 +50,7 @@ class Answers:
     d_model: FloatArray
     d_titrant: FloatArray
     u_constants: FloatArray
+    uneven: BoolArray
     entry: FloatArray
     constants: Ragged
     degree: Ragged
@@ -91,21 +94,25 @@ class _Rows:
         return Ragged(start, column, value)
 
 
-def _u_of_constants(some: Slopes, acids: AcidTable, water: Solvent) -> FloatArray:
+LARGE, GOOD_PART = 0.12, 0.2
+"""u(pKa) from which on the response of pH bends, and the part of the constants' variance from which on that counts."""
+
+
+def _u_of_constants(some: Slopes, acids: AcidTable, water: Solvent) -> tuple[FloatArray, BoolArray]:
     """Root-sum-square of dpH/dpKa times u(pKa) at temperature, over all constants, pKw and those of pairs [pH] (m,).
+
+    The second array is True where a constant of large uncertainty has a good part in it.
 
     Steps count as independent: published constants of one acid seldom come with their covariance.
     """
     at, value = some.constant, some.constant_value  # the index -1, for none, meets a slope of 0
-    kelvin = water.temperature_c[:, None] + ZERO_CELSIUS
-    reference = np.clip(kelvin, acids.laws.low_k[at], acids.laws.high_k[at])
-    by_dh, by_dcp = spread_between(kelvin, reference)
-    u2 = (acids.u**2)[at]
-    u2 += (acids.u_dh**2)[at] * by_dh**2
-    u2 += (acids.u_dcp**2)[at] * by_dcp**2
-    u2 *= value
-    u2 *= value
-    return np.asarray(np.sqrt(u2.sum(axis=1) + (some.d_pkw * U_PKW) ** 2 + some.of_pairs))
+    u = acids.u_at(at, water.temperature_c[:, None] + ZERO_CELSIUS)
+    part = (u * value) ** 2
+    whole = part.sum(axis=1) + (some.d_pkw * U_PKW) ** 2 + some.of_pairs
+    uneven = np.zeros(len(whole), bool)
+    if np.any(u > LARGE):
+        uneven = np.any((u > LARGE) & (part > GOOD_PART * whole[:, None]), axis=1)
+    return np.sqrt(whole), uneven
 
 
 def run(contents: Contents, forms: FormTable, acids: AcidTable, model: ActivityModel) -> Answers:
@@ -134,7 +141,7 @@ def run(contents: Contents, forms: FormTable, acids: AcidTable, model: ActivityM
     out = {
         name: np.full(n, np.nan) for name in ("ph", "ionic_strength", "temperature", "model", "titrant", "constants")
     }
-    solved = np.zeros(n, bool)
+    solved, uneven = np.zeros(n, bool), np.zeros(n, bool)
     entry = np.zeros(len(contents.form))
     constants, degree = _Rows(), _Rows()
     for begin in range(0, n, CHUNK):
@@ -150,7 +157,7 @@ def run(contents: Contents, forms: FormTable, acids: AcidTable, model: ActivityM
         out["titrant"][rows] = some.d_titrant
         entry[padding.entry] = some.entry
         constants.add(rows, some.constant, some.constant_value)
-        out["constants"][rows] = _u_of_constants(some, acids, here)
+        out["constants"][rows], uneven[rows] = _u_of_constants(some, acids, here)
         degree.add(rows, some.degree_acid, some.degree)
     return Answers(
         out["ph"],
@@ -160,7 +167,40 @@ def run(contents: Contents, forms: FormTable, acids: AcidTable, model: ActivityM
         out["model"],
         out["titrant"],
         out["constants"],
+        uneven,
         entry,
         constants.ragged(n),
         degree.ragged(n),
     )
+
+
+def solved_ph(
+    contents: Contents,
+    forms: FormTable,
+    acids: AcidTable,
+    model: ActivityModel,
+    constant: IntArray | None = None,
+    shift: FloatArray | None = None,
+) -> FloatArray:
+    """pH alone of n solutions (n,), without slopes; NaN where not solved. Parameters as for `run`.
+
+    constant, shift : (n,) index of one constant of each solution whose pKa is moved, and by how much
+    """
+    ph = np.full(len(contents), np.nan)
+    temperatures, which = np.unique(contents.temperature_c, return_inverse=True)
+    water, order = solvent(temperatures), alike_together(contents, forms, acids)
+    for begin in range(0, len(contents), CHUNK):
+        rows = order[begin : begin + CHUNK]
+        here = water_at(water, which[rows])
+        chunk, padding = pad(contents, rows, forms, acids, here, model)
+        if constant is not None and shift is not None:
+            for slot in chunk.slots:
+                for step in range(len(slot.k)):
+                    own = acids.by_step[2][step].take(slot.acid) == constant[rows]
+                    slot.k[step] *= np.where(own, np.exp(-LN10 * shift[rows]), 1.0)
+        found, strength, fine = solve(chunk, model)
+        held, lay, _ = laid_out(chunk, padding, contents, forms, acids, here, fine)
+        if lay is not None:
+            found[held] = solve_pairs(lay, model, found[held], strength[held])[0]
+        ph[rows] = found
+    return ph

@@ -9,10 +9,12 @@ import numpy as np
 
 from reconcile.chemistry.acids import AcidTable, acid_table
 from reconcile.chemistry.activity import ActivityModel, activity_model
-from reconcile.chemistry.composition import CARBONIC, Contents, entries_at, form_table
+from reconcile.chemistry.carbon_dioxide import CARBON_DIOXIDE, share_of_gas
+from reconcile.chemistry.composition import Contents, entries_at, form_table
+from reconcile.chemistry.drawn import errors_of_record, u_drawn
 from reconcile.chemistry.engine import Answers, Ragged, run
 from reconcile.chemistry.linked import linked
-from reconcile.chemistry.prediction import assemble, regrouped, triplets
+from reconcile.chemistry.prediction import assemble, regrouped, triplets, u_of_model
 from reconcile.chemistry.solve import rows_alike
 from reconcile.chemistry.uncertainty import ROOT3, combined, of_independent, of_lots
 from reconcile.chemistry.water import DENSITY_20C, co2_solubility
@@ -24,7 +26,6 @@ from reconcile.records.substances import Form, catalogue
 
 U_CERTIFICATE = 0.01
 """Standard uncertainty of a known solution's pH where none is stated [pH]; common practice, no source."""
-_CO2 = Form("carbon dioxide", (), "CO2", 44.009, CARBONIC, 0.0, 1.0, {}, "", "", "", "", "", "carbon dioxide taken up")
 
 
 @dataclass(frozen=True)
@@ -107,7 +108,7 @@ class _Supposed:
 
 def _form_indices(records: BatchRecords, changes: Sequence[Change]) -> tuple[list[Form], list[int]]:
     """Forms of the record and those supposed, and the index of each change's form (-1 where it keeps its own)."""
-    forms = [*records.forms, _CO2]
+    forms = [*records.forms, CARBON_DIOXIDE]
     place = {form.name: i for i, form in enumerate(records.forms)}
     indices = []
     for change in changes:
@@ -168,28 +169,43 @@ def _factors(change: Change) -> FloatArray:
     return factor if len(factor) else np.ones(len(change.contributions))
 
 
-def predict_rows(record: Record, changes: Sequence[Change], change: IntArray, reading: IntArray) -> Prediction:
-    """Prediction of r rows, the i-th being reading[i] under change[i] (-1 for none)."""
+def predict_rows(
+    record: Record, changes: Sequence[Change], change: IntArray, reading: IntArray, closely: bool = False
+) -> Prediction:
+    """Prediction of r rows, the i-th being reading[i] under change[i] (-1 for none).
+
+    closely : whether u has what needs further solving: carbon dioxide, and draws where first order does not serve
+    """
     records = record.records
     solution = np.asarray(records.readings_solution, np.intp)[reading]
     temperature = record.temperature_c[reading]
     first, which = rows_alike(np.column_stack([change, solution, temperature]).astype(float))
     supposed, forms = _suppose(record, changes, change[first], solution[first], temperature[first])
     contents = supposed.contents
-    answers = run(contents, form_table(forms, record.acids), record.acids, record.model)
+    table = form_table(forms, record.acids)
+    answers = run(contents, table, record.acids, record.model)
     own = _own(answers, supposed)
-    part = regrouped(own, which)
     shares = _shares(record, own, which)
+    u_temperature, drawn, gas = record.u_temperature[reading], None, np.zeros(len(first))
+    if closely:
+        gas = share_of_gas(contents, table, record.acids, record.model, record.settings, answers, len(records.forms))
+        u_model = u_of_model(record.model, record.settings)
+        chains = record.chain_start, record.chain_lot, record.u_lot, record.u_taking
+        errors = errors_of_record(supposed.origin, *chains, u_temperature[first], u_model)
+        amounts = np.hypot(shares["strength"], shares["taking"])[first]
+        drawn = u_drawn(contents, table, record.acids, record.model, errors, answers, amounts)
     prediction = assemble(
         answers,
         contents.temperature_c,
         which,
-        record.u_temperature[reading],
+        u_temperature,
         shares,
-        triplets(part, len(record.amount)),
+        triplets(regrouped(own, which), len(record.amount)),
         record.acids,
         record.model,
         record.settings,
+        gas,
+        drawn,
     )
     chain = record.chain_start, record.chain_lot, record.u_lot
     prediction = linked(records, prediction, reading, record.acids, record.u_taking, chain)
@@ -277,8 +293,8 @@ def predict_records(records: BatchRecords, settings: Settings) -> Prediction:
 
     References
     ----------
-    JCGM 100:2008, equations 10 and 16.
+    JCGM 100:2008, equations 10 and 16; JCGM 101:2008 where the pH curve bends within the spread.
     """
     record = laid_out(records, settings)
     reading = np.arange(len(records.readings))
-    return predict_rows(record, (), np.full(len(reading), -1, np.intp), reading)
+    return predict_rows(record, (), np.full(len(reading), -1, np.intp), reading, closely=True)

@@ -14,7 +14,7 @@ from reconcile.chemistry.ion_data import strong_ions
 from reconcile.chemistry.pair_slopes import Solution
 from reconcile.chemistry.pair_solve import at_start, solve_pairs
 from reconcile.chemistry.pair_table import Pair
-from reconcile.chemistry.pairs import layout, metal_molalities
+from reconcile.chemistry.pairs import Layout, layout, metal_molalities
 from reconcile.chemistry.sensitivities import Slopes, slopes
 from reconcile.chemistry.temperature import Solvent, water_at
 from reconcile.chemistry.water import DENSITY_20C, ZERO_CELSIUS
@@ -65,18 +65,9 @@ def with_pairs(
         Of the rows without pairs; changed in place.
     """
     ph, strength, solved = answer
-    some = possible(acids.pairs, padding, forms, acids)
-    if not some:
+    rows, lay, some = laid_out(chunk, padding, contents, forms, acids, water, solved)
+    if lay is None:
         return
-    entries = contents.amount[padding.entry], contents.form[padding.entry], padding.row
-    metals = metal_molalities(some, *entries, forms.brings, len(chunk))
-    rows = np.flatnonzero(solved & _complete(chunk, some, metals, acids))
-    if not len(rows):
-        return
-    cut, here = _cut(padding, rows), water_at(water, rows)
-    lay = layout(
-        chunk.take(rows), {m: v[rows] for m, v in metals.items()}, some, acids, here.temperature_c + ZERO_CELSIUS
-    )
     bound = at_start(lay, model, ph[rows], strength[rows])
     moved = 9.0 * bound * without.d_titrant[rows] * DENSITY_20C  # no species has a charge beyond 3
     matter = np.flatnonzero(moved > MATTERS)
@@ -86,12 +77,34 @@ def with_pairs(
     cut, here = _cut(padding, rows), water_at(water, rows)
     x, i, y, done = solve_pairs(lay, model, ph[rows], strength[rows])
     ph[rows], strength[rows], solved[rows] = x, i, done
-    found = slopes(lay.rest, cut, contents, forms, acids, here, model, x, i, Solution(lay, tuple(some), acids, y))
+    found = slopes(lay.rest, cut, contents, forms, acids, here, model, x, i, Solution(lay, some, acids, y))
     for name in ("d_temperature", "d_model", "d_pkw", "d_titrant", "constant_value", "degree", "of_pairs"):
         getattr(without, name)[rows] = getattr(found, name)
     own = np.zeros(len(chunk), bool)
     own[rows] = True
     without.entry[own[padding.row]] = found.entry
+
+
+def laid_out(
+    chunk: Chunk,
+    padding: Padding,
+    contents: Contents,
+    forms: FormTable,
+    acids: AcidTable,
+    water: Solvent,
+    solved: BoolArray,
+) -> tuple[IntArray, Layout | None, tuple[Pair, ...]]:
+    """Rows of a chunk that hold every part of some pair, their layout (None for no rows), and the pairs in it."""
+    some = tuple(possible(acids.pairs, padding, forms, acids))
+    rows = np.zeros(0, np.intp)
+    if some:
+        entries = contents.amount[padding.entry], contents.form[padding.entry], padding.row
+        metals = metal_molalities(some, *entries, forms.brings, len(chunk))
+        rows = np.flatnonzero(solved & _complete(chunk, some, metals, acids))
+    if not len(rows):
+        return rows, None, some
+    kelvin = water.temperature_c[rows] + ZERO_CELSIUS
+    return rows, layout(chunk.take(rows), {m: v[rows] for m, v in metals.items()}, some, acids, kelvin), some
 
 
 def _complete(chunk: Chunk, pairs: Sequence[Pair], metals: dict[str, FloatArray], acids: AcidTable) -> BoolArray:

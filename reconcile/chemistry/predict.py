@@ -4,15 +4,19 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from typing import Any
+from zlib import crc32
 
 import numpy as np
 
 from reconcile.chemistry.acids import AcidTable, acid_table
 from reconcile.chemistry.activity import activity_model as model_named
+from reconcile.chemistry.carbon_dioxide import CARBON_DIOXIDE, share_of_gas
 from reconcile.chemistry.composition import Contents, form_table
+from reconcile.chemistry.drawn import u_drawn
 from reconcile.chemistry.engine import Ragged, run
+from reconcile.chemistry.monte_carlo import Errors
 from reconcile.chemistry.of_records import predict_records
-from reconcile.chemistry.prediction import assemble, regrouped, triplets
+from reconcile.chemistry.prediction import assemble, regrouped, triplets, u_of_model
 from reconcile.chemistry.repredict import repredictor
 from reconcile.chemistry.solve import rows_alike
 from reconcile.chemistry.uncertainty import ROOT3, of_independent
@@ -159,7 +163,8 @@ def predict_ph(
     if settings["prediction.open_to_air"]:
         air = np.nan_to_num(dissolved_co2(at, settings["prediction.co2_partial_pressure_atm"]))
     contents = Contents(start, column, distinct[row, column] * scale, at, air)
-    answers = run(contents, form_table(forms, acids), acids, model)
+    table_of_forms = form_table([*forms, CARBON_DIOXIDE], acids)
+    answers = run(contents, table_of_forms, acids, model)
 
     part = regrouped(Ragged(start, column, answers.entry), which)
     contributions = triplets(part, k)
@@ -171,9 +176,19 @@ def predict_ph(
         "taking": of_independent(part.start, part.value, np.array(taking)),
     }
     u_t = settings["uncertainty.temperature_k"] / ROOT3 if u_temperature is None else u_temperature
-    return assemble(
-        answers, at, which, _per_row(u_t, n, "u_temperature"), shares, contributions, acids, model, settings
+    u_rows = _per_row(u_t, n, "u_temperature")
+    own = np.array([crc32(form.name.encode()) for form in forms], np.intp)[column]  # whatever the order of substances
+    errors = Errors(
+        np.tile(np.arange(len(row)), 2),
+        np.concatenate([2 * own, 2 * own + 1]),
+        np.concatenate([strength[first[row], column], np.full(len(row), taking)]),
+        u_rows[first],
+        u_of_model(model, settings),
     )
+    amounts_share = np.hypot(shares["strength"], shares["taking"])[first]
+    drawn = u_drawn(contents, table_of_forms, acids, model, errors, answers, amounts_share)
+    gas = share_of_gas(contents, table_of_forms, acids, model, settings, answers, k)
+    return assemble(answers, at, which, u_rows, shares, contributions, acids, model, settings, gas, drawn)
 
 
 def _per_row(given: Any, n: int, name: str) -> FloatArray:

@@ -39,7 +39,7 @@ def triplets(part: Ragged, columns: int) -> Triplets:
 def statuses(
     ph: FloatArray, strength: FloatArray, capacity: FloatArray, model: ActivityModel, settings: Settings
 ) -> TextArray:
-    """Status of every row: not_solved before outside_model, pH outside the electrode's, unbuffered, too few ions, ok."""
+    """Status of every row: not_solved, outside_model, pH beyond the electrode's range, unbuffered, too few ions, ok."""
     highest = float(settings["status.outside_model_ionic_strength"])
     if model.highest < DAVIES_RANGE:
         highest = min(highest, model.highest)
@@ -64,6 +64,8 @@ def assemble(
     acids: AcidTable,
     model: ActivityModel,
     settings: Settings,
+    gas: FloatArray,
+    drawn: FloatArray | None = None,
 ) -> Prediction:
     """A Prediction of n rows from the answers of u different solutions.
 
@@ -81,6 +83,10 @@ def assemble(
         Shares of the budget [pH] that rest on amounts: "strength", "taking".
     contributions : Triplets (n, c)
     acids, model, settings
+    gas : ndarray (u,)
+        Share of carbon dioxide taken up unrecorded [pH].
+    drawn : ndarray (u,), optional
+        What draws give for all shares but that of carbon dioxide together [pH]; NaN where first order serves.
 
     Returns
     -------
@@ -95,6 +101,11 @@ def assemble(
         "pKa": answers.u_constants[which],
         "activity model": np.abs(d_model) * u_model,
     }
+    if drawn is not None and np.isfinite(drawn).any():
+        with np.errstate(divide="ignore", invalid="ignore"):
+            scale = drawn[which] / combined(budget)
+        budget = {name: np.where(np.isfinite(scale), share * scale, share) for name, share in budget.items()}
+    budget["carbon dioxide"] = gas[which]
     with np.errstate(divide="ignore", invalid="ignore"):
         capacity = 1.0 / answers.d_titrant
     met = np.unique(answers.constants.column)

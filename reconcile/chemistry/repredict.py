@@ -32,7 +32,8 @@ def repredictor(records: BatchRecords, settings: Settings) -> Repredict:
     Parameters
     ----------
     records, settings
-        As for predict_records; an unchanged reading gets the same values.
+        As for predict_records; an unchanged reading gets the same values, but u to first order and without the share
+        of carbon dioxide.
 
     Returns
     -------

@@ -10,7 +10,7 @@ from reconcile.records.arrays import FloatArray, IntArray
 
 ROOT3 = float(np.sqrt(3.0))
 """A half-width a of a rectangular distribution is a standard uncertainty a / sqrt 3 (JCGM 100:2008, 4.3.7)."""
-SOURCES = ("strength", "taking", "temperature", "pKa", "activity model", "certificate")
+SOURCES = ("strength", "taking", "temperature", "pKa", "activity model", "carbon dioxide", "certificate")
 
 
 def rows_of(start: IntArray) -> IntArray:

@@ -25,7 +25,7 @@ class Prediction:
     status : TextArray (n,)              "ok", "outside_model", "outside_electrode_range", "unbuffered", "not_solved"
     u : FloatArray (n,)                  standard uncertainty of the prediction [pH]
     budget : name -> FloatArray (n,)     its parts, root-sum-square gives u: "strength", "taking", "temperature",
-                                         "pKa", "activity model" (for known solutions "certificate")
+                                         "pKa", "activity model", "carbon dioxide" (for known solutions "certificate")
     ionic_strength : FloatArray (n,)     [mol/kg]
     buffer_capacity : FloatArray (n,)    [mol/L per pH], positive
     temperature_c : FloatArray (n,)      temperature predicted at [°C]

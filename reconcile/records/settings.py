@@ -115,6 +115,13 @@ SETTINGS: tuple[Setting, ...] = (
         "-, standard uncertainty",
         "linear term that the Bates-Guggenheim equation leaves out, over A I; from published interaction coefficients",
     ),
+    Setting(
+        "uncertainty",
+        "carbon_dioxide_umol_kg",
+        14.0,
+        "µmol/kg, half-width",
+        "what water takes up in equilibrium with outdoor air at 25 °C; uptake that is not recorded",
+    ),
     Setting("limits", "inflated_mib", 512, "MiB", "a workbook of a million readings inflates to less"),
     Setting("limits", "cell_chars", 32767, "characters", "what a spreadsheet cell can hold"),
     Setting("limits", "candidates", 200000, "candidates", "explanations tried in one audit"),

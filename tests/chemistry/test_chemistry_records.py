@@ -55,7 +55,7 @@ def records() -> BatchRecords:
 
 @pytest.fixture(scope="module")
 def prediction(records: BatchRecords) -> Prediction:
-    return predict_records(records, Settings())
+    return predict_records(records, Settings({"uncertainty.carbon_dioxide_umol_kg": 0.0}))
 
 
 def same(one: Prediction, other: Prediction, rows: list[int]) -> None:
@@ -141,7 +141,7 @@ def test_each_solution_at_each_temperature_is_solved_once(
         return inner(chunk, model)
 
     monkeypatch.setattr(engine, "solve", counting)
-    predict_records(records, Settings())
+    predict_records(records, Settings({"uncertainty.carbon_dioxide_umol_kg": 0.0}))
     assert sum(solved) == 6  # B1 at 25 and 37, B2 at 22 and 25, the known solution, B3
 
 

@@ -108,7 +108,12 @@ def _read_next(audit: Audit) -> str:
         return "Nothing in particular; more readings would lower the smallest detectable faults."
     text = f"For {checks[0][0]}: {checks[0][1]}"
     others = [ident for ident, _ in checks[1:]]
-    return f"{text} The checks for {listed(others, MOST_NAMED)} stand with them." if others else text
+    if not others:
+        return text
+    rest = (
+        f"The checks for {listed(others, MOST_NAMED)} stand" if len(others) > 1 else f"The check for {others[0]} stands"
+    )
+    return f"{text} {rest} in {'their sections' if len(others) > 1 else 'its section'}."
 
 
 def _not_checked(audit: Audit) -> str:

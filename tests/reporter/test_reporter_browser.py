@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import base64
 import re
-from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
@@ -14,13 +13,6 @@ pytestmark = [
     pytest.mark.browser,
     pytest.mark.skipif(program() is None, reason="no Chromium is installed on this system"),
 ]
-
-
-@pytest.fixture(scope="module")
-def browser(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Chromium]:
-    one = Chromium(tmp_path_factory.mktemp("profile"))
-    yield one
-    one.close()
 
 
 def test_opens_from_disk_without_a_request_or_a_message(browser: Chromium, folder: Path) -> None:
@@ -137,6 +129,16 @@ def test_prints_with_numbered_pages(browser: Chromium, folder: Path) -> None:
     pages = len(re.findall(rb"/Type\s*/Page\b", data))
     assert 8 <= pages <= 20
     assert "counter(page)" in browser.value("document.querySelector('style').textContent")
+
+
+def test_headings_are_text_on_paper_so_that_every_page_repeats_them(browser: Chromium, folder: Path) -> None:
+    """Chromium leaves out buttons where it repeats the head of a table on the next sheet."""
+    browser.open(folder / "report.html")
+    browser.call("Emulation.setEmulatedMedia", {"media": "print"})
+    shown = browser.value("Array.from(document.querySelectorAll('th button')).map(b => getComputedStyle(b).display)")
+    browser.call("Emulation.setEmulatedMedia", {"media": ""})
+    assert shown
+    assert set(shown) == {"contents"}
 
 
 @pytest.mark.parametrize(("chosen", "width"), [("section:not(.wide) table", 680), ("section.wide table", 1009)])

@@ -52,8 +52,10 @@ def test_one_strip_a_meter_with_calibrations_events_and_findings(invented: Audit
     drawn = draw("residuals_time", invented)
     assert [axes.get_title(loc="left").split("   ")[0] for axes in drawn.axes] == sorted(METERS)
     accused = drawn.axes[sorted(METERS).index("pH-2")]
-    course = [line for line in accused.lines if len(line.get_xdata()) == len(invented.findings[0].readings)]
-    assert any(np.allclose(line.get_ydata(), 0.14) for line in course)
+    after, before = [line.get_ydata() for line in accused.lines if line.get_linewidth() == 1.3]  # the course
+    assert np.ptp(after) == np.ptp(before) == 0.0
+    assert float(after[0] - before[0]) == pytest.approx(0.14)  # the invented step, from where the meter stood
+    assert abs(float(before[0])) < 0.02
     assert any("replaced <b>" in text.get_text() for text in accused.texts)
     labels = [text.get_text() for text in drawn.legends[0].get_texts()]
     assert {"calibration", "logged event", "course a finding gives"} <= set(labels)

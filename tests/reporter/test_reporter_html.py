@@ -5,14 +5,16 @@ from __future__ import annotations
 import base64
 import hashlib
 import re
+from dataclasses import replace
 from html.parser import HTMLParser
 from itertools import pairwise
 from pathlib import Path
 
+import numpy as np
 import pytest
 from invented_audit import HOSTILE_LOT, build
 
-from reconcile.records.results import Audit
+from reconcile.records.results import Audit, Finding
 from reconcile.records.settings import Settings
 from reconcile.reporter.cautions import CAUTIONS, NO_HAZARD_WORD
 from reconcile.reporter.contents import contents
@@ -151,7 +153,7 @@ def test_what_a_reviewer_looks_for_is_there(page: Page) -> None:
         "What was checked", "What stands out", "What to read next", "What could not be checked", "How complete",
         "Prepared by, date", "Reviewed by, date", "Reviewer’s conclusion", "Reference", "SHA-256 " + "a" * 64,
         "toxic; gives off hydrogen azide with acid", NO_HAZARD_WORD, "invented source <i>", "both halves of the buffer",
-        "Read phosphate 6.86 on meter pH-2", "sodium formate in the bottle", "Headings not read",
+        "Read phosphate 6.86 on meter pH-2", "acts as sodium formate", "Headings not read",
     ):  # fmt: skip
         assert words in page.text, words
     for caution in CAUTIONS:
@@ -167,6 +169,24 @@ def test_settings_that_differ_are_marked_and_named() -> None:
     page = Page(contents(audit, lambda what, share: None)["report.html"].decode())
     assert "audit.alarm_rate = 0.01" in page.text
     assert "audit.alarm_rate 0.01 - differs" in page.text
+
+
+def test_wrong_hand_calculations_take_one_line_each_and_no_picture() -> None:
+    audit = build()
+    wrong = Finding(
+        "record_value", "B-04", "batch", 0.21, "pH", (0.18, 0.24), 90.0, 1e-9, np.array([7]),
+        "The record's own calculated pH of batch B-04, 5.12, is off by +0.21 from the full balance, 4.91. "
+        "The square root of Ka C gives 5.12.", "F3", next_check="None: the calculation is to be checked.",
+        would_explain={"shortcut": "square root of Ka C"}, shift=np.zeros(1),
+    )  # fmt: skip
+    files = contents(replace(audit, findings=(*audit.findings, wrong)), lambda what, share: None)
+    page = Page(files["report.html"].decode())
+    assert page.text.count("The square root of Ka C gives 5.12.") == 1
+    assert "1 calculated pH in the record is off" in page.text
+    assert "plots/finding_F2.png" in files
+    assert "plots/finding_F3.png" not in files
+    assert len(page.all("article")) == 2
+    assert any(a.get("id") == "F3" for a in page.all("tr"))
 
 
 def test_no_finding_says_that_it_is_no_release() -> None:

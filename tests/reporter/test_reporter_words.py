@@ -7,9 +7,10 @@ import math
 
 import pytest
 
-from reconcile.records.results import Audit
+from reconcile.records.results import COULD_ALSO_BE, Audit
+from reconcile.records.rounding import chance_words
 from reconcile.reporter import words
-from reconcile.reporter.gist import gist
+from reconcile.reporter.gist import gist, silence_in_numbers
 from reconcile.reporter.text import caution_lines, finding_lines, gist_lines, hazard_lines
 
 
@@ -45,13 +46,52 @@ def test_signs_are_true_minus_signs() -> None:
 def test_size_has_the_decimals_its_interval_deserves(invented: Audit) -> None:
     step, strength = invented.findings
     assert words.size_words(step) == "+0.140 pH (95 % interval +0.120 to +0.160)"
-    assert words.size_words(strength) == "a factor of 0.780 (95 % interval 0.740 to 0.820)"
+    assert words.size_words(strength) == "0.780 times as stated (95 % interval 0.740 to 0.820)"
     drift = dataclasses.replace(step, estimate=0.00721, unit="pH/day", interval95=(0.00684, 0.00761))
     assert words.size_words(drift) == "+0.00721 pH/day (95 % interval +0.00684 to +0.00761)"
 
 
 def test_another_substance_is_told_in_words(invented: Audit) -> None:
-    assert words.size_words(invented.findings[1].rivals[0]) == "sodium formate in the bottle"
+    assert words.size_words(invented.findings[1].rivals[0]) == "acts as sodium formate"
+
+
+@pytest.mark.parametrize(
+    ("p", "text"),
+    [
+        (0.0, "less than 1 in 10,000"),
+        (1.7e-17, "less than 1 in 10,000"),
+        (9.9e-5, "less than 1 in 10,000"),
+        (0.00123, "about 1 in 810"),  # 1 / 0.00123 = 813
+        (0.013, "about 1 %"),
+        (0.435, "about 44 %"),
+        (math.nan, "not stated"),
+    ],
+)
+def test_chances_are_told_as_people_read_them(p: float, text: str) -> None:
+    assert chance_words(p) == text
+
+
+def test_a_section_says_nothing_twice(invented: Audit) -> None:
+    step = dataclasses.replace(
+        invented.findings[0],
+        text="Meter pH-2 reads 0.140 pH higher than before (95 % interval 0.120 to 0.160) from 2026-03-05. The chance "
+        "is less than 1 in 10,000. " + COULD_ALSO_BE + "drift of meter pH-2.",
+    )
+    assert "drift" not in words.lead(step)
+    assert words.lead(step).endswith("1 in 10,000.")
+    assert [name for name, _ in words.unsaid(step)] == ["Log-likelihood gain"]
+    terse = dataclasses.replace(step, text="Meter pH-2.", also=("probe E1",))
+    assert [name for name, _ in words.unsaid(terse)] == [
+        "How large", "When", "The same for pH", "Family-wise p", "Log-likelihood gain",
+    ]  # fmt: skip
+
+
+def test_silence_is_told_in_numbers(invented: Audit) -> None:
+    text = silence_in_numbers(invented)
+    # the invented audit states 0.021 and 0.019 pH, and a factor of 1.08, each at a power of 0.9
+    assert "90 of 100" in text
+    assert "a meter offset of 0.019 to 0.021 pH (2 meters)" in text
+    assert "a strength 8.0 % off (1 lot)" in text
 
 
 def test_the_gist_has_five_lines_in_the_order_of_a_reviewers_questions(invented: Audit) -> None:

@@ -8,7 +8,7 @@ from matplotlib.lines import Line2D
 
 from reconcile.records.results import Audit
 from reconcile.reporter.figures.marks import legend_above
-from reconcile.reporter.figures.style import BLUE, OCHRE, WIDTH, empty, figure, label
+from reconcile.reporter.figures.style import BLUE, GREY, OCHRE, WIDTH, empty, figure, label
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.words import half_up, signed
 
@@ -36,12 +36,14 @@ def meter_lot(audit: Audit, lookups: Lookups) -> Figure:
         mean = total / count
     most = max(float(np.nanmax(np.abs(mean))), 0.02)
     written = len(columns) <= WITH_FIGURES
-    tall = 0.36 if written else min(max(WIDTH * 0.84 / len(columns), 0.17), 0.3)
+    tall = 0.36 if written else min(max(WIDTH * 0.84 / len(columns), 0.2), 0.32)
     drawn = figure(WIDTH, (0.75 if written else 1.5) + tall * len(rows))
     axes = drawn.subplots()
     i, j = np.nonzero(count)
     value = mean[i, j]
-    side = 0.8 * tall * 72.0 * np.sqrt(np.minimum(np.abs(value) / most, 1.0))  # points; the area follows the mean
+    side = (
+        (0.8 if written else 0.62) * tall * 72.0 * np.sqrt(np.minimum(np.abs(value) / most, 1.0))
+    )  # points; the area follows the mean
     above = value > 0
     start = 0.7 * tall * len(columns) / (WIDTH * 0.88) - 0.5 if written else 0.0
     for chosen, face, edge in ((above, BLUE, BLUE), (~above, "white", OCHRE)):
@@ -66,6 +68,12 @@ def meter_lot(audit: Audit, lookups: Lookups) -> Figure:
                 fontsize=6.2,
                 linespacing=1.25,
             )
+    else:
+        for row, column in zip(i.tolist(), j.tolist(), strict=True):
+            axes.annotate(
+                f"{int(count[row, column]):,}", (column + 0.46, row + 0.46), ha="right", va="bottom",
+                fontsize=4.6, color=GREY, zorder=4,
+            )  # fmt: skip
     axes.set_xticks(
         range(len(columns)),
         [label(lookups.lot_names[c], 12 if written else 18) for c in columns],
@@ -92,6 +100,7 @@ def meter_lot(audit: Audit, lookups: Lookups) -> Figure:
             Line2D([], [], linestyle="none", marker="s", color=BLUE, markersize=5, label="mean above prediction"),
             Line2D([], [], linestyle="none", marker="s", markerfacecolor="white", color=OCHRE, markersize=5,
                    label=f"below; area is size, largest {scale} pH"),
+            *([] if written else [Line2D([], [], linestyle="none", label="small figure: number of readings")]),
         ],
     )  # fmt: skip
     return drawn

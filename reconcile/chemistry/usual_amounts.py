@@ -13,7 +13,7 @@ SAME_AMOUNT, SAME_PH = 0.05, 0.1
 """Like batches: every written amount within 5 % of the other's, adjusted to within 0.1 pH (no source)."""
 LEAST_LIKE = 3
 FAR = 3.0
-"""An amount is odd when it lies over three times the scatter of the like ones, and over three times u, from them."""
+"""An amount is odd when it lies over three times the scatter of the like ones, and of the adjusting reading, off."""
 Key = tuple[object, ...]
 
 
@@ -24,8 +24,8 @@ def usual_amounts(
 
     Notes
     -----
-    The scatter is 1.483 times the median absolute deviation (ISO 13528:2022, C.2.2), never under the median u of the
-    like amounts. From three like batches on.
+    The scatter is 1.483 times the median absolute deviation (ISO 13528:2022, C.2.2), never under what
+    the uncertainty of the adjusting reading makes of an amount. From three like batches on.
     """
     k = len(solved)
     usual, low, high = (np.full(k, np.nan) for _ in range(3))
@@ -45,7 +45,8 @@ def usual_amounts(
             values = solved.amount[others]
             usual[j], low[j], high[j] = float(np.median(values)), float(values.min()), float(values.max())
             scatter = 1.483 * float(np.median(np.abs(values - usual[j])))
-            scatter = max(scatter, float(np.median(solved.u[others])), float(solved.u[j]))
+            u = np.abs(solved.amount * solved.weight) * solved.u_ph  # what like batches do not share
+            scatter = max(scatter, float(np.median(u[others])), float(u[j]))
             odd[j] = abs(solved.amount[j] - usual[j]) > FAR * scatter
     return usual, low, high, like, odd
 

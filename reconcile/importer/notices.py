@@ -18,14 +18,17 @@ _LEAST = 10
 
 
 def notices(
-    columns: Mapping[str, AnyArray], place_of: Callable[[int], Place], lots: Mapping[str, Place]
+    columns: Mapping[str, AnyArray], place_of: Callable[..., Place], lots: Mapping[str, Place]
 ) -> list[Problem]:
-    """Notices about the readings; none of them leaves a row out."""
+    """Notices about the readings; none of them leaves a row out.
+
+    place_of : from a row, and a column where it is not the pH, to the cell
+    """
     found = doubles(columns, place_of)
     for name in ("meter", "probe", "batch"):
         values = columns[name].tolist()
         where = dict(zip(reversed(values), range(len(values) - 1, -1, -1), strict=True))  # the first of each stays
-        found += alike(list(where), name, lambda value, where=where: place_of(where[value]))  # type: ignore[misc]
+        found += alike(list(where), name, lambda value, where=where, name=name: place_of(where[value], name))  # type: ignore[misc]
     found += alike(list(lots), "lot", lots.__getitem__)
     moments = columns["read_at"]
     dated = np.flatnonzero(~np.isnat(moments))
@@ -35,7 +38,7 @@ def notices(
         far = dated[np.abs(days - middle) > _FAR]
         if len(far):
             words = (("count", str(len(far))), ("name", "Read at"))
-            found.append(Problem("date-far-off", place_of(int(far[0])), str(moments[far[0]]), words))
+            found.append(Problem("date-far-off", place_of(int(far[0]), "read_at"), str(moments[far[0]]), words))
     return found
 
 

@@ -160,9 +160,10 @@ def _records(
         aside.append(set_aside(problem[i], place, columns, i, bool(summary[i]), composer, recipes, int(group[i])))
     columns["resolution"] = with_grid(columns)
 
-    def place_of(i: int) -> Place:
+    def place_of(i: int, name: str = "ph") -> Place:
         sheet = book.sources[int(source[i])]
-        return Place(sheet.file, sheet.sheet, int(number[i]), ph_column[i])
+        column = ph_column[i] if name == "ph" or name not in sheet.columns else sheet.columns[name][0]
+        return Place(sheet.file, sheet.sheet, int(number[i]), column)
 
     book.notes.extend(notices(columns, place_of, _lot_places(composer)))
     book.notes.extend(of_temperatures(columns, used, place_of, float(settings["prediction.room_temperature_c"])))

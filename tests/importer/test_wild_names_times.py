@@ -11,6 +11,8 @@ import pytest
 from builders import workbook
 from wild_case import RECIPES, aside, book, change_part, csv_log, noted, read, reading, readings, refusal
 
+from reconcile.importer.read import read_books
+
 ZEROS = ("Batch", "Meter", "pH", "Acetic acid (mM)", "Acetic acid lot")
 
 
@@ -56,6 +58,15 @@ def test_45_names_that_look_the_same_are_noted_and_kept_apart(tmp_path: Path) ->
     assert sorted(records.lots.name) == sorted(lots)
     alike = [n for n in records.notes if n.code == "names-alike"]
     assert len(alike) == 3
+
+
+def test_45_meters_named_by_their_columns_are_compared_too(tmp_path: Path) -> None:
+    path = workbook(
+        tmp_path / "r.xlsx", {"Readings": [("Batch", "M-O1", "M-01"), ("B1", 4.7, 4.7)], "Recipes": RECIPES}
+    )
+    column_map = {"readings": {name: {"field": "ph", "meter": name} for name in ("M-O1", "M-01")}}
+    records = read_books([path], column_map=column_map)
+    assert ("Readings", "B2", "names-alike") in noted(records)
 
 
 def test_45_a_trailing_space_makes_no_second_meter(tmp_path: Path) -> None:
@@ -113,7 +124,7 @@ def test_48_dates_counted_from_1904_are_read_so_and_noted(tmp_path: Path) -> Non
 
 def test_48_a_date_far_from_the_rest_is_noted(tmp_path: Path) -> None:
     rows = [reading(k) for k in range(5)] + [reading(0, at=datetime(2022, 3, 1))]
-    assert ("Readings", "E7", "date-far-off") in noted(read(book(tmp_path, rows)))
+    assert ("Readings", "A7", "date-far-off") in noted(read(book(tmp_path, rows)))
 
 
 def test_49_serial_numbers_in_a_date_column(tmp_path: Path) -> None:

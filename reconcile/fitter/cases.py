@@ -12,6 +12,7 @@ import numpy as np
 from reconcile.chemistry.acids import AcidTable
 from reconcile.chemistry.activity import ActivityModel
 from reconcile.chemistry.composition import Contents, FormTable, entries_at
+from reconcile.chemistry.pair_table import Pair
 from reconcile.records.arrays import AnyArray, FloatArray, IntArray
 
 
@@ -115,6 +116,12 @@ class Medium:
     acids: AcidTable
     studied: int
     model: ActivityModel
+
+    @cached_property
+    def own_pairs(self) -> tuple[Pair, ...]:
+        """Ion pairs and condensed species of the studied acid."""
+        name = self.acids.names[self.studied]
+        return tuple(pair for pair in self.acids.pairs if any(acid == name for acid, _ in pair.states))
 
     @cached_property
     def bringing(self) -> IntArray:

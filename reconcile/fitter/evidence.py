@@ -19,6 +19,9 @@ from reconcile.records.arrays import BoolArray, FloatArray, IntArray, TextArray
 from reconcile.records.book import BatchRecords
 from reconcile.records.settings import Settings
 
+LEAST_NOISE = 1e-4
+"""Standard deviation below which no reading is taken to be [pH], whatever the settings: no pH meter reaches it."""
+
 
 @dataclass(frozen=True)
 class Evidence:
@@ -138,7 +141,7 @@ def evidence(
         np.asarray(table["ph"], float)[index],
         temperature,
         record.u_temperature[index],
-        np.maximum(resolution, settings["uncertainty.noise_floor"]),
+        np.maximum(resolution, max(settings["uncertainty.noise_floor"], LEAST_NOISE)),
         np.where(averaged >= 1.0, averaged, 1.0),
         np.where(stated > 0.0, stated, np.nan),
         np.asarray(table["series"], object)[index],

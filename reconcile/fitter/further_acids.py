@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import fields
+from dataclasses import fields, is_dataclass, replace
 from typing import Any
 
 import numpy as np
 
 from reconcile.chemistry.acids import AcidTable, usual_size
+from reconcile.chemistry.pka_law import laws
 from reconcile.records.arrays import FloatArray
 
 
@@ -61,7 +62,20 @@ def with_further(
         else:  # of every protonation state
             state = value[own] if len(own) else sizes if field.name == "size" else np.zeros(s + 1)
             made[field.name] = np.concatenate([value, np.tile(state, m)])
-    return AcidTable(**made)
+    table = AcidTable(**made)
+    p, q_, r = (columns.get(name, np.zeros((m, s))).ravel() for name in ("p", "q", "r"))
+    further = laws(p, q_, r, np.zeros(m * s), (), use_equations=False)
+    vars(table)["laws"] = _joined(base.laws, further)  # what the table would find itself, but for the base only once
+    return table
+
+
+def _joined(first: Any, second: Any) -> Any:
+    """Two of the same dataclass with their arrays, and those inside what they hold, one behind the other."""
+    parts = {}
+    for field in fields(first):
+        one, other = getattr(first, field.name), getattr(second, field.name)
+        parts[field.name] = _joined(one, other) if is_dataclass(one) else np.concatenate([one, other])
+    return replace(first, **parts)
 
 
 def only(base: AcidTable, names: Iterable[str]) -> AcidTable:

@@ -131,19 +131,20 @@ def table_with(medium: Medium, shape: Shape, pka: FloatArray, dh: FloatArray) ->
     }
     names = tuple(f"case {k}" for k in range(count))
     table = with_further(base, names, shape.charge, columns, like=medium.studied)
-    return replace(table, pairs=base.pairs + _pairs_of(medium, names)), len(base.names) + np.arange(count)
+    if medium.own_pairs:
+        table = replace(table, pairs=base.pairs + _pairs_of(medium, names))
+    return table, len(base.names) + np.arange(count)
 
 
 def _pairs_of(medium: Medium, names: tuple[str, ...]) -> tuple[Pair, ...]:
     """Ion pairs and condensed species of the studied acid, again for every acid that stands in for it."""
     studied = medium.acids.names[medium.studied]
-    own = [pair for pair in medium.acids.pairs if any(acid == studied for acid, _ in pair.states)]
 
     def renamed(pair: Pair, name: str) -> Pair:
         states = {(name if acid == studied else acid, lost): n for (acid, lost), n in pair.states.items()}
         return replace(pair, states=states)
 
-    return tuple(renamed(pair, name) for name in names for pair in own)
+    return tuple(renamed(pair, name) for name in names for pair in medium.own_pairs)
 
 
 def predict(medium: Medium, cases: Cases, shape: Shape, theta: FloatArray) -> tuple[FloatArray, FloatArray]:
@@ -161,8 +162,9 @@ def predict(medium: Medium, cases: Cases, shape: Shape, theta: FloatArray) -> tu
     jacobian : ndarray (N, k)
     """
     ph, jacobian = np.empty(cases.readings), np.empty((cases.readings, shape.size))
-    for begin in range(0, len(cases), TOGETHER):
-        some = np.arange(begin, min(begin + TOGETHER, len(cases)))
+    together = 1 if medium.own_pairs else TOGETHER  # every pair is laid out for every row of a call
+    for begin in range(0, len(cases), together):
+        some = np.arange(begin, min(begin + together, len(cases)))
         part = cases if len(some) == len(cases) else cases.take(some)
         found = found_at(medium, part, shape, theta[some])
         rows = slice(int(cases.first[begin]), int(cases.first[some[-1] + 1]))

@@ -83,6 +83,8 @@ def _best(
 def _tried(medium: Medium, cases: Cases, shape: Shape, data: Data, trials: FloatArray, held: FloatArray) -> FloatArray:
     """Weighted sum of squares of every case at every trial, (P, g); the cases share the acids of the trials."""
     count, tries = len(cases), len(trials)
+    if medium.own_pairs and tries > 1:  # every pair is laid out for every row of a call
+        return np.concatenate([_tried(medium, cases, shape, data, trial[None], held) for trial in trials], axis=1)
     acids, stands_in = table_with(medium, shape, trials, np.tile(held[shape.dh], (tries, 1)))
     many = cases.take(np.repeat(np.arange(count), tries))
     own = data.take(_repeated(cases, tries))

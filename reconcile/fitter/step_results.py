@@ -22,6 +22,8 @@ from reconcile.records.pka_results import Nuisance, PkaStep, Share
 
 LIMIT_U = 0.10
 LIMIT_CORRELATION = 0.99
+CLOSE = 2.0
+"""Distance of two constants below which their ionizations overlap."""
 T25 = 298.15
 AT_25 = 0.05
 """Kelvin from 25 °C within which a value is one at 25 °C."""
@@ -207,7 +209,9 @@ def _relation(judged: Judged, step: int, bounds: tuple[float | None, float | Non
                 if u_mean <= min(LIMIT_U, 0.5 * u):
                     mean = float(along @ fitted.theta[0])
                     first, second = (constant_name(j + 1, shape.steps) for j in sorted((step, other)))
-                    return say("with-step", name=first, other=second, value=figure(mean), u=uncertainty(u_mean))
+                    apart = abs(float(fitted.theta[0, step] - fitted.theta[0, other]))
+                    key = "with-step" if apart < CLOSE else "with-mean"
+                    return say(key, name=first, other=second, value=figure(mean), u=uncertainty(u_mean))
     if low is not None and high is not None:
         return say(
             "wide", name=name, limit=f"{LIMIT_U:.2f}", low=figure(low, 2), high=figure(high, 2), u=uncertainty(u)

@@ -25,6 +25,7 @@ SENTENCES: Mapping[str, str] = {
     "(u {u}).",
     "rests-on-strength": "{name} rests on the stated strength, which these readings cannot tell from it: 1 % of error "
     "in the strength moves {name} by {move}.",
+    "with-mean": "{name} and {other} show in these readings through their mean alone, which is known: {value} (u {u}).",
     "ka-times-c": "These readings fix only Ka times C, the product of ionization constant and concentration: {name} "
     "rests on the stated strength, and 1 % of error in it moves {name} by {move}.",
     "strength-found": "Strength factor (actual over stated) {value}, u {u}.",

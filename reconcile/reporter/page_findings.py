@@ -255,7 +255,7 @@ def overview(lookups: Lookups) -> View | None:
 
 
 def calculated(lookups: Lookups) -> View | None:
-    """The record's own calculated pH where it is off: a line a batch; the rest is for `reconcile predict --trail`."""
+    """The record's own calculated pH where it is off: a line a batch."""
     if not lookups.calculations:
         return None
     rows = [

@@ -33,11 +33,11 @@ class Components:
 
 
 def noise_of(layout: Layout, components: Components) -> FloatArray:
-    """Reading variance of each row [pH^2]."""
+    """Reading variance of each row [pH^2]; a mean of n readings has an nth of it, and nothing else less."""
     ratio = np.ones(len(layout))
     known = layout.meter >= 0
     ratio[known] = components.meter_ratio[layout.meter[known]]
-    return np.asarray(components.noise * ratio, float)
+    return np.asarray(components.noise * ratio / layout.averaged, float)
 
 
 @dataclass(frozen=True)

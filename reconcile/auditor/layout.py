@@ -57,6 +57,7 @@ class Layout:
     first_of_batch : IntArray   where each batch begins
     lots_used : IntArray (k,), lots met; lot_columns : sparse (n, k), dpH/d ln strength of each
     start : time of the first reading
+    averaged : FloatArray (n,)  how many readings each is the mean of
     anchor : IntArray (n,)      row of the reading that the solution was adjusted by, its own for that reading; -1
     """
 
@@ -88,6 +89,7 @@ class Layout:
     lot_columns: sparse.csc_array
     start: np.datetime64
     anchor: IntArray
+    averaged: FloatArray
 
     def __len__(self) -> int:
         return len(self.r)
@@ -248,6 +250,7 @@ def build_layout(records: BatchRecords, prediction: Prediction, settings: Settin
         preparation=np.sqrt(square[rows]),
         first_of_batch=np.flatnonzero(new),
         anchor=anchor,
+        averaged=np.maximum(np.nan_to_num(readings["averaged"][rows], nan=1.0), 1.0),
         lots_used=lots_used,
         lot_columns=lot_columns,
         start=start,

@@ -157,7 +157,7 @@ def noise(seen: MeterReadings) -> tuple[MeterNoise, ...]:
             reason = "its readings leave too little to tell noise from batch and session"
             found.append(MeterNoise(name, len(rows), float("nan"), nothing, df, reason))
             continue
-        variance = float(model.noise[rows[0]] * (share[rows] * z2[rows]).sum() / df)
+        variance = float(model.noise[rows[0]] * layout.averaged[rows[0]] * (share[rows] * z2[rows]).sum() / df)
         low, high = (variance * df / float(stats.chi2.isf(tail, df)) for tail in (0.025, 0.975))
         found.append(MeterNoise(name, len(rows), variance**0.5, (low**0.5, high**0.5), df))
     return tuple(found)

@@ -6,8 +6,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from reconcile.chemistry.notices import Notice, notices
 from reconcile.chemistry.predict import predict_ph
-from reconcile.chemistry.water import HIGH_C, LOW_C
+from reconcile.chemistry.water import DENSITY_20C, HIGH_C, LOW_C
 from reconcile.records.parts import Composition
 from reconcile.records.places import Place
 from reconcile.records.problems import InputProblems, Problem
@@ -22,11 +23,13 @@ class PredictedParts:
     composition : the parts once made up
     prediction : Prediction of one row
     settings : with which it was made
+    notices : what it cannot see of the solution
     """
 
     composition: Composition
     prediction: Prediction
     settings: Settings
+    notices: tuple[Notice, ...] = ()
 
 
 def predict_composition(composition: Composition, at: float, settings: Settings) -> PredictedParts:
@@ -44,4 +47,7 @@ def predict_composition(composition: Composition, at: float, settings: Settings)
         settings=settings,
         u_amounts=np.full((1, len(composition.parts)), (strength**2 + taking**2) ** 0.5),
     )
-    return PredictedParts(composition, prediction, settings)
+    scale = 1.0 if composition.unit == "mol/kg" else 1.0 / DENSITY_20C
+    forms = [part.form for part in composition.parts]
+    said = notices(forms, [amount * scale for amount in composition.amounts], prediction, 0, settings)
+    return PredictedParts(composition, prediction, settings, said)

@@ -68,6 +68,10 @@ def show(predicted: PredictedParts) -> None:
     model = predicted.settings["prediction.activity_model"]
     line(f"at {float(prediction.temperature_c[0]):g} °C; activity model {model}")
     line(f"{status_words(str(prediction.status[0]))}")
+    if predicted.notices:
+        heading("Notices")
+        for notice in predicted.notices:
+            line(f"  {notice.text}")
     heading(f"Made up to {composition.total}" if composition.total else "Parts")
     columns(
         [
@@ -118,6 +122,7 @@ def document(predicted: PredictedParts) -> dict[str, Any]:
         "buffer_capacity": {"value": prediction.buffer_capacity[0], "unit": "mol/L per pH"},
         "degree_of_ionization": degrees(predicted),
         "uncertainty_shares_percent": shares(predicted),
+        "notices": [{"code": notice.code, "text": notice.text} for notice in predicted.notices],
         "hazards": [{"substance": form.name, "words": hazard_words(form)} for form in forms(predicted)],
         "notes": [{"substance": form.name, "note": form.note} for form in forms(predicted) if form.note],
         "cautions": list(PREDICTION_CAUTIONS),

@@ -1,0 +1,89 @@
+"""What a prediction says that it cannot see."""
+
+from __future__ import annotations
+
+import pytest
+
+from reconcile.chemistry.notices import SENTENCES, notices, notices_of_record
+from reconcile.chemistry.predict import forms_named, predict_ph, predict_records
+from reconcile.pipeline import predict_parts
+from reconcile.records.settings import Settings
+from reconcile.records.substances import catalogue
+from tests.simulated.simulator import simulate
+
+RECIPES = {
+    "concentrated": {"sodium chloride": 1.0, "Tris": 0.05, "HCl": 0.03},
+    "mixed-solvent": {"ethanol": 1.1, "acetic acid": 0.05, "sodium acetate": 0.05},
+    "metal-complexes": {"calcium chloride dihydrate": 0.002, "trisodium citrate": 0.02, "citric acid": 0.01},
+    "polyol-borate": {"mannitol": 0.1, "boric acid": 0.05, "NaOH": 0.02},
+    "saturated": {"benzoic acid": 0.1},
+    "carbon-dioxide-uptake": {"NaOH": 1e-4},
+    "carbon-dioxide-loss": {"sodium bicarbonate": 0.05},
+    "electrode-glass": {"HF": 0.1, "KF": 0.05},
+}
+QUIET = {
+    "acetate": {"acetic acid": 0.05, "sodium acetate": 0.05},
+    "a little alcohol": {"ethanol": 0.1, "acetic acid": 0.05, "sodium acetate": 0.05},
+    "traces of calcium": {"calcium chloride dihydrate": 1e-5, "trisodium citrate": 0.02, "citric acid": 0.02},
+    "calcium without ligand": {"calcium chloride dihydrate": 0.02, "Tris": 0.05, "HCl": 0.03},
+    "benzoate": {"benzoic acid": 0.1, "NaOH": 0.095},
+    "lime as in the standard": {"Ca(OH)2": 0.0200},
+}
+
+
+def codes(recipe: dict[str, float], settings: Settings | None = None) -> list[str]:
+    settings = settings or Settings()
+    forms = forms_named(list(recipe))
+    found = predict_ph(forms, list(recipe.values()), unit="mol/kg", settings=settings)
+    return [n.code for n in notices(forms, list(recipe.values()), found, 0, settings)]
+
+
+def test_every_code_has_a_recipe_here() -> None:
+    assert set(RECIPES) == set(SENTENCES)
+
+
+@pytest.mark.parametrize("code", sorted(RECIPES))
+def test_each_notice_is_given_where_it_is_due(code: str) -> None:
+    assert code in codes(RECIPES[code])
+
+
+@pytest.mark.parametrize("name", sorted(QUIET))
+def test_no_notice_where_none_is_due(name: str) -> None:
+    assert codes(QUIET[name]) == []
+
+
+def test_open_to_air_there_is_nothing_to_say_about_carbon_dioxide() -> None:
+    open_air = Settings({"prediction.open_to_air": True})
+    for code in ("carbon-dioxide-uptake", "carbon-dioxide-loss"):
+        assert code not in codes(RECIPES[code], open_air)
+
+
+def test_the_limit_of_concentration_is_the_settings() -> None:
+    assert codes(RECIPES["concentrated"], Settings({"status.outside_model_ionic_strength": 2.0})) == []
+
+
+def test_predicted_parts_carry_their_notices() -> None:
+    said = predict_parts(["0.05 M borax", "0.3 M mannitol"]).notices
+    assert [n.code for n in said] == ["polyol-borate"]
+    assert said[0].text.startswith("Mannitol with borate")
+
+
+def test_substances_named_in_the_tables_exist() -> None:
+    from reconcile.chemistry import notices as module
+    from reconcile.chemistry.acids import acid_table
+
+    known = catalogue().by_name
+    # fructose and xylitol may come with a site's own substances
+    assert {name for name in module.POLYOLS if name not in known} <= {"fructose", "xylitol"}
+    assert all(name in known for name in module.SOLVENTS)
+    assert all(s.substance in (acid_table().index if s.of_acid else known) for s in module.solubilities())
+    assert set(module.LIGANDS) - set(acid_table().names) <= {"EGTA", "NTA"}
+
+
+def test_notices_of_a_record_name_its_solutions() -> None:
+    simulated = simulate(1)
+    prediction = predict_records(simulated.records, simulated.settings)
+    assert notices_of_record(simulated.records, prediction, simulated.settings) == {}
+    strict = Settings({**simulated.settings.changed, "status.outside_model_ionic_strength": 0.05})
+    said = notices_of_record(simulated.records, prediction, strict)
+    assert {n.code for some in said.values() for n in some} == {"concentrated"}

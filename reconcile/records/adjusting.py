@@ -32,7 +32,7 @@ class OpenAmounts:
     substance, lot : TextArray    the titrant as written and its lot, "" where none is named
     unit : TextArray       unit of the amount: mL, g, mol/L, mol/kg; "mol/mol" for the counter-ion of a stock
     step : TextArray       step of the recipe that the titrant was added in
-    choice : IntArray      open amounts of one number are alternatives (an acid or a base as needed): one of them is used
+    choice : IntArray      open amounts of one number are alternatives (an acid or a base as needed): one is used
     stated_ph : FloatArray [pH] that a stock is stated to have, or "to pH 7.4"; NaN when unstated
     stated_at : FloatArray [°C] at which it is stated; NaN when unstated
     place : tuple of Place cell that leaves the amount open
@@ -72,7 +72,7 @@ class OpenAmounts:
 class Solved:
     """What became of the open amounts (k,), and what each adjusted reading (n,) was adjusted by.
 
-    amount : FloatArray (k,)    in the unit of the open amount; NaN where no pH settles it; 0 for an alternative not used
+    amount : FloatArray (k,)    in the unit of the open amount; NaN where no pH settles it; 0 for one not used
     u : FloatArray (k,)         its standard uncertainty, reading and prediction together
     ph, u_ph : FloatArray (k,)  the pH that settled it and its standard uncertainty [pH]
     temperature_c : FloatArray (k,)

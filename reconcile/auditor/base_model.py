@@ -130,10 +130,12 @@ class BaseModel:
 
     def covariance(self, dense: FloatArray, rows: IntArray) -> FloatArray:
         """X' K X for columns that are zero outside some rows, (k, k); dense (rows, k)."""
-        shared = np.asarray(self.grouped.across[rows].T @ dense)
+        groups, group = np.unique(self.grouped.group[rows], return_inverse=True)
+        block = sparse.csr_array((self.grouped.scaled[rows], (group, np.arange(len(rows)))), (len(groups), len(rows)))
+        shared = np.asarray(block @ dense)
         found = dense.T @ (dense / self.grouped.d[rows][:, None]) - shared.T @ shared
         if self.factor.size:
-            c = self.weighted[rows].T @ dense - self.shared.T @ shared
+            c = self.weighted[rows].T @ dense - self.shared[groups].T @ shared
             half = linalg.solve_triangular(self.factor, c, lower=True, check_finite=False)
             found = found - half.T @ half
         return np.asarray(found, float)

@@ -89,12 +89,15 @@ class LongModel(Model):
     def _low_rank(self, x: sparse.csc_array, steady: bool = False) -> FloatArray:
         if not self.core.size:
             return np.zeros(x.shape[1])
-        half = np.stack([self._product(x, i, steady) for i in range(len(self.core))], axis=1)
-        return np.asarray(np.einsum("ij,jk,ik->i", half, self.core, half), float)
+        if steady:
+            half = np.stack([self._product(x, i) for i in range(len(self.core))], axis=1)
+        else:
+            half = np.asarray(x.T @ self.u)
+        return np.asarray(((half @ self.core) * half).sum(axis=1), float)
 
-    def _product(self, x: sparse.csc_array, i: int, steady: bool) -> FloatArray:
-        """x' u of the i-th column of U; remembered where both are the same another time."""
-        if not steady or self.keys[i] is None:
+    def _product(self, x: sparse.csc_array, i: int) -> FloatArray:
+        """x' u of the i-th column of U for a steady x; remembered where u is the same another time."""
+        if self.keys[i] is None:
             return np.asarray(x.T @ self.u[:, i]).ravel()
         key = ("product", id(x), self.keys[i])
         if key not in self.base.remembered:
@@ -125,7 +128,7 @@ class LongModel(Model):
 
     def diagonal(self) -> FloatArray:
         """Diagonal of P as bounded from batches or sessions alone; meters and lots take up a few per cent of it."""
-        low = np.einsum("ij,jk,ik->i", self.u, self.core, self.u) if self.core.size else 0.0
+        low = ((self.u @ self.core) * self.u).sum(axis=1) if self.core.size else 0.0
         return np.asarray(np.maximum(self.base.grouped.diagonal() + low, 1e-12), float)
 
     def covariance(self, x: sparse.csc_array) -> FloatArray:

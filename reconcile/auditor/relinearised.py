@@ -11,6 +11,9 @@ from reconcile.auditor.layout import Layout, lot_sensitivities, matrix
 from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.results import Prediction
 
+LEAST_MOVED = 1e-3
+"""Uncertainty of a supposed truth that a long record takes beside its covariance [pH]."""
+
 
 def relinearised(layout: Layout, rows: IntArray, supposed: Prediction) -> Layout:
     """A layout in which some rows rest on another prediction than the recipe's; its residuals stay as they are.
@@ -73,7 +76,7 @@ def constants_moved(layout: Layout, rows: IntArray, supposed: Prediction) -> spa
     before = layout.z[rows][:, constants.first : constants.last].toarray()
     prior = layout.prior[constants.first : constants.last]
     moved = np.hstack([(known - before) * np.sqrt(prior), fresh * np.sqrt(variances)])
-    moved = moved[:, np.abs(moved).max(axis=0, initial=0.0) > 1e-4]
+    moved = moved[:, np.abs(moved).max(axis=0, initial=0.0) > LEAST_MOVED]
     entries = sparse.coo_array(moved)
     return sparse.csc_array((entries.data, (rows[entries.row], entries.col)), shape=(len(layout), moved.shape[1]))
 

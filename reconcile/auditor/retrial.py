@@ -88,6 +88,15 @@ class Retrial:
                 self._known[s] = (rows, prediction.ph - layout.ph[rows])
         return [self._known[s] for s in supposed]
 
+    def rows_of(self, supposed: Supposed) -> IntArray:
+        """Evidence rows that a supposed truth touches."""
+        return self._rows(supposed)
+
+    def shifts_at(self, supposed: Sequence[Supposed], rows: IntArray) -> FloatArray:
+        """How far the predictions of some evidence rows move under each supposed truth, (k, rows) [pH]; not kept."""
+        predictions = self.repredict([self._change(s, rows) for s in supposed])
+        return np.array([p.ph - self.layout.ph[rows] for p in predictions]).reshape(len(supposed), len(rows))
+
     def prediction(self, supposed: Supposed) -> tuple[IntArray, Prediction]:
         """The evidence rows a supposed truth touches, and their whole prediction under it; kept for few."""
         key = ("prediction", supposed)

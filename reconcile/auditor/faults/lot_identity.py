@@ -7,6 +7,7 @@ from scipy import sparse
 
 from reconcile.auditor.alternatives import Alternative, alternatives
 from reconcile.auditor.exact import points
+from reconcile.auditor.plausible import plausible
 from reconcile.auditor.proposals import Context, Proposal, Told
 from reconcile.auditor.retrial import Supposed
 from reconcile.records.arrays import FloatArray
@@ -32,6 +33,9 @@ def lots_with_room(context: Context) -> list[int]:
     for shape in context.kept("lot shapes", lambda: _shapes(x, layout.ph)):
         room.update(context.promising(shape, ROOM, steady=True).tolist())
     return sorted(room)
+
+
+SHAPES = ("strength", "everywhere", "sign", "distance from pH 7")
 
 
 def _shapes(x: sparse.csc_array, ph: FloatArray) -> list[sparse.csc_array]:
@@ -69,9 +73,11 @@ class LotIdentity:
         acids = known_acids(context)
         blocks = [self.of_lot(context, position, acids, odds) for position in lots_with_room(context)]
         meant = [m for told, _ in blocks for m in told]
-        if not meant:
+        looked_at = len(SHAPES) * layout.lot_columns.shape[1] if context.model.long else 0
+        if not meant and not looked_at:
             return None
-        x = sparse.csc_array(sparse.hstack([columns for _, columns in blocks]))
+        none = sparse.csc_array((len(layout), 0))
+        x = sparse.csc_array(sparse.hstack([none, *(columns for _, columns in blocks)]))
 
         def tell(k: int, a: float) -> Told:
             _, choice, factor, *_ = meant[k]
@@ -94,14 +100,15 @@ class LotIdentity:
             tell,
             supposed=lambda k: meant[k][-1],
             same=[f"{m[1].form.name} {m[2]:.3g}" for m in meant],
+            blocks=looked_at,
         )
 
     def of_lot(
         self, context: Context, position: int, acids: frozenset[str], odds: float
     ) -> tuple[list[Meant], sparse.csc_array]:
-        """What one lot may hold, and the effect of each; worked out once a record."""
+        """What one lot may hold, and the effect of each; worked out once a record (a long one: what is plausible)."""
         key = (self.name, position)
-        if key not in context.retrial.kept:
+        if key not in context.retrial.kept or context.model.long:
             records = context.layout.records
             lot = int(context.layout.lots_used[position])
             label = records.forms[int(records.lots.form[lot])]
@@ -109,7 +116,9 @@ class LotIdentity:
             choices = contents(context, lot, label, acids, odds)
             total = sum(choice.weight for choice, _ in choices)
             supposed = [Supposed(contributions, c.form.name, factor) for c, factor in choices]
-            kept, x = points(context, supposed)
+            tried = plausible(context, supposed)
+            kept, x = points(context, [supposed[i] for i in tried])
+            kept = [tried[i] for i in kept]
             meant = [(lot, *choices[i], float(np.log(choices[i][0].weight / total)), supposed[i]) for i in kept]
             context.retrial.kept[key] = (meant, x)
         found: tuple[list[Meant], sparse.csc_array] = context.retrial.kept[key]

@@ -212,6 +212,8 @@ def _of_scatter(judged: Judged, best: Outcome) -> Said:
     given = bool(best.task.scatter.known_in(best.task.cases)[0])
     if not given and not np.isfinite(fitted.freedom[0]):
         out.append(("no_scatter", say("no-scatter", noise=f"{fitted.sigma[0]:.2g}")))
+    if not bool(fitted.converged[0]):
+        out.append(("not_settled", say("not-settled")))
     if fitted.scale[0] > 1.0:
         out.append(("noise_larger", say("noise-larger", ratio=f"{fitted.scale[0]:.1f}")))
     if count > FEW and bent(judged.evidence, fitted):

@@ -9,6 +9,7 @@ from typing import Any
 
 import numpy as np
 
+from reconcile.chemistry.composition import CARBONIC
 from reconcile.fitter.account import account
 from reconcile.fitter.apparent import apparent_shift, neutralised
 from reconcile.fitter.candidates import candidates
@@ -94,6 +95,8 @@ def fit_pka(
 
 def _check(every: Evidence, studied: Studied, question: PkaQuestion) -> None:
     """Refuses what holds no answer."""
+    if studied.acid == CARBONIC and every.settings["prediction.open_to_air"]:
+        raise refusal("pka-open-air", question.acid)
     if not len(every):
         alike = () if studied.known else catalogue().look_up(question.acid).near
         near = f" (near it in the library: {', '.join(alike)})" if alike else ""
@@ -122,7 +125,7 @@ def _chosen(every: Evidence, studied: Studied, question: PkaQuestion) -> tuple[O
         tried[number] = outcome(used, studied, plan)
     aicc = compared(tried)
     number = min(tried)
-    for further, one in tried.items():
+    for further, one in list(tried.items())[1:]:
         needed = ALIKE if _tells_all(one) else DOUBTFUL
         if not np.isfinite(aicc[number]) or aicc[further] < aicc[number] - needed:
             number = further if np.isfinite(aicc[further]) else number

@@ -55,12 +55,16 @@ def structure(evidence: Evidence, studied: Studied, steps: int, free: tuple[str,
 def _worth_seeking(evidence: Evidence, shape: Shape, held: FloatArray, free: BoolArray) -> BoolArray:
     """Of a library acid, the steps that the readings would tell, one at least; the others keep the library's values.
 
-    Judged by the slopes at the library's constants: u of the step if it alone were sought.
+    Judged by the slopes at the library's constants: u of the step if it alone were sought. No more are sought than
+    there are readings for.
     """
     _, jacobian = predict(evidence.medium, evidence.cases, shape, held[None])
     slopes = np.nan_to_num(jacobian[:, shape.pka]) / np.maximum(evidence.floor, FIRST_SIGMA)[:, None]
     u = 1.0 / np.sqrt(np.maximum((slopes**2).sum(axis=0), 1e-300))
-    worth = (u <= WORTH) | (u == u.min())
+    each = 2 if free[shape.dh].any() else 1
+    most = max(1, (len(evidence) - int(free[shape.strength :].sum())) // each)
+    rank = np.argsort(np.argsort(u, kind="stable"), kind="stable")
+    worth = ((u <= WORTH) & (rank < most)) | (rank == 0)
     free = free.copy()
     free[shape.pka] &= worth
     free[shape.dh] &= worth

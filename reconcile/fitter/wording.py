@@ -46,6 +46,7 @@ SENTENCES: Mapping[str, str] = {
     "bent": "The residuals bend with pH beyond chance: a step too few, an impurity, carbon dioxide or an error of the "
     "electrode may be behind it, and the uncertainty does not cover that.",
     "series": "The series disagree beyond chance: {group} lies {apart} pH {side} the others.",
+    "not-settled": "The search for the best fit did not settle; the values are those of its last step.",
     "noise-larger": "The readings scatter {ratio} times as much as the noise stated for them; the uncertainty follows "
     "their scatter.",
     "dilute": "{count} at an ionic strength under {limit} mol/kg, where a glass electrode is slow and depends on flow.",

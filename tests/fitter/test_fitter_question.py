@@ -111,3 +111,10 @@ def test_readings_none_of_which_can_be_used_are_refused_with_the_reason(tmp_path
     with pytest.raises(InputProblems) as caught:
         reconcile.fit_pka(Made().solutions(Truth(), "acid K", rows).write(tmp_path), acid="acid K")
     assert "none can be used: 3 outside the range of the glass electrode" in str(caught.value)
+
+
+def test_carbonic_acid_of_solutions_open_to_air_has_no_known_total(tmp_path: Path) -> None:
+    book = Made().solutions(Truth("carbonic acid"), "sodium bicarbonate", [(0.05, 0.0)]).write(tmp_path)
+    with pytest.raises(InputProblems) as caught:
+        reconcile.fit_pka(book, acid="carbonic acid", settings={"prediction": {"open_to_air": True}})
+    assert "follows from the air and not from the recipes" in str(caught.value)

@@ -9,7 +9,8 @@ from typing import Any
 
 import numpy as np
 from builders import Row, workbook
-from chemistry_of_truth import KG_WATER_PER_LITRE, acids, solve_ph
+
+from tests.simulated.chemistry_of_truth import KG_WATER_PER_LITRE, acids, solve_ph
 
 READINGS = ("Batch", "Series", "Titrant added (mL)", "Known solution", "Meter", "Temperature (°C)", "pH")
 RECIPES = ("Batch", "Substance", "Lot", "Amount", "Unit", "Made up to", "Made up to unit")

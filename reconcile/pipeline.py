@@ -14,6 +14,7 @@ if TYPE_CHECKING:
     from reconcile.chemistry.library import LibraryAnswer as LibraryAnswer
     from reconcile.chemistry.library import LibraryEntry as LibraryEntry
     from reconcile.chemistry.of_parts import PredictedParts as PredictedParts
+    from reconcile.chemistry.trail import Trail as Trail
     from reconcile.records.book import BatchRecords
     from reconcile.records.meter_results import MeterHistory
     from reconcile.records.parts import Part

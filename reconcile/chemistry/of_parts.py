@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from reconcile.chemistry.notices import Notice, notices
 from reconcile.chemistry.predict import predict_ph
+from reconcile.chemistry.trail import Trail, trail
 from reconcile.chemistry.water import DENSITY_20C, HIGH_C, LOW_C
 from reconcile.records.parts import Composition
 from reconcile.records.places import Place
@@ -31,6 +32,19 @@ class PredictedParts:
     settings: Settings
     notices: tuple[Notice, ...] = ()
 
+    @property
+    def molality(self) -> list[float]:
+        """How much of each part there is [mol/kg]."""
+        scale = 1.0 if self.composition.unit == "mol/kg" else 1.0 / DENSITY_20C
+        return [amount * scale for amount in self.composition.amounts]
+
+    def trail(self) -> Trail | None:
+        """The calculation behind it, for a reviewer; None where no pH was reached."""
+        if str(self.prediction.status[0]) == "not_solved":
+            return None
+        forms = [part.form for part in self.composition.parts]
+        return trail(forms, self.molality, float(self.prediction.temperature_c[0]), self.settings)
+
 
 def predict_composition(composition: Composition, at: float, settings: Settings) -> PredictedParts:
     """The predicted pH of parts once made up, with the uncertainties that the settings give to their amounts."""
@@ -47,7 +61,6 @@ def predict_composition(composition: Composition, at: float, settings: Settings)
         settings=settings,
         u_amounts=np.full((1, len(composition.parts)), (strength**2 + taking**2) ** 0.5),
     )
-    scale = 1.0 if composition.unit == "mol/kg" else 1.0 / DENSITY_20C
-    forms = [part.form for part in composition.parts]
-    said = notices(forms, [amount * scale for amount in composition.amounts], prediction, 0, settings)
-    return PredictedParts(composition, prediction, settings, said)
+    found = PredictedParts(composition, prediction, settings)
+    said = notices([part.form for part in composition.parts], found.molality, prediction, 0, settings)
+    return replace(found, notices=said)

@@ -5,7 +5,7 @@ Common practice, no source, for the methods themselves; each neglects what its n
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -15,7 +15,7 @@ from reconcile.chemistry.predict import predict_records
 from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.book import BatchRecords
 from reconcile.records.settings import Settings
-from reconcile.records.substances import ions
+from reconcile.records.substances import Form, ions
 
 PKW_25 = 13.995
 """Ionization constant of water at 25 °C (IAPWS R11-07)."""
@@ -39,12 +39,17 @@ class Recipe:
 
 
 def _recipe(records: BatchRecords, solution: int, acids: AcidTable) -> Recipe | None:
-    """A solution in these terms; None where it holds several acids or none of them is simple."""
+    """A solution of a record in these terms."""
     inside = np.flatnonzero(records.solutions.solution == solution)
+    forms = [records.forms[int(f)] for f in records.solutions.form[inside]]
+    return recipe_of(forms, records.solutions.amount[inside].tolist(), acids)
+
+
+def recipe_of(forms: Sequence[Form], amounts: Sequence[float], acids: AcidTable) -> Recipe | None:
+    """Forms and their amounts [mol/L] in these terms; None where they bring several acids or one that is not simple."""
     found: set[str] = set()
     total = lost = strong = 0.0
-    for c in inside.tolist():
-        form, amount = records.forms[int(records.solutions.form[c])], float(records.solutions.amount[c])
+    for form, amount in zip(forms, amounts, strict=True):
         strong += amount * (form.ions.get("OH-", 0.0) - form.ions.get("H+", 0.0))
         if any(ions()[ion].acid for ion in form.ions):
             return None

@@ -28,11 +28,21 @@ Model = Annotated[
 ]
 
 
+TrailOption = Annotated[
+    bool,
+    typer.Option(
+        "--trail",
+        help="Add the calculation: molalities, constants with sources, every species, the budget, hand methods.",
+    ),
+]
+
+
 def predict(
     parts: Parts,
     to: To = "",
     at: At = "",
     model: Model = "",
+    trail: TrailOption = False,
     json: Json = False,
     quiet: Quiet = False,
     settings: SettingsFile = None,
@@ -45,20 +55,26 @@ def predict(
     the hazard words recorded for each substance.
     """
     from reconcile import pipeline
-    from reconcile.cli import show_prediction
+    from reconcile.cli import show_prediction, show_trail
     from reconcile.records.parts import parse_temperature
 
     temperature = parse_temperature(at) if at else pipeline.DEFAULT_TEMPERATURE_C
     predicted = pipeline.predict_parts(parts, to, temperature, settings, model)
+    laid_open = predicted.trail() if trail else None
     if json:
         from reconcile.cli.print_json import print_json
 
-        print_json(show_prediction.document(predicted))
+        document = show_prediction.document(predicted)
+        if laid_open is not None:
+            document["trail"] = show_trail.document(laid_open)
+        print_json(document)
     else:
         from reconcile.cli.show import say
 
         say(f"No --at was given; predicted at {temperature:g} °C.", quiet or bool(at))
         show_prediction.show(predicted)
+        if laid_open is not None:
+            show_trail.show(laid_open, predicted)
     raise typer.Exit(exit_code(flagged=str(predicted.prediction.status[0]) != "ok", strict=strict))
 
 
@@ -67,5 +83,6 @@ def add_to(app: typer.Typer) -> None:
         epilog=example(
             'reconcile predict "0.1 M acetic acid" "25 mL of 0.1 M sodium hydroxide" --to "100 mL" --at 20',
             'reconcile predict "2.05 g sodium acetate trihydrate" "5 mL of 1 M HCl" --to "250 mL" --json',
+            'reconcile predict "0.05 mol/kg potassium hydrogen phthalate" --trail',
         )
     )(predict)

@@ -1,0 +1,192 @@
+"""What hand methods would have given for one solution, and why each fails or serves there."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from reconcile.chemistry.acids import AcidTable
+from reconcile.chemistry.activity import ActivityModel, activity_model
+from reconcile.chemistry.composition import Contents, FormTable, form_table, pad
+from reconcile.chemistry.engine import solved_ph
+from reconcile.chemistry.shortcuts import HAND_METHODS, Recipe, recipe_of
+from reconcile.chemistry.solve import solve
+from reconcile.chemistry.temperature import solvent
+from reconcile.chemistry.water import DENSITY_20C
+from reconcile.records.substances import Form
+
+SERVES = 0.01
+"""pH within which a hand method serves: the last digit of a usual display; common practice, no source."""
+
+
+@dataclass(frozen=True)
+class HandValue:
+    """One hand method: its value (NaN where it does not apply), value minus prediction, and why."""
+
+    method: str
+    value: float
+    difference: float
+    why: str
+
+    @property
+    def applies(self) -> bool:
+        return bool(np.isfinite(self.value))
+
+
+@dataclass(frozen=True)
+class Facts:
+    """What the sentences need of the solution: pH, ionic strength, pKa of each step at 25 °C and I = 0, and as it acts.
+
+    lg_gamma : of an ion of charge 1; temperature_c; free_h : molality of hydrogen ions, free_oh : of hydroxide
+    """
+
+    ph: float
+    strength: float
+    lg_gamma: float
+    temperature_c: float
+    free_h: float
+    free_oh: float
+    pka: tuple[float, ...]
+    acting: tuple[float, ...]
+
+
+def _signed(value: float) -> str:
+    return f"{value:.3f}".replace("-", "−")
+
+
+def _not_simple(recipe: Recipe | None) -> str:
+    return "the solution holds several acids, or an ion that is an acid itself" if recipe is None else ""
+
+
+def _no_buffer(recipe: Recipe) -> str:
+    return "" if recipe.total else "the solution holds no weak acid"
+
+
+def _why_square_root(recipe: Recipe, facts: Facts) -> str:
+    if recipe.removed > 0.5:
+        share = facts.free_oh / recipe.total
+        return (
+            f"takes the base as hardly protonated (here {100 * share:.2g} % of it) and its constant at 25 °C without "
+            "activity coefficients"
+        )
+    share = facts.free_h / recipe.total
+    over = recipe.total / 10.0 ** -facts.pka[0]
+    return (
+        f"takes the acid as hardly ionized (here about {100 * share:.2g} %, C/Ka {over:.3g}) and leaves out water and "
+        "activity coefficients"
+    )
+
+
+def _why_quadratic(recipe: Recipe, facts: Facts) -> str:
+    acting = f"pKa acts as {facts.acting[0]:.3f}, not {facts.pka[0]:.3f}"
+    return f"counts the ionization, but not activity coefficients: {acting}"
+
+
+def _why_ratio(recipe: Recipe, facts: Facts) -> str:
+    lost = recipe.removed + recipe.strong / recipe.total
+    step = min(max(int(np.floor(lost)), 0), len(facts.pka) - 1)
+    least = min(lost - step, 1.0 - (lost - step)) * recipe.total
+    free = max(facts.free_h, facts.free_oh)
+    return (
+        f"takes pKa at 25 °C and ionic strength 0 ({facts.pka[step]:.3f}; it acts as {facts.acting[step]:.3f}) and the "
+        f"amounts as mixed (free hydrogen or hydroxide ions are {100 * free / least:.2g} % of the smaller one)"
+    )
+
+
+def _why_strong(recipe: Recipe, facts: Facts) -> str:
+    coefficient = f"lg of the coefficient is {_signed(facts.lg_gamma)} here"
+    return f"takes activity as concentration: {coefficient}; and leaves out water"
+
+
+_WHY = {
+    "square root of Ka C": _why_square_root,
+    "quadratic": _why_quadratic,
+    "ratio of base to acid": _why_ratio,
+    "strong acid or base alone": _why_strong,
+}
+
+
+def hand_values(
+    forms: Sequence[Form],
+    molality: Sequence[float],
+    temperature_c: float,
+    open_co2: float,
+    acids: AcidTable,
+    model: ActivityModel,
+    facts: Facts,
+) -> tuple[HandValue, ...]:
+    """Every hand method for one solution.
+
+    Parameters
+    ----------
+    forms, molality : sequences (k,)
+        What it holds [mol/kg].
+    temperature_c : float
+    open_co2 : float
+        Molality of carbon dioxide that the air holds [mol/kg]; 0 for a closed vessel.
+    acids, model
+        As it was predicted with.
+    facts : Facts
+
+    Returns
+    -------
+    tuple of HandValue
+    """
+    recipe = recipe_of(forms, [m * DENSITY_20C for m in molality], acids)
+    out = []
+    for name, method in HAND_METHODS.items():
+        value = method(recipe) if recipe is not None else float("nan")
+        if recipe is None or not np.isfinite(value):
+            reason = _not_simple(recipe) or (_no_buffer(recipe) if recipe else "") or "the solution is not of that kind"
+            out.append(HandValue(name, float("nan"), float("nan"), f"does not apply: {reason}"))
+            continue
+        out.append(_judged(name, value, facts, _WHY[name](recipe, facts)))
+    contents = Contents(
+        np.array([0, len(forms)]),
+        np.arange(len(forms)),
+        np.array(molality, float),
+        np.array([temperature_c]),
+        np.array([open_co2]),
+    )
+    table = form_table(list(forms), acids)
+    ideal = float(solved_ph(contents, table, acids, activity_model("ideal"))[0])
+    words = (
+        f"takes activity as concentration: the ionic strength is {facts.strength:.3g} mol/kg, lg of the coefficient "
+    )
+    out.append(
+        _judged(
+            "full balance without activity coefficients",
+            ideal,
+            facts,
+            words + f"of a single charge {_signed(facts.lg_gamma)}",
+        )
+    )
+    at_25 = Contents(contents.start, contents.form, contents.amount, np.array([25.0]), contents.open_co2)
+    cold = float(solved_ph(at_25, table, acids, model)[0])
+    words = f"takes constants at 25 °C for a solution at {temperature_c:g} °C"
+    out.append(_judged("full balance with 25 °C constants", cold, facts, words))
+    out.append(_without_water(contents, table, acids, model, facts))
+    return tuple(out)
+
+
+def _judged(name: str, value: float, facts: Facts, why: str) -> HandValue:
+    difference = value - facts.ph
+    return HandValue(name, value, difference, f"serves here: {why}" if abs(difference) < SERVES else why)
+
+
+def _without_water(
+    contents: Contents, table: FormTable, acids: AcidTable, model: ActivityModel, facts: Facts
+) -> HandValue:
+    name = "full balance without the ionization of water"
+    water = solvent(contents.temperature_c)
+    chunk, _ = pad(contents, np.arange(1), table, acids, water, model)
+    chunk.kw *= 1e-60
+    ph, _, solved = solve(chunk, model)
+    if not solved[0] or not 0.0 < ph[0] < 14.0:
+        return HandValue(
+            name, float("nan"), float("nan"), "does not apply: without hydroxide the charges cannot balance"
+        )
+    share = f"leaves out hydroxide, {facts.free_oh:.2g} mol/kg here beside {facts.free_h:.2g} of hydrogen ions"
+    return _judged(name, float(ph[0]), facts, share)

@@ -15,12 +15,16 @@ from reconcile.records.pka_results import SeriesFit
 
 LEVEL = 0.01
 LEAST_FREEDOM = 3
+MATTERS = 0.5
+"""Misfit that matters, in units of the settings' noise floor."""
 ALONE = "single solutions"
 """Name under which solutions made by themselves stand among the series."""
 
 
 def chance_of(evidence: Evidence, fitted: Fitted, columns: FloatArray) -> float:
     """Chance that further columns (n, m) take so much of the residuals by luck; 1 where it cannot be told.
+
+    Also 1 where what they take is too small to matter: in thousands of readings the slightest misfit is beyond chance.
 
     References
     ----------
@@ -36,6 +40,9 @@ def chance_of(evidence: Evidence, fitted: Fitted, columns: FloatArray) -> float:
         return 1.0
     before, after = _rest(base, residual), _rest(np.hstack([base, more]), residual)
     gain = max(before - after, 0.0) / more.shape[1]
+    taken = np.sqrt(max(before - after, 0.0) / np.sum(root**2))  # root mean square [pH]
+    if taken < MATTERS * float(evidence.settings["uncertainty.noise_floor"]):
+        return 1.0
     if not np.isfinite(fitted.freedom[0]):
         return float(special.chdtrc(more.shape[1], gain * more.shape[1]))
     scale = max(after / left, 1.0 if fitted.sigma[0] <= 0.0 else 0.0)  # never under the floor

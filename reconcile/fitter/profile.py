@@ -11,7 +11,8 @@ from reconcile.fitter.least_squares import bounds, search
 from reconcile.fitter.scatter import LEVEL, quantile_f
 from reconcile.records.arrays import FloatArray, IntArray
 
-TRIES = 24
+TRIES, SECANTS = 40, 6
+"""Tries in all for the ends of an interval; after so many by secants, every other one halves the bracket."""
 PRECISION = 1e-4
 """Of an interval's end: part of the half-width."""
 POINTS = 41
@@ -74,7 +75,7 @@ def interval(task: Task, fitted: Fitted, index: int, level: float = LEVEL) -> In
     found = np.full(2 * count, np.nan)
     found[room <= 0.0] = np.inf
     theta = both.theta.copy()
-    for _ in range(TRIES):
+    for turn in range(TRIES):
         left = np.flatnonzero(np.isnan(found))
         if not len(left):
             break
@@ -87,7 +88,8 @@ def interval(task: Task, fitted: Fitted, index: int, level: float = LEVEL) -> In
         found[left[at_edge & ~enough]] = np.inf
         outer[left[beyond]], outer_rise[left[beyond]] = step[left[beyond]], rise[beyond]
         inner[left[~beyond]], inner_rise[left[~beyond]] = step[left[~beyond]], rise[~beyond]
-        step[left] = _next(inner, inner_rise, outer, outer_rise, wanted, room)[left]
+        halve = turn >= SECANTS and turn % 2 == 0
+        step[left] = _next(inner, inner_rise, outer, outer_rise, wanted, room, halve)[left]
     found = np.where(np.isnan(found), outer, found)
     ends = centre + sign * found
     return Interval(ends[:count], ends[count:])
@@ -100,12 +102,13 @@ def _next(
     outer_rise: FloatArray,
     wanted: FloatArray,
     room: FloatArray,
+    halve: bool,
 ) -> FloatArray:
     """The next distance to try: between the two that bracket the end, or further out where there is no outer one."""
     slope = np.where(inner_rise > 0.0, inner / np.maximum(inner_rise, 1e-300), 2.0 * np.maximum(inner, 1e-6))
     further = np.clip(slope * wanted, 1.05 * inner, 3.0 * np.maximum(inner, 1e-6))
     share = (wanted - inner_rise) / np.maximum(outer_rise - inner_rise, 1e-300)
-    between = inner + (outer - inner) * np.clip(share, 0.02, 0.98)
+    between = inner + (outer - inner) * (0.5 if halve else np.clip(share, 0.02, 0.98))
     return np.minimum(np.where(np.isnan(outer), further, between), room)
 
 

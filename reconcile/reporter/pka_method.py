@@ -22,7 +22,8 @@ def paragraphs(fit: PkaFit) -> list[str]:
         "the display, resolution over the square root of twelve, or the settings’ floor. Where the record states it, "
         "it is taken as stated unless the readings scatter more than that allows at the 1 % level.",
         "The 95 % interval is a likelihood profile: all values at which the least sum of squares exceeds its minimum "
-        "by less than the quantile of F(1, n − p). It holds the noise and what was set free. The standard uncertainty "
+        "by less than the quantile of F(1, n − p), constants being sought from −2 to 16, a strength factor from a "
+        "tenth to ten and an offset up to 2 pH. It holds the noise and what was set free. The standard uncertainty "
         "u holds, besides, what the readings share: the meter’s accuracy and span, the strengths of lots and titrant, "
         "temperature, the activity model and the constants of the other acids (JCGM 100).",
         "A constant is called identifiable when u is at most 0.10 and its correlation with everything else that is "

@@ -8,7 +8,7 @@ import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 from matplotlib.lines import Line2D
-from matplotlib.ticker import MaxNLocator
+from matplotlib.ticker import FuncFormatter, LogLocator, MaxNLocator, NullFormatter
 
 from reconcile.records.arrays import BoolArray, FloatArray
 from reconcile.records.pka_results import PkaFit
@@ -59,6 +59,9 @@ def pka_fit(fit: PkaFit) -> Figure:
         entries.append(Line2D([], [], color=BLUE, linewidth=0.9, label="fitted"))
     if kind == "concentration":
         top.set_xscale("log")
+        low.xaxis.set_major_locator(LogLocator(subs=(1.0, 2.0, 5.0)))
+        low.xaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:.3g}"))
+        low.xaxis.set_minor_formatter(NullFormatter())
     top.set(ylabel="pH")
     low.set(ylim=(-half, half), xlabel=LABELS[kind], ylabel="observed − fitted (pH)")
     top.yaxis.set_major_locator(MaxNLocator(6, steps=[1, 2, 5, 10]))

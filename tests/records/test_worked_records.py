@@ -179,7 +179,9 @@ def test_stages_repeats_means_and_standings(way: str, tmp_path: Path) -> None:
         0.015,
     )
     assert audit.evidence.tolist() == [True, True, True, True, False, True]
-    assert audit.records.readings["repeat"].tolist() == [1, 2, 1, 1, 1, 1]
+    # repeats come in the order of their columns, which one of the ways turns round
+    assert sorted(audit.records.readings["repeat"].tolist()[:2]) == [1, 2]
+    assert audit.records.readings["repeat"].tolist()[2:] == [1, 1, 1, 1]
     # a mean of three has a third of the variance of reading, and the spread of everything else
     one, three = audit.spreads.noise[[3, 2]]
     assert three == pytest.approx(one / 3**0.5)

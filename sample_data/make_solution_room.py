@@ -17,6 +17,7 @@ import numpy as np
 HERE = Path(__file__).resolve().parent
 sys.path.insert(0, str(HERE.parent))
 from reconcile.records.substances import catalogue  # noqa: E402
+from sample_data.solution_room_additions import EVENTS, adjusted_batches, check_readings  # noqa: E402
 from sample_data.solution_room_sheets import FIRST_DAY, untidy_rows, write_truth, write_workbook  # noqa: E402
 from sample_data.solution_room_stock import ACETIC, KINDS, LOTS, REMARKS, Lot  # noqa: E402
 from tests.simulated import chemistry_of_truth as chemistry  # noqa: E402
@@ -108,8 +109,18 @@ def _brings(name: str) -> chemistry.Brings:
     return chemistry.brings(catalogue().by_name[name])
 
 
-def read_all(batches: list[Batch], rng: np.random.Generator) -> list[dict[str, Any]]:
-    """Every reading, in order of time, with all planted faults of meters."""
+def error_of(offset: np.ndarray, span: np.ndarray, meter: int, at: datetime, ph: float) -> float:
+    """What a meter shows too much, with all planted faults of meters."""
+    error = float(offset[meter] + span[meter] * (ph - 7.0))
+    if METERS[meter] == "Bench 3" and at >= STEP_AT:
+        error += STEP
+    if METERS[meter] == "Bench 2" and at >= DRIFT_FROM:
+        error += DRIFT * ((at - DRIFT_FROM) / (FIRST_DAY + timedelta(days=DAYS) - DRIFT_FROM))
+    return error
+
+
+def read_all(batches: list[Batch], rng: np.random.Generator) -> tuple[list[dict[str, Any]], np.ndarray, np.ndarray]:
+    """Every reading, in order of time; and the offset and span of every meter."""
     count = len(batches)
     repeats = np.where(rng.permutation(count) % 2 == 0, 2, 3)
     rows: list[dict[str, Any]] = []
@@ -126,17 +137,11 @@ def read_all(batches: list[Batch], rng: np.random.Generator) -> list[dict[str, A
     here = [batches[r["batch"]] for r in rows]
     warmth = np.array([r["celsius"] for r in rows]) + rng.normal(0.0, 0.15, len(rows))
     ph = ph_of(here, warmth, True)
-    end = FIRST_DAY + timedelta(days=DAYS)
     for row, value in zip(rows, ph, strict=True):
-        meter = row["meter"]
-        shown = value + offset[meter] + span[meter] * (value - 7.0) + rng.normal(0.0, 0.011)
-        if METERS[meter] == "Bench 3" and row["at"] >= STEP_AT:
-            shown += STEP
-        if METERS[meter] == "Bench 2" and row["at"] >= DRIFT_FROM:
-            shown += DRIFT * ((row["at"] - DRIFT_FROM) / (end - DRIFT_FROM))
+        shown = value + rng.normal(0.0, 0.011) + error_of(offset, span, row["meter"], row["at"], float(value))
         row["ph"] = round(float(shown), 2)
         row["remark"] = str(rng.choice(REMARKS)) if rng.random() < 0.06 else ""
-    return rows
+    return rows, offset, span
 
 
 def transpose_one(rows: list[dict[str, Any]], batches: list[Batch], lots: list[Lot]) -> int:
@@ -223,7 +228,7 @@ def main(folder: Path = HERE) -> None:
     rng = np.random.default_rng(20250303)
     lots = draw_lots(rng)
     batches = make_batches(lots, rng)
-    rows = read_all(batches, rng)
+    rows, offset, span = read_all(batches, rng)
     slip = transpose_one(rows, batches, lots)
     faults = truth(lots, batches, rows, slip)
     touched = {row for fault in faults for row in fault["rows"]}
@@ -238,9 +243,27 @@ def main(folder: Path = HERE) -> None:
         if not (u.written or "").replace(".", "").isdigit()
     ]
     lost += [{"row": i + 2, "why": "a substance nobody knows"} for i, r in enumerate(rows) if r["batch"] == unknown_in]
-    write_workbook(folder / "solution_room.xlsx", lots, METERS, batches, rows, untidy, unknown_in)
-    write_truth(folder / "solution_room_truth.json", faults, sorted(lost, key=lambda item: item["row"]))
-    print(f"solution_room.xlsx: {len(batches)} batches, {len(rows)} readings, {len(faults)} planted faults")
+    beside = np.random.default_rng(20250304)
+    checks = check_readings(len(METERS), lambda meter, at, ph: error_of(offset, span, meter, at, ph), beside)
+    sound = {lot.name for lot in lots if lot.factor < 1.1 and not lot.content}
+    targets = {row["batch"]: row["target"] for row in rows}
+    adjusted = adjusted_batches(batches, targets, {rows[slip]["batch"], unknown_in}, sound)
+    amounts = [
+        {
+            "batch": batches[i].name,
+            "substance": batches[i].parts[1].lot.label,
+            "mol_per_litre": batches[i].parts[1].true,
+        }
+        for i in adjusted
+    ]
+    write_workbook(
+        folder / "solution_room.xlsx", lots, METERS, batches, rows, untidy, unknown_in, checks, adjusted, EVENTS
+    )
+    write_truth(folder / "solution_room_truth.json", faults, sorted(lost, key=lambda item: item["row"]), amounts)
+    print(
+        f"solution_room.xlsx: {len(batches)} batches, {len(rows)} readings and {len(checks)} of certified buffers, "
+        f"{len(adjusted)} batches adjusted, {len(faults)} planted faults"
+    )
 
 
 if __name__ == "__main__":

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import datetime, timedelta
 from pathlib import Path
@@ -36,11 +36,15 @@ HEADINGS = {
     ),
     "Stocks": (("Lot", 10), ("Substance", 42), ("Strength", 10), ("Unit", 8), ("Tolerance (%)", 14), ("Opened", 12)),
     "Meters": (("Meter", 10), ("Accuracy (pH)", 14), ("Resolution (pH)", 15)),
+    "Checks": (("Read at", 17), ("Known solution", 15), ("Meter", 10), ("Temperature (°C)", 16), ("pH", 10)),
+    "Events": (("Date", 17), ("Meter", 10), ("What was done", 40)),
 }
 UNKNOWN = "buffer salt blend"
 ABOUT = (
     "An invented solution room: eight weeks of buffer preparation, six meters. Nobody and nothing in it exists.",
     "Readings: one row a reading. Recipes: one row a component. Stocks: one row a bottle. Meters: one row a meter.",
+    "Checks: readings of certified buffers. Events: what was done to meters.",
+    "Some batches were adjusted to their pH: the recipe says as needed, to pH or q.s., and the amount stands nowhere.",
 )
 
 
@@ -70,8 +74,14 @@ def write_workbook(
     rows: Sequence[dict[str, Any]],
     untidy: Sequence[Untidy],
     unknown_in: int,
+    checks: Sequence[Any],
+    adjusted: Mapping[int, str],
+    events: Sequence[tuple[datetime, str, str]],
 ) -> None:
-    """The workbook: Readings, Recipes, Stocks, Meters, About. `unknown_in`: the batch with a substance nobody knows."""
+    """The workbook, sheet by sheet.
+
+    unknown_in : the batch with a substance nobody knows; adjusted : batches with an adjusting line, and its words
+    """
     book = xlsxwriter.Workbook(str(path))
     book.set_properties({"created": FIRST_DAY, "title": "An invented solution room"})
     bold = book.add_format({"bold": True, "text_wrap": True, "valign": "top", "bottom": 1})
@@ -113,6 +123,9 @@ def write_workbook(
     for number, batch in enumerate(batches):
         for part in batch.parts:
             at += 1
+            if number in adjusted and part is batch.parts[-1]:
+                sheet.write_row(at, 0, [batch.name, part.lot.label, part.lot.name, adjusted[number]])
+                continue
             sheet.write_row(at, 0, [batch.name, part.lot.label, part.lot.name, part.amount, part.unit])
             if part.made_up_to is not None:
                 sheet.write_row(at, 5, [part.made_up_to, part.made_up_unit])
@@ -128,6 +141,14 @@ def write_workbook(
         sheet.write_datetime(at, 5, FIRST_DAY + timedelta(days=lot.opened), formats["date"])
     for at, meter in enumerate(meters, start=1):
         sheets["Meters"].write_row(at, 0, [meter, 0.02, 0.01])
+    for at, check in enumerate(checks, start=1):
+        sheets["Checks"].write_datetime(at, 0, check.at, formats["time"])
+        sheets["Checks"].write_row(at, 1, [check.buffer, meters[check.meter]])
+        sheets["Checks"].write_number(at, 3, check.celsius, formats["0.0"])
+        sheets["Checks"].write_number(at, 4, check.ph, formats["0.00"])
+    for at, (moment, meter, what) in enumerate(events, start=1):
+        sheets["Events"].write_datetime(at, 0, moment, formats["time"])
+        sheets["Events"].write_row(at, 1, [meter, what])
     about = book.add_worksheet("About")
     about.set_column(0, 0, 110)
     for at, line in enumerate(ABOUT):
@@ -135,7 +156,13 @@ def write_workbook(
     book.close()
 
 
-def write_truth(path: Path, faults: Sequence[dict[str, Any]], set_aside: Sequence[dict[str, Any]]) -> None:
-    """The truth: planted faults in the words of a finding, and the rows that cannot be used."""
-    text = json.dumps({"planted": list(faults), "set_aside": list(set_aside)}, indent=2, ensure_ascii=False)
+def write_truth(
+    path: Path,
+    faults: Sequence[dict[str, Any]],
+    set_aside: Sequence[dict[str, Any]],
+    adjusted: Sequence[dict[str, Any]],
+) -> None:
+    """The truth: planted faults in the words of a finding, rows that cannot be used, amounts that stand nowhere."""
+    truth = {"planted": list(faults), "set_aside": list(set_aside), "adjusted": list(adjusted)}
+    text = json.dumps(truth, indent=2, ensure_ascii=False)
     path.write_text(text + "\n", encoding="utf-8")

@@ -101,7 +101,7 @@ def smallest_detectable(layout: Layout, model: Model, pool: Pool, power: float, 
         with np.errstate(divide="ignore"):
             size = (needed + stats.norm.ppf(power)) / np.sqrt(np.maximum(information, 1e-12))
         for name, value in zip(names, size.tolist(), strict=True):
-            shown = value if unit == "pH" else float(np.exp(value))
+            shown = value if unit == "pH" else float(np.exp(min(value, 50.0)))
             if shown < (2.0 if unit == "pH" else 10.0):
                 found.append(Silence(kind, name, subject_type, size=shown, unit=unit, power=power))
             else:

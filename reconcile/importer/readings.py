@@ -183,7 +183,7 @@ def _with_repeats(table: TableCells, rows: ReadingRows, settings: Settings) -> R
         filled = ~blanks(table.cells(table.block.columns["ph"]))
         pieces.append((filled, table.block.columns["ph"], table.columns["ph"], 1))
         some |= filled
-    for index, number in table.block.repeats:
+    for index, number in sorted(table.block.repeats, key=lambda repeat: (repeat[1], repeat[0])):
         cells = table.cells(index)
         parsed = parse_numbers(cells, settings["reading.decimal"], table.sheet.text_cells)
         table.note(parsed, index)

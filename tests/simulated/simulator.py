@@ -48,8 +48,8 @@ NEEDS: Mapping[str, Mapping[str, Any]] = {
 }
 """What the room must have for a fault to be possible; a room setting given by name goes before it."""
 
-LIKE_THE_TRUTH: Mapping[str, Any] = {"prediction.ion_pairs": "none"}
-"""Settings under which the engine knows what the simulator's chemistry knows: it has no polyborates."""
+LIKE_THE_TRUTH: Mapping[str, Any] = {"prediction.ion_pairs": "none", "prediction.activity_model": "davies"}
+"""Settings under which the engine knows what the simulator's chemistry knows: the Davies equation, no polyborates."""
 
 
 @dataclass(frozen=True)

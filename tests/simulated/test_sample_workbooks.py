@@ -8,6 +8,7 @@ import numpy as np
 import pytest
 from openpyxl import load_workbook
 
+import reconcile
 from reconcile.auditor.audit import audit
 from reconcile.chemistry.predict import predict_records, repredictor
 from reconcile.importer.read import read_books
@@ -63,6 +64,31 @@ def test_planted_subjects_stand_in_the_workbook_and_meet_enough_others():
             used = [m for m, lot in zip(meters, lots, strict=True) if planted["subject"] in lot]
             assert len(used) >= 20
             assert len(set(used)) >= 5
+
+
+def test_the_audit_names_exactly_what_was_planted():
+    audit = reconcile.audit(SAMPLES / "solution_room.xlsx")
+    planted = {
+        (p["kind"], *([p["subject"]] if isinstance(p["subject"], str) else p["subject"])) for p in TRUTH["planted"]
+    }
+    found = {(f.kind, *((f.subject,) if isinstance(f.subject, str) else f.subject)) for f in audit.findings}
+    assert found == planted
+    assert sum(len(f.impact) for f in audit.findings if f.subject == "Bench 5") > 0
+
+
+def test_implied_amounts_are_the_true_ones_but_for_what_the_adjusting_meter_was_off():
+    audit = reconcile.audit(SAMPLES / "solution_room.xlsx")
+    opens, solved = audit.records.open_amounts, audit.records.solved
+    true = {row["batch"]: row["mol_per_litre"] for row in TRUTH["adjusted"]}
+    assert set(opens.batch) == set(true)
+    sound = 0
+    for k, batch in enumerate(opens.batch):
+        per_unit = float(opens.per_unit[opens.owner == k][0])
+        off = (solved.amount[k] * per_unit - true[batch]) / (solved.u[k] * per_unit)
+        if audit.records.readings["meter"][solved.reading[k]] in ("Bench 1", "Bench 4", "Hatch"):
+            sound += 1
+            assert abs(off) < 3.0
+    assert sound >= 4
 
 
 def test_published_tables_are_used_whole():

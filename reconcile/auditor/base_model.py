@@ -56,6 +56,13 @@ class BaseModel:
         """What was worked out for columns that are asked for again, beside the columns themselves."""
         self._weighed: dict[Hashable, FloatArray] = {}
 
+    def inherit(self, other: BaseModel) -> None:
+        """Take over bounds from a layout that differs in few rows: they are as good to begin with, none is exact."""
+        for key, (x, found) in [
+            (k, v) for k, v in other.remembered.items() if isinstance(k, tuple) and k[0] == "bound"
+        ]:
+            self.remembered[key] = (x, found.inexact())
+
     @cached_property
     def inverse(self) -> FloatArray:
         """M^-1: the covariance of the scaled effects given the readings."""
@@ -73,6 +80,12 @@ class BaseModel:
     def variance(self) -> FloatArray:
         """Diagonal of what the effects with a prior add to the spread of each residual, (n,) [pH^2]."""
         return np.asarray(squared(self.layout.z) @ self.g, float)
+
+    @cached_property
+    def log_det(self) -> float:
+        """Log determinant of V."""
+        own = 2.0 * float(np.log(np.diag(self.factor)).sum()) if self.factor.size else 0.0
+        return self.grouped.log_det() + own
 
     def weigh(self, y: FloatArray) -> FloatArray:
         """K y; y (n,) or (n, k)."""
@@ -143,12 +156,16 @@ class BaseModel:
 
 def base_of(layout: Layout, components: Components) -> BaseModel:
     """The factored covariance of a record under given components; the latest few are kept."""
-    kept: dict[object, BaseModel] = layout.kept.setdefault("bases", {})
-    key = (components.noise, components.session, components.preparation, components.meter_ratio.tobytes())
+    kept: dict[tuple[Hashable, ...], BaseModel] = layout.kept.setdefault("bases", {})
+    spreads = (components.noise, components.session, components.preparation, components.meter_ratio.tobytes())
+    key = (*spreads, id(layout))
     if key in kept:
         kept[key] = kept.pop(key)
         return kept[key]
+    like = [base for (*known, _), base in kept.items() if tuple(known) == spreads]
     kept[key] = BaseModel(layout, components)
+    if like:
+        kept[key].inherit(like[-1])
     while len(kept) > KEPT:
         kept.pop(next(iter(kept)))
     return kept[key]

@@ -26,6 +26,9 @@ class Bound:
     value: FloatArray
     exact: BoolArray
 
+    def inexact(self) -> Bound:
+        return Bound(self.value.copy(), np.zeros(len(self.value), bool))
+
 
 def bound(base: BaseModel, x: sparse.csc_array, own: IntArray | None, steady: bool) -> Bound:
     """x' K x as bounded. A steady x is remembered, with what became exact of it."""

@@ -60,7 +60,7 @@ class Model:
     layout, components : what it was made of; r : residuals; g : prior variances of the columns of layout.z
     noise, d : FloatArray (n,) reading variance, and all variance that a reading shares with no other [pH^2]
     pr : FloatArray (n,) P r
-    log_det : log determinant of V, and of X'V^-1 X where there are fixed effects; 0 on a long record, which uses none
+    log_det : log determinant of V, and of X'V^-1 X where there are fixed effects
     long : True where columns are kept sparse and fault kinds hand in only what comes near significance
     columns : IntArray, columns of layout.z that `shares` tells apart
     """

@@ -37,11 +37,18 @@ class Grouped:
     groups: int
 
     @cached_property
+    def excess(self) -> FloatArray:
+        """1 + the group's sum of loading^2 / d, (groups,)."""
+        return np.asarray(1.0 + np.bincount(self.group, self.loading**2 / self.d, minlength=self.groups), float)
+
+    @cached_property
     def scaled(self) -> FloatArray:
-        """loading / d over the square root of 1 + the group's sum of loading^2 / d, (n,)."""
-        t = self.loading / self.d
-        s = 1.0 + np.bincount(self.group, self.loading * t, minlength=self.groups)
-        return np.asarray(t / np.sqrt(s)[self.group], float)
+        """loading / d over the square root of the group's excess, (n,)."""
+        return np.asarray(self.loading / self.d / np.sqrt(self.excess)[self.group], float)
+
+    def log_det(self) -> float:
+        """Log determinant of W^-1 (matrix determinant lemma)."""
+        return float(np.log(self.d).sum() + np.log(self.excess).sum())
 
     @cached_property
     def block(self) -> sparse.csc_array:

@@ -13,7 +13,7 @@ from reconcile.auditor.components import SHORT, Components, Model
 from reconcile.auditor.layout import Layout
 from reconcile.auditor.mixed import estimate, model_of
 from reconcile.auditor.proposals import Context, FaultKind
-from reconcile.auditor.relinearised import constants_moved, relinearised
+from reconcile.auditor.relinearised import relinearised
 from reconcile.auditor.retrial import Retrial, Supposed
 from reconcile.auditor.scoring import Candidate, Pool, Scores, pool_of, score, without
 from reconcile.records.arrays import FloatArray
@@ -26,7 +26,7 @@ RECOMPUTED_BLOCKS = 3
 RECOMPUTED, RECOMPUTED_FROM, RECOMPUTED_GAP, RECOMPUTED_SHARE = 12, 1.0, 60.0, 0.3
 """Suppositions about one subject whose variance is recomputed: how many, from which marginal gain on, how far below the
 best of the subject at first."""
-MOST_LAYOUTS = 400
+MOST_LAYOUTS, MOST_LONG_LAYOUTS = 400, 12
 ONE_EACH = ("lot", "batch")
 """Classes in which one subject has one explanation at a time: a bottle holds one thing, a batch was spoilt once."""
 FIRST, FIRST_LONG = 400, 60
@@ -78,35 +78,29 @@ class Judge:
     def layout_with(self, candidates: Sequence[Candidate]) -> Layout:
         """The layout with sensitivities and variances recomputed under what candidates suppose of recipes.
 
-        A long record keeps its factored covariance instead.
+        On a long record only under what is supposed of lots: one batch more or less changes nothing there.
         """
-        supposed = tuple(c.supposed for c in candidates if c.supposed is not None)
-        if not supposed or len(self.layout) > SHORT:
+        long = len(self.layout) > SHORT
+        told = [c for c in candidates if c.alarm_class == "lot" or not long]
+        supposed = tuple(c.supposed for c in told if c.supposed is not None)
+        if not supposed:
             return self.layout
         if supposed not in self._layouts:
             layout = self.layout
             for one in supposed:
                 layout = relinearised(layout, *self.retrial.prediction(one))
-            if len(self._layouts) > MOST_LAYOUTS:
+            if len(self._layouts) > (MOST_LONG_LAYOUTS if long else MOST_LAYOUTS):
                 self._layouts.clear()
             self._layouts[supposed] = layout
         return self._layouts[supposed]
 
     def model(self, components: Components, candidates: Sequence[Candidate], own: tuple[int, ...] = ()) -> Model:
         fixed, r = self.fixed_and_rest(candidates)
-        return model_of(self.layout_with(candidates), components, fixed, own, r, self.unsure(candidates))
+        return model_of(self.layout_with(candidates), components, fixed, own, r)
 
     def components(self, candidates: Sequence[Candidate], start: Components | None = None) -> Components:
         fixed, r = self.fixed_and_rest(candidates)
-        return estimate(self.layout_with(candidates), self.settings, fixed, r, start, self.unsure(candidates))
-
-    def unsure(self, candidates: Sequence[Candidate]) -> sparse.csc_array | None:
-        """What constants leave unsure about supposed recipes of a long record, as further random effects."""
-        supposed = [c.supposed for c in candidates if c.supposed is not None]
-        if not supposed or len(self.layout) <= SHORT:
-            return None
-        columns = [constants_moved(self.layout, *self.retrial.prediction(one)) for one in supposed]
-        return sparse.csc_array(sparse.hstack(columns))
+        return estimate(self.layout_with(candidates), self.settings, fixed, r, start)
 
     def scored(self, components: Components, candidates: Sequence[Candidate]) -> tuple[Pool, Model, Scores]:
         """All candidates beside the given ones; the latest few answers are kept."""

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
 from typing import Any
 
@@ -91,6 +91,9 @@ class Layout:
     anchor: IntArray
     averaged: FloatArray
 
+    kept: dict[str, Any] = field(default_factory=dict, repr=False, compare=False)
+    """What models of a long record worked out once, under names of their own; layouts made from this one share it."""
+
     def __len__(self) -> int:
         return len(self.r)
 
@@ -103,11 +106,6 @@ class Layout:
     def same_batch(self) -> BoolArray:
         """True where two readings are of one batch, (n, n); only for a short record."""
         return np.asarray(self.batch[:, None] == self.batch, bool)
-
-    @cached_property
-    def kept(self) -> dict[str, Any]:
-        """What models of a long record worked out once, under names of their own."""
-        return {}
 
     def own(self, sort: str, index: int) -> tuple[int, ...]:
         """Columns of the design that hold one subject's own prior; () when it has none."""

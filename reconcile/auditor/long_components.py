@@ -34,20 +34,19 @@ def estimate_long(
     fixed: sparse.csc_array | None = None,
     r: FloatArray | None = None,
     start: Components | None = None,
-    more: sparse.csc_array | None = None,
 ) -> Components:
-    """Variance components beside fixed columns and more effects; `start` itself where they are the same within SAME."""
+    """Variance components beside fixed columns; `start` itself where they are the same within SAME."""
     floor = stated(layout, settings)
     now = start or replace(floor, noise=max(floor.noise, 1e-4))
     for _ in range(ROUNDS):
-        model = LongModel(layout, now, fixed, r=r, more=more)
+        model = LongModel(layout, now, fixed, r=r)
         new = _fitted(layout, now, floor, model.remainder(), model.kept_share())
         if _moved(layout, new, now) < SAME:
             break
         now = new
     if now is start:
         return now
-    model = LongModel(layout, now, fixed, r=r, more=more)
+    model = LongModel(layout, now, fixed, r=r)
     df = float((model.noise * model.diagonal()).sum()) * model.kept_share()
     return replace(now, noise_df=max(0.92 * df, 3.0), tails=tail_weights(model))
 

@@ -15,6 +15,8 @@ from reconcile.auditor.layout import Layout
 from reconcile.auditor.sparse_columns import column_sums, squared
 from reconcile.records.arrays import FloatArray, IntArray
 
+ANY_SIZE = 30.0
+"""Standard deviation of an unknown amplitude where a prior is needed."""
 NEAR = 2.5
 """Score from which an information that was only bounded is worked out exactly."""
 
@@ -24,7 +26,6 @@ class LongModel(Model):
 
     fixed : sparse (n, f) columns of unknown size; own_dropped : columns of Z whose prior is left out
     r : residuals, where they differ from the layout's (a supposed truth was taken off them)
-    more : sparse (n, m), columns of further random effects of unit variance
 
     Between sessions or within batches, whichever matters less, V is taken a little too large (see grouped.local): tests
     are then conservative. Where neither is the case, all results are those of the short model.
@@ -40,11 +41,11 @@ class LongModel(Model):
         fixed: sparse.csc_array | None = None,
         own_dropped: tuple[int, ...] = (),
         r: FloatArray | None = None,
-        more: sparse.csc_array | None = None,
     ) -> None:
         super().__init__(layout, components, own_dropped, r)
         self.base: BaseModel = base_of(layout, components)
         self.columns, self.dropped = self.base.columns, own_dropped
+        self.log_det = self.base.log_det
         self.u, self.core = np.zeros((len(layout), 0)), np.zeros((0, 0))
         self.keys: list[Hashable] = []
         """What each column of U is known by in the base; None for one that is of this model alone."""
@@ -52,16 +53,16 @@ class LongModel(Model):
         at = at[at >= 0]
         if len(at):
             # V - zz' has the inverse K + K z (1 - z'Kz)^-1 z'K, with K Z = W Z M^-1 and 1 - Z'KZ = M^-1
-            core = np.asarray(np.linalg.inv(self.base.inverse[np.ix_(at, at)]), float)
+            left = self.base.inverse[np.ix_(at, at)]
+            self.log_det += float(np.linalg.slogdet(left)[1])
+            core = np.asarray(np.linalg.inv(left), float)
             self._join(self.base.carried(self.base.inverse[:, at]), core)
-        if more is not None and more.shape[1]:
-            # V + CC' has the inverse K - K C (I + C'KC)^-1 C'K
-            column, keys = self._projected(more)
-            self._join(column, -np.linalg.inv(np.eye(more.shape[1]) + more.T @ column), keys)
-        self.fixed_effects = 0 if fixed is None else fixed.shape[1]
+        self.fixed = sparse.csc_array((len(layout), 0)) if fixed is None else fixed
         if fixed is not None and fixed.shape[1]:
             column, keys = self._projected(fixed)
-            self._join(column, -np.linalg.pinv(np.asarray(fixed.T @ column), rcond=1e-10, hermitian=True), keys)
+            inner = np.asarray(fixed.T @ column)
+            self.log_det += float(np.linalg.slogdet(inner)[1])
+            self._join(column, -np.linalg.pinv(inner, rcond=1e-10, hermitian=True), keys)
         self.pr = self.project(self.r)
 
     def _projected(self, x: sparse.csc_array) -> tuple[FloatArray, list[Hashable]]:
@@ -157,6 +158,7 @@ class LongModel(Model):
                 effects = effects + carried @ (self.core @ np.asarray(self.u.T @ some))
             known[:, part] = effects[: len(self.columns)] ** 2
         known /= np.maximum(size + low, 1e-12)
+        known[self.base.place[list(self.dropped)]] = 0.0
         rest = np.clip(1.0 - known.sum(axis=0), 0.0, 1.0)
         share = rest * np.minimum(total / np.maximum(grouped.quadratic(x), 1e-12), 1.0)
         return Shares(share, fourth / np.maximum(total, 1e-12) ** 2, known)
@@ -168,6 +170,14 @@ class LongModel(Model):
         taken = np.bincount(column, c.data * effects[c.indices, column], minlength=x.shape[1])
         return np.asarray(self.base.grouped.quadratic(x) - taken, float)
 
+    def marginal(self, rows: IntArray) -> FloatArray:
+        """V of a few readings alone, with fixed columns of any size, (m, m) [pH^2]."""
+        layout, tau = self.layout, self.batch_sd()[rows]
+        z = layout.z[rows].toarray() * np.sqrt(self.g)
+        f = self.fixed.tocsr()[rows].toarray() * ANY_SIZE
+        same = layout.batch[rows][:, None] == layout.batch[rows]
+        return np.asarray(np.diag(self.d[rows]) + same * np.outer(tau, tau) + z @ z.T + f @ f.T, float)
+
     def remainder(self) -> FloatArray:
         """Residuals less the estimated effects of meters, lots, constants and fixed columns, (n,) [pH]."""
         inside = self.base.inside
@@ -176,7 +186,7 @@ class LongModel(Model):
 
     def kept_share(self) -> float:
         """Share of the readings' degrees of freedom that these effects leave; about, each taken by itself."""
-        return float(max(1.0 - (self.base.taken + self.fixed_effects) / max(len(self.layout), 1), 0.2))
+        return float(max(1.0 - (self.base.taken + self.fixed.shape[1]) / max(len(self.layout), 1), 0.2))
 
     def variance(self) -> FloatArray:
         if self.dropped:

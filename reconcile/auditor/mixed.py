@@ -69,18 +69,15 @@ def model_of(
     fixed: sparse.csc_array | None = None,
     own_dropped: tuple[int, ...] = (),
     r: FloatArray | None = None,
-    more: sparse.csc_array | None = None,
 ) -> Model:
     """The model of a record, written out or sparse as its length asks.
 
     fixed : sparse (n, f) columns of unknown size; own_dropped : columns of Z whose prior is left out
     r : residuals, where they differ from the layout's (a supposed truth was taken off them)
-    more : sparse (n, m), columns of further random effects of unit variance; only of a long record
     Raises numpy.linalg.LinAlgError only if the layout holds non-finite numbers.
     """
-    if len(layout) > SHORT:
-        return LongModel(layout, components, fixed, own_dropped, r, more)
-    return ShortModel(layout, components, fixed, own_dropped, r)
+    sort = ShortModel if len(layout) <= SHORT else LongModel
+    return sort(layout, components, fixed, own_dropped, r)
 
 
 def estimate(
@@ -89,7 +86,6 @@ def estimate(
     fixed: sparse.csc_array | None = None,
     r: FloatArray | None = None,
     start: Components | None = None,
-    more: sparse.csc_array | None = None,
 ) -> Components:
     """Variance components by restricted maximum likelihood with bounded scores (Huber), floors as stated.
 
@@ -100,7 +96,7 @@ def estimate(
     """
     n = len(layout)
     if n > SHORT:
-        return estimate_long(layout, settings, fixed, r, start, more)
+        return estimate_long(layout, settings, fixed, r, start)
     floor = stated(layout, settings)
     if n < 4:
         return floor

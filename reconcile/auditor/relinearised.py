@@ -11,9 +11,6 @@ from reconcile.auditor.layout import Layout, lot_sensitivities, matrix
 from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.results import Prediction
 
-LEAST_MOVED = 1e-3
-"""Uncertainty of a supposed truth that a long record takes beside its covariance [pH]."""
-
 
 def relinearised(layout: Layout, rows: IntArray, supposed: Prediction) -> Layout:
     """A layout in which some rows rest on another prediction than the recipe's; its residuals stay as they are.
@@ -30,20 +27,18 @@ def relinearised(layout: Layout, rows: IntArray, supposed: Prediction) -> Layout
         that only it knows become further columns.
     """
     records, effects = layout.records, layout.effects
-    z = layout.z.toarray()
+    z = layout.z[rows].toarray()
     span = effects["span"]
     mine = layout.meter[rows] >= 0
-    z[rows[mine], span.first + layout.meter[rows[mine]]] = supposed.ph[mine] - 7.0
+    z[mine, span.first + layout.meter[rows[mine]]] = supposed.ph[mine] - 7.0
     lots = effects["lot"]
-    z[rows, lots.first : lots.last] = lot_sensitivities(records, supposed).toarray()[:, layout.lots_used]
+    z[:, lots.first : lots.last] = lot_sensitivities(records, supposed).toarray()[:, layout.lots_used]
     model = effects["model"]
     family = layout.family[rows]
-    z[rows, model.first + family] = supposed.d_model
+    z[np.arange(len(rows)), model.first + family] = supposed.d_model
     known, fresh, variances = _constants(layout, supposed)
     constants = effects["constant"]
-    z[rows, constants.first : constants.last] = known
-    further = np.zeros((len(layout), fresh.shape[1]))
-    further[rows] = fresh
+    z[:, constants.first : constants.last] = known
     t = supposed.contributions
     square = np.bincount(t.row, t.value**2, minlength=len(rows))
     taken = np.bincount(t.row, (t.value * records.solutions.u_amount[t.column]) ** 2, minlength=len(rows))
@@ -57,7 +52,7 @@ def relinearised(layout: Layout, rows: IntArray, supposed: Prediction) -> Layout
     other[rows] = np.maximum(other[rows] - warm**2, 0.0) + np.nan_to_num(supposed.budget["temperature"]) ** 2
     return replace(
         layout,
-        z=sparse.csr_array(np.hstack([z, further])),
+        z=_with_rows(layout.z, rows, z, fresh),
         prior=np.r_[layout.prior, variances],
         shared=shared,
         preparation=preparation,
@@ -65,20 +60,16 @@ def relinearised(layout: Layout, rows: IntArray, supposed: Prediction) -> Layout
     )
 
 
-def constants_moved(layout: Layout, rows: IntArray, supposed: Prediction) -> sparse.csc_array:
-    """What constants leave unsure about a supposed truth beyond what the layout holds, (n, m) of unit variance [pH].
-
-    A long record keeps its covariance and takes these columns beside it: u(pKa) times the change of dpH/dpKa, for the
-    constants that the layout holds as well as for those that only the supposed truth knows.
-    """
-    known, fresh, variances = _constants(layout, supposed)
-    constants = layout.effects["constant"]
-    before = layout.z[rows][:, constants.first : constants.last].toarray()
-    prior = layout.prior[constants.first : constants.last]
-    moved = np.hstack([(known - before) * np.sqrt(prior), fresh * np.sqrt(variances)])
-    moved = moved[:, np.abs(moved).max(axis=0, initial=0.0) > LEAST_MOVED]
-    entries = sparse.coo_array(moved)
-    return sparse.csc_array((entries.data, (rows[entries.row], entries.col)), shape=(len(layout), moved.shape[1]))
+def _with_rows(z: sparse.csr_array, rows: IntArray, values: FloatArray, further: FloatArray) -> sparse.csr_array:
+    """A matrix with some of its rows replaced, and further columns that are filled in those rows alone."""
+    kept = z.copy()
+    kept.data[np.isin(np.repeat(np.arange(z.shape[0]), np.diff(z.indptr)), rows)] = 0.0
+    kept.eliminate_zeros()
+    new = sparse.coo_array(np.hstack([values, further]))
+    width = z.shape[1] + further.shape[1]
+    placed = sparse.csr_array((new.data, (rows[new.row], new.col)), shape=(z.shape[0], width))
+    whole = sparse.csr_array((kept.data, kept.indices, kept.indptr), shape=(z.shape[0], width))
+    return sparse.csr_array(whole + placed)
 
 
 def _constants(layout: Layout, supposed: Prediction) -> tuple[FloatArray, FloatArray, FloatArray]:

@@ -31,6 +31,11 @@ CASES: dict[str, tuple[tuple[str, ...], dict[str, float], dict[str, Any], bool]]
     "offset 0.06, half adjusted, 3 readings a batch": (
         ("meter_offset",), {"meter_offset": 0.06}, {"readings_per_batch": 3}, True,
     ),
+    "offset 0.06, half adjusted, meters of accuracy 0.01": (
+        ("meter_offset",), {"meter_offset": 0.06}, {"accuracy": 0.01}, True,
+    ),
+    "offset 0.06, none adjusted": (("meter_offset",), {"meter_offset": 0.06}, {}, False),
+    "offset 0.07, half adjusted": (("meter_offset",), {"meter_offset": 0.07}, {}, True),
     "buffer lot, three meters": (("calibration_buffer",), {}, {"n_meters": 3}, False),
     "buffer lot, three meters with check readings": (
         ("calibration_buffer",), {}, {"n_meters": 3, "checks_per_meter": 4}, False,

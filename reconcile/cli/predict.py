@@ -24,7 +24,7 @@ At = Annotated[
 ]
 Model = Annotated[
     str,
-    typer.Option("--model", metavar="NAME", help="Activity model: davies, extended or ideal [default: davies]."),
+    typer.Option("--model", metavar="NAME", help="Activity model, as in the settings [default: bates-guggenheim]."),
 ]
 
 

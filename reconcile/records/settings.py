@@ -62,9 +62,9 @@ SETTINGS: tuple[Setting, ...] = (
     Setting(
         "prediction",
         "activity_model",
-        "davies",
+        "bates-guggenheim",
         "",
-        "few parameters, good to 0.5 mol/kg for pH buffers",
+        "the convention of the pH scale; nearest to published buffer tables of those with one term for all ions",
         ("davies", "extended", "ideal", "bates-guggenheim", "truesdell-jones", "specific"),
     ),
     Setting(
@@ -126,7 +126,13 @@ SETTINGS: tuple[Setting, ...] = (
     Setting("limits", "cell_chars", 32767, "characters", "what a spreadsheet cell can hold"),
     Setting("limits", "candidates", 200000, "candidates", "explanations tried in one audit"),
     Setting("status", "stands_out_z", 3.0, "-", "z against the full spread of a clean record"),
-    Setting("status", "outside_model_ionic_strength", 0.5, "mol/kg", "range of the Davies equation"),
+    Setting(
+        "status",
+        "outside_model_ionic_strength",
+        0.5,
+        "mol/kg",
+        "above, the uncertainty of activity coefficients is little known",
+    ),
     Setting("status", "electrode_low_ph", 1.0, "pH", "acid error of the glass electrode"),
     Setting("status", "electrode_high_ph", 12.0, "pH", "sodium error of the glass electrode"),
     Setting("status", "electrode_low_ionic_strength", 0.001, "mol/kg", "slow and flow-sensitive readings below"),

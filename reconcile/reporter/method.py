@@ -13,6 +13,9 @@ MODELS = {
     "davies": "the Davies equation",
     "extended": "the extended Debye–Hückel equation",
     "ideal": "no activity correction (ideal solution)",
+    "bates-guggenheim": "the Bates–Guggenheim equation",
+    "truesdell-jones": "the Truesdell–Jones equation",
+    "specific": "the specific ion interaction equation",
 }
 
 

@@ -70,12 +70,12 @@ def test_constants(model: str) -> None:
 
 def test_activity_coefficient_of_davies(monkeypatch: pytest.MonkeyPatch) -> None:
     amounts, t = cases()
-    found = predict_ph(SUBSTANCES, amounts, t)
+    found = predict_ph(SUBSTANCES, amounts, t, activity_model="davies")
     assert np.all(found.ionic_strength < activity.DAVIES_RANGE)
     moved = []
     for coefficient in (0.3 + 1e-5, 0.3 - 1e-5):
         monkeypatch.setattr(activity, "DAVIES_COEFFICIENT", coefficient)
-        moved.append(predict_ph(SUBSTANCES, amounts, t).ph)
+        moved.append(predict_ph(SUBSTANCES, amounts, t, activity_model="davies").ph)
     assert found.d_model == pytest.approx((moved[0] - moved[1]) / 2e-5, rel=1e-4, abs=1e-6)
 
 

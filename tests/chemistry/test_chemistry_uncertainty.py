@@ -63,18 +63,18 @@ def test_share_of_the_constants(name: str) -> None:
 
 def test_share_of_the_activity_model(monkeypatch: pytest.MonkeyPatch) -> None:
     substances, amounts, temperature = RECIPES["phosphate"]
-    found = predict_ph(substances, amounts, temperature)
+    found = predict_ph(substances, amounts, temperature, activity_model="davies")
     moved = []
     for coefficient in (0.2, 0.4):  # the range in which Davies' coefficient is quoted
         monkeypatch.setattr(activity, "DAVIES_COEFFICIENT", coefficient)
-        moved.append(float(predict_ph(substances, amounts, temperature).ph[0]))
+        moved.append(float(predict_ph(substances, amounts, temperature, activity_model="davies").ph[0]))
     assert found.budget["activity model"][0] == pytest.approx(abs(moved[1] - moved[0]) / 2.0, rel=0.02)
 
 
 def test_everything_at_once() -> None:
     substances, amounts, temperature = RECIPES["acetate"]
     rng = np.random.default_rng(9)
-    settings = Settings({"uncertainty.davies_coefficient": 0.0})
+    settings = Settings({"uncertainty.linear_coefficient": 0.0})
     found = predict_ph(substances, amounts, temperature, settings=settings, u_amounts=0.005, u_temperature=0.5)
     factors = 1.0 + rng.normal(0.0, 0.005, (DRAWS, 2))
     many = predict_ph(substances, np.array(amounts) * factors, temperature + drawn(rng, 0.5)).ph

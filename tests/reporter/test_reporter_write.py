@@ -53,7 +53,7 @@ def test_manifest_holds_the_hash_of_every_file(folder: Path) -> None:
     assert "unsigned" in document["notice"]
     assert "neither an audit trail nor an electronic signature" in document["notice"]
     assert datetime.strptime(document["written_at"], "%Y-%m-%dT%H:%M:%SZ").replace(tzinfo=UTC) <= datetime.now(UTC)
-    assert document["settings"]["prediction.activity_model"] == "davies"
+    assert document["settings"]["prediction.activity_model"] == "bates-guggenheim"
     assert set(document["constants"]) >= {"chemistry/acids.csv", "records/forms.csv", "records/ions.csv"}
 
 

@@ -92,7 +92,9 @@ def _stated_by_headings(
     """Temperatures that a heading states, and limits that a heading gives to one stage; cells go before headings."""
     for name, text in table.block.fixed.get("ph", ()):
         columns[name] = np.where(np.isnan(columns[name]), float(text), columns[name])
-    stages = np.array([heading_key(stage) for stage in columns["stage"].tolist()], object)
+    said = columns["stage"].tolist() if table.block.staged else []
+    keys = {stage: heading_key(stage) for stage in set(said)}
+    stages = np.array([keys[stage] for stage in said], object)
     for index, name, stage in table.block.staged:
         parsed = parse_numbers(table.cells(index), settings["reading.decimal"], table.sheet.text_cells)
         table.note(parsed, index)

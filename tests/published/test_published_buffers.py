@@ -24,8 +24,8 @@ def rows(name: str) -> list[dict[str, str]]:
         return list(csv.DictReader(file))
 
 
-def predicted(row: dict[str, str], model: str = "davies") -> float:
-    """pH of one row's components at its temperature."""
+def predicted(row: dict[str, str], model: str | None = None) -> float:
+    """pH of one row's components at its temperature, by the default model unless one is named."""
     parts = dict(p.split("=") for p in row["components"].split(";"))
     found = predict_ph(
         list(parts),
@@ -49,16 +49,50 @@ def test_primary_standards_from_0_to_60_c() -> None:
     table = primary()
     assert {r["standard_id"] for r in table} == set(STANDARDS)
     error = np.array([predicted(r) - float(r["pH"]) for r in table])
+    assert np.sqrt(np.mean(error**2)) <= 0.009
+    assert np.abs(error).max() <= 0.025
+
+
+def test_phthalate_phosphate_and_borax_to_95_c() -> None:
+    hot = [
+        r
+        for r in rows("primary_standards.csv")
+        if r["source"].startswith(NBS) and r["standard_id"] in ("phthalate", "phosphate_1_1", "borax")
+    ]
+    assert max(float(r["temperature_C"]) for r in hot) == 95.0
+    for r in hot:
+        assert predicted(r) == pytest.approx(float(r["pH"]), abs=0.04), (r["standard_id"], r["temperature_C"])
+
+
+def test_saturated_calcium_hydroxide() -> None:
+    """With the pair CaOH+ the highest standard is met too; without it, it is missed by 0.06."""
+    for r in rows("primary_standards.csv"):
+        if r["standard_id"] == "calcium_hydroxide_sat" and r["source"].startswith(NBS):
+            assert predicted(r) == pytest.approx(float(r["pH"]), abs=0.025), r["temperature_C"]
+
+
+def test_round_value_buffers_that_deserve_it() -> None:
+    """The series named in the notes on the reference tables as checks that deserve 0.02 to 0.03."""
+    table = [r for r in rows("round_value_buffers_25C.csv") if r["series"] in ("KCl_HCl", "KHP_NaOH")]
+    error = np.array([predicted(r) - float(r["pH"]) for r in table])
+    assert len(error) > 30
     assert np.sqrt(np.mean(error**2)) <= 0.012
     assert np.abs(error).max() <= 0.03
 
 
-@pytest.mark.parametrize("series", ["KCl_HCl", "KHP_NaOH", "KH2PO4_NaOH"])
-def test_round_value_buffers_at_25_c(series: str) -> None:
+@pytest.mark.parametrize(
+    ("series", "tolerance"),
+    [
+        ("KH2PO4_NaOH", 0.035),  # the table itself wavers by 0.02 about any smooth curve
+        ("BORIC_KCl_NaOH", 0.03),  # polyborates counted; without them 0.08
+        ("BORAX_HCl", 0.07),  # polyborates counted; without them 0.17
+    ],
+)
+def test_other_round_value_buffers_at_25_c(series: str, tolerance: float) -> None:
     table = [r for r in rows("round_value_buffers_25C.csv") if r["series"] == series]
     assert len(table) > 10
     for r in table:
-        assert predicted(r) == pytest.approx(float(r["pH"]), abs=0.035), (series, r["pH"], r["source"])
+        assert predicted(r) == pytest.approx(float(r["pH"]), abs=tolerance), (series, r["pH"], r["source"])
 
 
 def other_tables() -> Iterator[dict[str, str]]:

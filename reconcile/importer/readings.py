@@ -145,6 +145,9 @@ def _other_faults(table: TableCells, problem: TextArray, notes: list[Problem]) -
 def _settle_standing(table: TableCells, columns: dict[str, AnyArray], problem: TextArray) -> None:
     """Spellings of `standing`, each distinct one looked up once."""
     values = columns["standing"]
+    if "standing" not in table.columns:
+        columns["standing"] = np.full(len(values), STANDINGS[""], object)
+        return
     known = {text: STANDINGS.get(heading_key(text)) for text in set(values.tolist())}
     for i in (i for i, v in enumerate(values.tolist()) if known[v] is None):
         problem[i] = problem[i] or table.problem(i, "standing", Fault("standing-unknown", values[i]))

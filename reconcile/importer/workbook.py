@@ -67,7 +67,7 @@ def _declares(data: bytes) -> bool:
     """Whether a part declares a document type or an entity, in whatever encoding."""
     if data[:2] in (b"\xff\xfe", b"\xfe\xff") or b"\x00" in data[:64]:
         data = data.replace(b"\x00", b"")
-    return b"<!DOCTYPE" in data or b"<!ENTITY" in data
+    return b"<!" in data and (b"<!DOCTYPE" in data or b"<!ENTITY" in data)
 
 
 def _refused(code: str, file: str, read: str = "") -> InputProblems:

@@ -8,6 +8,7 @@ from typing import Any
 
 import numpy as np
 from scipy import linalg, sparse
+from scipy.sparse.linalg import cg
 
 from reconcile.auditor.components import Components
 from reconcile.auditor.grouped import Local, local
@@ -18,6 +19,8 @@ from reconcile.records.arrays import FloatArray, IntArray
 KEPT = 3
 """Factored covariances kept at a time for one record."""
 KEPT_COLUMNS = 60
+ROUGH = 1e-10
+"""Relative error of what is solved without a factor."""
 CHUNK = 512
 
 
@@ -46,15 +49,41 @@ class BaseModel:
         self.weighted = sparse.csr_array(sparse.diags_array(1.0 / self.grouped.d) @ self.z)
         self.shared = sparse.csr_array(self.grouped.across.T @ self.z)
         inner = sparse.csr_array(self.z.T @ self.weighted) - sparse.csr_array(self.shared.T @ self.shared)
-        self.m = np.asarray(inner.toarray().T, float)  # symmetric: the transpose is as good, and in LAPACK's order
-        self.m[np.diag_indices(len(self.m))] += 1.0
-        self.factor = linalg.cholesky(self.m, lower=True, check_finite=True) if self.m.size else self.m
+        self.normal = sparse.csr_array(inner + sparse.eye_array(inner.shape[0]))
         inside = np.concatenate([np.isnan(layout.prior)[self.columns], np.ones(found.wide.shape[1], bool)])
         self.inside = sparse.csc_array(self.z[:, np.flatnonzero(inside)])
-        self.taken = float((1.0 - 1.0 / np.diag(self.m)[~inside]).sum())
+        self.taken = float((1.0 - 1.0 / self.normal.diagonal()[~inside]).sum())
         self.remembered: dict[Hashable, Any] = {}
         """What was worked out for columns that are asked for again, beside the columns themselves."""
         self._weighed: dict[Hashable, FloatArray] = {}
+
+    @cached_property
+    def m(self) -> FloatArray:
+        """M written out."""
+        return np.asarray(self.normal.toarray().T, float)  # symmetric: the transpose is as good, and in LAPACK's order
+
+    @cached_property
+    def factor(self) -> FloatArray:
+        """Cholesky factor of M."""
+        return np.asarray(linalg.cholesky(self.m, lower=True, check_finite=True) if self.m.size else self.m)
+
+    def weighed_once(self, y: FloatArray) -> FloatArray:
+        """K y, y (n,), by conjugate gradients, without a factor."""
+        wy = self.grouped.weighed(y)
+        if not self.normal.shape[0]:
+            return wy
+        scale = sparse.diags_array(1.0 / self.normal.diagonal())
+        effects, _ = cg(self.normal, self.z.T @ wy, rtol=ROUGH, maxiter=500, M=scale)
+        return np.asarray(wy - self.carried(effects))
+
+    def remainder(self, pr: FloatArray) -> FloatArray:
+        """What P r leaves of residuals once effects with columns of their own are taken off, (n,) [pH]."""
+        shared = self.inside @ (self.inside.T @ pr) if self.inside.shape[1] else 0.0
+        return np.asarray(self.grouped.unweighed(pr) + shared, float)
+
+    def kept_share(self, fixed: int) -> float:
+        """Share of the readings' degrees of freedom that these effects leave; about, each taken by itself."""
+        return float(max(1.0 - (self.taken + fixed) / max(len(self.layout), 1), 0.2))
 
     def inherit(self, other: BaseModel) -> None:
         """Take over bounds from a layout that differs in few rows: they are as good to begin with, none is exact."""

@@ -43,7 +43,7 @@ def bound(base: BaseModel, x: sparse.csc_array, own: IntArray | None, steady: bo
 
 
 def _bound(base: BaseModel, x: sparse.csc_array, own: IntArray | None) -> Bound:
-    """A column of the design itself is read off the inverse: z' K z = 1 - (M^-1)_jj.
+    """A column of the design itself is read off the inverse, z' K z = 1 - (M^-1)_jj, or bounded by its own prior.
 
     For readings of one meter that meter's own offset and span are kept, for any other column the single effect that
     takes up most of it.
@@ -57,8 +57,12 @@ def _bound(base: BaseModel, x: sparse.csc_array, own: IntArray | None) -> Bound:
         j = at[mine]
         same = np.abs(value[mine] * base.g[own[mine]] - (base.m[j, j] - 1.0)) <= 1e-9 * base.m[j, j]
         mine, j = mine[same], j[same]
-        value[mine] = (1.0 - base.inverse[j, j]) / base.g[own[mine]]
-        exact[mine], rest[mine] = True, False
+        rest[mine] = False
+        if "inverse" in base.__dict__:
+            value[mine] = (1.0 - base.inverse[j, j]) / base.g[own[mine]]
+            exact[mine] = True
+        else:
+            value[mine] /= base.m[j, j]
     meter = np.where(rest, same_group(x, base.layout.meter), -1)
     single = np.flatnonzero(meter >= 0)
     if len(single):

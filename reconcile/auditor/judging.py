@@ -29,7 +29,7 @@ best of the subject at first."""
 MOST_LAYOUTS, MOST_LONG_LAYOUTS = 400, 12
 ONE_EACH = ("lot", "batch")
 """Classes in which one subject has one explanation at a time: a bottle holds one thing, a batch was spoilt once."""
-FIRST, FIRST_LONG = 400, 60
+FIRST, FIRST_LONG = 400, 24
 """Candidates of each round whose single probability is worked out, best first."""
 LATEST = 12
 """Rounds kept, with all that was tried in them."""

@@ -13,6 +13,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from scipy import sparse
 
+from reconcile.auditor.base_model import BaseModel
 from reconcile.auditor.components import Components, noise_of
 from reconcile.auditor.grouped import Grouped, batch_sd, repeated_sessions
 from reconcile.auditor.layout import Layout
@@ -24,8 +25,9 @@ from reconcile.records.settings import Settings
 
 ROUNDS, STEPS = 4, 60
 SETTLED = 2e-3
-SAME = 0.03
-"""Components whose effect on the variance of a reading changes by less than this share are left as they were."""
+SAME, SAME_METER = 0.03, 0.2
+"""Components whose effect on the variance of a reading changes by less than this share are left as they were; the same
+of one meter's own noise."""
 
 
 def estimate_long(
@@ -38,6 +40,10 @@ def estimate_long(
     """Variance components beside fixed columns; `start` itself where they are the same within SAME."""
     floor = stated(layout, settings)
     now = start or replace(floor, noise=max(floor.noise, 1e-4))
+    if start is None and fixed is None:
+        base = BaseModel(layout, now)
+        rest = base.remainder(base.weighed_once(layout.r if r is None else r))
+        now = _fitted(layout, now, floor, rest, base.kept_share(0))
     for _ in range(ROUNDS):
         model = LongModel(layout, now, fixed, r=r)
         new = _fitted(layout, now, floor, model.remainder(), model.kept_share())
@@ -54,11 +60,12 @@ def estimate_long(
 def _moved(layout: Layout, new: Components, now: Components) -> float:
     """Largest change of a reading's variance by any of the components, as a share of its noise."""
     preparation = float(np.mean(layout.preparation**2))
+    meters = float(np.abs(np.log(new.meter_ratio / now.meter_ratio)).max(initial=0.0))
     return max(
         abs(float(np.log(new.noise / now.noise))),
         abs(new.session - now.session) / new.noise,
         abs(new.preparation - now.preparation) * preparation / new.noise,
-        float(np.abs(np.log(new.meter_ratio / now.meter_ratio)).max(initial=0.0)) / 2.0,
+        meters * SAME / SAME_METER,
     )
 
 

@@ -180,13 +180,11 @@ class LongModel(Model):
 
     def remainder(self) -> FloatArray:
         """Residuals less the estimated effects of meters, lots, constants and fixed columns, (n,) [pH]."""
-        inside = self.base.inside
-        shared = inside @ (inside.T @ self.pr) if inside.shape[1] else 0.0
-        return np.asarray(self.base.grouped.unweighed(self.pr) + shared, float)
+        return self.base.remainder(self.pr)
 
     def kept_share(self) -> float:
-        """Share of the readings' degrees of freedom that these effects leave; about, each taken by itself."""
-        return float(max(1.0 - (self.base.taken + self.fixed.shape[1]) / max(len(self.layout), 1), 0.2))
+        """Share of the readings' degrees of freedom that these effects leave."""
+        return self.base.kept_share(self.fixed.shape[1])
 
     def variance(self) -> FloatArray:
         if self.dropped:

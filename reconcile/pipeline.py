@@ -149,7 +149,7 @@ def audit(
         progress=lambda doing: say(doing, None),
         shortcuts=lambda rows: shortcut_values(records, chosen, rows),
     )
-    return replace(found, constants=constants_met(prediction))
+    return replace(found, constants=constants_met(prediction, records.own))
 
 
 def _record(
@@ -227,10 +227,11 @@ def fit_pka(
     """
     from reconcile.fitter.fit import fit_pka as fit
     from reconcile.fitter.question import understood
+    from reconcile.records.book import own_of_source
     from reconcile.records.pka_results import PkaQuestion
 
     chosen, question = settings_of(settings), PkaQuestion(acid, **about)
-    names = understood(question).names
+    names = understood(question, chosen, own_of_source(source)).names
     return fit(_record(source, chosen, columns, names), question, chosen, progress)
 
 
@@ -271,9 +272,7 @@ def predict_parts(
     from reconcile.records.parts import compose, parse_part
     from reconcile.records.problems import InputProblems
 
-    chosen = settings_of(settings)
-    if activity_model:
-        chosen = with_model(chosen, activity_model)
+    chosen = settings_of(settings).but(prediction={"activity_model": activity_model} if activity_model else {})
     found: list[Part] = []
     problems: list[Problem] = []
     for text in parts:
@@ -286,11 +285,12 @@ def predict_parts(
     return predict_composition(compose(found, to), at, chosen)
 
 
-def with_model(settings: Settings, activity_model: str) -> Settings:
-    """The same settings with another activity model; raises SettingsError for one that does not exist."""
-    named = Settings.from_sections({"prediction": {"activity_model": activity_model}})
-    kept = {name: value for name, value in settings.changed.items() if name != "prediction.activity_model"}
-    return replace(settings, changed={**kept, **named.changed})
+def keep_substances(path: FilePath, beside: FilePath | None = None, replace: bool = False) -> tuple[list[str], Path]:
+    """Check a file of a site's own substances and keep a copy; gives their names, and where the copy lies."""
+    from reconcile.records.own_substances import keep
+
+    own, where = keep(Path(path), None if beside is None else Path(beside), replace)
+    return [form.name for form in own.forms], where
 
 
 def substances(word: str = "") -> LibraryAnswer:

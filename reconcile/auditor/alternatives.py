@@ -7,6 +7,7 @@ from collections.abc import Iterable
 from dataclasses import dataclass
 from functools import cache
 
+from reconcile.records.own_substances import OwnSubstances
 from reconcile.records.substances import Form, catalogue, ions
 
 
@@ -43,14 +44,17 @@ def _likeness(form: Form, label: Form) -> tuple[float, ...]:
 
 
 @cache
-def alternatives(label: Form, at_equal_mass: bool, known_acids: frozenset[str], odds: float) -> tuple[Alternative, ...]:
+def alternatives(
+    label: Form, at_equal_mass: bool, known_acids: frozenset[str], odds: float, site: OwnSubstances
+) -> tuple[Alternative, ...]:
     """Every other content of a bottle labelled `label`, acting differently from it.
 
     known_acids : acids that the record already holds; they, and other forms of the label's own acid, weigh `odds`
+    site : the site's own substances, which may stand in a bottle as the library's do
     """
     own = effect(label, label, False)
     classes: dict[tuple[object, ...], list[Form]] = {}
-    for form in candidates(catalogue().forms):
+    for form in candidates(catalogue(site).forms):
         key = effect(form, label, at_equal_mass)
         if form.name != label.name and key != own:
             classes.setdefault(key, []).append(form)

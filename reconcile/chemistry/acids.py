@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import csv
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from functools import cache, cached_property
@@ -11,6 +10,9 @@ from pathlib import Path
 import numpy as np
 
 from reconcile.chemistry.ion_data import interaction_matrix, read_sizes, truesdell_jones
+from reconcile.chemistry.ionization import Ionization as Ionization
+from reconcile.chemistry.ionization import of_site
+from reconcile.chemistry.ionization import read_acids as read_acids
 from reconcile.chemistry.pair_table import Pair
 from reconcile.chemistry.pair_table import pairs as pairs_chosen
 from reconcile.chemistry.pka_law import NEVER, Laws, Terms, laws
@@ -23,47 +25,9 @@ from reconcile.chemistry.temperature import (
     van_t_hoff,
 )
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray
+from reconcile.records.own_substances import OwnSubstances, own_of_user
 
 FOLDER = Path(__file__).parent
-WEAK_U = 0.1
-"""From this standard uncertainty on a constant is marked weak."""
-COLUMNS = (
-    "acid",
-    "formula",
-    "CAS",
-    "charge_of_fully_protonated_form",
-    "step",
-    "pKa_25C_I0",
-    "u_pKa",
-    "dH_kJ_mol",
-    "dCp_J_K_mol",
-    "source",
-    "verified",
-    "note",
-)
-
-
-@dataclass(frozen=True)
-class Ionization:
-    """One row of acids.csv: one proton lost by one acid. dh_kj_mol and dcp_j_k_mol are NaN where unknown."""
-
-    acid: str
-    formula: str
-    cas: str
-    charge: int
-    step: int
-    pka: float
-    u: float
-    dh_kj_mol: float
-    dcp_j_k_mol: float
-    source: str
-    verified: str
-    note: str
-
-    @property
-    def weak(self) -> bool:
-        """True where the value rests on little: a large uncertainty, or one estimated by analogy."""
-        return self.u >= WEAK_U or "estimate" in self.source
 
 
 @dataclass(frozen=True)
@@ -184,36 +148,6 @@ class AcidTable:
         return self.rows[self.first[i] : self.first[i] + self.steps[i]]
 
 
-def _number(text: str) -> float:
-    return float(text) if text.strip() else float("nan")
-
-
-def read_acids(path: Path) -> list[Ionization]:
-    """Rows of a table with the columns of acids.csv; raises ValueError for a table that is not one."""
-    with path.open(encoding="utf-8", newline="") as file:
-        reader = csv.DictReader(file)
-        missing = set(COLUMNS) - set(reader.fieldnames or ())
-        if missing:
-            raise ValueError(f"{path.name}: columns missing: {', '.join(sorted(missing))}")
-        return [
-            Ionization(
-                acid=r["acid"],
-                formula=r["formula"],
-                cas=r["CAS"],
-                charge=int(r["charge_of_fully_protonated_form"]),
-                step=int(r["step"]),
-                pka=float(r["pKa_25C_I0"]),
-                u=float(r["u_pKa"]),
-                dh_kj_mol=_number(r["dH_kJ_mol"]),
-                dcp_j_k_mol=_number(r["dCp_J_K_mol"]),
-                source=r["source"],
-                verified=r["verified"],
-                note=r["note"],
-            )
-            for r in reader
-        ]
-
-
 def _check(acid: str, rows: list[Ionization]) -> None:
     if [r.step for r in rows] != list(range(1, len(rows) + 1)):
         raise ValueError(f"acids: the steps of {acid} are not 1 to {len(rows)}, in order and side by side")
@@ -280,6 +214,22 @@ def usual_size(charge: int) -> float:
 
 
 @cache
-def acid_table(use_equations: bool = True, ion_pairs: str = "complexes") -> AcidTable:
-    """The acids that come with the package; published equations for pKa(T) and ion pairs as the settings choose."""
-    return build(read_acids(FOLDER / "acids.csv"), read_sizes(), use_equations, pairs_chosen(ion_pairs))
+def _package_rows() -> tuple[Ionization, ...]:
+    return tuple(read_acids(FOLDER / "acids.csv"))
+
+
+_tables: dict[tuple[object, ...], AcidTable] = {}
+
+
+def acid_table(use_equations: bool = True, ion_pairs: str = "complexes", own: OwnSubstances | None = None) -> AcidTable:
+    """The acids that come with the package, a site's own behind.
+
+    use_equations, ion_pairs : as the settings choose
+    own : by default what is kept in the user's configuration; raises InputProblems where that is not in order
+    """
+    own = own_of_user() if own is None else own
+    key = use_equations, ion_pairs, own.key
+    if key not in _tables:
+        rows = [*_package_rows(), *(of_site(step) for step in own.steps)]
+        _tables[key] = build(rows, read_sizes(), use_equations, pairs_chosen(ion_pairs))
+    return _tables[key]

@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from reconcile.chemistry.acids import Ionization, acid_table
+from reconcile.records.own_substances import OwnSubstances
 from reconcile.records.results import Constant, Prediction
 from reconcile.records.substances import Form, catalogue, name_key
 
@@ -63,9 +64,9 @@ def substances(word: str = "") -> LibraryAnswer:
     )
 
 
-def constants_met(prediction: Prediction) -> tuple[Constant, ...]:
-    """The ionization constants that a prediction met, as the library holds them."""
-    rows = {(row.acid, row.step): row for row in acid_table().rows}
+def constants_met(prediction: Prediction, own: OwnSubstances | None = None) -> tuple[Constant, ...]:
+    """The ionization constants that a prediction met, as the library and a site's own substances hold them."""
+    rows = {(row.acid, row.step): row for row in acid_table(own=own).rows}
     return tuple(
         Constant(row.acid, row.step, row.pka, row.u, row.dh_kj_mol, row.dcp_j_k_mol, row.source)
         for row in (rows[name] for name in prediction.constant_names)

@@ -82,7 +82,7 @@ def laid_out(records: BatchRecords, settings: Settings) -> Record:
     return Record(
         records,
         settings,
-        acid_table(settings["prediction.pk_equations"], settings["prediction.ion_pairs"]),
+        acid_table(settings["prediction.pk_equations"], settings["prediction.ion_pairs"], records.own),
         activity_model(settings["prediction.activity_model"]),
         temperature,
         u_temperature,
@@ -113,7 +113,7 @@ def _form_indices(records: BatchRecords, changes: Sequence[Change]) -> tuple[lis
     indices = []
     for change in changes:
         if change.form and change.form not in place:
-            form = catalogue().by_name.get(change.form)
+            form = catalogue(records.own).by_name.get(change.form)
             if form is None:
                 raise ValueError(f"no form of the library is called {change.form!r}")
             place[change.form] = len(forms)

@@ -134,7 +134,7 @@ def shortcut_values(
     ----------
     rows : ndarray (m,)    readings
     """
-    table = acids if acids is not None else acid_table()
+    table = acids if acids is not None else acid_table(own=records.own)
     solutions = records.readings_solution[rows]
     recipes = {int(s): _recipe(records, int(s), table) for s in np.unique(solutions)}
     found: dict[str, FloatArray] = {}

@@ -55,6 +55,14 @@ def show(answer: LibraryAnswer, word: str) -> None:
     line("pKa at 25 °C and ionic strength 0; u is the standard uncertainty. The safety data sheet decides on hazards.")
 
 
+def kept(names: list[str], where: str) -> None:
+    """What is said of substances that were added."""
+    line(f"Checked and kept in {where}:")
+    for name in names:
+        line(name, indent=2)
+    line("Reports made from now on name the file and its SHA-256 in their manifest.")
+
+
 def suggest(answer: LibraryAnswer, word: str) -> None:
     """What is said where nothing was found."""
     say(f'Nothing in the library is called "{word}".')

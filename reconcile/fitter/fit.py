@@ -30,7 +30,7 @@ from reconcile.records.book import BatchRecords
 from reconcile.records.pka_results import PkaFit, PkaQuestion
 from reconcile.records.results import Constant, Hazard
 from reconcile.records.settings import Settings
-from reconcile.records.substances import Form, catalogue
+from reconcile.records.substances import Form
 
 Progress = Callable[[str, float | None], None]
 
@@ -75,7 +75,7 @@ def fit_pka(
     Bates and Watts 1988, Nonlinear Regression Analysis and Its Applications; JCGM 100:2008; see each part for its own.
     """
     say = progress or (lambda doing, share: None)
-    studied = understood(question, settings)
+    studied = understood(question, settings, records.own)
     say("gathering the readings", 0.3)
     every = evidence(records, settings, studied.table(studied.numbers[-1]), studied.acid, question.noise)
     _check(every, studied, question)
@@ -98,7 +98,7 @@ def _check(every: Evidence, studied: Studied, question: PkaQuestion) -> None:
     if studied.acid == CARBONIC and every.settings["prediction.open_to_air"]:
         raise refusal("pka-open-air", question.acid)
     if not len(every):
-        alike = () if studied.known else catalogue().look_up(question.acid).near
+        alike = () if studied.known else studied.library_names.look_up(question.acid).near
         near = f" (near it in the library: {', '.join(alike)})" if alike else ""
         raise refusal("pka-not-in-record", question.acid, near=near)
     own = every.medium.place[every.cases.form] >= 0

@@ -11,6 +11,7 @@ import numpy as np
 
 from reconcile.chemistry.acids import AcidTable, acid_table
 from reconcile.fitter.further_acids import with_further
+from reconcile.records.own_substances import OwnSubstances
 from reconcile.records.pka_results import PkaQuestion
 from reconcile.records.places import Place
 from reconcile.records.problems import InputProblems, Problem
@@ -67,7 +68,7 @@ class Studied:
     charge : of the fully protonated form; numbers : numbers of steps to try, ascending
     form : what was weighed, None for an acid of the library (its forms are those of the catalogue)
     words : what was weighed, in words
-    library : the library's acids, as the settings have them
+    library : the library's acids and the site's own, as the settings have them; library_names : their forms by name
     """
 
     acid: str
@@ -77,11 +78,12 @@ class Studied:
     form: UnfamiliarForm | None
     words: str
     library: AcidTable
+    library_names: Catalogue
 
     @property
     def names(self) -> Catalogue:
         """The substances known when the record is read."""
-        return catalogue() if self.form is None else Catalogue([*catalogue().forms, self.form])
+        return self.library_names if self.form is None else Catalogue([*self.library_names.forms, self.form])
 
     def table(self, steps: int) -> AcidTable:
         """The library's acids, with the unfamiliar one behind; its constants stand at 7 until they are found."""
@@ -97,18 +99,22 @@ def refusal(code: str, read: str = "", **words: str) -> InputProblems:
     return InputProblems([Problem(code, Place(""), read, tuple(words.items()))])
 
 
-def understood(question: PkaQuestion, settings: Settings | None = None) -> Studied:
-    """What the question means; raises InputProblems where it contradicts itself or the library."""
+def understood(question: PkaQuestion, settings: Settings | None = None, own: OwnSubstances | None = None) -> Studied:
+    """What the question means; raises InputProblems where it contradicts itself or the library.
+
+    own : the site's own substances, by default those in the user's configuration
+    """
     chosen = settings or Settings()
-    library = acid_table(chosen["prediction.pk_equations"], chosen["prediction.ion_pairs"])
+    library = acid_table(chosen["prediction.pk_equations"], chosen["prediction.ion_pairs"], own)
+    names = catalogue(own)
     _check_numbers(question)
     name = question.acid.strip()
     if not name:
         raise refusal("pka-option", name="the acid", wanted="the name of a substance, such as acetic acid")
-    known = _in_library(name)
+    known = _in_library(name, library, names)
     if known:
-        return _of_library(question, known, library)
-    return _unfamiliar(question, name, library)
+        return _of_library(question, known, library, names)
+    return _unfamiliar(question, name, library, names)
 
 
 def _check_numbers(question: PkaQuestion) -> None:
@@ -131,13 +137,12 @@ def _check_numbers(question: PkaQuestion) -> None:
             raise bad("what is set free", one, "strength or offset")
 
 
-def _in_library(name: str) -> str:
+def _in_library(name: str, table: AcidTable, names: Catalogue) -> str:
     """The acid of the library that a name means; "" when it means none."""
-    table = acid_table()
     exact = {name_key(acid): acid for acid in table.names}
     if name_key(name) in exact:
         return exact[name_key(name)]
-    found = catalogue().look_up(name)
+    found = names.look_up(name)
     if found.form is None:
         if found.several:
             raise refusal("pka-several", name, several=", ".join(f.name for f in found.several[:6]))
@@ -148,7 +153,7 @@ def _in_library(name: str) -> str:
     return own
 
 
-def _of_library(question: PkaQuestion, acid: str, library: AcidTable) -> Studied:
+def _of_library(question: PkaQuestion, acid: str, library: AcidTable, names: Catalogue) -> Studied:
     i = library.index[acid]
     charge, steps = int(library.charge[i]), int(library.steps[i])
     said = {
@@ -167,10 +172,10 @@ def _of_library(question: PkaQuestion, acid: str, library: AcidTable) -> Studied
             steps=f"{steps} step{'s' if steps > 1 else ''}",
             charge=f"{charge:+d}" if charge else "0",
         )
-    return Studied(acid, True, charge, (steps,), None, f"{acid}, of the library", library)
+    return Studied(acid, True, charge, (steps,), None, f"{acid}, of the library", library, names)
 
 
-def _unfamiliar(question: PkaQuestion, name: str, library: AcidTable) -> Studied:
+def _unfamiliar(question: PkaQuestion, name: str, library: AcidTable, names: Catalogue) -> Studied:
     charge = question.charge or 0
     removed = question.protons_removed or 0.0
     fewest = max(1, math.ceil(removed - 1e-9))
@@ -182,7 +187,7 @@ def _unfamiliar(question: PkaQuestion, name: str, library: AcidTable) -> Studied
             wanted=f"at most the {question.steps} of the ionization steps",
         )
     numbers = (question.steps,) if question.steps is not None else tuple(range(fewest, MOST_STEPS + 1))
-    ion, number, beside = _counter_ion(question.counter_ion, charge - removed)
+    ion, number, beside = _counter_ion(question.counter_ion, charge - removed, library, names)
     form = UnfamiliarForm(
         name=name,
         synonyms=(),
@@ -204,10 +209,10 @@ def _unfamiliar(question: PkaQuestion, name: str, library: AcidTable) -> Studied
     beside_words = f", with {question.counter_ion}" if question.counter_ion else ""
     sign = f"{charge:+d}" if charge else "0"
     words = f"{name}, not in the library: charge of the fully protonated form {sign}, weighed {lost}{beside_words}"
-    return Studied(name, False, charge, numbers, form, words, library)
+    return Studied(name, False, charge, numbers, form, words, library, names)
 
 
-def _counter_ion(text: str, charge: float) -> tuple[str, float, dict[str, float]]:
+def _counter_ion(text: str, charge: float, table: AcidTable, names: Catalogue) -> tuple[str, float, dict[str, float]]:
     """Ion and number per formula, or acids that stand in as counter-ion; raises where the formula is not neutral."""
     if not text.strip():
         if abs(charge) > 1e-9:
@@ -226,11 +231,10 @@ def _counter_ion(text: str, charge: float) -> tuple[str, float, dict[str, float]
         if abs(charge + number * ion.charge) > 1e-6:
             raise refusal("pka-counter-ion-charge", text, charge=f"{charge:+g}", ions=f"{number * ion.charge:+g}")
         return ion.name, number, {}
-    acid = ion.acid if ion is not None else _acid_of(name)
+    acid = ion.acid if ion is not None else _acid_of(name, table, names)
     if not acid:
         near = ", ".join(ION_NAMES)
         raise refusal("pka-option", text, name="the counter-ion", wanted=f"an ion ({near}) or an acid of the library")
-    table = acid_table()
     i = table.index[acid]
     own = -charge / number
     if not table.charge[i] - table.steps[i] - 1e-9 <= own <= table.charge[i] + 1e-9:
@@ -244,13 +248,13 @@ def _ion(name: str) -> Ion | None:
     return ions()[found] if found else None
 
 
-def _acid_of(name: str) -> str:
+def _acid_of(name: str, table: AcidTable, names: Catalogue) -> str:
     """The acid that a counter-ion is the anion of: named itself, or by its sodium salt ("maleate")."""
-    exact = {name_key(acid): acid for acid in acid_table().names}
+    exact = {name_key(acid): acid for acid in table.names}
     if name_key(name) in exact:
         return exact[name_key(name)]
     for text in (name, f"sodium {name}", f"disodium {name}"):
-        form = catalogue().look_up(text).form
+        form = names.look_up(text).form
         if form is not None and form.acid:
             return form.acid
     return ""

@@ -29,6 +29,7 @@ from reconcile.records.adjusting import Solved
 from reconcile.records.arrays import AnyArray
 from reconcile.records.book import BatchRecords, Table
 from reconcile.records.columns import BY_SHEET, READING_EXTRA
+from reconcile.records.own_substances import OwnSubstances, own_of_record
 from reconcile.records.places import Place
 from reconcile.records.problems import InputProblems
 from reconcile.records.settings import Settings
@@ -46,11 +47,14 @@ def read_books(
     """Read workbooks and CSV files into one record.
 
     paths : files, read together: recipes may stand in one and readings in another
-    column_map : what `read_column_map` gives; catalogue : the substances known, the library's own by default
+    column_map : what `read_column_map` gives
+    catalogue : the substances known, by default the library with the site's own
     Raises InputProblems, with every problem found, where the input is refused.
     """
     with _without_collection():
-        return _read(paths, settings, column_map or {}, catalogue if catalogue is not None else _library())
+        own = own_of_record(paths)
+        names = catalogue if catalogue is not None else _library(own)
+        return _read(paths, settings, column_map or {}, names, own)
 
 
 @contextmanager
@@ -65,7 +69,9 @@ def _without_collection() -> Iterator[None]:
             gc.enable()
 
 
-def _read(paths: Sequence[Path | str], settings: Settings, column_map: ColumnMap, names: Catalogue) -> BatchRecords:
+def _read(
+    paths: Sequence[Path | str], settings: Settings, column_map: ColumnMap, names: Catalogue, own: OwnSubstances
+) -> BatchRecords:
     book = Book()
     sheets: list[RawSheet] = []
     for path in paths:
@@ -76,14 +82,14 @@ def _read(paths: Sequence[Path | str], settings: Settings, column_map: ColumnMap
     read_sheets(sheets, settings, column_map, names, book)
     if book.stops:
         raise InputProblems(book.stops)
-    return _understood(book, settings, names)
+    return _understood(book, settings, names, own)
 
 
-def _library() -> Catalogue:
-    return catalogue()
+def _library(own: OwnSubstances) -> Catalogue:
+    return catalogue(own)
 
 
-def _understood(book: Book, settings: Settings, names: Catalogue) -> BatchRecords:
+def _understood(book: Book, settings: Settings, names: Catalogue, own: OwnSubstances) -> BatchRecords:
     recipes, room, known, series = Recipes(), StockRoom(), KnownSolutions(), SeriesList()
     long_groups: dict[str, int] = {}
     counts = {"recipes": 0, "stocks": 0}
@@ -120,7 +126,7 @@ def _understood(book: Book, settings: Settings, names: Catalogue) -> BatchRecord
     composer = Composer(LineReader(recipes.lines(), resolver, settings, files))
     composer.group_of_batch = {b: groups[0] for b, groups in recipes.by_batch.items()}
     composer.batch_names = recipes.batch
-    return _records(book, rows, recipes, composer, known, series, settings)
+    return _records(book, rows, recipes, composer, known, series, settings, own)
 
 
 def _records(
@@ -131,6 +137,7 @@ def _records(
     known: KnownSolutions,
     series: SeriesList,
     settings: Settings,
+    own: OwnSubstances,
 ) -> BatchRecords:
     fields = [c.name for c in BY_SHEET["readings"]] + list(READING_EXTRA)
     columns = {
@@ -185,6 +192,7 @@ def _records(
         not_read=tuple(book.declared),
         open_amounts=left_open,
         solved=Solved(),
+        own=own,
     )
 
 

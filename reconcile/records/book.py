@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
+from pathlib import Path
 
 import numpy as np
 
 from reconcile.records.adjusting import OpenAmounts, Solved
 from reconcile.records.arrays import AnyArray, FloatArray, IntArray, TextArray
+from reconcile.records.own_substances import OwnSubstances, own_of_record
 from reconcile.records.places import Place
 from reconcile.records.problems import Problem
 from reconcile.records.substances import Form
@@ -163,6 +165,7 @@ class BatchRecords:
     notes : accepted repairs and notices, none of which leaves a row out
     open_amounts : amounts left to a pH, whose contributions are NaN until `solved` says what they are
     not_read : sheets that say in their first cell that they are not read (records/columns.py, NOT_READ)
+    own : the site's own substances that were known when the record was read
     """
 
     sheets: tuple[SheetSource, ...]
@@ -185,6 +188,7 @@ class BatchRecords:
     open_amounts: OpenAmounts = field(default_factory=OpenAmounts)
     solved: Solved = field(default_factory=Solved)
     not_read: tuple[Place, ...] = ()
+    own: OwnSubstances = field(default_factory=OwnSubstances)
 
     def place(self, table: Table, index: int, name: str = "") -> Place:
         """Place of a row of a table, or of one field in it."""
@@ -197,3 +201,10 @@ class BatchRecords:
         inside = self.solutions.solution == self.readings_solution[index]
         chains = np.isin(self.solutions.chain_contribution, np.flatnonzero(inside))
         return [int(lot) for lot in dict.fromkeys(self.solutions.chain_lot[chains].tolist())]
+
+
+def own_of_source(source: Iterable[Path | str | BatchRecords]) -> OwnSubstances:
+    """The site's own substances of a record that was read, or those that reading some files would find."""
+    given = list(source)
+    paths = [one for one in given if not isinstance(one, BatchRecords)]
+    return next((one.own for one in given if isinstance(one, BatchRecords)), None) or own_of_record(paths)

@@ -212,6 +212,12 @@ class Settings:
                     changed[setting.name] = value
         return cls(changed)
 
+    def but(self, **sections: Mapping[str, Any]) -> Settings:
+        """The same settings with some changed, by section; raises SettingsError."""
+        given = {f"{section}.{key}" for section, keys in sections.items() for key in keys}
+        kept = {name: value for name, value in self.changed.items() if name not in given}
+        return Settings({**kept, **Settings.from_sections(sections).changed})
+
     def __getitem__(self, name: str) -> Any:
         return self.changed.get(name, BY_NAME[name].default)
 

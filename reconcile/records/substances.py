@@ -10,6 +10,10 @@ from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from functools import cache, cached_property
 from pathlib import Path
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from reconcile.records.own_substances import OwnSubstances
 
 FOLDER = Path(__file__).parent
 
@@ -222,6 +226,23 @@ class Catalogue:
 
 
 @cache
-def catalogue() -> Catalogue:
-    """The library that comes with the package."""
-    return Catalogue(read_forms(FOLDER / "forms.csv"))
+def package_forms() -> tuple[Form, ...]:
+    """The forms that come with the package."""
+    return tuple(read_forms(FOLDER / "forms.csv"))
+
+
+_catalogues: dict[tuple[str, ...], Catalogue] = {}
+
+
+def catalogue(own: OwnSubstances | None = None) -> Catalogue:
+    """The library that comes with the package, with a site's own substances behind.
+
+    own : by default those kept in the user's configuration; raises InputProblems where these are not in order
+    """
+    if own is None:
+        from reconcile.records.own_substances import own_of_user
+
+        own = own_of_user()
+    if own.key not in _catalogues:
+        _catalogues[own.key] = Catalogue([*package_forms(), *own.forms])
+    return _catalogues[own.key]

@@ -81,7 +81,9 @@ def report_id(result: Reported, command: str = AUDIT) -> str:
 
     command : what the report is of; another report on the same files has another id
     """
-    content = [sorted(i["sha256"] for i in inputs(result)), _settings(result), __version__]
+    content: list[Any] = [sorted(i["sha256"] for i in inputs(result)), _settings(result), __version__]
+    if result.records.own.files:
+        content.append(sorted(result.records.own.key))
     if command != AUDIT:
         content.append(command)
     return _id(json.dumps(content, sort_keys=True))
@@ -110,6 +112,9 @@ def manifest(
         "settings": _settings(result),
         "settings_changed": sorted(result.settings.changed),
         "constants": constants(),
+        "own_substances": [
+            {"name": file.name, "sha256": file.sha256, "where": file.where} for file in result.records.own.files
+        ],
         "libraries": {name: version(name) for name in LIBRARIES},
     }
     return (json.dumps(document, ensure_ascii=False, indent=2, allow_nan=False) + "\n").encode("utf-8")

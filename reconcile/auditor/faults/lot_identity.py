@@ -57,10 +57,10 @@ def contents(
     mine = list(context.retrial.contributions_of_lot(lot))
     direct = records.solutions.lot[mine] == lot
     solid = not np.isfinite(records.lots.strength[lot]) and bool(np.all(records.solutions.by_mass[mine] | ~direct))
-    at_mass = [(a, label.molar_mass / a.form.molar_mass) for a in alternatives(label, True, acids, odds)]
+    at_mass = [(a, label.molar_mass / a.form.molar_mass) for a in alternatives(label, True, acids, odds, records.own)]
     if solid:
         return at_mass
-    at_mol = [(a, 1.0) for a in alternatives(label, False, acids, odds)]
+    at_mol = [(a, 1.0) for a in alternatives(label, False, acids, odds, records.own)]
     return at_mol + [(a, factor) for a, factor in at_mass if a.relation in ("hydrate", "form")]
 
 

@@ -34,7 +34,7 @@ def misreadings(context: Context, contribution: int) -> list[tuple[Supposed, str
         density = float(records.stocks["density"][stock[0]]) if len(stock) else np.nan
     if np.isfinite(density) and abs(density - 1.0) > 0.02:
         slips += [(Supposed(only, factor=f), "% w/w for % w/v") for f in (density, 1.0 / density)]
-    for choice in alternatives(label, True, known_acids(context), 1.0):
+    for choice in alternatives(label, True, known_acids(context), 1.0, records.own):
         if choice.relation in ("hydrate", "form"):
             factor = label.molar_mass / choice.form.molar_mass
             slips.append((Supposed(only, form=choice.form.name, factor=factor), choice.relation))

@@ -11,8 +11,9 @@ import typer
 from typer.core import TyperGroup
 
 from reconcile.cli import audit, meters, newbook, pka, predict, read, substances
-from reconcile.cli.exits import INTERRUPTED, REFUSED, USAGE
+from reconcile.cli.exits import DONE, INTERRUPTED, REFUSED, USAGE
 from reconcile.cli.options import DEBUG
+from reconcile.cli.printed import CannotPrint, flushed
 from reconcile.records.problems import InputProblems, Problem
 from reconcile.records.settings import SettingsError
 
@@ -53,7 +54,8 @@ class Edge(TyperGroup):
             code, lines = _explained(error)
             if code is None:
                 raise
-            nothing = ["Nothing was written."] if code == REFUSED and ctx.invoked_subcommand in WRITE_REPORTS else []
+            unwritten = code == REFUSED and ctx.invoked_subcommand in WRITE_REPORTS
+            nothing = ["Nothing was written."] if unwritten and not isinstance(error, CannotPrint) else []
             _say(*lines, *nothing)
             raise typer.Exit(code) from None
 
@@ -70,7 +72,7 @@ def _explained(error: Exception) -> tuple[int | None, list[str]]:
     if isinstance(error, MemoryError):
         return REFUSED, ["There is not enough memory for this record."]
     if isinstance(error, OSError):
-        where = f"{error.filename}: " if error.filename else ""
+        where = f"{error.filename}: " if error.filename else "standard output: "
         return REFUSED, [f"{where}{error.strerror or error}"]
     if hasattr(error, "exit_code"):
         return None, []
@@ -124,4 +126,10 @@ def main() -> None:
     for stream in (sys.stdout, sys.stderr):
         if hasattr(stream, "reconfigure"):  # a terminal that lacks a character shows a mark in its place
             stream.reconfigure(errors="replace")
-    app(prog_name="reconcile")
+    try:
+        app(prog_name="reconcile")
+    except SystemExit as done:
+        sys.exit(flushed(done.code if isinstance(done.code, int) else DONE))
+    except OSError as error:  # from help and the like, which are printed before a command is run
+        _say(*_explained(error)[1])
+        sys.exit(flushed(REFUSED))

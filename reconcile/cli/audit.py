@@ -40,6 +40,7 @@ def audit(
     preparation or entry that most likely caused it. Writes the report folder and prints the gist.
     """
     from reconcile import pipeline
+    from reconcile.cli.printed import after_writing
     from reconcile.cli.progress import progress_bar
     from reconcile.records.completeness import shortfalls
     from reconcile.reporter.write import check_place, write_report
@@ -49,14 +50,15 @@ def audit(
     with progress_bar(quiet) as progress:
         found = pipeline.audit(*files, settings=settings, columns=columns, progress=progress)
         write_report(found, folder, replace=replace, progress=progress)
-    if json:
-        from reconcile.reporter.to_json import gist_json
+    with after_writing(folder):
+        if json:
+            from reconcile.reporter.to_json import gist_json
 
-        print(gist_json(found), end="")
-    else:
-        from reconcile.cli import show_audit
+            print(gist_json(found), end="")
+        else:
+            from reconcile.cli import show_audit
 
-        show_audit.show(found, folder)
+            show_audit.show(found, folder)
     raise typer.Exit(exit_code(flagged=bool(found.findings), strict=strict, incomplete=bool(shortfalls(found.records))))
 
 

@@ -39,6 +39,7 @@ def meters(
     gist. A date of crossing does not extend a calibration interval.
     """
     from reconcile import pipeline
+    from reconcile.cli.printed import after_writing
     from reconcile.cli.progress import progress_bar
     from reconcile.records.completeness import shortfalls
     from reconcile.reporter.write import check_place, write_report
@@ -48,14 +49,15 @@ def meters(
     with progress_bar(quiet) as progress:
         found = pipeline.meters(*files, settings=settings, columns=columns, progress=progress)
         write_report(found, folder, replace=replace, progress=progress)
-    if json:
-        from reconcile.reporter.meter_json import meter_json
+    with after_writing(folder):
+        if json:
+            from reconcile.reporter.meter_json import meter_json
 
-        print(meter_json(found), end="")
-    else:
-        from reconcile.cli import show_meters
+            print(meter_json(found), end="")
+        else:
+            from reconcile.cli import show_meters
 
-        show_meters.show(found, folder)
+            show_meters.show(found, folder)
     raise typer.Exit(exit_code(flagged=found.flagged, strict=strict, incomplete=bool(shortfalls(found.records))))
 
 

@@ -121,6 +121,7 @@ def pka(
     tell, and the acids of the library that would explain them. Writes a report folder and prints its gist.
     """
     from reconcile import pipeline
+    from reconcile.cli.printed import after_writing
     from reconcile.cli.progress import progress_bar
     from reconcile.records.completeness import shortfalls
     from reconcile.reporter.write import check_place, write_report
@@ -143,14 +144,15 @@ def pka(
             progress=progress,
         )
         write_report(found, folder, replace=replace, progress=progress)
-    if json:
-        from reconcile.reporter.pka_json import printed_json
+    with after_writing(folder):
+        if json:
+            from reconcile.reporter.pka_json import printed_json
 
-        print(printed_json(found), end="")
-    else:
-        from reconcile.cli import show_pka
+            print(printed_json(found), end="")
+        else:
+            from reconcile.cli import show_pka
 
-        show_pka.show(found, folder)
+            show_pka.show(found, folder)
     raise typer.Exit(exit_code(flagged=bool(found.flags), strict=strict, incomplete=bool(shortfalls(found.records))))
 
 

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import csv
 import os
-import secrets
 from collections.abc import Sequence
 from datetime import datetime
 from functools import cache
@@ -14,10 +13,12 @@ from typing import Any
 from reconcile import __version__
 from reconcile.records.columns import BY_SHEET, Column
 from reconcile.records.places import column_letters
+from reconcile.reporter.folder import sync_folder, write_file
 from reconcile.reporter.newbook_example import EXAMPLE, Row
 from reconcile.reporter.newbook_lists import CHECKED, FROM_SHEET, OFFERS
 from reconcile.reporter.newbook_pages import add_example, add_lists, add_notes
 from reconcile.reporter.to_xlsx import FILL, Book
+from reconcile.reporter.working_place import settle, working_place
 
 SHEETS = {
     "readings": "Readings",
@@ -61,19 +62,17 @@ def write_newbook(path: Path | str, *, filled: bool = False, replace: bool = Fal
     path = Path(path)
     check_newbook(path, replace)
     content = newbook(filled)
-    new = path.with_name(f".{path.name}.{secrets.token_hex(4)}.new")
+    settle(path.parent)
     try:
-        with new.open("xb") as file:
-            file.write(content)
-            file.flush()
-            os.fsync(file.fileno())
-        check_newbook(path, replace)  # the place may have been filled while we worked
-        os.replace(new, path)
-    except BaseException as error:
-        new.unlink(missing_ok=True)
-        if isinstance(error, OSError) and error.filename == str(new):
-            error.filename = str(path)  # the file that was asked for, not the one beside it
-        raise
+        with working_place(path.parent) as place:
+            write_file(place / path.name, content)
+            check_newbook(path, replace)  # the place may have been filled while we worked
+            os.replace(place / path.name, path)
+            sync_folder(path.parent)
+    except OSError as error:
+        if isinstance(error, FileExistsError) or error.errno is None:
+            raise
+        raise OSError(error.errno, error.strerror, str(path)) from error  # the file asked for, not the one beside it
     return path
 
 

@@ -1,23 +1,22 @@
-"""The report folder: written beside its place, then renamed into it, so that there is a whole folder or nothing."""
+"""The report of a result as a folder: which files, and whether its place may be taken."""
 
 from __future__ import annotations
 
-import contextlib
 import json
 import os
-import secrets
-import shutil
-from collections.abc import Callable, Mapping
+from collections.abc import Callable
 from pathlib import Path
 
 from reconcile.records.meter_results import MeterHistory
 from reconcile.records.pka_results import PkaFit
 from reconcile.records.results import Audit
 from reconcile.reporter.contents import contents
+from reconcile.reporter.folder import put_folder
 from reconcile.reporter.manifest import AUDIT, MANIFEST, manifest
 from reconcile.reporter.meter_contents import METERS, meter_contents
 from reconcile.reporter.pka_contents import pka_contents
 from reconcile.reporter.pka_gist import command as pka_command
+from reconcile.reporter.working_place import settle
 
 Progress = Callable[[str, float], None]
 """Called with what is being done and the share done, 0 to 1."""
@@ -59,12 +58,20 @@ def write_report(
     else:
         files, command = contents(result, say), AUDIT
     files[MANIFEST] = manifest(result, files, command=command)
-    _put(folder, files, replace)
+    put_folder(folder, files, lambda: _check(folder, replace))
     return folder
 
 
 def check_place(folder: Path, replace: bool) -> None:
-    """Refuse, before any work is done, a place that may not be written to; raises ReportExists."""
+    """Refuse, before any work is done, a place that may not be written to; raises ReportExists.
+
+    What a killed run left at that place or beside it is put in order first.
+    """
+    settle(Path(os.path.abspath(folder)).parent)
+    _check(folder, replace)
+
+
+def _check(folder: Path, replace: bool) -> None:
     if not os.path.lexists(folder):
         return
     if not folder.is_dir():
@@ -97,59 +104,3 @@ def _written_before(folder: Path) -> set[str] | None:
         return {MANIFEST, *(str(output["name"]) for output in document["outputs"])}
     except (OSError, ValueError, KeyError, TypeError):
         return None
-
-
-def _put(folder: Path, files: Mapping[str, bytes], replace: bool) -> None:
-    mark = secrets.token_hex(4)
-    made = _make_parents(folder.parent)
-    new = folder.parent / f".{folder.name}.{mark}.new"
-    old = folder.parent / f".{folder.name}.{mark}.old"
-    moved = False
-    try:
-        new.mkdir()
-        for name, content in files.items():
-            _write(new / name, content)
-        for inside in sorted({(new / name).parent for name in files}):
-            _sync_folder(inside)
-        check_place(folder, replace)  # the place may have been filled while we worked
-        if os.path.lexists(folder):
-            os.rename(folder, old)
-            moved = True
-        os.rename(new, folder)
-        _sync_folder(folder.parent)
-    except BaseException:
-        if moved and not os.path.lexists(folder):
-            os.rename(old, folder)
-        shutil.rmtree(new, ignore_errors=True)
-        for parent in reversed(made):
-            with contextlib.suppress(OSError):
-                parent.rmdir()
-        raise
-    if moved:
-        shutil.rmtree(old)
-
-
-def _make_parents(folder: Path) -> list[Path]:
-    missing = [p for p in (folder, *folder.parents) if not p.exists()][::-1]
-    for parent in missing:
-        parent.mkdir(exist_ok=True)
-    return missing
-
-
-def _write(path: Path, content: bytes) -> None:
-    path.parent.mkdir(parents=True, exist_ok=True)
-    with path.open("xb") as file:
-        file.write(content)
-        file.flush()
-        os.fsync(file.fileno())
-
-
-def _sync_folder(folder: Path) -> None:
-    """Make the folder's entries durable, where the system lets a folder be opened."""
-    if os.name != "posix":
-        return
-    handle = os.open(folder, os.O_RDONLY)
-    try:
-        os.fsync(handle)
-    finally:
-        os.close(handle)

@@ -9,7 +9,7 @@ from collections.abc import Callable
 from pathlib import Path
 
 import pytest
-from conftest import READINGS, RECIPES, Run, write_record
+from command_line import READINGS, RECIPES, Run, write_record
 
 from reconcile.reporter.cautions import CAUTIONS
 

@@ -9,7 +9,7 @@ from pathlib import Path
 
 import pytest
 import typer.main
-from conftest import Run
+from command_line import Run
 
 from reconcile.cli.app import app
 from reconcile.records.settings import SETTINGS

@@ -8,7 +8,7 @@ from datetime import date, timedelta
 from pathlib import Path
 
 import pytest
-from conftest import Run
+from command_line import Run
 
 CALIBRATIONS = "calibrations.csv"
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import json
 from pathlib import Path
 
-from conftest import Run
+from command_line import Run
 
 
 def test_a_workbook_is_made_and_read_at_once(run: Run) -> None:

@@ -6,7 +6,7 @@ import json
 import math
 
 import pytest
-from conftest import Run
+from command_line import Run
 
 from reconcile.reporter.cautions import CAUTIONS, NO_HAZARD_WORD
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import json
 
 import pytest
-from conftest import Run
+from command_line import Run
 
 from reconcile.reporter.cautions import NO_HAZARD_WORD
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import json
 
 import pytest
-from conftest import Run
+from command_line import Run
 
 PHOSPHATE = ("0.025 mol/kg KH2PO4", "0.025 mol/kg Na2HPO4", "--at", "25")
 

@@ -11,12 +11,17 @@ from reconcile.chemistry.acids import AcidTable
 from reconcile.chemistry.activity import ActivityModel, activity_model
 from reconcile.chemistry.composition import Contents, FormTable, form_table, pad
 from reconcile.chemistry.engine import solved_ph
-from reconcile.chemistry.shortcuts import HAND_METHODS, Recipe, recipe_of
+from reconcile.chemistry.pair_rows import laid_out
+from reconcile.chemistry.pair_solve import solve_pairs
+from reconcile.chemistry.shortcuts import HAND_METHODS, PKW_25, Recipe, recipe_of
 from reconcile.chemistry.solve import solve
 from reconcile.chemistry.temperature import solvent
 from reconcile.chemistry.water import DENSITY_20C
 from reconcile.records.substances import Form
 
+LEAST_LG = 5e-4
+"""lg below which a coefficient or a constant's change is not named: it would print as 0.000."""
+NO_WATER = 1e-60
 SERVES = 0.01
 """pH within which a hand method serves: the last digit of a usual display; common practice, no source."""
 
@@ -40,6 +45,7 @@ class Facts:
     """What the sentences need of the solution: pH, ionic strength, pKa of each step at 25 °C and I = 0, and as it acts.
 
     lg_gamma : of an ion of charge 1; temperature_c; free_h : molality of hydrogen ions, free_oh : of hydroxide
+    pkw : of water at the temperature; paired : molality of ion pairs and condensed species
     """
 
     ph: float
@@ -50,10 +56,12 @@ class Facts:
     free_oh: float
     pka: tuple[float, ...]
     acting: tuple[float, ...]
+    pkw: float
+    paired: float
 
 
 def _signed(value: float) -> str:
-    return f"{value:.3f}".replace("-", "−")
+    return f"{value + 0.0:.3f}".replace("-0.000", "0.000").replace("-", "−")
 
 
 def _not_simple(recipe: Recipe | None) -> str:
@@ -64,24 +72,52 @@ def _no_buffer(recipe: Recipe) -> str:
     return "" if recipe.total else "the solution holds no weak acid"
 
 
+COUNTS = 1e-3
+"""Share from which on something that a method leaves out is named; 0.1 % of hydrogen ions are 0.0004 pH."""
+
+
+def _constant(facts: Facts, step: int) -> str:
+    return f"pKa at 25 °C and ionic strength 0 ({facts.pka[step]:.3f}; it acts as {facts.acting[step]:.3f})"
+
+
+def _left_out(facts: Facts, amount: float) -> str:
+    """What else a method of one equilibrium leaves out here: water, ion pairs."""
+    least, most = sorted((facts.free_h, facts.free_oh))
+    out = ""
+    if least > COUNTS * most:
+        scarcer = "hydroxide" if facts.free_oh < facts.free_h else "hydrogen ions"
+        out += f"; leaves out that water gives as much as {least:.2g} mol/kg of {scarcer} beside {most:.2g}"
+    return out + _pairs_left_out(facts, amount)
+
+
+def _pairs_left_out(facts: Facts, amount: float) -> str:
+    if facts.paired <= COUNTS * amount:
+        return ""
+    return f"; leaves out ion pairs and condensed species, {facts.paired:.2g} mol/kg here"
+
+
 def _why_square_root(recipe: Recipe, facts: Facts) -> str:
+    left_out = _left_out(facts, recipe.total)
     if recipe.removed > 0.5:
-        share = facts.free_oh / recipe.total
-        return (
-            f"takes the base as hardly protonated (here {100 * share:.2g} % of it) and its constant at 25 °C without "
-            "activity coefficients"
-        )
-    share = facts.free_h / recipe.total
+        share = (facts.free_oh - facts.free_h) / recipe.total
+        hardly = f"takes the base as hardly protonated (here {100 * share:.3g} % of it)"
+        return f"{hardly} and {_constant(facts, -1)}{left_out}"
+    share = (facts.free_h - facts.free_oh) / recipe.total
     over = recipe.total / 10.0 ** -facts.pka[0]
-    return (
-        f"takes the acid as hardly ionized (here about {100 * share:.2g} %, C/Ka {over:.3g}) and leaves out water and "
-        "activity coefficients"
-    )
+    hardly = f"takes the acid as hardly ionized (here about {100 * share:.3g} %, C/Ka {over:.3g})"
+    return f"{hardly} and {_constant(facts, 0)}{_later(facts)}{left_out}"
+
+
+def _later(facts: Facts) -> str:
+    """The next step of an acid, where it is under way."""
+    if len(facts.acting) < 2 or 10.0 ** (facts.ph - facts.acting[1]) < 10.0 * COUNTS:
+        return ""
+    return f"; leaves out the next step, pKa {facts.pka[1]:.3f}"
 
 
 def _why_quadratic(recipe: Recipe, facts: Facts) -> str:
-    acting = f"pKa acts as {facts.acting[0]:.3f}, not {facts.pka[0]:.3f}"
-    return f"counts the ionization, but not activity coefficients: {acting}"
+    what = f"counts the ionization, but takes {_constant(facts, 0)}"
+    return what + _later(facts) + _left_out(facts, recipe.total)
 
 
 def _why_ratio(recipe: Recipe, facts: Facts) -> str:
@@ -89,15 +125,20 @@ def _why_ratio(recipe: Recipe, facts: Facts) -> str:
     step = min(max(int(np.floor(lost)), 0), len(facts.pka) - 1)
     least = min(lost - step, 1.0 - (lost - step)) * recipe.total
     free = max(facts.free_h, facts.free_oh)
-    return (
-        f"takes pKa at 25 °C and ionic strength 0 ({facts.pka[step]:.3f}; it acts as {facts.acting[step]:.3f}) and the "
-        f"amounts as mixed (free hydrogen or hydroxide ions are {100 * free / least:.2g} % of the smaller one)"
-    )
+    mixed = f"the amounts as mixed (free hydrogen or hydroxide ions are {100 * free / least:.2g} % of the smaller one)"
+    return f"takes {_constant(facts, step)} and {mixed}{_pairs_left_out(facts, recipe.total)}"
 
 
 def _why_strong(recipe: Recipe, facts: Facts) -> str:
-    coefficient = f"lg of the coefficient is {_signed(facts.lg_gamma)} here"
-    return f"takes activity as concentration: {coefficient}; and leaves out water"
+    out = []
+    if abs(facts.lg_gamma) >= LEAST_LG:
+        out.append(f"takes activity as concentration: lg of the coefficient is {_signed(facts.lg_gamma)} here")
+    if recipe.strong > 0.0 and abs(facts.pkw - PKW_25) >= 2.0 * LEAST_LG:
+        out.append(f"takes pKw at 25 °C, {PKW_25:.3f}, which is {facts.pkw:.3f} at {facts.temperature_c:g} °C")
+    left_out = _left_out(facts, abs(recipe.strong)).removeprefix("; ")
+    if left_out:
+        out.append(left_out)
+    return "; ".join(out) or "takes activity as concentration and leaves out water, which matters little here"
 
 
 _WHY = {
@@ -181,9 +222,13 @@ def _without_water(
 ) -> HandValue:
     name = "full balance without the ionization of water"
     water = solvent(contents.temperature_c)
-    chunk, _ = pad(contents, np.arange(1), table, acids, water, model)
-    chunk.kw *= 1e-60
-    ph, _, solved = solve(chunk, model)
+    chunk, padding = pad(contents, np.arange(1), table, acids, water, model)
+    _, lay, _ = laid_out(chunk, padding, contents, table, acids, water, np.ones(1, bool))
+    chunk.kw = chunk.kw * NO_WATER  # the pairs keep their constants, also those that count hydroxide as a part
+    ph, strength, solved = solve(chunk, model)
+    if lay is not None and solved[0]:
+        lay.rest.kw = lay.rest.kw * NO_WATER
+        ph, _, _, solved = solve_pairs(lay, model, ph, strength)
     if not solved[0] or not 0.0 < ph[0] < 14.0:
         return HandValue(
             name, float("nan"), float("nan"), "does not apply: without hydroxide the charges cannot balance"

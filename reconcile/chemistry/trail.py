@@ -14,6 +14,7 @@ from reconcile.chemistry.hand_record import Facts, HandValue, hand_values
 from reconcile.chemistry.pair_rows import laid_out
 from reconcile.chemistry.pair_solve import solve_pairs
 from reconcile.chemistry.pka_law import equations
+from reconcile.chemistry.prediction import u_of_model
 from reconcile.chemistry.solve import solve
 from reconcile.chemistry.temperature import solvent
 from reconcile.chemistry.trail_species import Solved, Species, acting, all_species
@@ -183,6 +184,8 @@ def trail(forms: Sequence[Form], molality: Sequence[float], temperature_c: float
         by_name["OH-"].molality,
         tuple(c.pka_25c for c in constants),
         tuple(c.acting for c in constants),
+        float(water.pkw[0]),
+        sum(by_name[pair.name].molality for pair in solved.pairs if pair.name in by_name),
     )
     kelvin = np.array(temperature_c + ZERO_CELSIUS)
     return Trail(
@@ -192,7 +195,7 @@ def trail(forms: Sequence[Form], molality: Sequence[float], temperature_c: float
         float(water.pkw[0]),
         float(water.a[0]),
         float(water.b[0]),
-        (model.name, model.source, model.coefficient),
+        (model.name, model.source, f"{model.coefficient}; standard uncertainty {u_of_model(model, settings):g}"),
         facts.ph,
         facts.strength,
         constants,

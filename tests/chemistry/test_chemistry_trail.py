@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 
 from reconcile.chemistry.activity import ACTIVITY_MODELS
+from reconcile.chemistry.hand_record import HandValue
 from reconcile.chemistry.predict import forms_named, predict_ph
 from reconcile.chemistry.trail import trail
 from reconcile.pipeline import predict_parts
@@ -121,3 +122,42 @@ def test_parts_give_their_trail_and_none_where_nothing_was_solved() -> None:
     laid_open = predicted.trail()
     assert laid_open is not None
     assert laid_open.ph == pytest.approx(predicted.prediction.ph[0])
+
+
+def by_hand(recipe: dict[str, float], method: str, celsius: float = 25.0) -> HandValue:
+    found = trail(forms_named(list(recipe)), list(recipe.values()), celsius, Settings())
+    (one,) = (h for h in found.hand if h.method == method)
+    return one
+
+
+def test_very_dilute_strong_acid_fails_for_water_alone() -> None:
+    """1e-7 mol/L: h = (1 + sqrt 5)/2 1e-7, pH 6.79 and not 7 (by hand from Kw = 1e-14)."""
+    one = by_hand({"HCl": 1e-7}, "strong acid or base alone")
+    assert one.difference == pytest.approx(np.log10((1.0 + np.sqrt(5.0)) / 2.0), abs=0.003)
+    assert "water" in one.why
+    assert "coefficient" not in one.why
+
+
+def test_strong_base_away_from_25_c_names_the_constant_of_water() -> None:
+    """pKw 13.62 at 37 °C (IAPWS R11-07, as the water tests have it): 0.375 less than at 25 °C, and lg γ beside it."""
+    one = by_hand({"NaOH": 0.01}, "strong acid or base alone", 37.0)
+    assert one.difference == pytest.approx(13.995 - 13.62 + 0.045, abs=0.005)
+    assert "pKw at 25 °C, 13.995, which is 13.62" in one.why
+
+
+def test_water_neglected_leaves_the_polyborates_in_place() -> None:
+    """Hydroxide is about 3e-6 mol/kg beside 0.05 of borate: leaving it out moves pH by less than 1e-4."""
+    one = by_hand(RECIPES["borate"], "full balance without the ionization of water")
+    assert abs(one.difference) < 1e-4
+    assert "condensed species" in by_hand(RECIPES["borate"], "ratio of base to acid").why
+
+
+def test_a_weak_acid_nearly_all_ionized_is_said_to_be() -> None:
+    one = by_hand({"acetic acid": 1e-8}, "square root of Ka C")
+    assert "about 99." in one.why  # Ka / (Ka + h) = 1.75e-5 / 1.76e-5
+    assert "leaves out that water gives" in one.why
+
+
+def test_the_model_names_its_uncertain_coefficient_with_u() -> None:
+    found = trail(forms_named(["HCl"]), [0.01], 25.0, Settings({"uncertainty.linear_coefficient": 0.07}))
+    assert found.model[2].endswith("standard uncertainty 0.07")

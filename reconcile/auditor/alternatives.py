@@ -76,5 +76,5 @@ def alternatives(
 
 
 def candidates(forms: Iterable[Form]) -> list[Form]:
-    """Forms that can stand in a bottle at all: everything but water itself."""
-    return [f for f in forms if f.name != "water"]
+    """Forms that can stand in a bottle at all: everything but water itself, and carbon dioxide."""
+    return [f for f in forms if f.name not in ("water", "carbon dioxide")]

@@ -13,11 +13,9 @@ from reconcile.chemistry.uncertainty import ROOT3
 from reconcile.chemistry.water import DENSITY_20C
 from reconcile.records.arrays import FloatArray
 from reconcile.records.settings import Settings
-from reconcile.records.substances import Form
+from reconcile.records.substances import package_forms
 
-CARBON_DIOXIDE = Form(
-    "carbon dioxide", (), "CO2", 44.009, CARBONIC, 0.0, 1.0, {}, "", "", "", "", "", "carbon dioxide taken up"
-)
+CARBON_DIOXIDE = next(form for form in package_forms() if form.name == "carbon dioxide")
 STRAIGHT = 0.02
 """pH that all of it could move at most, up to which the slope at the recorded solution serves."""
 

@@ -22,6 +22,7 @@ from reconcile.records.substances import Form
 LEAST_LG = 5e-4
 """lg below which a coefficient or a constant's change is not named: it would print as 0.000."""
 NO_WATER = 1e-60
+RATIO = "ratio of base to acid"
 SERVES = 0.01
 """pH within which a hand method serves: the last digit of a usual display; common practice, no source."""
 
@@ -120,13 +121,28 @@ def _why_quadratic(recipe: Recipe, facts: Facts) -> str:
     return what + _later(facts) + _left_out(facts, recipe.total)
 
 
+def _step_of(recipe: Recipe, facts: Facts) -> int:
+    """Step (from 0) between whose states a recipe stands."""
+    return min(max(int(np.floor(recipe.removed + recipe.strong / recipe.total)), 0), len(facts.pka) - 1)
+
+
 def _why_ratio(recipe: Recipe, facts: Facts) -> str:
-    lost = recipe.removed + recipe.strong / recipe.total
-    step = min(max(int(np.floor(lost)), 0), len(facts.pka) - 1)
+    lost, step = recipe.removed + recipe.strong / recipe.total, _step_of(recipe, facts)
     least = min(lost - step, 1.0 - (lost - step)) * recipe.total
     free = max(facts.free_h, facts.free_oh)
     mixed = f"the amounts as mixed (free hydrogen or hydroxide ions are {100 * free / least:.2g} % of the smaller one)"
-    return f"takes {_constant(facts, step)} and {mixed}{_pairs_left_out(facts, recipe.total)}"
+    others = _in_other_states(facts, step)
+    out = f"takes {_constant(facts, step)} and {mixed}"
+    if others > COUNTS:
+        out += f"; counts this step alone, where {100 * others:.2g} % of the acid stands in states of another"
+    return out + _pairs_left_out(facts, recipe.total)
+
+
+def _in_other_states(facts: Facts, step: int) -> float:
+    """Share of an acid in states that take no part in one of its steps (from 0)."""
+    lg = np.concatenate([[0.0], np.cumsum(facts.ph - np.array(facts.acting))])
+    weight = 10.0 ** (lg - lg.max())
+    return float(1.0 - weight[step : step + 2].sum() / weight.sum())
 
 
 def _why_strong(recipe: Recipe, facts: Facts) -> str:
@@ -144,7 +160,7 @@ def _why_strong(recipe: Recipe, facts: Facts) -> str:
 _WHY = {
     "square root of Ka C": _why_square_root,
     "quadratic": _why_quadratic,
-    "ratio of base to acid": _why_ratio,
+    RATIO: _why_ratio,
     "strong acid or base alone": _why_strong,
 }
 
@@ -183,7 +199,7 @@ def hand_values(
             reason = _not_simple(recipe) or (_no_buffer(recipe) if recipe else "") or "the solution is not of that kind"
             out.append(HandValue(name, float("nan"), float("nan"), f"does not apply: {reason}"))
             continue
-        out.append(_judged(name, value, facts, _WHY[name](recipe, facts)))
+        out.append(_judged(name, value, facts, _WHY[name](recipe, facts), name == RATIO and _cancels(recipe, facts)))
     contents = Contents(
         np.array([0, len(forms)]),
         np.arange(len(forms)),
@@ -212,9 +228,16 @@ def hand_values(
     return tuple(out)
 
 
-def _judged(name: str, value: float, facts: Facts, why: str) -> HandValue:
+def _judged(name: str, value: float, facts: Facts, why: str, cancels: bool = False) -> HandValue:
     difference = value - facts.ph
-    return HandValue(name, value, difference, f"serves here: {why}" if abs(difference) < SERVES else why)
+    serves = "comes near here because errors cancel: " if cancels else "serves here: "
+    return HandValue(name, value, difference, serves + why if abs(difference) < SERVES else why)
+
+
+def _cancels(recipe: Recipe, facts: Facts) -> bool:
+    """Whether the constant that the ratio takes is off by more than would serve."""
+    step = _step_of(recipe, facts)
+    return abs(facts.pka[step] - facts.acting[step]) > SERVES
 
 
 def _without_water(

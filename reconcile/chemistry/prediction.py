@@ -7,9 +7,10 @@ from collections.abc import Mapping
 import numpy as np
 
 from reconcile.chemistry.acids import AcidTable
-from reconcile.chemistry.activity import DAVIES_RANGE, ActivityModel
+from reconcile.chemistry.activity import DAVIES_RANGE, SIZE_HYDROGEN, ActivityModel
 from reconcile.chemistry.composition import entries_at
 from reconcile.chemistry.engine import Answers, Ragged
+from reconcile.chemistry.temperature import debye_hueckel
 from reconcile.chemistry.uncertainty import combined, rows_of
 from reconcile.records.arrays import FloatArray, IntArray, TextArray, Triplets
 from reconcile.records.results import Prediction
@@ -36,13 +37,36 @@ def triplets(part: Ragged, columns: int) -> Triplets:
     return Triplets(rows_of(part.start), part.column, part.value, (len(part.start) - 1, columns))
 
 
+def range_of(model: ActivityModel, settings: Settings) -> float:
+    """Ionic strength to which a model is taken at its word [mol/kg]."""
+    highest = float(settings["status.outside_model_ionic_strength"])
+    return min(highest, model.highest) if model.highest < DAVIES_RANGE else highest
+
+
+def beyond_range(
+    strength: FloatArray, temperature_c: FloatArray, model: ActivityModel, settings: Settings
+) -> FloatArray:
+    """What a model's uncertain coefficient may do to hydrogen ions alone beyond its range [pH] (n,), 0 within.
+
+    One error for all ions cancels in some solutions, such as a weak acid in much salt. Beyond the range ions differ,
+    and what their differences leave is taken to be as large as the error of the hydrogen ion itself.
+    """
+    highest = range_of(model, settings)
+    extra = np.zeros(len(strength))
+    far = np.flatnonzero(strength > highest)
+    if len(far):
+        a, _, b, _ = debye_hueckel(temperature_c[far])
+        size = np.array(SIZE_HYDROGEN)
+        at, limit = (model.exponent(a, b, s, size)[4] for s in (strength[far], np.full(len(far), highest)))
+        extra[far] = u_of_model(model, settings) * np.abs(at - limit)
+    return extra
+
+
 def statuses(
     ph: FloatArray, strength: FloatArray, capacity: FloatArray, model: ActivityModel, settings: Settings
 ) -> TextArray:
     """Status of every row: not_solved, outside_model, pH beyond the electrode's range, unbuffered, too few ions, ok."""
-    highest = float(settings["status.outside_model_ionic_strength"])
-    if model.highest < DAVIES_RANGE:
-        highest = min(highest, model.highest)
+    highest = range_of(model, settings)
     status = np.full(len(ph), "ok", object)
     with np.errstate(invalid="ignore"):
         outside = (ph < settings["status.electrode_low_ph"]) | (ph > settings["status.electrode_high_ph"])
@@ -105,6 +129,8 @@ def assemble(
         with np.errstate(divide="ignore", invalid="ignore"):
             scale = drawn[which] / combined(budget)
         budget = {name: np.where(np.isfinite(scale), share * scale, share) for name, share in budget.items()}
+    beyond = beyond_range(answers.ionic_strength, solved_at, model, settings)[which]
+    budget["activity model"] = np.hypot(budget["activity model"], beyond)
     budget["carbon dioxide"] = gas[which]
     with np.errstate(divide="ignore", invalid="ignore"):
         capacity = 1.0 / answers.d_titrant

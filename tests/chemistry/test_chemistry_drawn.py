@@ -127,3 +127,11 @@ def test_the_slope_and_solving_again_agree_where_they_meet() -> None:
 def test_open_to_air_leaves_no_share() -> None:
     open_air = Settings({"prediction.open_to_air": True})
     assert predict_ph(["NaOH"], [1e-3], settings=open_air).budget["carbon dioxide"][0] == 0.0
+
+
+def test_a_given_amount_of_carbon_dioxide_makes_carbonate_of_its_base() -> None:
+    """CO2 + 2 NaOH is Na2CO3 and water: the same solution, weighed in another way."""
+    names = ["NaOH", "carbon dioxide", "sodium carbonate"]
+    found = predict_ph(names, [[0.010, 0.001, 0.0], [0.008, 0.0, 0.001], [0.010, 0.0, 0.0]])
+    assert found.ph[0] == pytest.approx(found.ph[1], abs=1e-9)
+    assert found.ph[0] < found.ph[2] - 0.05

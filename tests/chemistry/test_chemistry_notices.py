@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import numpy as np
 import pytest
 
 from reconcile.chemistry.notices import SENTENCES, notices, notices_of_record
@@ -87,3 +88,17 @@ def test_notices_of_a_record_name_its_solutions() -> None:
     strict = Settings({**simulated.settings.changed, "status.outside_model_ionic_strength": 0.05})
     said = notices_of_record(simulated.records, prediction, strict)
     assert {n.code for some in said.values() for n in some} == {"concentrated"}
+
+
+def test_beyond_the_range_u_grows_even_where_one_error_of_all_ions_cancels() -> None:
+    """A weak acid alone in salt: hydrogen and its anion share one coefficient, which cancels; in 3 mol/kg of salt pH is
+    not known to 0.01 (single ions differ by 0.1 in lg γ from 1 mol/kg on: Robinson and Stokes 1959, from memory)."""
+    salt = np.array([0.3, 0.49, 0.51, 0.7, 1.0, 2.0, 3.0, 5.0])
+    found = predict_ph(["acetic acid", "NaCl"], np.column_stack([np.full(len(salt), 0.1), salt]), unit="mol/kg")
+    assert np.all(found.u[:2] < 0.01)
+    assert found.u[2] - found.u[1] < 0.002
+    assert np.all(np.diff(found.u[2:]) > 0.0)
+    assert found.u[4] > 0.03
+    assert found.u[6] > 0.1
+    assert set(found.status[2:]) == {"outside_model"}
+    assert found.u == pytest.approx(np.sqrt(sum(share**2 for share in found.budget.values())))

@@ -130,6 +130,7 @@ def audit(
     """
     from reconcile.auditor.audit import audit as explain
     from reconcile.chemistry.library import constants_met
+    from reconcile.chemistry.notices_of_record import noted
     from reconcile.chemistry.predict import predict_records as predict
     from reconcile.chemistry.predict import repredictor
     from reconcile.chemistry.shortcuts import shortcut_values
@@ -140,6 +141,7 @@ def audit(
     records = _record(source, chosen, columns)
     say("predicting every reading", 0.2)
     prediction = predict(records, chosen)
+    records = noted(records, prediction, chosen)
     say("searching for explanations", 0.3)
     found = explain(
         records,
@@ -283,14 +285,6 @@ def predict_parts(
     if problems:
         raise InputProblems(problems)
     return predict_composition(compose(found, to), at, chosen)
-
-
-def keep_substances(path: FilePath, beside: FilePath | None = None, replace: bool = False) -> tuple[list[str], Path]:
-    """Check a file of a site's own substances and keep a copy; gives their names, and where the copy lies."""
-    from reconcile.records.own_substances import keep
-
-    own, where = keep(Path(path), None if beside is None else Path(beside), replace)
-    return [form.name for form in own.forms], where
 
 
 def substances(word: str = "") -> LibraryAnswer:

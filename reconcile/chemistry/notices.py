@@ -15,8 +15,6 @@ from pathlib import Path
 import numpy as np
 
 from reconcile.chemistry.acids import AcidTable, acid_table
-from reconcile.chemistry.water import DENSITY_20C
-from reconcile.records.book import BatchRecords
 from reconcile.records.results import Prediction
 from reconcile.records.settings import Settings
 from reconcile.records.substances import Form, catalogue
@@ -140,27 +138,6 @@ def notices(
     ]
     order = list(SENTENCES)
     return tuple(sorted(out, key=lambda notice: order.index(notice.code)))
-
-
-def notices_of_record(
-    records: BatchRecords, prediction: Prediction, settings: Settings
-) -> dict[int, tuple[Notice, ...]]:
-    """Notices on the solutions that a record's readings are of: index of the solution -> its notices, where any.
-
-    prediction : of every reading, as predict_records gives it; the first reading of a solution speaks for it
-    """
-    solutions = records.solutions
-    start = np.searchsorted(solutions.solution, np.arange(len(solutions) + 1))
-    scale = np.where(np.asarray(solutions.per_kg_water, bool), 1.0, 1.0 / DENSITY_20C)
-    which, first = np.unique(np.asarray(records.readings_solution, np.intp), return_index=True)
-    out = {}
-    for solution, reading in zip(which.tolist(), first.tolist(), strict=True):
-        inside = slice(int(start[solution]), int(start[solution + 1]))
-        forms = [records.forms[int(f)] for f in solutions.form[inside]]
-        said = notices(forms, (solutions.amount[inside] * scale[solution]).tolist(), prediction, reading, settings)
-        if said:
-            out[solution] = said
-    return out
 
 
 def _say(code: str, **words: object) -> Notice:

@@ -58,7 +58,10 @@ def substances(
     if add is not None and word:
         raise typer.BadParameter("--add takes a file, not a word as well")
     if add is not None:
-        names, where = pipeline.keep_substances(add, beside, replace)
+        from reconcile.records.own_substances import keep
+
+        own, where = keep(add, beside, replace)
+        names = [form.name for form in own.forms]
         if json:
             from reconcile.cli.print_json import print_json
 

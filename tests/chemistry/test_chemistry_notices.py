@@ -2,10 +2,14 @@
 
 from __future__ import annotations
 
+from pathlib import Path
+
 import numpy as np
 import pytest
 
-from reconcile.chemistry.notices import SENTENCES, notices, notices_of_record
+import reconcile
+from reconcile.chemistry.notices import SENTENCES, notices
+from reconcile.chemistry.notices_of_record import noted, notices_of_record
 from reconcile.chemistry.predict import forms_named, predict_ph, predict_records
 from reconcile.pipeline import predict_parts
 from reconcile.records.settings import Settings
@@ -102,3 +106,28 @@ def test_beyond_the_range_u_grows_even_where_one_error_of_all_ions_cancels() -> 
     assert found.u[6] > 0.1
     assert set(found.status[2:]) == {"outside_model"}
     assert found.u == pytest.approx(np.sqrt(sum(share**2 for share in found.budget.values())))
+
+
+def test_a_record_has_one_note_for_each_sort_of_notice(tmp_path: Path) -> None:
+    """Nothing is passed over by looking only at solutions that may call for a notice."""
+    recipes, readings = ["Batch,Substance,Amount,Unit"], ["Batch,Temperature (°C),pH"]
+    for i, name in enumerate([*RECIPES, *RECIPES]):
+        recipes += [f"B{i},{substance},{amount},mol/kg" for substance, amount in RECIPES[name].items()]
+        readings.append(f"B{i},25.0,7.00")
+    for file, lines in (("recipes.csv", recipes), ("readings.csv", readings)):
+        (tmp_path / file).write_text("\n".join(lines) + "\n", encoding="utf-8")
+    records = reconcile.read(tmp_path / "readings.csv", tmp_path / "recipes.csv")
+    settings = Settings()
+    prediction = predict_records(records, settings)
+    said = [note for note in noted(records, prediction, settings).notes if note.code == "solution-notice"]
+    wanted = dict.fromkeys(SENTENCES, 0)
+    for reading, solution in enumerate(records.readings_solution.tolist()):
+        own = slice(*np.searchsorted(records.solutions.solution, [solution, solution + 1]))
+        forms = [records.forms[f] for f in records.solutions.form[own]]
+        for notice in notices(forms, records.solutions.amount[own].tolist(), prediction, reading, settings):
+            wanted[notice.code] += 1
+    assert [int(dict(note.words)["count"]) for note in said] == [n for n in wanted.values() if n]
+    assert len(said) > 5
+    assert all(note.place.file == "readings.csv" and note.message().endswith(".") for note in said)
+    again = noted(noted(records, prediction, settings), prediction, settings)
+    assert again.notes == noted(records, prediction, settings).notes

@@ -1,6 +1,6 @@
 """Audits pH readings against batch recipes by full chemical equilibrium.
 
-The doors, each loaded when first used: predict_ph, read, audit, meters, fit_pka, write_report, write_newbook.
+The doors, each loaded when first used: predict_ph, read, audit, meters, fit_pka, write_report, write_newbook, recheck.
 """
 
 from __future__ import annotations
@@ -11,11 +11,22 @@ from typing import TYPE_CHECKING, Any
 if TYPE_CHECKING:
     from reconcile.chemistry.predict import predict_ph
     from reconcile.pipeline import audit, fit_pka, meters, read
+    from reconcile.replay import recheck
     from reconcile.reporter.newbook import write_newbook
     from reconcile.reporter.write import write_report
 
 __version__ = "0.1.0"
-__all__ = ["__version__", "audit", "fit_pka", "meters", "predict_ph", "read", "write_newbook", "write_report"]
+__all__ = [
+    "__version__",
+    "audit",
+    "fit_pka",
+    "meters",
+    "predict_ph",
+    "read",
+    "recheck",
+    "write_newbook",
+    "write_report",
+]
 
 _DOORS = {
     "predict_ph": "reconcile.chemistry.predict",
@@ -23,6 +34,7 @@ _DOORS = {
     "audit": "reconcile.pipeline",
     "meters": "reconcile.pipeline",
     "fit_pka": "reconcile.pipeline",
+    "recheck": "reconcile.replay",
     "write_newbook": "reconcile.reporter.newbook",
     "write_report": "reconcile.reporter.write",
 }

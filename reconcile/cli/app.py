@@ -10,7 +10,7 @@ from typing import Annotated, Any
 import typer
 from typer.core import TyperGroup
 
-from reconcile.cli import audit, meters, newbook, pka, predict, read, substances
+from reconcile.cli import audit, meters, newbook, pka, predict, read, recheck, substances
 from reconcile.cli.exits import DONE, INTERRUPTED, REFUSED, USAGE
 from reconcile.cli.options import DEBUG
 from reconcile.cli.printed import CannotPrint, flushed
@@ -111,7 +111,7 @@ def reconcile(
     """Audits pH readings against batch recipes by full chemical equilibrium."""
 
 
-for module in (read, predict, audit, meters, pka, substances, newbook):
+for module in (read, predict, audit, meters, pka, substances, newbook, recheck):
     module.add_to(app)
 
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import gc
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -27,7 +28,7 @@ from reconcile.importer.solutions import Assigner
 from reconcile.importer.stocks import StockRoom, read_stocks
 from reconcile.records.adjusting import Solved
 from reconcile.records.arrays import AnyArray
-from reconcile.records.book import BatchRecords, Table
+from reconcile.records.book import BatchRecords, FileSource, Table
 from reconcile.records.columns import BY_SHEET, READING_EXTRA
 from reconcile.records.own_substances import OwnSubstances, own_of_record
 from reconcile.records.places import Place
@@ -74,15 +75,18 @@ def _read(
 ) -> BatchRecords:
     book = Book()
     sheets: list[RawSheet] = []
-    for path in paths:
+    files: list[FileSource] = []
+    for path in map(Path, paths):
         try:
-            sheets.extend(read_file(Path(path), settings))
+            found = read_file(path, settings)
+            sheets.extend(found)
+            files += [FileSource(path.as_posix(), sheet.file, sheet.sha256) for sheet in found[:1]]
         except InputProblems as refused:
             book.stops.extend(refused.problems)
     read_sheets(sheets, settings, column_map, names, book)
     if book.stops:
         raise InputProblems(book.stops)
-    return _understood(book, settings, names, own)
+    return replace(_understood(book, settings, names, own), files=tuple(files), column_map=column_map)
 
 
 def _library(own: OwnSubstances) -> Catalogue:
@@ -181,7 +185,7 @@ def _records(
         sheets=tuple(book.sources),
         readings=readings,
         readings_solution=solution[used],
-        **{kind: _table(book, kind) for kind in BY_SHEET if kind != "readings"},
+        **{kind: _table(book, kind) for kind in BY_SHEET if kind != "readings"},  # type: ignore[arg-type]
         forms=forms,
         lots=lots,
         solutions=solutions,

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 
@@ -14,6 +15,15 @@ from reconcile.records.own_substances import OwnSubstances, own_of_record
 from reconcile.records.places import Place
 from reconcile.records.problems import Problem
 from reconcile.records.substances import Form
+
+
+@dataclass(frozen=True)
+class FileSource:
+    """One file that was read: its path as it was given, with forward slashes; its name; its SHA-256."""
+
+    path: str
+    name: str
+    sha256: str
 
 
 @dataclass(frozen=True)
@@ -166,6 +176,8 @@ class BatchRecords:
     open_amounts : amounts left to a pH, whose contributions are NaN until `solved` says what they are
     not_read : sheets that say in their first cell that they are not read (records/columns.py, NOT_READ)
     own : the site's own substances that were known when the record was read
+    files : the files as they were given, in that order; empty where the record was not read from files
+    column_map : the map of columns that was used; empty where there was none
     """
 
     sheets: tuple[SheetSource, ...]
@@ -189,6 +201,8 @@ class BatchRecords:
     solved: Solved = field(default_factory=Solved)
     not_read: tuple[Place, ...] = ()
     own: OwnSubstances = field(default_factory=OwnSubstances)
+    files: tuple[FileSource, ...] = ()
+    column_map: Mapping[str, Mapping[str, Any]] = field(default_factory=dict)
 
     def place(self, table: Table, index: int, name: str = "") -> Place:
         """Place of a row of a table, or of one field in it."""

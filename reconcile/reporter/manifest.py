@@ -42,7 +42,9 @@ def sha256(content: bytes) -> str:
 
 
 def inputs(result: Reported) -> list[dict[str, str]]:
-    """Name and SHA-256 of every file read, in the order they were given."""
+    """Name and SHA-256 of every file read, in the order they were given, with its path as it was given."""
+    if result.records.files:
+        return [{"name": plain(f.name), "sha256": f.sha256, "path": plain(f.path)} for f in result.records.files]
     found: dict[tuple[str, str], None] = {}
     for sheet in result.records.sheets:
         found.setdefault((sheet.file, sheet.sha256))
@@ -84,20 +86,28 @@ def report_id(result: Reported, command: str = AUDIT) -> str:
     content: list[Any] = [sorted(i["sha256"] for i in inputs(result)), _settings(result), __version__]
     if result.records.own.files:
         content.append(sorted(result.records.own.key))
+    if result.records.column_map:
+        content.append(result.records.column_map)
     if command != AUDIT:
         content.append(command)
     return _id(json.dumps(content, sort_keys=True))
 
 
 def manifest(
-    result: Reported, outputs: Mapping[str, bytes], written_at: datetime | None = None, command: str = AUDIT
+    result: Reported,
+    outputs: Mapping[str, bytes],
+    written_at: datetime | None = None,
+    command: str = AUDIT,
+    question: Mapping[str, Any] | None = None,
 ) -> bytes:
     """manifest.json as bytes.
 
     outputs : path within the folder, with forward slashes -> content
     written_at : aware time of writing; now, when None
     command : that makes the same report again
+    question : what was asked of the readings, where the command asks something
     """
+    records = result.records
     when = (written_at or datetime.now(UTC)).astimezone(UTC)
     document = {
         "schema": SCHEMA,
@@ -111,10 +121,17 @@ def manifest(
         "rows": result.rows,
         "settings": _settings(result),
         "settings_changed": sorted(result.settings.changed),
+        **({"column_map": records.column_map} if records.column_map else {}),
+        **({"question": question} if question else {}),
         "constants": constants(),
         "own_substances": [
-            {"name": file.name, "sha256": file.sha256, "where": file.where} for file in result.records.own.files
+            {"name": file.name, "sha256": file.sha256, "where": file.where} for file in records.own.files
         ],
         "libraries": {name: version(name) for name in LIBRARIES},
     }
+    return manifest_text(document)
+
+
+def manifest_text(document: Mapping[str, Any]) -> bytes:
+    """A manifest's document as it is written."""
     return (json.dumps(document, ensure_ascii=False, indent=2, allow_nan=False) + "\n").encode("utf-8")

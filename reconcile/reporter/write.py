@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 import os
 from collections.abc import Callable
+from dataclasses import asdict
 from pathlib import Path
 
 from reconcile.records.meter_results import MeterHistory
@@ -50,16 +51,22 @@ def write_report(
     """
     folder = Path(out).resolve()
     check_place(folder, replace)
-    say = progress or (lambda _what, _share: None)
-    if isinstance(result, MeterHistory):
-        files, command = meter_contents(result, say), METERS
-    elif isinstance(result, PkaFit):
-        files, command = pka_contents(result, say), pka_command(result)
-    else:
-        files, command = contents(result, say), AUDIT
-    files[MANIFEST] = manifest(result, files, command=command)
+    files = report_files(result, progress or (lambda _what, _share: None))
     put_folder(folder, files, lambda: _check(folder, replace))
     return folder
+
+
+def report_files(result: Audit | MeterHistory | PkaFit, progress: Progress) -> dict[str, bytes]:
+    """Everything that the folder of a report holds: path within it, with forward slashes -> content."""
+    question = None
+    if isinstance(result, MeterHistory):
+        files, command = meter_contents(result, progress), METERS
+    elif isinstance(result, PkaFit):
+        files, command, question = pka_contents(result, progress), pka_command(result), asdict(result.question)
+    else:
+        files, command = contents(result, progress), AUDIT
+    files[MANIFEST] = manifest(result, files, command=command, question=question)
+    return files
 
 
 def check_place(folder: Path, replace: bool) -> None:

@@ -28,7 +28,7 @@ def sh_blocks() -> list[str]:
 
 
 def test_the_commands_offered() -> None:
-    assert set(COMMANDS) == {"read", "predict", "audit", "meters", "pka", "substances", "newbook"}
+    assert set(COMMANDS) == {"read", "predict", "audit", "meters", "pka", "substances", "newbook", "recheck"}
 
 
 @pytest.mark.parametrize("command", sorted(COMMANDS))

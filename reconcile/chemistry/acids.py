@@ -221,7 +221,9 @@ def _package_rows() -> tuple[Ionization, ...]:
 _tables: dict[tuple[object, ...], AcidTable] = {}
 
 
-def acid_table(use_equations: bool = True, ion_pairs: str = "complexes", own: OwnSubstances | None = None) -> AcidTable:
+def acid_table(
+    use_equations: bool = True, ion_pairs: str | tuple[str, ...] = "complexes", own: OwnSubstances | None = None
+) -> AcidTable:
     """The acids that come with the package, a site's own behind.
 
     use_equations, ion_pairs : as the settings choose

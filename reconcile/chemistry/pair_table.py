@@ -90,9 +90,22 @@ def _pair(row: Mapping[str, str]) -> Pair:
 
 
 @cache
-def pairs(choice: str) -> tuple[Pair, ...]:
-    """The species that take part under a choice of the setting; raises ValueError that lists the choices."""
-    if choice not in CHOICES:
-        raise ValueError(f"no choice of ion pairs is called {choice!r}; there are: {', '.join(CHOICES)}")
+def _every() -> tuple[Pair, ...]:
     with (Path(__file__).parent / "ion_pairs.csv").open(encoding="utf-8", newline="") as file:
-        return tuple(pair for pair in map(_pair, csv.DictReader(file)) if pair.kind in CHOICES[choice])
+        return tuple(map(_pair, csv.DictReader(file)))
+
+
+@cache
+def pairs(choice: str | tuple[str, ...]) -> tuple[Pair, ...]:
+    """The species that take part under the setting: one of CHOICES, or several of these and of names of species.
+
+    Raises ValueError that lists what there is.
+    """
+    chosen = (choice,) if isinstance(choice, str) else choice
+    names = {pair.name for pair in _every()}
+    for one in chosen:
+        if one not in CHOICES and one not in names:
+            known = ", ".join((*CHOICES, *sorted(names)))
+            raise ValueError(f"no choice of ion pairs is called {one!r}; there are: {known}")
+    kinds = {kind for one in chosen for kind in CHOICES.get(one, ())}
+    return tuple(pair for pair in _every() if pair.kind in kinds or pair.name in chosen)

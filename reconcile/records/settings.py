@@ -9,7 +9,10 @@ from typing import Any
 
 @dataclass(frozen=True)
 class Setting:
-    """One key of a settings file: section, key, default, unit, reason, and the values allowed ((), if any)."""
+    """One key of a settings file: section, key, default, unit, reason, and the values allowed ((), if any).
+
+    listed : where a list of values serves too, what it may hold beside those allowed alone
+    """
 
     section: str
     key: str
@@ -17,6 +20,7 @@ class Setting:
     unit: str
     reason: str
     allowed: tuple[str, ...] = ()
+    listed: tuple[str, ...] = ()
 
     @property
     def name(self) -> str:
@@ -24,6 +28,11 @@ class Setting:
 
 
 AUTO = "auto"
+ION_PAIRS = (
+    *("HF2-", "CaOH+", "MgOH+", "B2O(OH)5-", "B3O3(OH)4-", "B4O5(OH)4(2-)", "NaB(OH)4", "NaHPO4-", "KHPO4-", "NaCO3-"),
+    *("Na citrate(2-)", "K citrate(2-)", "Na phthalate-", "K phthalate-"),
+)
+"""Names of chemistry/ion_pairs.csv."""
 SETTINGS: tuple[Setting, ...] = (
     Setting(
         "reading",
@@ -82,6 +91,7 @@ SETTINGS: tuple[Setting, ...] = (
         "hydrogen difluoride, hydroxides of calcium and magnesium, polyborates; all: sodium and potassium pairs too, "
         "whose effect the activity coefficients hold already",
         ("none", "complexes", "all"),
+        ION_PAIRS,
     ),
     Setting("prediction", "room_temperature_c", 22.0, "°C", "common practice, no source"),
     Setting("prediction", "open_to_air", False, "", "closed vessels are the rule; carbon dioxide is then left out"),
@@ -176,10 +186,15 @@ def _checked(setting: Setting, value: Any) -> Any:
     elif isinstance(default, tuple):
         good = isinstance(value, (list, tuple)) and all(isinstance(v, str) for v in value)
         value = tuple(value) if good else value
+    elif setting.listed and isinstance(value, (list, tuple)):
+        good = all(one in (*setting.allowed, *setting.listed) for one in value)
+        value = tuple(dict.fromkeys(value)) if good else value
     else:
         good = isinstance(value, str) and (not setting.allowed or value in setting.allowed)
     if not good:
         wanted = f"one of {', '.join(setting.allowed)}" if setting.allowed else f"a value such as {default!r}"
+        if setting.listed:
+            wanted += f", or a list of these and of {', '.join(setting.listed)}"
         raise SettingsError(f"setting {setting.name} reads {value!r}; expected {wanted}")
     return float(value) if isinstance(default, float) else value
 

@@ -44,7 +44,8 @@ def scope(audit: Audit, lookups: Lookups) -> list[tuple[str, str]]:
     missing = int(np.isnan(readings["temperature"]).sum())
     if missing:
         facts.append(("Without temperature", f"{counted(missing, 'reading')}, taken at the settings' room temperature"))
-    changed = [f"{name} = {audit.settings[name]}" for name in sorted(audit.settings.changed)]
+    values = [(name, audit.settings[name]) for name in sorted(audit.settings.changed)]
+    changed = [f"{name} = {', '.join(v) if isinstance(v, tuple) else v}" for name, v in values]
     facts.append(("Settings that differ", listed([plain(c) for c in changed], 20) or "none from the defaults"))
     if records.without_effect:
         facts.append(("Declared without effect on pH", listed([plain(w) for w in records.without_effect], 12)))

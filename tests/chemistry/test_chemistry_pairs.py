@@ -14,7 +14,7 @@ from reconcile.chemistry.activity import ACTIVITY_MODELS
 from reconcile.chemistry.composition import Contents, form_table
 from reconcile.chemistry.pair_table import CHOICES, pairs
 from reconcile.chemistry.predict import forms_named, predict_ph
-from reconcile.records.settings import Settings
+from reconcile.records.settings import ION_PAIRS, Settings, SettingsError
 
 RECIPES = {
     "borax": {"borax": 0.05},
@@ -143,3 +143,35 @@ def test_a_choice_that_does_not_exist_lists_the_choices() -> None:
 def test_a_species_made_of_what_no_table_holds_is_refused() -> None:
     with pytest.raises(ValueError, match="no table of ions holds"):
         pair_table._pair({"pair": "X", "parts": "Zz+|OH-"})
+
+
+def test_each_species_is_switched_by_its_name() -> None:
+    """Alone, each moves what it takes part in; a list of all is "all", one of none is "none"."""
+    assert {pair.name for pair in pairs("all")} == set(ION_PAIRS)
+    for name in ION_PAIRS:
+        (alone,) = pairs((name,))
+        assert alone.name == name
+        assert name not in {pair.name for pair in pairs(tuple(n for n in ION_PAIRS if n != name))}
+    assert pairs(ION_PAIRS) == pairs("all")
+    assert {n.name for n in pairs(("complexes", "NaHPO4-"))} == {n.name for n in pairs("complexes")} | {"NaHPO4-"}
+    assert pairs(()) == pairs("none")
+    recipe = RECIPES["phosphate"]
+    forms, amounts = forms_named(list(recipe)), list(recipe.values())
+    found = {
+        names: predict_ph(forms, amounts, settings=Settings.from_sections({"prediction": {"ion_pairs": list(names)}}))
+        for names in ((), ("NaHPO4-",), ("KHPO4-",), ("NaHPO4-", "KHPO4-"), ("NaCO3-",))
+    }
+    ph = {names: float(prediction.ph[0]) for names, prediction in found.items()}
+    assert ph["NaCO3-",] == ph[()]
+    assert ph["NaHPO4-", "KHPO4-"] < ph["NaHPO4-",] < ph["KHPO4-",] < ph[()]  # more sodium than potassium here
+
+
+def test_a_species_that_does_not_exist_is_refused() -> None:
+    with pytest.raises(ValueError, match=r"NaCl.*none, complexes, all"):
+        pairs(("NaCl",))
+    with pytest.raises(SettingsError, match=r"a list of these and of HF2-"):
+        Settings.from_sections({"prediction": {"ion_pairs": ["NaCl"]}})
+    with pytest.raises(SettingsError):
+        Settings.from_sections({"prediction": {"activity_model": ["davies"]}})
+    with pytest.raises(SettingsError):
+        Settings.from_sections({"prediction": {"ion_pairs": [1]}})

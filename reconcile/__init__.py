@@ -1,6 +1,7 @@
 """Audits pH readings against batch recipes by full chemical equilibrium.
 
-The doors, each loaded when first used: predict_ph, read, audit, meters, fit_pka, write_report, write_newbook, recheck.
+The doors, each loaded when first used: predict_ph, read, audit, meters, fit_pka, write_report, write_newbook, recheck,
+since_previous.
 """
 
 from __future__ import annotations
@@ -13,6 +14,7 @@ if TYPE_CHECKING:
     from reconcile.pipeline import audit, fit_pka, meters, read
     from reconcile.replay import recheck
     from reconcile.reporter.newbook import write_newbook
+    from reconcile.reporter.previous import since_previous
     from reconcile.reporter.write import write_report
 
 __version__ = "0.1.0"
@@ -24,6 +26,7 @@ __all__ = [
     "predict_ph",
     "read",
     "recheck",
+    "since_previous",
     "write_newbook",
     "write_report",
 ]
@@ -35,6 +38,7 @@ _DOORS = {
     "meters": "reconcile.pipeline",
     "fit_pka": "reconcile.pipeline",
     "recheck": "reconcile.replay",
+    "since_previous": "reconcile.reporter.previous",
     "write_newbook": "reconcile.reporter.newbook",
     "write_report": "reconcile.reporter.write",
 }

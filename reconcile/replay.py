@@ -16,6 +16,7 @@ from reconcile.records.problems import InputProblems, Problem
 from reconcile.records.settings import BY_NAME, Settings, SettingsError
 from reconcile.reporter.differences import Difference, between_documents, differences
 from reconcile.reporter.manifest import MANIFEST, manifest_text
+from reconcile.reporter.previous import COPY, previous_of, since_previous
 from reconcile.reporter.working_place import settle
 from reconcile.reporter.write import LITTER, report_files
 
@@ -116,6 +117,7 @@ def recheck(folder: Path | str, *files: Path | str, progress: pipeline.Progress 
     if not why_not:
         try:
             result = _result(document, [path for _, path in inputs], progress)
+            result = _since(result, document, place)
             result = _as_it_was_given(result, document["inputs"])
             again = report_files(result, progress or (lambda what, share: None))
             notes += _made_with(document, json.loads(again[MANIFEST]))
@@ -218,6 +220,17 @@ def _result(
         return pipeline.fit_pka(*paths, settings=settings, columns=columns, progress=progress, **asked)
     except TypeError as error:
         raise _Unusable(f"{MANIFEST}, question: {error}") from None
+
+
+def _since(result: Any, document: Mapping[str, Any], place: Path) -> Any:
+    """The result compared with the earlier report whose findings this report keeps, if it was so compared."""
+    named = document.get("previous")
+    if named is None:
+        return result
+    try:
+        return since_previous(result, previous_of((place / COPY).read_bytes(), str(named["report_id"]), COPY))
+    except (OSError, KeyError, TypeError) as error:
+        raise _Unusable(f"{COPY}: {error}") from None
 
 
 def _as_it_was_given(result: Any, inputs: Sequence[Mapping[str, Any]]) -> Any:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
+from typing import Annotated
 
 import typer
 
@@ -21,6 +22,14 @@ from reconcile.cli.options import (
 )
 
 DEFAULT_FOLDER = Path("reports")
+Previous = Annotated[
+    Path | None,
+    typer.Option(
+        "--previous",
+        metavar="FOLDER",
+        help="An earlier report; says which findings are new, which persist and which are gone since.",
+    ),
+]
 
 
 def audit(
@@ -32,6 +41,7 @@ def audit(
     settings: SettingsFile = None,
     columns: ColumnsFile = None,
     strict: Strict = False,
+    previous: Previous = None,
     debug: Debug = False,
 ) -> None:
     """Audit a record and write its report.
@@ -43,12 +53,15 @@ def audit(
     from reconcile.cli.printed import after_writing
     from reconcile.cli.progress import progress_bar
     from reconcile.records.completeness import shortfalls
+    from reconcile.reporter.previous import read_previous, since_previous
     from reconcile.reporter.write import check_place, write_report
 
     folder = out or DEFAULT_FOLDER / files[0].stem
     check_place(folder, replace)
+    then = read_previous(previous) if previous is not None else None
     with progress_bar(quiet) as progress:
         found = pipeline.audit(*files, settings=settings, columns=columns, progress=progress)
+        found = since_previous(found, then) if then is not None else found
         write_report(found, folder, replace=replace, progress=progress)
     with after_writing(folder):
         if json:
@@ -67,5 +80,6 @@ def add_to(app: typer.Typer) -> None:
         epilog=example(
             "reconcile audit sample_data/solution_room.xlsx --out reports/solution_room --replace",
             "reconcile audit readings.csv recipes.csv --settings site.toml --strict",
+            "reconcile audit april.xlsx --previous reports/march",
         )
     )(audit)

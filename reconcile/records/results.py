@@ -16,6 +16,8 @@ from reconcile.records.settings import Settings
 if TYPE_CHECKING:
     import pandas as pd
 
+    from reconcile.records.over_time import Before
+
 
 @dataclass(frozen=True)
 class Prediction:
@@ -187,6 +189,7 @@ class Audit:
     explained_by : TextArray, ids of findings joined by a space
     evidence : True where the reading took part in the model
     constants : the ionization constants met, with their sources
+    before : an earlier report that this audit is compared with
     """
 
     records: BatchRecords
@@ -204,6 +207,7 @@ class Audit:
     hazards: tuple[Hazard, ...]
     spreads: Spreads
     constants: tuple[Constant, ...] = ()
+    before: Before | None = None
 
     @property
     def rows(self) -> dict[str, int]:

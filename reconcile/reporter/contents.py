@@ -8,6 +8,7 @@ from reconcile.records.results import Audit
 from reconcile.reporter import tables
 from reconcile.reporter.drawn import draw_all
 from reconcile.reporter.lookups import Lookups
+from reconcile.reporter.previous import COPY
 from reconcile.reporter.to_csv import table_csv
 from reconcile.reporter.to_html import page
 from reconcile.reporter.to_json import findings_json
@@ -23,6 +24,8 @@ def contents(audit: Audit, progress: Callable[[str, float], None]) -> dict[str, 
     for table in (residuals, tables.set_aside(audit)):
         files[f"{table.name}.csv"] = table_csv(table)
     files["findings.json"] = findings_json(audit)
+    if audit.before is not None:
+        files[COPY] = audit.before.content
     progress("writing the workbook", 0.1)
     files["residuals.xlsx"] = workbook(audit, lookups, residuals)
     drawn = draw_all(audit, lookups, lambda what, share: progress(what, 0.35 + 0.5 * share))

@@ -9,6 +9,7 @@ from dataclasses import dataclass
 from reconcile.records.results import Audit, Finding
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.plain import plain
+from reconcile.reporter.previous import sentence
 from reconcile.reporter.words import (
     STATUSES,
     brief_since,
@@ -39,7 +40,10 @@ class Line:
 
 
 def gist(audit: Audit, lookups: Lookups | None = None) -> list[Line]:
-    """What was checked, what stands out, what to read next, what could not be checked, how complete."""
+    """What was checked, what stands out, what to read next, what could not be checked, how complete.
+
+    A sixth line where the audit is compared with an earlier report: what is new, persists, is gone.
+    """
     lookups = lookups or Lookups(audit)
     return [
         Line("checked", "What was checked", _checked(audit, lookups)),
@@ -47,6 +51,7 @@ def gist(audit: Audit, lookups: Lookups | None = None) -> list[Line]:
         Line("read_next", "What to read next", _read_next(audit)),
         Line("not_checked", "What could not be checked", _not_checked(audit)),
         Line("complete", "How complete", _complete(audit)),
+        *([Line("previous", "Since the previous report", sentence(audit.before))] if audit.before is not None else []),
     ]
 
 

@@ -14,6 +14,8 @@ from typing import Any, Protocol
 
 from reconcile import __version__
 from reconcile.records.book import BatchRecords
+from reconcile.records.over_time import Before
+from reconcile.records.results import Audit
 from reconcile.records.settings import Settings
 from reconcile.reporter.cautions import UNSIGNED
 from reconcile.reporter.plain import plain
@@ -88,9 +90,16 @@ def report_id(result: Reported, command: str = AUDIT) -> str:
         content.append(sorted(result.records.own.key))
     if result.records.column_map:
         content.append(result.records.column_map)
+    before = _before(result)
+    if before is not None:
+        content.append(before.sha256)
     if command != AUDIT:
         content.append(command)
     return _id(json.dumps(content, sort_keys=True))
+
+
+def _before(result: Reported) -> Before | None:
+    return result.before if isinstance(result, Audit) else None
 
 
 def manifest(
@@ -107,7 +116,7 @@ def manifest(
     command : that makes the same report again
     question : what was asked of the readings, where the command asks something
     """
-    records = result.records
+    records, before = result.records, _before(result)
     when = (written_at or datetime.now(UTC)).astimezone(UTC)
     document = {
         "schema": SCHEMA,
@@ -123,6 +132,7 @@ def manifest(
         "settings_changed": sorted(result.settings.changed),
         **({"column_map": records.column_map} if records.column_map else {}),
         **({"question": question} if question else {}),
+        **({"previous": {"report_id": plain(before.report_id), "sha256": before.sha256}} if before else {}),
         "constants": constants(),
         "own_substances": [
             {"name": file.name, "sha256": file.sha256, "where": file.where} for file in records.own.files

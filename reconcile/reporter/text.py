@@ -7,6 +7,7 @@ from reconcile.reporter.cautions import CAUTIONS
 from reconcile.reporter.gist import gist
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.plain import plain
+from reconcile.reporter.previous import lines as previous_lines
 from reconcile.reporter.stocks import stocks
 from reconcile.reporter.words import brief_since, counted, listed, size_words, title
 
@@ -23,6 +24,10 @@ def gist_rows(audit: Audit) -> list[tuple[str, str]]:
     """The gist as rows (label, text); each finding has a row of its own, with its interval and its rivals."""
     rows = []
     for line in gist(audit, Lookups(audit)):
+        if line.key == "previous" and audit.before is not None:
+            rows.append((line.label, f"against report {plain(audit.before.report_id)}"))
+            rows += [("", f"{what}  {text}") for what, text in previous_lines(audit.before)]
+            continue
         rows.append((line.label, line.lead if line.items else line.text))
         if line.items:
             rows += [("", text) for text in finding_lines(audit)]

@@ -20,6 +20,7 @@ from reconcile.reporter.drawn import Drawn
 from reconcile.reporter.gist import gist, silence_in_numbers
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.manifest import inputs, report_id
+from reconcile.reporter.page_previous import previous_part
 from reconcile.reporter.page_tables import anchor, capped, residual_view, set_aside_view, view
 from reconcile.reporter.plain import plain
 from reconcile.reporter.tables import Table
@@ -93,6 +94,7 @@ def page(audit: Audit, lookups: Lookups, residuals: Table, drawn: list[Drawn]) -
         overview=page_findings.overview(lookups),
         calculated=page_findings.calculated(lookups),
         sections=page_findings.sections(audit, lookups, drawn),
+        previous=previous_part(audit, targets),
         findings_left=max(len(lookups.faults) - page_findings.MOST_SECTIONS, 0),
         pictures=[p for name, p in pictures.items() if name != "smallest_detectable"],
         detectable_picture=pictures["smallest_detectable"] if audit.smallest_detectable else None,

@@ -13,6 +13,7 @@ import numpy as np
 from reconcile import __version__
 from reconcile.records.arrays import IntArray
 from reconcile.records.results import Audit, Finding, Silence
+from reconcile.reporter import previous
 from reconcile.reporter.adjusted import rows_of
 from reconcile.reporter.cautions import CAUTIONS
 from reconcile.reporter.gist import gist
@@ -115,6 +116,7 @@ def findings_document(audit: Audit) -> dict[str, Any]:
         "not_testable": [_silence(s) for s in audit.not_testable],
         "smallest_detectable": [_silence(s) for s in audit.smallest_detectable],
         "hazards": [_hazard(s) for s in stocks(audit)],
+        **({"previous": previous.document(audit.before)} if audit.before is not None else {}),
         **({"adjusted": [value(row) for row in rows_of(audit)]} if len(audit.records.solved) else {}),
     }
 

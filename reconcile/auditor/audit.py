@@ -122,7 +122,7 @@ def statuses(
     limit = float(settings["status.stands_out_z"])
     out = np.abs(z) > limit
     status[out] = "stands_out"
-    told = np.array([bool(b) for b in by])
+    told = np.array([bool(b) for b in by], np.bool_)
     status[told & out & (np.abs(left) <= limit)] = "explained"
     for name in ("outside_model", "outside_electrode_range", "unbuffered"):
         status[prediction.status == name] = name

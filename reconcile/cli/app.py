@@ -16,6 +16,7 @@ from reconcile.cli.options import DEBUG
 from reconcile.cli.printed import CannotPrint, flushed
 from reconcile.records.problems import InputProblems, Problem
 from reconcile.records.settings import SettingsError
+from reconcile.reporter.plain import plain
 
 SHOWN = 20
 """Problems printed before the rest is only counted."""
@@ -25,7 +26,7 @@ WRITE_REPORTS = ("audit", "meters", "pka")
 
 def _say(*lines: str) -> None:
     for line in lines:
-        print(line, file=sys.stderr)
+        print(plain(line), file=sys.stderr)
 
 
 def _refusal(problems: Sequence[Problem]) -> list[str]:

@@ -53,10 +53,11 @@ def audit(
     from reconcile.cli.printed import after_writing
     from reconcile.cli.progress import progress_bar
     from reconcile.records.completeness import shortfalls
+    from reconcile.reporter.plain import folder_name
     from reconcile.reporter.previous import read_previous, since_previous
     from reconcile.reporter.write import check_place, write_report
 
-    folder = out or DEFAULT_FOLDER / files[0].stem
+    folder = out or DEFAULT_FOLDER / folder_name(files[0].stem)
     check_place(folder, replace)
     then = read_previous(previous) if previous is not None else None
     with progress_bar(quiet) as progress:

@@ -124,9 +124,10 @@ def pka(
     from reconcile.cli.printed import after_writing
     from reconcile.cli.progress import progress_bar
     from reconcile.records.completeness import shortfalls
+    from reconcile.reporter.plain import folder_name
     from reconcile.reporter.write import check_place, write_report
 
-    folder = out or DEFAULT_FOLDER / f"{files[0].stem}_pka"
+    folder = out or DEFAULT_FOLDER / folder_name(f"{files[0].stem}_pka")
     check_place(folder, replace)
     with progress_bar(quiet) as progress:
         found = pipeline.fit_pka(

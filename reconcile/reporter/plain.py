@@ -2,9 +2,15 @@
 
 from __future__ import annotations
 
+import re
 from functools import lru_cache
 
 FORMULA_STARTS = ("=", "+", "-", "@", "＝", "＋", "－", "＠")
+NOT_IN_NAMES = re.compile(r'[<>:"/\\|?*]')
+"""What a name of a file may not hold on one system or another, control characters apart."""
+DEVICES = re.compile(r"(con|prn|aux|nul|com[0-9¹²³]|lpt[0-9¹²³])\s*(\.|$)", re.IGNORECASE)
+LONGEST_NAME = 200
+"""Bytes of a folder's name; file systems take 255."""
 LONGEST = 32000
 """Characters of one text that are written; a spreadsheet cell holds 32,767."""
 
@@ -34,3 +40,13 @@ def csv_text(text: str) -> str:
     """Plain text for a CSV field; one that a spreadsheet may take for a formula gets an apostrophe in front."""
     text = plain(text)
     return f"'{text}" if acts_as_formula(text) else text
+
+
+def folder_name(text: str) -> str:
+    """A name for a folder, made of a text, that is one name and no device on every system."""
+    name = NOT_IN_NAMES.sub("_", plain(text)).strip().rstrip(" .")
+    while len(name.encode("utf-8")) > LONGEST_NAME:
+        name = name[:-1].rstrip(" .")
+    if not name.strip("."):
+        return "report"
+    return f"_{name}" if DEVICES.match(name) else name

@@ -11,6 +11,7 @@ import numpy as np
 from scipy import sparse
 
 from reconcile.auditor.adjusted import UNKNOWN_SD, anchor_of, speaking, stock_columns, with_anchors
+from reconcile.auditor.certificates import certificate_columns
 from reconcile.auditor.probes import probe_index
 from reconcile.auditor.subjects import codes, family_names, sessions_of, solution_names
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray, TextArray, Triplets
@@ -51,7 +52,7 @@ class Layout:
     meters, families, batches : names; one of a batch may occur twice
     z : FloatArray (n, q)       columns of the random effects with a prior
     prior : FloatArray (q,)     prior variances; NaN for those estimated from the record (sessions)
-    other : FloatArray (n,)     variance of temperature, certificate and allowance of each reading [pH^2]
+    other : FloatArray (n,)     variance of temperature and allowance of each reading [pH^2]
     shared : FloatArray (n,)    variance shared by the readings of a batch whatever the preparation [pH^2]
     preparation : FloatArray (n,)  d(pH) for a unit relative error in every component, root-sum-square
     first_of_batch : IntArray   where each batch begins
@@ -211,6 +212,9 @@ def build_layout(records: BatchRecords, prediction: Prediction, settings: Settin
     adjusted_stocks, stock_block, stock_variance = stock_columns(records, prediction)
     if adjusted_stocks:
         add("adjusted stock", adjusted_stocks, stock_block.tocsr()[rows].tocsc(), stock_variance.tolist())
+    certificates, certificate_block = certificate_columns(records, prediction, rows)
+    if certificates:
+        add("certificate", certificates, certificate_block, [1.0] * len(certificates))
     counts = np.bincount(session[session >= 0], minlength=len(sessions)) if n else np.zeros(0, np.intp)
     repeated = np.flatnonzero(counts > 1)  # a session with one reading cannot be told from its noise
     session_block = one_hot(session, len(sessions))[:, repeated]
@@ -220,7 +224,6 @@ def build_layout(records: BatchRecords, prediction: Prediction, settings: Settin
     resolution = readings["resolution"][rows]
     display = np.where(np.isfinite(resolution), resolution, 0.0) ** 2 / 12.0
     u_temperature = _budget(prediction, "temperature")[rows]
-    known = _budget(prediction, "certificate")[rows]
     declared = _budget(prediction, "declared without effect")[rows]
     return Layout(
         records=records,
@@ -243,7 +246,7 @@ def build_layout(records: BatchRecords, prediction: Prediction, settings: Settin
         z=sparse.csr_array(sparse.hstack(columns)),
         prior=np.array(prior, float),
         effects=effects,
-        other=u_temperature**2 + known**2 + _allowance(records)[rows],
+        other=u_temperature**2 + _allowance(records)[rows],
         shared=taken[rows] + display + declared**2 + np.where(anchor >= 0, UNKNOWN_SD**2, 0.0),
         preparation=np.sqrt(square[rows]),
         first_of_batch=np.flatnonzero(new),

@@ -6,7 +6,7 @@ All three come from the auditor's mixed model, so that lots, batches and constan
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import numpy as np
 from scipy import sparse, stats
@@ -55,24 +55,11 @@ def meter_readings(audit: Audit) -> MeterReadings | None:
     layout = build_layout(audit.records, audit.prediction, audit.settings, audit.evidence)
     if not len(layout) or not layout.meters:
         return None
-    layout = _with_shared_certificates(layout)
     quiet = without(audit, lambda f: True)[layout.reading]
     components = estimate(layout, audit.settings, r=quiet)
     return MeterReadings(
         layout, components, quiet, without(audit, lambda f: f.subject_type not in OF_METERS)[layout.reading]
     )
-
-
-def _with_shared_certificates(layout: Layout) -> Layout:
-    """The layout with a known solution's certificate as an error that all its readings share, not one of each.
-
-    Noise and agreement rest on many readings of few known solutions; a certificate is wrong by the same amount in all.
-    """
-    stated = layout.prediction.budget.get("certificate")
-    if stated is None:
-        return layout
-    variance = np.nan_to_num(stated)[layout.reading] ** 2
-    return replace(layout, other=np.maximum(layout.other - variance, 0.0), shared=layout.shared + variance)
 
 
 def days_since(audit: Audit) -> FloatArray:

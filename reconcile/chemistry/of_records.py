@@ -10,6 +10,7 @@ import numpy as np
 from reconcile.chemistry.acids import AcidTable, acid_table
 from reconcile.chemistry.activity import ActivityModel, activity_model
 from reconcile.chemistry.carbon_dioxide import CARBON_DIOXIDE, share_of_gas
+from reconcile.chemistry.certified import with_certified
 from reconcile.chemistry.composition import Contents, entries_at, form_table
 from reconcile.chemistry.drawn import errors_of_record, u_drawn
 from reconcile.chemistry.engine import Answers, Ragged, run
@@ -23,9 +24,6 @@ from reconcile.records.book import BatchRecords
 from reconcile.records.results import Change, Prediction
 from reconcile.records.settings import Settings
 from reconcile.records.substances import Form, catalogue
-
-U_CERTIFICATE = 0.01
-"""Standard uncertainty of a known solution's pH where none is stated [pH]; common practice, no source."""
 
 
 @dataclass(frozen=True)
@@ -209,7 +207,7 @@ def predict_rows(
     )
     chain = record.chain_start, record.chain_lot, record.u_lot
     prediction = linked(records, prediction, reading, record.acids, record.u_taking, chain)
-    return _certified(record, _with_allowance(record, prediction, solution), solution)
+    return with_certified(record.records, _with_allowance(record, prediction, solution), solution)
 
 
 def _with_allowance(record: Record, prediction: Prediction, solution: IntArray) -> Prediction:
@@ -239,33 +237,6 @@ def _shares(record: Record, own: Ragged, which: IntArray) -> dict[str, FloatArra
     strength = of_lots(row[entry], record.chain_lot[link], own.value[entry], record.u_lot, u)
     taking = of_independent(own.start, own.value, record.u_taking[own.column])
     return {"strength": strength[which], "taking": taking[which]}
-
-
-def _certified(record: Record, prediction: Prediction, solution: IntArray) -> Prediction:
-    """The same, with known solutions at their certified pH."""
-    table = record.records.solutions
-    ph = np.asarray(table.known_ph, float)[solution]
-    known = np.isfinite(ph)
-    certificate = np.zeros(len(solution))
-    if not known.any():
-        return replace(prediction, budget={**prediction.budget, "certificate": certificate})
-    u = np.asarray(table.known_u, float)[solution]
-    certificate[known] = np.where(np.isfinite(u), u, U_CERTIFICATE)[known]
-    budget = {name: np.where(known, 0.0, share) for name, share in prediction.budget.items()}
-    status = prediction.status.copy()
-    status[known] = "ok"
-    return replace(
-        prediction,
-        ph=np.where(known, ph, prediction.ph),
-        status=status,
-        u=np.where(known, certificate, prediction.u),
-        budget={**budget, "certificate": certificate},
-        ionic_strength=np.where(known, np.nan, prediction.ionic_strength),
-        buffer_capacity=np.where(known, np.nan, prediction.buffer_capacity),
-        d_temperature=np.where(known, 0.0, prediction.d_temperature),
-        d_model=np.where(known, 0.0, prediction.d_model),
-        d_titrant=np.where(known, np.nan, prediction.d_titrant),
-    )
 
 
 def predict_records(records: BatchRecords, settings: Settings) -> Prediction:

@@ -61,7 +61,7 @@ def solutions_of(assigner: Assigner) -> tuple[Solutions, tuple[Form, ...], IntAr
     scaled = np.flatnonzero(owner_of >= 0)
     left_open = open_amounts(composer, scaled, owner_of[scaled], amount[scaled], forms)
     amount[scaled] = np.nan
-    known = np.full((len(made.batch), 2), np.nan)
+    known = np.full((len(made.batch), 3), np.nan)
     for s, value in made.known.items():
         known[s] = value
     per_kg = plain.per_kg_water[group] & (group >= 0) if len(plain.per_kg_water) else np.zeros(len(group), bool)
@@ -87,6 +87,7 @@ def solutions_of(assigner: Assigner) -> tuple[Solutions, tuple[Form, ...], IntAr
         chain_contribution=pairs[:, 0],
         chain_lot=new[pairs[:, 1]],
         without_effect=declared,
+        known_u_temperature=np.nan_to_num(known[:, 2]),
     )
     return result, tuple(forms), used, left_open
 

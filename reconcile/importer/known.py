@@ -54,16 +54,16 @@ class KnownSolutions:
             return None
         return float(np.interp(temperature, t, ph)), float(np.interp(temperature, t, u))
 
-    def at(self, name: str, lot: str, temperature: float, u_kelvin: float) -> tuple[float, float] | None:
-        """(pH, u) at a temperature that is itself uncertain by u_kelvin [K]."""
+    def at(self, name: str, lot: str, temperature: float, u_kelvin: float) -> tuple[float, float, float] | None:
+        """(pH, u, part of u from the temperature) at a temperature that is itself uncertain by u_kelvin [K]."""
         value = self.certified(name, lot, temperature)
         if value is None or u_kelvin == 0.0:
-            return value
+            return None if value is None else (*value, 0.0)
         ends = [self.certified(name, lot, temperature + step) for step in (-1.0, 1.0)]
         known = [ph for ph, _ in (end for end in ends if end is not None)]
         slope = (known[1] - known[0]) / 2.0 if len(known) == 2 else known[0] - value[0] if known else 0.0
         u = U_CERTIFICATE if np.isnan(value[1]) else value[1]
-        return value[0], float(np.hypot(u, slope * u_kelvin))
+        return value[0], float(np.hypot(u, slope * u_kelvin)), abs(slope) * u_kelvin
 
     def is_listed(self, name: str) -> bool:
         """Whether the record or the published standards know the name, at any temperature."""

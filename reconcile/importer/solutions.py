@@ -27,14 +27,14 @@ class SolutionList:
     """Solutions in order of first use.
 
     plain_group : group of a solution composed in bulk, -1 for one in `mixtures` or a known solution
-    mixtures : solution -> Mixture; known : solution -> certified (pH, u)
+    mixtures : solution -> Mixture; known : solution -> certified (pH, u, part of u from the temperature)
     """
 
     batch: list[str] = field(default_factory=list)
     stage: list[str] = field(default_factory=list)
     plain_group: list[int] = field(default_factory=list)
     mixtures: dict[int, Mixture] = field(default_factory=dict)
-    known: dict[int, tuple[float, float]] = field(default_factory=dict)
+    known: dict[int, tuple[float, float, float]] = field(default_factory=dict)
 
     def new(self, batch: str, stage: str, group: int = -1) -> int:
         self.batch.append(batch)

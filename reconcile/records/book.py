@@ -119,6 +119,7 @@ class Solutions:
     chain_contribution, chain_lot : IntArray (k,), pairs; the direct lot is among them.
 
     without_effect : BoolArray (s,), True where the recipe names a substance declared without effect on pH (empty: none)
+    known_u_temperature : FloatArray (s,), the part of known_u that comes from a temperature not recorded (empty: none)
     """
 
     batch: TextArray
@@ -138,6 +139,7 @@ class Solutions:
     chain_contribution: IntArray
     chain_lot: IntArray
     without_effect: AnyArray = field(default_factory=lambda: np.zeros(0, bool))
+    known_u_temperature: FloatArray = field(default_factory=lambda: np.zeros(0))
 
     def __len__(self) -> int:
         return len(self.batch)

@@ -81,8 +81,8 @@ def _steps(fit: PkaFit) -> View:
     """The steps with a fact a row, since there are more facts than steps."""
     table = pka_tables.steps(fit)
     whole = view(table, "steps", table.title, tool=False)
-    names = ["" if len(fit.steps) == 1 else f"Step {step.step}" for step in fit.steps]
-    columns = (Column("what", "", width=30), *(Column(f"s{i}", name, width=30) for i, name in enumerate(names)))
+    names = ["Value" if len(fit.steps) == 1 else f"Step {step.step}" for step in fit.steps]
+    columns = (Column("what", "Quantity", width=30), *(Column(f"s{i}", name, width=30) for i, name in enumerate(names)))
     rows = [
         [heading, *(_short(row.cells[at]) for row in whole.rows)]
         for at, (heading, _) in enumerate(whole.headings)

@@ -1,4 +1,4 @@
-"""report.html in a browser: loads nothing, sorts, filters, links, fits a phone, prints whole."""
+"""The pages in a browser: load nothing, sort, filter, link, fit a phone, print whole."""
 
 from __future__ import annotations
 
@@ -15,11 +15,11 @@ pytestmark = [
 ]
 
 
-def test_opens_from_disk_without_a_request_or_a_message(browser: Chromium, folder: Path) -> None:
-    browser.open(folder / "report.html")
+def test_opens_from_disk_without_a_request_or_a_message(browser: Chromium, any_page: Path) -> None:
+    browser.open(any_page)
     browser.value("new Promise(done => setTimeout(done, 300))")
     requested = [e["request"]["url"] for e in browser.of("Network.requestWillBeSent")]
-    outside = [url for url in requested if not url.startswith(("data:", (folder / "report.html").resolve().as_uri()))]
+    outside = [url for url in requested if not url.startswith(("data:", any_page.resolve().as_uri()))]
     assert outside == []
     assert browser.of("Runtime.consoleAPICalled") == []
     assert browser.of("Runtime.exceptionThrown") == []
@@ -86,8 +86,8 @@ def test_the_keyboard_reaches_and_works_it(browser: Chromium, folder: Path) -> N
 
 
 @pytest.mark.parametrize("width", [400, 768, 1280])
-def test_nothing_scrolls_sideways_but_inside_its_box(browser: Chromium, folder: Path, width: int) -> None:
-    browser.open(folder / "report.html", width)
+def test_nothing_scrolls_sideways_but_inside_its_box(browser: Chromium, any_page: Path, width: int) -> None:
+    browser.open(any_page, width)
     assert browser.value("document.documentElement.scrollWidth") <= width
     over = browser.value(
         "Array.from(document.querySelectorAll('main *')).filter(e => !e.closest('.box') && !e.matches('.unseen') &&"
@@ -117,13 +117,13 @@ CONTRAST = """
 """  # relative luminance and contrast ratio as in WCAG 2.2, https://www.w3.org/TR/WCAG22/#dfn-contrast-ratio
 
 
-def test_text_has_contrast_of_at_least_four_and_a_half(browser: Chromium, folder: Path) -> None:
-    browser.open(folder / "report.html")
+def test_text_has_contrast_of_at_least_four_and_a_half(browser: Chromium, any_page: Path) -> None:
+    browser.open(any_page)
     assert browser.value(CONTRAST) == []
 
 
-def test_prints_with_numbered_pages(browser: Chromium, folder: Path) -> None:
-    browser.open(folder / "report.html")
+def test_prints_with_numbered_pages(browser: Chromium, any_page: Path) -> None:
+    browser.open(any_page)
     data = base64.b64decode(browser.call("Page.printToPDF", {"preferCSSPageSize": True})["data"])
     assert data.startswith(b"%PDF")
     pages = len(re.findall(rb"/Type\s*/Page\b", data))
@@ -131,9 +131,9 @@ def test_prints_with_numbered_pages(browser: Chromium, folder: Path) -> None:
     assert "counter(page)" in browser.value("document.querySelector('style').textContent")
 
 
-def test_headings_are_text_on_paper_so_that_every_page_repeats_them(browser: Chromium, folder: Path) -> None:
+def test_headings_are_text_on_paper_so_that_every_page_repeats_them(browser: Chromium, any_page: Path) -> None:
     """Chromium leaves out buttons where it repeats the head of a table on the next sheet."""
-    browser.open(folder / "report.html")
+    browser.open(any_page)
     browser.call("Emulation.setEmulatedMedia", {"media": "print"})
     shown = browser.value("Array.from(document.querySelectorAll('th button')).map(b => getComputedStyle(b).display)")
     browser.call("Emulation.setEmulatedMedia", {"media": ""})
@@ -142,9 +142,9 @@ def test_headings_are_text_on_paper_so_that_every_page_repeats_them(browser: Chr
 
 
 @pytest.mark.parametrize(("chosen", "width"), [("section:not(.wide) table", 680), ("section.wide table", 1009)])
-def test_no_table_is_cut_by_the_edge_of_the_paper(browser: Chromium, folder: Path, chosen: str, width: int) -> None:
+def test_no_table_is_cut_by_the_edge_of_the_paper(browser: Chromium, any_page: Path, chosen: str, width: int) -> None:
     """A4 less the margins of the style: 180 mm upright, 267 mm across, at 96 px an inch."""
-    browser.open(folder / "report.html", width)
+    browser.open(any_page, width)
     browser.call("Emulation.setEmulatedMedia", {"media": "print"})
     widths = browser.value(f"Array.from(document.querySelectorAll('{chosen}')).map(t => [t.id, t.scrollWidth])")
     browser.call("Emulation.setEmulatedMedia", {"media": ""})

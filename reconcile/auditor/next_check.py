@@ -98,7 +98,8 @@ def practicable(
             row = on_meter(z[[template]].toarray().ravel(), ph)
             batch = layout.batches[layout.batch[template]]
             sd, other = float(batch_sd[template]), float(layout.other[template])
-            checks.append(Check(f"batch {batch}", batch, meter, ph, site, template, row, sd, other, own_noise, probe))
+            label = f"the known solution {batch}" if family == "known solution" else f"batch {batch}"
+            checks.append(Check(label, batch, meter, ph, site, template, row, sd, other, own_noise, probe))
     return checks
 
 
@@ -244,7 +245,7 @@ def next_check(search: Search, state: State, j: int, candidates: Sequence[tuple[
     needed = repeats(means[:, [best]], fixed_part[:, [best]], float(noise[best]))
     if needed:
         return (
-            f"Read {reading} {needed} times. Expected: {outcomes}. {apart} "
+            f"Read {check.solution} {needed} times on meter {check.meter}. Expected: {outcomes}. {apart} "
             f"One such reading would not settle it; the mean of {needed} would. {CAUTION}"
         )
     return (

@@ -187,10 +187,10 @@ def _fill(template: str, values: Mapping[str, str]) -> str:
     return template
 
 
-def support_words(p: float, readings: int, batches: int, rivals: int) -> str:
+def support_words(p: float, readings: int, solutions: int, rivals: int) -> str:
     """How sure, on what, and whether the data can decide."""
     words = (
-        f"It rests on {readings} reading{'s' * (readings != 1)} of {batches} batch{'es' * (batches != 1)}. "
+        f"It rests on {readings} reading{'s' * (readings != 1)} of {solutions} solution{'s' * (solutions != 1)}. "
         f"The chance that a clean record of this size shows anything as striking is {chance_words(p)}."
     )
     if rivals:

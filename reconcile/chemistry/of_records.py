@@ -268,4 +268,14 @@ def predict_records(records: BatchRecords, settings: Settings) -> Prediction:
     """
     record = laid_out(records, settings)
     reading = np.arange(len(records.readings))
-    return predict_rows(record, (), np.full(len(reading), -1, np.intp), reading, closely=True)
+    return _at_anchors(records, predict_rows(record, (), np.full(len(reading), -1, np.intp), reading, closely=True))
+
+
+def _at_anchors(records: BatchRecords, prediction: Prediction) -> Prediction:
+    """The same, with the readings that settled an amount at that pH itself, which the solver met to a rounding."""
+    anchor, observed = records.solved.anchor, records.readings["ph"]
+    if len(anchor) != len(prediction):
+        return prediction
+    with np.errstate(invalid="ignore"):
+        met = (anchor == np.arange(len(anchor))) & (np.abs(prediction.ph - observed) < 1e-7)
+    return replace(prediction, ph=np.where(met, observed, prediction.ph))

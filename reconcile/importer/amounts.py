@@ -15,12 +15,15 @@ from reconcile.records.units import find_unit
 
 _SPLIT = re.compile(r"([+-]?(?:\d[\d.,]*|[.,]\d+)(?:[eE][+-]?\d{1,3})?)\s*([^\d\s.,+-].*)", re.DOTALL)
 _FILL = re.compile(
-    r"(?:q\.?\s?s\.?(?:\s+to)?|ad|to|make up to|made up to|fill to|up to|add to)\s*:?\s+(?=[\d.,])", re.IGNORECASE
+    r"(?:q\.?\s?s\.?(?:\s+(?:to|ad))?|ad|to|(?:make|made|bring|brought|top|topped) (?:up )?to|"
+    r"(?:fill|filled|diluted?) (?:up )?to|up to|add to)\s*:?\s+(?=[\d.,])",
+    re.IGNORECASE,
 )
+_ADDED = re.compile(r"added\s+to\s*:?\s+(?=[\d.,])", re.IGNORECASE)
 _FILL_ONLY = re.compile(r"q\.?\s?s\.?(?:\s+(?:to|ad))?|to volume|to mark|balance|remainder|ad|fill up", re.IGNORECASE)
 _ADJUST = re.compile(
-    r"(?:as|if|when|where)\s+(?:needed|required|necessary)|to\s+(?:target\s+)?ph\b.*|q\.?\s?s\.?\s+(?:to\s+)?ph\b.*|"
-    r"adjust.*|ph\s*(?:to\s*)?[\d.,]+|titrate.*|drop\s?wise|a\.?r\.?|qs ph",
+    r"(?:as|if|when|where)\s+(?:needed|required|necessary)|to\s+(?:target\s+)?ph\b.*|q\.?\s?s\.?\s+(?:(?:to|ad)\s+)?ph\b.*|"
+    r"adjust.*|ph\s*(?:to\s*)?[\d.,]+|titrate.*|drop\s?wise|a\.?r\.?|a\.\s?n\.|qs ph",
     re.IGNORECASE,
 )
 _STATED_PH = re.compile(r"ph\D{0,4}(\d[\d.,]*)", re.IGNORECASE)
@@ -33,7 +36,7 @@ class Amounts:
     parsed : numbers, with the cells that are none of the kinds below in `bad`
     units : TextArray (n,), canonical unit written in the cell itself, "" where none
     special : TextArray (n,), "adjust" (amount left to a pH, which is the number where it is said), "fill" (made up to
-        this), or ""
+        this), "added" (added to this), or ""
     """
 
     parsed: Parsed
@@ -41,8 +44,8 @@ class Amounts:
     special: TextArray
 
 
-def parse_amounts(cells: Sequence[Any], decimal: str, text_is_usual: bool) -> Amounts:
-    """A column of amounts; see `Amounts`."""
+def parse_amounts(cells: Sequence[Any], decimal: str, text_is_usual: bool, added: bool = False) -> Amounts:
+    """A column of amounts; see `Amounts`. added : "added to 1 L" is an answer here (what a solution is made up to)."""
     n = len(cells)
     units = np.full(n, "", object)
     special = np.full(n, "", object)
@@ -50,9 +53,10 @@ def parse_amounts(cells: Sequence[Any], decimal: str, text_is_usual: bool) -> Am
         return Amounts(Parsed(np.array(cells, np.float64)), units, special)
     texts = {v for v in cells if type(v) is str}
     tidy = {t: tidy_number(t)[0] for t in texts}
-    numbers = [m.group(1) if (m := _SPLIT.fullmatch(_FILL.sub("", t))) else t for t in tidy.values()]
+    begun = {t: _begun(bare, added) for t, bare in tidy.items()}
+    numbers = [m.group(1) if (m := _SPLIT.fullmatch(rest)) else rest for _, rest in begun.values()]
     mark = decimal_mark(numbers, decimal)
-    own = {t: found for t, bare in tidy.items() if (found := _with_unit(t, bare, mark)) is not None}
+    own = {t: found for t, bare in tidy.items() if (found := _with_unit(t, bare, *begun[t], mark)) is not None}
     plain = ["" if type(v) is str and v in own else v for v in cells] if own else list(cells)
     parsed = parse_numbers(plain, decimal, text_is_usual, mark=mark)
     for i, v in enumerate(cells):
@@ -69,7 +73,16 @@ def parse_amounts(cells: Sequence[Any], decimal: str, text_is_usual: bool) -> Am
     return Amounts(parsed, units, special)
 
 
-def _with_unit(text: str, bare: str, mark: str) -> Fault | tuple[float, str, str] | None:
+def _begun(bare: str, added: bool) -> tuple[str, str]:
+    """What the words before a number say of it ("fill", "added" or nothing), and the rest."""
+    for how, pattern in (("fill", _FILL), ("added", _ADDED)):
+        match = pattern.match(bare) if how == "fill" or added else None
+        if match is not None:
+            return how, bare[match.end() :]
+    return "", bare
+
+
+def _with_unit(text: str, bare: str, how: str, rest: str, mark: str) -> Fault | tuple[float, str, str] | None:
     """(value, unit, special) of a text that is more than a number; None for anything that parse_numbers judges."""
     if _ADJUST.fullmatch(bare):
         stated = _STATED_PH.search(bare)
@@ -77,12 +90,9 @@ def _with_unit(text: str, bare: str, mark: str) -> Fault | tuple[float, str, str
         return (number[0] if number else np.nan), "", "adjust"
     if _FILL_ONLY.fullmatch(bare):
         return np.nan, "", "fill"
-    fill = _FILL.match(bare)
-    rest = bare[fill.end() :] if fill else bare
-    how = "fill" if fill else ""
     split = _SPLIT.fullmatch(rest)
     if split is None:
-        number = number_of(rest, mark) if fill else None
+        number = number_of(rest, mark) if how else None
         return (number[0], "", how) if number else None
     unit = find_unit(split.group(2))
     number = number_of(split.group(1), mark)

@@ -63,7 +63,8 @@ def compose_plain(composer: Composer, groups: int) -> Plain:
     declared = np.array([b.taken.without_effect for b in bases], bool)[basis] if len(basis) else np.zeros(0, bool)
     kept = brings & (L.value != 0.0)
     group = L.group
-    odd = _any_in(group, ~(brings | empty), groups)
+    added = np.fromiter((m.startswith("added") for m in L.total_measure), bool, len(L))
+    odd = _any_in(group, ~(brings | empty) | added, groups)
     total, measure, unclear = _totals(L.total, L.total_measure, group, groups)
     taken, litre, water = (kept & (how == h) for h in (_TAKEN, _MOLAR, _MOLAL))
     has_taken, has_molar = _any_in(group, taken, groups), _any_in(group, litre, groups)

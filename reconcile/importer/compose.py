@@ -7,10 +7,8 @@ from dataclasses import dataclass, field, replace
 
 import numpy as np
 
-from reconcile.importer.amounts import amount_words
 from reconcile.importer.cells import Fault
 from reconcile.importer.line_parts import Basis, LineReader, Part, anhydrous_mass, fraction_of
-from reconcile.importer.lines import QUANTITIES
 from reconcile.importer.open_amounts import (
     OpenList,
     adjusting_parts,
@@ -20,12 +18,10 @@ from reconcile.importer.open_amounts import (
     settled_contents,
 )
 from reconcile.importer.stocks import Stock
+from reconcile.importer.totals import added_up, total_of
 from reconcile.importer.unpredictable import MOST_SOLVENT
 from reconcile.records.problems import Problem
 from reconcile.records.units import UNITS
-
-WATER_DENSITY_20 = 0.99821
-"""g/mL at 20 °C and 0.101325 MPa (IAPWS-95)."""
 
 
 @dataclass
@@ -53,7 +49,7 @@ class Composer:
         self._stocks: dict[tuple[str, str], list[tuple[Part, float]] | Problem] = {}
         self._open: list[str] = []
 
-    def _fault(self, line: int, code: str, **words: str) -> Problem:
+    def fault(self, line: int, code: str, **words: str) -> Problem:
         """A fault of a line's amount, quoting it as stated."""
         fault = Fault(code, self.reader.stated(line), tuple(words.items()))
         return self.reader.problem(line, fault, self.lines.column[line])
@@ -86,12 +82,12 @@ class Composer:
         taken, stock = basis.taken, basis.taken.stock
         fraction = fraction_of(stock, float(self.lines.value[line])) if stock is not None else None
         if stock is None or taken.form is None or fraction is None:
-            return self._fault(line, "times-unclear")
+            return self.fault(line, "times-unclear")
         if stock.unit is not None and stock.unit.measures == "times":
-            return self._fault(line, "unit-needs", name="what the stock was made as, with its recipe")
+            return self.fault(line, "unit-needs", name="what the stock was made as, with its recipe")
         molarity, missing = stock.molarity(taken.form)
         if missing:
-            return self._fault(line, "unit-needs", name=missing)
+            return self.fault(line, "unit-needs", name=missing)
         u = float(np.hypot(self.reader.u_volume, self.reader.u_volume))
         chain = (taken.lot,) if taken.lot >= 0 else ()
         solute = anhydrous_mass(taken.form, self.resolver.catalogue.by_name)
@@ -118,7 +114,7 @@ class Composer:
             form = self.resolver.catalogue.look_up(L.substance[line]).form
             inside = sum(c for p, c in contents if form is not None and p.form == form and p.open < 0)
             if unit.measures != "molar" or not inside:
-                return self._fault(line, "batch-stock-amount")
+                return self.fault(line, "batch-stock-amount")
             how, factor, u = "molar", x / inside, twice
         names, parts = self.resolver.catalogue.by_name, []
         for part, c in contents:
@@ -177,9 +173,11 @@ class Composer:
             if isinstance(found, Problem):
                 return Mixture(problem=found)
             parts.extend(found)
-        total, measure, problem = self._total(lines)
+        total, measure, problem = total_of(self, lines)
         if problem is not None:
             return Mixture(problem=problem)
+        if not measure and any(p.how == "taken" for p in parts):
+            total, measure = added_up(self, lines)
         by_mass = any(p.how in ("molal", "w") for p in parts) or measure == "mass"
         for line in adjusting:
             found = adjusting_parts(self, line, measure, by_mass)
@@ -189,14 +187,12 @@ class Composer:
         declared = any(self.reader.basis(L.substance[i], L.lot[i], L.unit[i]).taken.without_effect for i in lines)
         taken = [p for p in parts if p.how == "taken"]
         if taken and not measure:
-            total, measure = self._added_up(lines)
-            if not measure:
-                return Mixture(problem=self._fault(taken[0].line, "made-up-to-missing"))
+            return Mixture(problem=self.fault(taken[0].line, "made-up-to-missing"))
         by_litre = any(p.how == "molar" for p in parts) or (bool(taken) and measure == "volume")
         by_mass = any(p.how in ("molal", "w") for p in parts) or (bool(taken) and measure == "mass")
         if by_litre and by_mass:
             line = next(p.line for p in parts if p.how != "molar")
-            return Mixture(problem=self._fault(line, "litre-and-kilogram"))
+            return Mixture(problem=self.fault(line, "litre-and-kilogram"))
         if by_mass:
             return self._in_water(replace(self._per_kilogram(parts, total), without_effect=declared))
         u = self.reader.u_volume
@@ -238,56 +234,10 @@ class Composer:
         m = sum(a * p.solute for p, a in zip(parts, share, strict=True) if p.how == "molal") / 1000.0
         water = (1.0 - s) / (1.0 + m)
         if water <= 0.0:
-            return Mixture(problem=self._fault(parts[0].line, "no-water-left"))
+            return Mixture(problem=self.fault(parts[0].line, "no-water-left"))
         final = []
         for part, a in zip(parts, share, strict=True):
             moles = a / part.form.molar_mass if part.how == "w" else a
             u = float(np.hypot(part.u, self.reader.u_weighing)) if part.how == "taken" else part.u
             final.append((part, moles if part.how == "molal" else moles / water, u))
         return Mixture(True, final)
-
-    def _total(self, lines: Sequence[int]) -> tuple[float, str, Problem | None]:
-        """What a solution is made up to, in mL or g: that of its last step; two in one step are a contradiction."""
-        L = self.lines
-        total, measure, where = np.nan, "", -1
-        for line in lines:
-            value, kind = float(L.total[line]), L.total_measure[line]
-            column = L.total_column[line]
-            if L.special[line] == "fill" and not np.isnan(L.value[line]):
-                unit, column = UNITS.get(L.unit[line]), L.column[line]
-                if L.problem[line] is not None:
-                    return np.nan, "", L.problem[line]
-                if unit is None or unit.measures not in ("volume", "mass"):
-                    code = "unit-unknown" if unit is not None else "unit-missing"
-                    return np.nan, "", self._fault(line, code)
-                value, kind = float(L.value[line]) * unit.factor, unit.measures
-            if not kind:
-                continue
-            same_step = where >= 0 and L.step[line] == L.step[where]
-            if same_step and (kind != measure or abs(value - total) > 1e-9 * total):
-                named = [amount_words(x, "mL" if k == "volume" else "g") for x, k in ((total, measure), (value, kind))]
-                fault = Fault("made-up-to-differs", named[0], (("name", named[1]),))
-                return np.nan, "", self.reader.problem(line, fault, column)
-            total, measure, where = value, kind, line
-        if measure and total <= 0.0:
-            fault = Fault("made-up-to-missing", "0")
-            return np.nan, "", self.reader.problem(where, fault, L.total_column[where])
-        return total, measure, None
-
-    def _added_up(self, lines: Sequence[int]) -> tuple[float, str]:
-        """Mass of a solution whose every line is weighed and whose water is stated; (NaN, "") otherwise."""
-        L, mass = self.lines, 0.0
-        has_water = False
-        for line in lines:
-            unit = UNITS.get(L.unit[line])
-            if np.isnan(L.value[line]) or unit is None or L.special[line]:
-                continue
-            water = self.resolver.taken(L.substance[line], L.lot[line], unit.measures).water
-            if unit.measures == "mass":
-                mass += float(L.value[line]) * unit.factor
-            elif unit.measures == "volume" and water:
-                mass += float(L.value[line]) * unit.factor * WATER_DENSITY_20
-            elif unit.measures in QUANTITIES:
-                return np.nan, ""
-            has_water |= water
-        return (mass, "mass") if has_water else (np.nan, "")

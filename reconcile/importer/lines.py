@@ -28,7 +28,8 @@ class Lines:
 
     group : recipe a line belongs to, index into `Recipes.batch`
     value : amount in `unit` (canonical name, "" for water without one); total : what it is made up to, mL or g, NaN
-    total_measure : "volume", "mass" or ""; special : "adjust", "fill" or ""
+    total_measure : "volume", "mass", "added volume" or "added mass" (what it is added to), ""
+    special : "adjust", "fill" or ""
     source, row : as in Table; column, substance_column, total_column : names as in Place
     table_row : row of the recipes table, -1 for a wide column
     problem : why the line cannot be used, or None
@@ -186,17 +187,20 @@ def _totals(table: TableCells, lines: Lines) -> None:
     have = ~np.isnan(amounts.parsed.values)
     for i, fault in {**faults, **amounts.parsed.bad}.items():
         lines.problem[i] = lines.problem[i] or table.problem(i, "made_up_to", fault)
-    set_totals(lines, amounts.parsed.values, units, have, table)
+    set_totals(lines, amounts.parsed.values, units, amounts.special, have, table)
 
 
-def set_totals(lines: Lines, values: FloatArray, units: TextArray, have: AnyArray, table: TableCells) -> None:
+def set_totals(
+    lines: Lines, values: FloatArray, units: TextArray, special: TextArray, have: AnyArray, table: TableCells
+) -> None:
     """Totals in base units; a total without a unit, or in a unit of another kind, is the line's problem."""
     for name in set(units[have].tolist()):
         rows = have & (units == name)
         unit = UNITS.get(name)
         if unit is not None and unit.measures in ("volume", "mass"):
             lines.total = np.where(rows, values * unit.factor, lines.total)
-            lines.total_measure = np.where(rows, unit.measures, lines.total_measure)
+            measures = np.where(np.equal(special, "added"), f"added {unit.measures}", unit.measures)
+            lines.total_measure = np.where(rows, measures, lines.total_measure)
             continue
         for i in np.flatnonzero(rows).tolist():
             code = "unit-unknown" if name else "unit-missing"
@@ -280,7 +284,7 @@ def _wide_part(
                 bad[i].read, (*bad[i].words, ("name", heading_key(name))),
             )  # fmt: skip
     if "made_up_to" in table.block.columns:
-        totals = parse_amounts(table.cells(table.block.columns["made_up_to"]), "auto", table.sheet.text_cells)
+        totals = parse_amounts(table.cells(table.block.columns["made_up_to"]), "auto", table.sheet.text_cells, True)
         unit_cells = (
             parse_names(table.cells(table.block.columns["made_up_to_unit"])).values
             if "made_up_to_unit" in table.block.columns
@@ -290,5 +294,5 @@ def _wide_part(
         values, have = totals.parsed.values[rows], ~np.isnan(totals.parsed.values[rows])
         lines.total_column[:] = table.sheet.names[table.block.columns["made_up_to"]]
         sub = TableCells(table.sheet, table.block, table.rows[rows])
-        set_totals(lines, values, units[rows], have, sub)
+        set_totals(lines, values, units[rows], totals.special[rows], have, sub)
     return lines

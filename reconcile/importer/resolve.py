@@ -98,6 +98,9 @@ class Resolver:
                 return Taken(None, fault=_rest(made), fault_place=made.problem.place)
             return Taken(None, stock=made)
         form, own, fault = self._substance(substance, lot)
+        if form is None and stocks and substance:
+            several = self.catalogue.look_up(substance).several
+            form = next((s.form for s in stocks if s.form in several), None)  # "EDTA" of a lot whose label says more
         if not substance and len(stocks) == 1 and stocks[0].form is not None:
             form, fault = stocks[0].form, None
         if form is None:

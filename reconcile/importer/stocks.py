@@ -15,7 +15,8 @@ from reconcile.records.substances import Catalogue, Form
 from reconcile.records.units import UNITS, Unit
 
 _TRUSTED = (
-    "lot", "strength", "density", "assay", "factor", "tolerance", "substance", "batch", "adjusted_to", "adjusted_at"
+    "lot", "strength", "density", "assay", "water", "factor", "tolerance", "substance", "batch", "adjusted_to",
+    "adjusted_at",
 )  # fmt: skip
 """Columns whose bad cells leave the lot unusable."""
 
@@ -26,6 +27,7 @@ class Stock:
 
     form : what the label says, None for a lot that is named by the batch it was made as
     strength : as written, in `unit`. density [g/mL], assay [%], factor, tolerance [%]; NaN when unstated
+    assay : content by mass of the lot as it is weighed: an assay of the dried substance less its water content
     row : row of the stocks table; problem : why the lot cannot be used, or None
     adjusted_to, adjusted_at : pH that it was adjusted to, and at which temperature [°C]; NaN when unstated
     """
@@ -156,15 +158,54 @@ def read_stocks(table: TableCells, first_table_row: int, catalogue: Catalogue, r
                 problem = table.problem(i, "strength", Fault("strength-unit", f"{strength[i]:g} {unit.name}"))
         look_up = found.get(substance[i])
         form = look_up.form if look_up else None
+        if form is None and look_up is not None and not np.isnan(number("adjusted_to", i)):
+            form = _whichever(look_up.several, unit)
         if substance[i] and form is None and not batch[i] and problem is None and look_up is not None:
             problem = table.problem(i, "substance", substance_fault(substance[i], look_up.near, look_up.several))
         room.add(
             Stock(
-                lot[i], form, batch[i], float(strength[i]), unit if not np.isnan(strength[i]) else None,
-                number("density", i), number("assay", i), number("factor", i), number("tolerance", i),
-                first_table_row + i, table.place(i, "lot"), problem, number("adjusted_to", i), number("adjusted_at", i),
+                lot[i],
+                form,
+                batch[i],
+                float(strength[i]),
+                unit if not np.isnan(strength[i]) else None,
+                number("density", i),
+                _as_is(number("assay", i), number("water", i), form, catalogue),
+                number("factor", i),
+                number("tolerance", i),
+                first_table_row + i,
+                table.place(i, "lot"),
+                problem,
+                number("adjusted_to", i),
+                number("adjusted_at", i),
             )
-        )  # fmt: skip
+        )
+
+
+def _whichever(several: tuple[Form, ...], unit: Unit | None) -> Form | None:
+    """Of the forms that a name may mean, the one without counter-ions, where its solution is brought to a pH anyway.
+
+    "EDTA 0.5 M, pH 8.0": the counter-ion is inferred from that pH, whichever salt it was made of. None where the forms
+    differ in more than their counter-ions, or where the strength is not by amount of substance.
+    """
+    if unit is None or unit.measures not in ("molar", "molal") or len({(f.acid, f.acid_units) for f in several}) != 1:
+        return None
+    return next((f for f in several if not f.ions), None)
+
+
+def _as_is(assay: float, water: float, form: Form | None, catalogue: Catalogue) -> float:
+    """Content by mass [%] of a lot as it is weighed, from its assay on the dried substance and its water content.
+
+    A hydrate with at least half of its crystal water in that content has all its water in it (Karl Fischer, loss on
+    drying), else only what is there beside the crystal water.
+    """
+    if np.isnan(water):
+        return assay
+    content = (100.0 if np.isnan(assay) else assay) * (1.0 - water / 100.0)
+    dry = catalogue.by_name.get(form.hydrate_of) if form is not None else None
+    if form is None or dry is None or water / 100.0 < (1.0 - dry.molar_mass / form.molar_mass) / 2.0:
+        return content
+    return content * form.molar_mass / dry.molar_mass
 
 
 def substance_fault(text: str, near: tuple[str, ...], several: tuple[Form, ...]) -> Fault:

@@ -124,7 +124,7 @@ def _parse(table: TableCells, column: Column, cells: Sequence[Any], settings: Se
         return parsed
     decimal = settings["reading.decimal"]
     if column.kind == "amount":
-        amounts = parse_amounts(cells, decimal, sheet.text_cells)
+        amounts = parse_amounts(cells, decimal, sheet.text_cells, added=column.name == "made_up_to")
         table.amounts[column.name] = amounts
         parsed = amounts.parsed
         if column.unit:
@@ -145,9 +145,11 @@ def _parse(table: TableCells, column: Column, cells: Sequence[Any], settings: Se
 
 def _blank_batches(table: TableCells, parsed: Parsed, cells: Sequence[Any], meaning: str) -> None:
     """Blank batches below a named one: "as above" where the settings say so, else a question if there are many."""
+    if table.block.kind == "stocks" or {"known", "series"} & table.block.columns.keys():
+        return  # a bought lot was made as no batch, and such rows name something else
     blank = blanks(cells)
     named = np.flatnonzero(~blank)
-    if not blank.any() or not len(named) or "known" in table.block.columns:
+    if not blank.any() or not len(named):
         return
     below = [i for i in np.flatnonzero(blank).tolist() if i > named[0]]
     if meaning == "above":

@@ -187,6 +187,12 @@ class LookUp:
     near: tuple[str, ...] = ()
 
 
+def _of_base(key: str) -> str:
+    """Name of the hydrochloride that "tris hcl", "tris-hcl" or "tris·hcl" means; "" for any other name."""
+    match = re.fullmatch(r"(.+?)\s*[ \-·•.*]\s*hcl", key)
+    return f"{match.group(1)} hydrochloride" if match else ""
+
+
 class Catalogue:
     """All forms known to one run, looked up by name, synonym or unambiguous formula."""
 
@@ -207,7 +213,8 @@ class Catalogue:
 
     def look_up(self, text: str) -> LookUp:
         """The form that a name, synonym or formula means."""
-        found = self._names.get(name_key(text)) or self._formulas.get(formula_key(text))
+        key = name_key(text)
+        found = self._names.get(key) or self._formulas.get(formula_key(text)) or self._names.get(_of_base(key), {})
         if not found:  # the bare name of an acid that is sold only in named forms, such as EDTA
             found = {f.name: f for f in self.forms if f.acid and name_key(f.acid) == name_key(text)}
         if len(found) == 1:

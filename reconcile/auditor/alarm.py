@@ -5,8 +5,9 @@ from __future__ import annotations
 import zlib
 
 import numpy as np
-from scipy import linalg, optimize, sparse, special, stats
+from scipy import linalg, optimize, sparse, special
 
+from reconcile.auditor import laws
 from reconcile.auditor.components import Model
 from reconcile.auditor.scoring import Candidate, Pool
 from reconcile.auditor.tails import TAILS
@@ -54,7 +55,7 @@ def single_p(model: Model, x: sparse.csc_array, z: FloatArray) -> FloatArray:
 
 def mixed_p(model: Model, df: FloatArray, z: FloatArray) -> FloatArray:
     """The same from the degrees of freedom (laws, k), averaged over the laws of the noise with their weights."""
-    return np.asarray(2.0 * np.array(model.components.tails) @ stats.t.sf(np.abs(z), df), float)
+    return np.asarray(2.0 * np.array(model.components.tails) @ laws.t_sf(np.abs(z), df), float)
 
 
 def score_needed(model: Model, df: FloatArray, p: float) -> float:
@@ -68,7 +69,7 @@ def score_needed(model: Model, df: FloatArray, p: float) -> float:
 
 def equivalent_z(p: float) -> float:
     """Normal score with the same two-sided probability."""
-    return float(stats.norm.isf(max(p, 1e-300) / 2.0))
+    return float(laws.norm_isf(max(p, 1e-300) / 2.0))
 
 
 def root_of(correlation: FloatArray) -> FloatArray:
@@ -134,7 +135,7 @@ class Alarm:
         """
         trials = self.pool.trials(k)
         if candidate.df > 1:
-            return min(1.0, trials * float(stats.chi2.sf(2.0 * gain, candidate.df)))
+            return min(1.0, trials * float(laws.chi2_sf(2.0 * gain, candidate.df)))
         size = int(np.count_nonzero(self.pool.block == self.pool.block[k]))
         if p_single * trials > limit or size == 1:
             return min(1.0, p_single * trials)

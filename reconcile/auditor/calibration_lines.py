@@ -5,8 +5,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from scipy import stats
 
+from reconcile.auditor import laws
 from reconcile.records.arrays import FloatArray
 
 LEAST_POINTS = 4
@@ -86,10 +86,12 @@ def fit_line(day: FloatArray, y: FloatArray) -> Fit | str:
     level, rate = float(y.mean()), float(apart @ y) / sxx
     left = y - level - rate * apart
     sd = max(float(np.sqrt(left @ left / (n - 2))), display_sd(y))
+    from scipy import stats  # takes long to load, and few records need it
+
     robust = stats.theilslopes(y, day, 0.95)
     between = (float(robust.low_slope), float(robust.high_slope))
     return Fit(
-        n, middle, sxx, level, rate, sd, float(stats.t.isf(0.025, n - 2)), float(robust.slope), (between[0], between[1])
+        n, middle, sxx, level, rate, sd, float(laws.t_isf(0.025, n - 2)), float(robust.slope), (between[0], between[1])
     )
 
 

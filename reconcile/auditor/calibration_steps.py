@@ -5,8 +5,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from scipy import stats
 
+from reconcile.auditor import laws
 from reconcile.auditor.calibration_lines import display_sd
 from reconcile.records.arrays import FloatArray
 
@@ -70,15 +70,15 @@ def best_step(day: FloatArray, y: FloatArray) -> Jump | None:
     ratio = np.abs(score) / np.sqrt(information * variance)
     best = int(np.argmax(ratio))
     size = float(score[best] / information[best])
-    half = float(stats.t.isf(0.025, n - 3) * np.sqrt(variance[best] / information[best]))
-    near = rss <= rss[best] + float(stats.f.isf(0.05, 1, n - 4)) * variance[best]
+    half = float(laws.t_isf(0.025, n - 3) * np.sqrt(variance[best] / information[best]))
+    near = rss <= rss[best] + float(laws.f_isf(0.05, 1, n - 4)) * variance[best]
     return Jump(
         int(positions[best]),
         size,
         (size - half, size + half),
         float(day[positions[near].min() - 1]),
         float(day[positions[near].max()]),
-        float(2.0 * stats.t.sf(ratio[best], n - 3)),
+        float(2.0 * laws.t_sf(ratio[best], n - 3)),
     )
 
 

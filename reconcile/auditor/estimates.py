@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 import numpy as np
-from scipy import optimize, special, stats
+from scipy import optimize, special
 
+from reconcile.auditor import laws
 from reconcile.auditor.alarm import Alarm, block_p, score_needed
 from reconcile.records.arrays import BoolArray, FloatArray
 
@@ -30,8 +31,8 @@ def critical_score(alarm: Alarm, k: int, df: FloatArray, rate: float, seed: int)
     if len(correlation):
         normal = critical_z(correlation, root, one_sided, trials, rate, seed)
     else:
-        normal = float(stats.norm.isf(rate / trials / 2.0))
-    return score_needed(alarm.model, df, 2.0 * float(stats.norm.sf(normal)))
+        normal = float(laws.norm_isf(rate / trials / 2.0))
+    return score_needed(alarm.model, df, 2.0 * float(laws.norm_sf(normal)))
 
 
 def _tail_beyond(x: float, mean: float, cut: float) -> float:

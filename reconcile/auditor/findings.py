@@ -8,8 +8,9 @@ from dataclasses import replace
 from datetime import datetime
 
 import numpy as np
-from scipy import sparse, stats
+from scipy import sparse
 
+from reconcile.auditor import laws
 from reconcile.auditor.alarm import Alarm, score_df
 from reconcile.auditor.components import Model
 from reconcile.auditor.estimates import critical_score, given_selected
@@ -155,7 +156,7 @@ def interval_of(
         return None
     amplitude = float((candidate.x.T @ bare.pr)[0] / info_bare)
     u = info_bare**-0.5
-    u *= float(stats.t.ppf(0.975, max(bare.components.noise_df, 3.0)) / stats.norm.ppf(0.975))
+    u *= float(-laws.t_isf(0.975, max(bare.components.noise_df, 3.0)) / laws.norm_ppf(0.975))
     cut = 0.0
     if k is not None:
         seed = zlib.crc32(candidate.alarm_class.encode())

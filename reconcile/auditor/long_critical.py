@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import numpy as np
-from scipy import stats
 
+from reconcile.auditor import laws
 from reconcile.auditor.alarm import Alarm, mixed_p
 from reconcile.auditor.components import Model
 from reconcile.auditor.estimates import critical_z
@@ -40,7 +40,7 @@ def critical_scores(alarm: Alarm, members: IntArray, df: FloatArray, rate: float
         correlation, root, one_sided = alarm.block(int(block[chosen]))
         if len(correlation):
             normal = critical_z(correlation, root, one_sided, int(trials[chosen]), rate, seed)
-            p[mine] = 2.0 * float(stats.norm.sf(normal))
+            p[mine] = 2.0 * float(laws.norm_sf(normal))
     return scores_needed(alarm.model, df, p)
 
 

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import numpy as np
-from scipy import stats
 
+from reconcile.auditor import laws
 from reconcile.records.arrays import FloatArray
 
 LEAST_METERS = 4
@@ -47,7 +47,7 @@ def h_critical(meters: int, alpha: float) -> float:
     """
     if meters < 3:
         raise ValueError(f"h needs three meters, not {meters}")
-    t = float(stats.t.isf(alpha / 2.0, meters - 2))
+    t = float(laws.t_isf(alpha / 2.0, meters - 2))
     return (meters - 1) * t / float(np.sqrt(meters * (t * t + meters - 2)))
 
 
@@ -95,6 +95,6 @@ def k_critical(df: FloatArray, alpha: float) -> FloatArray:
     total = float(own.sum())
     value = np.full(len(own), np.nan)
     good = (own > 0) & (total - own > 0)
-    share = stats.beta.isf(alpha, own[good] / 2.0, (total - own[good]) / 2.0)
+    share = laws.beta_isf(alpha, own[good] / 2.0, (total - own[good]) / 2.0)
     value[good] = np.sqrt(np.asarray(share, float) * total / own[good])
     return value

@@ -9,8 +9,9 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
-from scipy import sparse, stats
+from scipy import sparse
 
+from reconcile.auditor import laws
 from reconcile.auditor.calibration_runs import days_of
 from reconcile.auditor.components import Components
 from reconcile.auditor.layout import Layout, build_layout, one_hot
@@ -106,7 +107,7 @@ def between_calibrations(audit: Audit, seen: MeterReadings, since: FloatArray) -
         information = float(model.quadratic(column)[0])
         rate = float(x[rows] @ model.pr[rows]) / information
         df = max(len(rows) - sessions - 1, 1)
-        half = float(stats.t.isf(0.025, df) / np.sqrt(information))
+        half = float(laws.t_isf(0.025, df) / np.sqrt(information))
         found.append(BetweenCalibrations(name, len(rows), sessions, longest, rate, (rate - half, rate + half)))
     return tuple(found)
 
@@ -145,7 +146,7 @@ def noise(seen: MeterReadings) -> tuple[MeterNoise, ...]:
             found.append(MeterNoise(name, len(rows), float("nan"), nothing, df, reason))
             continue
         variance = float(model.noise[rows[0]] * layout.averaged[rows[0]] * (share[rows] * z2[rows]).sum() / df)
-        low, high = (variance * df / float(stats.chi2.isf(tail, df)) for tail in (0.025, 0.975))
+        low, high = (variance * df / float(laws.chi2_isf(tail, df)) for tail in (0.025, 0.975))
         found.append(MeterNoise(name, len(rows), variance**0.5, (low**0.5, high**0.5), df))
     return tuple(found)
 

@@ -8,8 +8,9 @@ from datetime import datetime
 from typing import Any, Protocol, TypeVar
 
 import numpy as np
-from scipy import sparse, stats
+from scipy import sparse
 
+from reconcile.auditor import laws
 from reconcile.auditor.components import Model
 from reconcile.auditor.layout import Layout
 from reconcile.auditor.long_model import LongModel
@@ -62,7 +63,7 @@ class Context:
         slope = np.asarray(x.T @ self.model.pr).ravel()
         bound = self.model.bound(x, own, steady)
         rate = float(self.settings["audit.alarm_rate"]) / len(CLASSES) / max(x.shape[1], 1)
-        least = max(least, ROOM_SHARE * float(stats.norm.isf(rate / 2.0)))
+        least = max(least, ROOM_SHARE * float(laws.norm_isf(rate / 2.0)))
         score = self._standardized(slope, self.model.informed(x, slope, bound, np.inf, np.inf, steady))
         least = max(least, TOP_SHARE * float(np.abs(score).max(initial=0.0)))
         score = self._standardized(slope, self.model.informed(x, slope, bound, ROOM_SHARE * least, least, steady))

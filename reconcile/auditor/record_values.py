@@ -5,8 +5,8 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping
 
 import numpy as np
-from scipy import stats
 
+from reconcile.auditor import laws
 from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.book import BatchRecords
 from reconcile.records.results import Finding, Prediction
@@ -59,7 +59,7 @@ def record_values(records: BatchRecords, prediction: Prediction, shortcuts: Shor
     error = calculated[rows] - prediction.ph[rows]
     spread = np.sqrt(prediction.u[rows] ** 2 + ROUNDING**2)
     z = np.abs(error) / spread
-    needed = float(stats.norm.isf(CHANCE / len(rows) / 2.0))
+    needed = float(laws.norm_isf(CHANCE / len(rows) / 2.0))
     wrong = np.flatnonzero((z > needed) & (np.abs(error) > LEAST))
     if not len(wrong):
         return []
@@ -83,7 +83,7 @@ def record_values(records: BatchRecords, prediction: Prediction, shortcuts: Shor
             words += f" {degree}"
         same = np.flatnonzero(records.readings["batch"] == batch)
         same = same[np.isfinite(calculated[same])]
-        p = min(1.0, len(rows) * 2.0 * float(stats.norm.sf(z[i])))
+        p = min(1.0, len(rows) * 2.0 * float(laws.norm_sf(z[i])))
         half = 1.96 * float(spread[i])
         found.append(
             Finding(

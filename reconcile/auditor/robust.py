@@ -3,15 +3,15 @@
 from __future__ import annotations
 
 import numpy as np
-from scipy import stats
 
+from reconcile.auditor import laws
 from reconcile.auditor.components import Components
 from reconcile.auditor.layout import ROOT3, Layout
 from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.settings import Settings
 
 HUBER = 2.5
-HUBER_MEAN = float(stats.chi2.cdf(HUBER**2, 3) + HUBER**2 * stats.chi2.sf(HUBER**2, 1))
+HUBER_MEAN = float(1.0 - laws.chi2_sf(HUBER**2, 3) + HUBER**2 * laws.chi2_sf(HUBER**2, 1))
 """Mean of min(z^2, HUBER^2) for standard normal z, so that the bounded squares stay consistent."""
 OWN_NOISE_FROM = 20
 """Readings from which a meter has noise of its own."""

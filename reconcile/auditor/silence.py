@@ -6,8 +6,9 @@ import zlib
 from collections.abc import Iterator
 
 import numpy as np
-from scipy import sparse, stats
+from scipy import sparse
 
+from reconcile.auditor import laws
 from reconcile.auditor.alarm import Alarm, score_df, score_needed
 from reconcile.auditor.components import Model
 from reconcile.auditor.estimates import critical_score
@@ -99,7 +100,7 @@ def smallest_detectable(layout: Layout, model: Model, pool: Pool, power: float, 
         needed = _critical(model, pool, kind, names, x, own, rate)
         information = model.information(x, np.full(len(names), np.inf), own)
         with np.errstate(divide="ignore"):
-            size = (needed + stats.norm.ppf(power)) / np.sqrt(np.maximum(information, 1e-12))
+            size = (needed + laws.norm_ppf(power)) / np.sqrt(np.maximum(information, 1e-12))
         for name, value in zip(names, size.tolist(), strict=True):
             shown = value if unit == "pH" else float(np.exp(min(value, 50.0)))
             if shown < (2.0 if unit == "pH" else 10.0):

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import numpy as np
-from scipy import stats
 
+from reconcile.auditor import laws
 from reconcile.auditor.components import Model
 from reconcile.records.arrays import FloatArray
 
@@ -38,7 +38,7 @@ def tail_weights(model: Model) -> tuple[float, ...]:
 
 
 def _best_fit(z: FloatArray, nu: float, middle: float, bound: float) -> float:
-    law = stats.norm() if np.isinf(nu) else stats.t(nu)
+    law = laws.Law(nu)
     best = -np.inf
     for share in SCALES:
         scale = max(middle / float(law.ppf(0.75)) * share, 1e-6)

@@ -23,14 +23,17 @@ def six_digits(value: float) -> str:
 
 def _cells(column: Column, values: Any) -> list[str]:
     if column.kind == "text":
-        return [csv_text(v) for v in values]
+        known = {v: csv_text(v) for v in set(values)}
+        return [known[v] for v in values]
     if column.kind == "time":
         times = np.asarray(values, "datetime64[s]")
         return ["" if missing else t for t, missing in zip(times.astype(str).tolist(), np.isnat(times), strict=True)]
-    numbers = values.tolist() if isinstance(values, np.ndarray) else list(values)
     if column.kind == "integer":
-        return ["" if v is None else str(int(v)) for v in numbers]
-    return ["" if v is None else six_digits(v) for v in numbers]
+        return ["" if v is None else str(int(v)) for v in values]
+    if not isinstance(values, np.ndarray):
+        return ["" if v is None else six_digits(v) for v in values]
+    different, which = np.unique(values, return_inverse=True)  # limits, temperatures, readings come again and again
+    return np.array([six_digits(v) for v in different.tolist()], object)[which].tolist()
 
 
 def table_csv(table: Table) -> bytes:

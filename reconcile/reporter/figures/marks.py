@@ -22,6 +22,8 @@ MARKS: Mapping[str, Mapping[str, Any]] = {
     "stands_out": {"marker": "D", "s": 17, "facecolors": INK, "edgecolors": "white", "linewidths": 0.4},
 }
 """In drawing order: the remarkable ones on top."""
+CLEAR = (1.0, 1.0, 1.0, 0.0)
+"""No fill, as a colour: points of one fill and one edge are drawn from one stamped mark, which is many times faster."""
 WORDS: Mapping[str, str] = {
     "as_predicted": "as predicted",
     "stands_out": "stands out",
@@ -46,6 +48,8 @@ def cloud(axes: Axes, x: AnyArray, y: FloatArray, status: TextArray, total: int)
             if many:
                 drawn["s"] = drawn["s"] * (0.3 if layer < 2 else 0.5)
                 drawn["linewidths"] = drawn["linewidths"] * 0.6 if layer < 2 else 0.0
+                if drawn.get("facecolors") == "none":
+                    drawn["facecolors"] = CLEAR
             axes.scatter(x[chosen], y[chosen], zorder=3 + layer, rasterized=many, **drawn)
 
 

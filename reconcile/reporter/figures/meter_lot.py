@@ -70,9 +70,9 @@ def meter_lot(audit: Audit, lookups: Lookups) -> Figure:
             )
     else:
         for row, column in zip(i.tolist(), j.tolist(), strict=True):
-            axes.annotate(
-                f"{int(count[row, column]):,}", (column + 0.46, row + 0.46), ha="right", va="bottom",
-                fontsize=4.6, color=GREY, zorder=4,
+            axes.text(
+                column + 0.46, row + 0.46, f"{int(count[row, column]):,}", ha="right", va="bottom",
+                fontsize=4.6, color=GREY, zorder=4, in_layout=False,
             )  # fmt: skip
     axes.set_xticks(
         range(len(columns)),

@@ -20,6 +20,8 @@ MISSING = frozenset(
     {"", "n/a", "na", "n.a.", "n.a", "-", "--", "\u2013", "\u2014", "\u2212", "nd", "n.d.", "nan", "none", "null"}
 )
 """What stands for a missing value in a column of numbers or times; in a column of names these are names."""
+ROOM = frozenset({"rt", "r.t.", "room", "room temp", "room temp.", "room temperature", "ambient", "amb", "amb."})
+"""What stands for no temperature in particular."""
 _CENSORED = re.compile(r"^\s*[<>≤≥]|±|\+/-|\d\s*(?:-|–|to|\.\.)\s*\d", re.IGNORECASE)
 
 
@@ -122,13 +124,18 @@ def number_of(text: str, mark: str) -> tuple[float, int] | None:
 
 
 def parse_numbers(
-    cells: Sequence[Any], decimal: str, text_is_usual: bool, unit_factors: Any = None, mark: str | None = None
+    cells: Sequence[Any],
+    decimal: str,
+    text_is_usual: bool,
+    unit_factors: Any = None,
+    mark: str | None = None,
+    missing: frozenset[str] = MISSING,
 ) -> Parsed:
     """A column of numbers; cells of another kind are named in `bad`, blanks and missing marks are NaN.
 
     decimal : "auto", "." or ","; text_is_usual : True in a CSV file, where text is no notice
     unit_factors : function text -> (factor, offset) or None, for cells such as "25 mL" or "20 °C"
-    mark : what `decimal_mark` says, where more texts than these settle it
+    mark : what `decimal_mark` says, where more texts than these settle it; missing : what stands for no value
     """
     kinds = set(map(type, cells))
     if kinds <= {float, int}:
@@ -153,7 +160,7 @@ def parse_numbers(
             distinct[v] = tidy_number(v)
     if mark is None:
         mark = decimal_mark([t for t, _ in distinct.values()], decimal)
-    meaning = {text: _meaning(tidy, text, mark, unit_factors) for text, (tidy, _) in distinct.items()}
+    meaning = {text: _meaning(tidy, text, mark, unit_factors, missing) for text, (tidy, _) in distinct.items()}
     if decimal != "auto":  # the choice is made: what does not follow it is no number
         for text, found in meaning.items():
             if isinstance(found, Fault) and found.code == "decimal-unclear":
@@ -187,8 +194,10 @@ def parse_numbers(
     return parsed
 
 
-def _meaning(tidy: str, text: str, mark: str, unit_factors: Any) -> Fault | tuple[float, int, tuple[str, ...]]:
-    if tidy.casefold() in MISSING:
+def _meaning(
+    tidy: str, text: str, mark: str, unit_factors: Any, missing: frozenset[str]
+) -> Fault | tuple[float, int, tuple[str, ...]]:
+    if tidy.casefold() in missing:
         return np.nan, -2, ("missing-mark",) if tidy else ()
     number = number_of(tidy, mark)
     if number is not None:

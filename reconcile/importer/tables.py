@@ -10,7 +10,7 @@ import numpy as np
 
 from reconcile.importer.amounts import Amounts, parse_amounts
 from reconcile.importer.blocks import label_of
-from reconcile.importer.cells import Fault, Parsed, blanks, parse_names, parse_numbers
+from reconcile.importer.cells import MISSING, ROOM, Fault, Parsed, blanks, parse_names, parse_numbers
 from reconcile.importer.headings import Block
 from reconcile.importer.merged import spread_merges
 from reconcile.importer.raw import Marker, RawSheet
@@ -130,7 +130,8 @@ def _parse(table: TableCells, column: Column, cells: Sequence[Any], settings: Se
         if column.unit:
             _in_unit(amounts, column, block.units.get(column.name, ""))
     else:
-        parsed = parse_numbers(cells, decimal, sheet.text_cells, _change_of_unit(column))
+        missing = MISSING | ROOM if column.unit == "°C" else MISSING
+        parsed = parse_numbers(cells, decimal, sheet.text_cells, _change_of_unit(column), missing=missing)
         _heading_unit(parsed, column, block.units.get(column.name, ""))
     with np.errstate(invalid="ignore"):
         outside = (parsed.values < column.low) | (parsed.values > column.high)

@@ -73,12 +73,28 @@ BY_SHEET: Mapping[str, tuple[Column, ...]] = {
 }
 READING_EXTRA = ("resolution", "repeat")
 """Numbers that a readings Table carries beside its columns: display resolution [pH], and the repeat (1, 2, ...)."""
+_JUDGED = (
+    *("pass", "passed", "fail", "failed", "complies", "conforms", "does not comply", "in spec", "out of spec", "oos"),
+    *("in specification", "out of specification", "within limits", "outside limits", "approved", "released"),
+    *("accepted", "reviewed", "checked", "done", "complete", "completed", "closed", "final", "first"),
+)
 STANDINGS: Mapping[str, str] = {
     "": "original",
     "original": "original",
     "initial": "original",
     "valid": "original",
     "ok": "original",
+    **dict.fromkeys(_JUDGED, "original"),
+    "re test": "retest",
+    "re tested": "retest",
+    "retested": "retest",
+    "re read": "retest",
+    "reading repeated": "retest",
+    "excluded": "void",
+    "discarded": "void",
+    "deleted": "void",
+    "withdrawn": "void",
+    "not valid": "void",
     "retest": "retest",
     "repeat": "retest",
     "reread": "retest",
@@ -90,7 +106,7 @@ STANDINGS: Mapping[str, str] = {
     "invalidated": "void",
     "cancelled": "void",
 }
-"""Spellings of `standing`, compared after heading_key."""
+"""Spellings of `standing`, compared after heading_key. What a reading was judged to be leaves its standing as it is."""
 
 
 def column(sheet: str, name: str) -> Column:

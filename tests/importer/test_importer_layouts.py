@@ -115,6 +115,13 @@ def test_known_solutions_from_the_record_and_from_the_published_standards() -> N
     assert records.solutions.batch.tolist() == ["", ""]
 
 
+def test_what_a_reading_was_judged_to_be_is_no_standing_of_its_own() -> None:
+    said = ["Pass", "OOS", "Re-test", "Approved", "Excluded"]
+    rows = [(*HEAD, "Status")] + [[*reading(k), s] for k, s in enumerate(said)]
+    records = records_from_rows(rows, RECIPES)
+    assert records.readings["standing"].tolist() == ["original", "original", "retest", "original", "void"]
+
+
 def test_standing_is_normalised_and_unknown_ones_are_set_aside() -> None:
     rows = [(*HEAD, "Standing")] + [[*reading(k), s] for k, s in enumerate([None, "Retest", "VOIDED", "perhaps"])]
     records = records_from_rows(rows, RECIPES)

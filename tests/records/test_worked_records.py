@@ -218,6 +218,14 @@ def test_temperatures(way: str, tmp_path: Path) -> None:
     assert "1 readings are stated at" in codes["temperature-reference"].message()
 
 
+def test_room_temperature_in_words_is_no_temperature_in_particular(tmp_path: Path) -> None:
+    rows = [("Batch", "Meter", "Temperature (°C)", "pH"), ("T-1", "M-1", "RT", 8.22), ("T-1", "M-1", "ambient", 8.22)]
+    audit = audit_as("workbook", tmp_path, {"Readings": rows, "Recipes": [RECIPE, *TRIS]})
+    assert audit.prediction.temperature_c.tolist() == [22.0, 22.0]
+    assert audit.prediction.budget["temperature"] == pytest.approx(0.056 / 3**0.5, abs=0.002)
+    assert {"missing-mark", "temperature-missing"} <= {note.code for note in audit.records.notes}
+
+
 @pytest.mark.parametrize(
     "heading", ["pH (25 °C)", "pH at 25 °C", "pH @ 25°C", "pH 25 °C", "Measured pH (25.0 °C)", "pH (ref. 25 ºC)"]
 )

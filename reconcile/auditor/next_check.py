@@ -186,7 +186,8 @@ def absent(
     effect = np.array([effect_on(candidate, check) for check in checks])
     if candidate.alarm_class == "reading":
         batch, meter = candidate.subject[0], candidate.subject[1]
-        effect = np.array([-float(check.batch_of == batch and check.meter == meter) for check in checks])
+        size = float(candidate.x.data[0])  # 1 where the amplitude is the size, the slip itself where a slip is named
+        effect = np.array([-size * float(check.batch_of == batch and check.meter == meter) for check in checks])
     return mean - amplitude * effect, variance
 
 

@@ -2,6 +2,7 @@
 
 import csv
 import json
+import re
 from pathlib import Path
 
 import numpy as np
@@ -74,6 +75,12 @@ def test_the_audit_names_exactly_what_was_planted():
     found = {(f.kind, *((f.subject,) if isinstance(f.subject, str) else f.subject)) for f in audit.findings}
     assert found == planted
     assert sum(len(f.impact) for f in audit.findings if f.subject == "Bench 5") > 0
+    slip = next(p for p in TRUTH["planted"] if p["kind"] == "reading_slip")
+    check = next(f.next_check for f in audit.findings if f.kind == "reading_slip")
+    meant = [float(ph) for ph in re.findall(r"pH (\d+\.\d\d) \(u", check)]
+    assert meant == pytest.approx([slip["pH"], slip["pH"] + slip["estimate"]], abs=0.03)  # the slip holds, or the entry
+    checks = [f.next_check for f in audit.findings if f.subject_type == "meter"]
+    assert not any(f"batch {name}" in check for check in checks for name in ("borax", "phosphate", "phthalate"))
 
 
 def test_implied_amounts_are_the_true_ones_but_for_what_the_adjusting_meter_was_off():

@@ -10,10 +10,12 @@ from reconcile.records.book import BatchRecords
 from reconcile.records.problems import Problem
 
 SAME_AMOUNT, SAME_PH = 0.05, 0.1
-"""Like batches: every written amount within 5 % of the other's, adjusted to within 0.1 pH (no source)."""
+"""Like batches: every written amount within 5 % of the other's, adjusted to within 0.1 pH of the other or to the same
+target by what the record says (no source)."""
 LEAST_LIKE = 3
 FAR = 3.0
-"""An amount is odd when it lies over three times the scatter of the like ones, and of the adjusting reading, off."""
+"""An amount is odd when it lies over three times the scatter of the like ones, and of the adjusting reading, off; and
+where it lies over three times its own uncertainty below nothing, as a titrant that cannot have given that pH."""
 Key = tuple[object, ...]
 
 
@@ -30,6 +32,8 @@ def usual_amounts(
     k = len(solved)
     usual, low, high = (np.full(k, np.nan) for _ in range(3))
     like, odd = np.zeros(k, np.intp), np.zeros(k, bool)
+    goal = _goals(records, solved)
+    odd |= impossible(solved)
     by_kind: dict[Key, list[tuple[int, FloatArray]]] = {}
     for j in range(k):
         if solved.reading[j] >= 0 and np.isfinite(solved.amount[j]) and solved.amount[j] != 0.0:
@@ -38,7 +42,7 @@ def usual_amounts(
     for some in by_kind.values():
         for j, amounts in some:
             others = [i for i, other in some if i != j and _alike(amounts, other)]
-            others = [i for i in others if abs(solved.ph[i] - solved.ph[j]) <= SAME_PH]
+            others = [i for i in others if abs(solved.ph[i] - solved.ph[j]) <= SAME_PH or goal[i] == goal[j]]
             like[j] = len(others)
             if len(others) < LEAST_LIKE:
                 continue
@@ -47,8 +51,22 @@ def usual_amounts(
             scatter = 1.483 * float(np.median(np.abs(values - usual[j])))
             u = np.abs(solved.amount * solved.weight) * solved.u_ph  # what like batches do not share
             scatter = max(scatter, float(np.median(u[others])), float(u[j]))
-            odd[j] = abs(solved.amount[j] - usual[j]) > FAR * scatter
+            odd[j] |= abs(solved.amount[j] - usual[j]) > FAR * scatter
     return usual, low, high, like, odd
+
+
+def impossible(solved: Solved) -> BoolArray:
+    """Whether an implied amount lies below nothing by more than its uncertainty explains, (k,)."""
+    with np.errstate(invalid="ignore"):
+        return np.asarray(solved.amount < -FAR * np.nan_to_num(solved.u), bool)
+
+
+def _goals(records: BatchRecords, solved: Solved) -> FloatArray:
+    """pH that each open amount was to bring: the recipe's "to pH 7.4", else the target of its reading; NaN, (k,)."""
+    goal = np.array(records.open_amounts.stated_ph, np.float64)
+    read = np.flatnonzero(np.isnan(goal) & (solved.reading >= 0))
+    goal[read] = records.readings["target"][solved.reading[read]]
+    return goal
 
 
 def _recipe(records: BatchRecords, solved: Solved, j: int) -> tuple[Key, FloatArray]:
@@ -70,15 +88,15 @@ def _alike(one: FloatArray, other: FloatArray) -> bool:
 
 def amount_notes(records: BatchRecords, solved: Solved) -> list[Problem]:
     """Notices about implied amounts far from the usual one, and about a pH that no amount of the titrant gives."""
-    opens = records.open_amounts
+    opens, never = records.open_amounts, impossible(solved)
     found = []
     for j in range(len(solved)):
         name = str(opens.batch[j] or opens.stock[j])
         words = (("name", name), ("titrant", str(opens.substance[j])), ("unit", str(opens.unit[j])))
-        if solved.odd[j]:
+        if solved.odd[j] and np.isfinite(solved.usual[j]):
             usual = f"{solved.usual_low[j]:.4g} to {solved.usual_high[j]:.4g}"
             more = (*words, ("usual", usual), ("count", str(int(solved.like[j]))))
             found.append(Problem("amount-odd", opens.place[j], f"{solved.amount[j]:.4g} {opens.unit[j]}", more))
-        elif np.isnan(solved.amount[j]) and np.isfinite(solved.ph[j]):
+        elif never[j] or (np.isnan(solved.amount[j]) and np.isfinite(solved.ph[j])):
             found.append(Problem("amount-none", opens.place[j], f"{solved.ph[j]:.2f}", words))
     return found

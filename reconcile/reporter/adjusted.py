@@ -54,6 +54,15 @@ def rows_of(audit: Audit) -> list[dict[str, Any]]:
     return found
 
 
+def _beside(row: dict[str, Any]) -> str:
+    """What there is to say of an implied amount."""
+    if math.isnan(row["amount"]):
+        return "no amount gives this pH"
+    if row["odd"] and row["amount"] < 0:
+        return "less than nothing; a lead"
+    return "odd; a lead" if row["odd"] else ""
+
+
 def adjusted_table(audit: Audit) -> Table:
     """The same as a table; odd amounts are marked by a word and shaded."""
     rows = rows_of(audit)
@@ -68,7 +77,7 @@ def adjusted_table(audit: Audit) -> Table:
             row["meter"],
             row["usual"],
             f"{row['like']}, {row['usual_low']:.4g} to {row['usual_high']:.4g}" if math.isfinite(row["usual"]) else "",
-            "odd; a lead" if row["odd"] else "no amount gives this pH" if math.isnan(row["amount"]) else "",
+            _beside(row),
         )
         for row in rows
     ]

@@ -16,6 +16,7 @@ from worked import WAYS, at, audit_as, near, read_as, table
 from reconcile.chemistry.adjusted import with_adjustments
 from reconcile.chemistry.predict import predict_ph
 from reconcile.records.settings import Settings
+from reconcile.reporter.adjusted import adjusted_table
 
 READ = ("Read at", "Batch", "Meter", "Temperature (°C)", "pH", "Stage")
 RECIPE = ("Batch", "Substance", "Lot", "Amount", "Unit", "Made up to", "Made up to unit", "Step")
@@ -199,3 +200,32 @@ def test_an_odd_amount_is_noticed_beside_like_batches(tmp_path: Path) -> None:
     assert solved.amount[5] == pytest.approx(solved.usual[5] - 14.8 * 0.09, abs=0.3)
     assert np.flatnonzero(solved.odd).tolist() == [5]
     assert [note.place.cell for note in records.notes if note.code == "amount-odd"] == ["D13"]
+
+
+def test_a_target_that_was_missed_is_odd_beside_batches_of_the_same_target(tmp_path: Path) -> None:
+    readings, recipes = [READ], [RECIPE]
+    for i in range(5):
+        readings.append((at(i), f"T-{i}", "M-1", 25.0, 7.05 if i == 3 else 7.40, None))
+        recipes.append((f"T-{i}", "Tris base", "TB", 6.057, "g", 1.0, "L", None))
+        recipes.append((f"T-{i}", "hydrochloric acid", "HC", "to pH 7.4", None, None, None, None))
+    records = read_as("workbook", tmp_path, {**RECORD, "Readings": readings, "Recipes": recipes})
+    records = with_adjustments(records, Settings())
+    solved = records.solved
+    # at 7.05 the share neutralised is 1 / (1 + 10^(7.05 - 8.15)) = 0.927
+    assert solved.amount[3] == pytest.approx(50 * 0.927, abs=0.6)
+    assert solved.usual[3] == pytest.approx(42.5, abs=0.6)
+    assert np.flatnonzero(solved.odd).tolist() == [3]
+    assert [note.place.cell for note in records.notes if note.code == "amount-odd"] == ["D9"]
+
+
+def test_less_than_nothing_of_a_titrant_is_a_lead(tmp_path: Path) -> None:
+    """Base cannot have brought Tris base from pH 10.4 to 7.40: another titrant, another substance, or another batch."""
+    readings = [READ, (at(0), "T-1", "M-1", 25.0, 7.40, None)]
+    recipes = [RECIPE, ("T-1", "Tris base", None, 50.0, "mM", None, None, None),
+               ("T-1", "sodium hydroxide", None, "as needed", None, None, None, None)]  # fmt: skip
+    audit = audit_as("workbook", tmp_path, {"Readings": readings, "Recipes": recipes})
+    # Tris alone, without another ion for it: pKa' is 8.07, and 1 / (1 + 10^(7.40 - 8.07)) = 0.824
+    assert audit.records.solved.amount[0] == pytest.approx(-0.05 * 0.824, abs=0.0006)
+    (note,) = [n for n in audit.records.notes if n.code == "amount-none"]
+    assert "no amount of sodium hydroxide gives T-1 its pH of 7.40" in note.message()
+    assert adjusted_table(audit).data[0][-1] == "less than nothing; a lead"

@@ -7,6 +7,7 @@ Predicted values: certified tables, and hand calculation with pKa from general h
 from __future__ import annotations
 
 from dataclasses import replace
+from datetime import datetime
 from pathlib import Path
 from typing import Any
 
@@ -17,6 +18,8 @@ from worked import WAYS, at, audit_as, near, read_as, table
 import reconcile
 from reconcile.records.settings import Settings
 from reconcile.records.standards import standards
+from reconcile.reporter.figures.finding import finding_picture
+from reconcile.reporter.lookups import Lookups
 
 RECIPE = ("Batch", "Substance", "Lot", "Amount", "Planned amount", "Unit", "Made up to", "Made up to unit", "Step")
 STOCK = ("Lot", "Substance", "Made as batch", "Strength", "Unit", "Density (g/mL)", "Assay (%)", "Factor")
@@ -290,6 +293,12 @@ def test_a_fault_goes_along_with_a_probe(tmp_path: Path) -> None:
     assert "meter P-1" not in finding.text + finding.next_check
     assert len(finding.readings) == 30
     assert "on meter M-2" in finding.next_check  # where the probe is now
+    drawn = finding_picture(audit, Lookups(audit), finding)
+    moved = (at(15, 7) - datetime(1970, 1, 1)).total_seconds() / 86400.0
+    for panel in drawn.axes:
+        dotted = [line for line in panel.lines if line.get_linestyle() == "--" or line.is_dashed()]
+        assert [float(np.mean(line.get_xdata())) for line in dotted] == pytest.approx([moved])
+    assert "logged event" in {text.get_text() for legend in drawn.legends for text in legend.get_texts()}
 
 
 def test_a_fault_that_stays_is_the_meters(tmp_path: Path) -> None:

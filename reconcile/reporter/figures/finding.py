@@ -11,11 +11,12 @@ from matplotlib.ticker import MaxNLocator
 from reconcile.records.arrays import BoolArray, FloatArray
 from reconcile.records.results import Audit, Finding
 from reconcile.reporter.figures.marks import MARKS, RASTER_FROM, legend_above, limit
-from reconcile.reporter.figures.style import GREY, OCHRE, WIDTH, band, empty, figure, label, whole_ticks, zero_line
-from reconcile.reporter.figures.timeline import day, timeline
+from reconcile.reporter.figures.style import GREY, INK, OCHRE, WIDTH, band, empty, figure, label, whole_ticks, zero_line
+from reconcile.reporter.figures.timeline import day, days, timeline
 from reconcile.reporter.lookups import Lookups
 
 AGAINST_PH = ("meter_span", "lot_identity", "acid_constant", "probe_matrix", "calibration_buffer")
+DOTTED = (0, (1, 2))
 AGAINST_TEMPERATURE = ("meter_temperature",)
 
 
@@ -41,6 +42,7 @@ def finding_picture(audit: Audit, lookups: Lookups, finding: Finding) -> Figure:
     half = limit(np.concatenate([before, after]))
     drawn = figure(WIDTH, 2.35)
     panels = drawn.subplots(1, 2, sharey=True, sharex=True)
+    logged = False
     spread = float(np.nanmedian(audit.u_residual[rows]))
     without = f"{label(finding.id)} taken out too" if others else f"with {label(finding.id)} taken out"
     for axes, values, title in zip(panels, (before, after), (left, without), strict=True):
@@ -52,6 +54,8 @@ def finding_picture(audit: Audit, lookups: Lookups, finding: Finding) -> Figure:
             if finding.since_interval95 is not None:
                 low, high = (day(t) for t in finding.since_interval95)
                 axes.axvspan(low, high, color=OCHRE, alpha=0.14, linewidth=0, zorder=0.5)
+        if dress is line and line.dated:
+            logged |= _events(axes, audit, finding, x[rows])
         axes.set_title(title)
         axes.set(ylim=_ends(np.clip(np.concatenate([before, after]), -half, half), spread), xlabel=name)
     if dress is line:
@@ -67,8 +71,22 @@ def finding_picture(audit: Audit, lookups: Lookups, finding: Finding) -> Figure:
     if not own.all():
         entries.append(Line2D([], [], linestyle="none", marker="o", markersize=3.5, markerfacecolor="none", color=GREY,
                               label=f"other reading of the same subject ({int((~own).sum()):,})"))  # fmt: skip
+    if logged:
+        entries.append(Line2D([], [], color=INK, linewidth=0.8, linestyle=DOTTED, label="logged event"))
     legend_above(drawn, entries)
     return drawn
+
+
+def _events(axes: Axes, audit: Audit, finding: Finding, x: FloatArray) -> bool:
+    """What was done to the finding's meter or probe while it was read, as dotted lines; whether there was anything."""
+    if finding.subject_type not in ("meter", "probe"):
+        return False
+    events = audit.records.events
+    at = days(events["at"])
+    inside = (events[finding.subject_type] == finding.subject) & (at >= x.min()) & (at <= x.max())
+    for moment in at[inside]:
+        axes.axvline(moment, color=INK, linewidth=0.8, linestyle=DOTTED, zorder=1.5)
+    return bool(inside.any())
 
 
 def _ends(values: FloatArray, spread: float) -> tuple[float, float]:

@@ -11,7 +11,7 @@ import numpy as np
 from reconcile.records.results import Audit, Finding
 from reconcile.reporter.figures import PICTURES
 from reconcile.reporter.figures.finding import finding_picture
-from reconcile.reporter.figures.style import styled
+from reconcile.reporter.figures.style import EMPTY, styled
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.plain import plain
 from reconcile.reporter.to_png import images
@@ -42,8 +42,10 @@ def draw_all(audit: Audit, lookups: Lookups, progress: Callable[[str, float], No
     with styled():
         for i, (name, picture) in enumerate(PICTURES.items()):
             progress(f"drawing {picture.heading.lower()}", i / steps)
-            png, svg = images(picture.draw(audit, lookups))
-            caption = f"{picture.caption} {picture.rest(audit, lookups)}".strip()
+            drawn = picture.draw(audit, lookups)
+            blank = drawn.get_label() == EMPTY  # asked before it is written and closed
+            png, svg = images(drawn)
+            caption = "" if blank else f"{picture.caption} {picture.rest(audit, lookups)}".strip()
             found.append(Drawn(name, picture.heading, caption, picture.alt, png, svg))
         for place, (i, finding) in enumerate(findings):
             progress(f"drawing finding {place + 1} of {len(findings)}", (len(PICTURES) + place) / steps)

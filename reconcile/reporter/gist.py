@@ -14,6 +14,7 @@ from reconcile.reporter.words import (
     STATUSES,
     brief_since,
     counted,
+    explains_words,
     half_up,
     kind_words,
     listed,
@@ -87,9 +88,10 @@ def _stands_out(audit: Audit, lookups: Lookups) -> Line:
         f"{counted(wrong, 'calculated pH', 'calculated pHs')} in the record {'is' if wrong == 1 else 'are'} off."
     )
     after = [left] * bool(outstanding) + [calculated] * bool(wrong)
+    none = "No fault is supported by the readings" + ("." if outstanding else ", and no reading stands out by itself.")
     faults = [finding for _, finding in lookups.faults]
     if not faults:
-        return Line("stands_out", "What stands out", " ".join(["No fault is supported by the readings.", *after]))
+        return Line("stands_out", "What stands out", " ".join([none, *after]))
     shown = faults[:MOST_NAMED]
     items = tuple((plain(f.id), in_few_words(f)) for f in shown)
     number, more = counted(len(faults), "finding"), len(faults) - len(shown)
@@ -101,7 +103,8 @@ def _stands_out(audit: Audit, lookups: Lookups) -> Line:
 
 def in_few_words(finding: Finding) -> str:
     """A finding as the gist names it: "meter M-3: step, +0.104 pH, since 2025-04-03"."""
-    words = ", ".join(filter(None, (title(finding), quantity(finding), brief_since(finding))))
+    meant = explains_words(finding) if finding.kind == "reading_slip" and finding.estimate is not None else ""
+    words = ", ".join(filter(None, (title(finding), quantity(finding), meant, brief_since(finding))))
     return words[:1].lower() + words[1:]
 
 
@@ -110,7 +113,7 @@ def _read_next(audit: Audit) -> str:
     if not checks:
         if audit.findings:
             return "No reading of what already stands would tell more about these findings."
-        return "Nothing in particular; more readings would lower the smallest detectable faults."
+        return "Nothing in particular."
     text = f"For {checks[0][0]}: {checks[0][1]}"
     others = [ident for ident, _ in checks[1:]]
     if not others:

@@ -83,6 +83,35 @@ class Lookups:
         return self.audit.records.readings["read_at"].astype("datetime64[s]")
 
     @cached_property
+    def main_sheet(self) -> int:
+        """The sheet that most readings stand in; rows of other sheets are named with their sheet."""
+        sheets = self.audit.records.readings.source
+        return int(np.argmax(np.bincount(sheets))) if len(sheets) else -1
+
+    def row_words(self, reading: int) -> str:
+        """Row of a reading as the page names it: "154", in a second sheet "Checks 33"."""
+        records = self.audit.records
+        source, row = int(records.readings.source[reading]), int(records.readings.row[reading])
+        if source == self.main_sheet:
+            return str(row)
+        sheet = records.sheets[source]
+        return f"{plain(sheet.sheet or sheet.file)} {row}"
+
+    def place_words(self, reading: int) -> str:
+        """Place of a reading in a sentence: "row 154", in a second sheet "Checks, row 33"."""
+        row, words = str(int(self.audit.records.readings.row[reading])), self.row_words(reading)
+        return f"row {row}" if words == row else f"{words.removesuffix(row).rstrip()}, row {row}"
+
+    def before_onset(self, finding: Finding) -> int | None:
+        """Last reading of a meter or probe before a fault of it began; None where there is none, or no onset."""
+        if finding.since is None or finding.subject_type not in METER_TYPES or not isinstance(finding.subject, str):
+            return None
+        name = "probe" if finding.subject_type == "probe" else "meter"
+        own = np.flatnonzero((self.audit.records.readings[name] == finding.subject) & self.usable)
+        own = own[self.times[own] < np.datetime64(finding.since, "s")]
+        return int(own[np.argmax(self.times[own])]) if len(own) else None
+
+    @cached_property
     def period(self) -> tuple[np.datetime64, np.datetime64] | None:
         """First and last time of a reading; None when no reading has one."""
         known = self.times[~np.isnat(self.times)]

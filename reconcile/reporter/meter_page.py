@@ -10,14 +10,17 @@ from markupsafe import Markup
 
 from reconcile import __version__
 from reconcile.records.meter_results import MeterHistory
+from reconcile.records.rounding import chance_words
 from reconcile.reporter import meter_tables, page_findings, summaries
 from reconcile.reporter.cautions import CAUTIONS, FORMULA_NOTE, ROUNDING_NOTE, SHORT_CAUTION, UNSIGNED
 from reconcile.reporter.drawn import Drawn
 from reconcile.reporter.manifest import inputs, report_id
 from reconcile.reporter.meter_gist import NO_LEAVE, meter_gist
 from reconcile.reporter.page_scope import notes, sheets_view
-from reconcile.reporter.page_tables import View, capped, set_aside_view, view
+from reconcile.reporter.page_tables import Cell, View, capped, set_aside_view, view
+from reconcile.reporter.tables import Column
 from reconcile.reporter.to_html import asset, digest, environment
+from reconcile.reporter.words import counted
 
 METERS = "meters"
 """The command that makes this report."""
@@ -43,7 +46,8 @@ def meter_page(history: MeterHistory, drawn: Sequence[Drawn]) -> bytes:
 
     def table(build: str, caption: str, keys: Sequence[str] | None = None) -> View:
         made = getattr(meter_tables, build)(history)
-        return capped(made, made.name.replace("_", "-"), caption, f"{made.name}.csv holds all.", MOST_ROWS, keys)
+        rest = f"{made.name}.csv holds all."
+        return capped(made, made.name.replace("_", "-"), caption, rest, MOST_ROWS, keys, _in_few_words)
 
     text = environment().get_template("meters.html").render(
         report_id=identity,
@@ -57,7 +61,9 @@ def meter_page(history: MeterHistory, drawn: Sequence[Drawn]) -> bytes:
         limits=view(meter_tables.limits(history), "limits", "Limits of slope and offset", tool=False),
         courses=[p for name, p in pictures.items() if name.startswith("calibrations_")],
         lines=table("lines", "Lines through calibrations", LINES_ON_PAGE),
-        crossings=table("crossings", "When lines cross limits", CROSSINGS_ON_PAGE),
+        crossings=_dated(history),
+        any_crossing=bool(history.crossings),
+        undated=_undated(history),
         reached=[x.text for x in history.crossings if x.limit.judged and not (x.ahead and np.isnat(x.at))][:MOST_TEXTS],
         steps=table("steps", "Unlogged steps between calibrations"),
         findings=_findings(history),
@@ -79,6 +85,37 @@ def meter_page(history: MeterHistory, drawn: Sequence[Drawn]) -> bytes:
         unsigned=UNSIGNED,
     )  # fmt: skip
     return text.encode("utf-8")
+
+
+def _in_few_words(column: Column, _row: int, text: str) -> Cell | None:
+    """Days of calibrations without the time of day, chances in words: the CSV files hold both in full."""
+    if column.key in ("first", "last"):
+        return Cell(text[:10], "t")
+    return Cell(chance_words(float(text)), "s") if column.key == "family_wise_p" and text else None
+
+
+def _dated_rows(history: MeterHistory) -> list[int]:
+    dates = ((x.at, x.earliest, x.latest) for x in history.crossings)
+    return [i for i, found in enumerate(dates) if not all(np.isnat(date) for date in found)]
+
+
+def _dated(history: MeterHistory) -> View:
+    """The crossings that have a date."""
+    dated = meter_tables.crossings(history).rows(np.array(_dated_rows(history), np.intp))
+    return capped(
+        dated, "crossings", "When lines cross limits", "crossings.csv holds all.", MOST_ROWS, CROSSINGS_ON_PAGE
+    )
+
+
+def _undated(history: MeterHistory) -> str:
+    """How many lines have no date of crossing, and why that may be."""
+    number = len(history.crossings) - len(_dated_rows(history))
+    if not number:
+        return ""
+    return (
+        f"No date is given for {counted(number, 'pair')} of line and limit: the line does not reach the limit "
+        "within twice the length of its calibrations, or its rate cannot be told from zero. crossings.csv says which."
+    )
 
 
 def _findings(history: MeterHistory) -> View | None:

@@ -190,7 +190,9 @@ def crossings(history: MeterHistory) -> Table:
 def _when(crossing: Crossing) -> str:
     if not crossing.ahead:
         return "before it"
-    return "" if np.isnat(crossing.at) else "after it"
+    if not np.isnat(crossing.at):
+        return "after it"
+    return "" if np.isnat(crossing.earliest) else "later than was looked at"
 
 
 def steps(history: MeterHistory) -> Table:

@@ -96,6 +96,9 @@ def _section(
     if finding.subject_type == "lot" and isinstance(finding.subject, str) and plain(finding.subject) in labels:
         stock = labels[plain(finding.subject)]
         facts.insert(0, ("On the label", f"{stock.substance}; {stock.hazard}"))
+    onset = lookups.before_onset(finding)
+    if onset is not None:
+        facts.append(("Last reading before", f"{moment(lookups.times[onset])}, {lookups.place_words(onset)}"))
     rows = sorted(int(i) for i in finding.readings)
     shown = rows[:MOST_LINKS]
     by_batch: dict[str, list[tuple[str, str]]] = {}
@@ -103,7 +106,9 @@ def _section(
         target = row_id(i) if i in on_page else ""
         name = str(lookups.batch[i])
         short_name = name if len(name) <= 24 else f"{name[:23]}…"
-        by_batch.setdefault(short_name, []).append((str(int(audit.records.readings.row[i])), target))
+        if not audit.records.readings["batch"][i]:
+            short_name = f"known solution {short_name}"
+        by_batch.setdefault(short_name, []).append((lookups.row_words(i), target))
     more = len(rows) - len(shown)
     name = anchor(finding, index)
     return Section(
@@ -166,20 +171,23 @@ def _impact(audit: Audit, lookups: Lookups, finding: Finding, name: str, on_page
 
     rows = []
     for i in chosen[:MOST_IMPACT]:
-        target = ((f"row {int(readings.row[i])}", row_id(i)),) if i in on_page else ()
+        where = lookups.place_words(i)
+        target = ((where, row_id(i)),) if i in on_page else ()
+        share = shift.get(i, finding.estimate or np.nan)
         rows.append(
             Row(
                 "",
                 False,
                 [
-                    Cell(f"row {int(readings.row[i])}", "", target),
+                    Cell(where, "", target),
                     text_cell(str(lookups.batch[i])),
                     text_cell(str(lookups.meter[i])),
                     Cell(minus(half_up(float(readings["ph"][i]), int(lookups.decimals[i]))), "n"),
                     Cell(digits(readings["low_limit"][i], i), "n"),
                     Cell(digits(readings["high_limit"][i], i), "n"),
-                    Cell(_place(readings, i), "s"),
-                    Cell(signed(half_up(shift.get(i, finding.estimate or np.nan), 3)), "n"),
+                    Cell(signed(half_up(share, 3)), "n"),
+                    Cell(_place(readings, i, 0.0), "s"),
+                    Cell(_place(readings, i, share), "s"),
                 ],
             )
         )
@@ -190,8 +198,9 @@ def _impact(audit: Audit, lookups: Lookups, finding: Finding, name: str, on_page
         ("pH observed", "n"),
         ("Low limit (pH)", "n"),
         ("High limit (pH)", "n"),
-        ("As read", ""),
         ("Share of the finding (pH)", "n"),
+        ("As read", ""),
+        ("Without that share", ""),
     ]
     more = len(chosen) - MOST_IMPACT
     note = f"and {counted(more, 'more reading')} in findings.json" if more > 0 else ""
@@ -199,9 +208,11 @@ def _impact(audit: Audit, lookups: Lookups, finding: Finding, name: str, on_page
     return View(f"{name}-impact", caption, headings, rows, note, tool=False)
 
 
-def _place(readings: Records, i: int) -> str:
-    """Where a reading lies against its limits."""
-    value = float(readings["ph"][i])
+def _place(readings: Records, i: int, share: float) -> str:
+    """Where a reading lies against its limits, less what a finding accounts for [pH]."""
+    value = float(readings["ph"][i]) - share
+    if not np.isfinite(value):
+        return "–"
     if value < float(readings["low_limit"][i]):
         return "below"
     return "above" if value > float(readings["high_limit"][i]) else "inside"
@@ -221,7 +232,7 @@ def overview(lookups: Lookups) -> View | None:
     for place, (i, finding) in enumerate(lookups.faults):
         ident = plain(finding.id)
         link = ((ident, anchor(finding, i)),) if place < MOST_SECTIONS else ()
-        batches = {str(lookups.batch[int(k)]) for k in finding.readings} - {""}
+        solutions = {str(lookups.batch[int(k)]) for k in finding.readings} - {""}
         rows.append(
             Row(
                 "",
@@ -233,7 +244,7 @@ def overview(lookups: Lookups) -> View | None:
                     Cell(interval(finding) or "–", "s"),
                     Cell(moment(finding.since)[:10] or "–", "s"),
                     Cell(f"{len(finding.readings):,}", "n"),
-                    Cell(f"{len(batches):,}", "n"),
+                    Cell(f"{len(solutions):,}", "n"),
                     Cell(f"{len(finding.impact):,}", "n"),
                     text_cell(listed([rival_words(finding, r) for r in finding.rivals], 3) or "–"),
                 ],
@@ -246,7 +257,7 @@ def overview(lookups: Lookups) -> View | None:
         ("95 % interval", ""),
         ("Since", ""),
         ("Readings", "n"),
-        ("Batches", "n"),
+        ("Solutions", "n"),
         ("Limits concerned", "n"),
         ("What else it could be", ""),
     ]

@@ -91,6 +91,8 @@ def css_of(column: Column) -> str:
         return "n"
     if column.kind == "time":
         return "t"
+    if column.unbroken:
+        return "s"
     return "long" if column.width >= 40 else ""
 
 
@@ -143,13 +145,19 @@ def view(
 
 
 def capped(
-    table: Table, table_id: str, caption: str, rest: str, most: int = MOST_OTHER, keys: Sequence[str] | None = None
+    table: Table,
+    table_id: str,
+    caption: str,
+    rest: str,
+    most: int = MOST_OTHER,
+    keys: Sequence[str] | None = None,
+    cells: Callable[[Column, int, str], Cell | None] = lambda _column, _row, _text: None,
 ) -> View:
     """A table cut to its first rows; the note says where the rest is."""
     if len(table) <= most:
-        return view(table, table_id, caption, keys=keys, tool=len(table) > 8)
+        return view(table, table_id, caption, keys=keys, cells=cells, tool=len(table) > 8)
     note = f"Shown are the first {most:,} of {len(table):,} rows; {rest}"
-    return view(table.rows(np.arange(most)), table_id, caption, keys=keys, note=note)
+    return view(table.rows(np.arange(most)), table_id, caption, keys=keys, cells=cells, note=note)
 
 
 ORDER = (

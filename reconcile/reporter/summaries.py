@@ -66,7 +66,7 @@ STOCKS: tuple[Column, ...] = (
     Column("hazard", "Hazard words", width=52),
 )
 SETTINGS: tuple[Column, ...] = (
-    Column("name", "Setting", width=38),
+    Column("name", "Setting", width=38, unbroken=True),
     Column("value", "Value", width=16),
     Column("unit", "Unit", width=24),
     Column("differs", "Differs from default", width=12),

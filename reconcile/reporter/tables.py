@@ -25,6 +25,7 @@ class Column:
     signed : a difference, shown with its sign
     width : of the workbook's column, in characters
     brief : heading where room is short (the page), "" for the same
+    unbroken : a name that is read as one, never broken over lines
     """
 
     key: str
@@ -34,6 +35,7 @@ class Column:
     signed: bool = False
     width: int = 0
     brief: str = ""
+    unbroken: bool = False
 
     @property
     def characters(self) -> int:

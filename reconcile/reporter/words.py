@@ -57,6 +57,8 @@ STATUS_MEANINGS: Mapping[str, str] = {
     "void": "marked void in the record; kept and shown, no evidence",
     "not_solved": "no prediction was reached",
 }
+EVERY = "all"
+"""Subject of a silence that is about every meter, named or not."""
 TIMELESS = ("reading", "batch", "acid", "lot", "buffer")
 """Subjects of which "throughout the record" would say nothing."""
 
@@ -80,6 +82,8 @@ def kind_words(kind: str) -> str:
 def subject_words(finding: Finding | Silence) -> str:
     """What is concerned: "meter M-3", "lot A-17", "reading of batch B-9 on meter M-3, row 12"."""
     subject, what = finding.subject, finding.subject_type
+    if isinstance(finding, Silence) and subject == EVERY:
+        return f"every {what}"
     if isinstance(subject, str):
         return f"{what} {plain(subject)}".strip()
     parts = [plain(str(part)) for part in subject]
@@ -177,7 +181,7 @@ def unsaid(finding: Finding) -> list[tuple[str, str]]:
     if when and dates and not all(date in text for date in dates):
         facts.append(("When", when))
     if finding.also:
-        facts.append(("The same for pH", listed([plain(a) for a in finding.also], 8)))
+        facts.append(("Acts the same in pH", listed([plain(a) for a in finding.also], 8)))
     chance = chance_words(finding.family_wise_p)
     if chance not in text:
         facts.append(("Family-wise p", chance))
@@ -222,7 +226,10 @@ def explains_parts(finding: Finding) -> list[tuple[str, str]]:
         if value is None:
             continue
         text = _value(value, key in DIFFERENCES)
-        words = EXPLAINS[key].format(text) if key in EXPLAINS else f"{plain(str(key)).replace('_', ' ')} {text}"
+        if key == "pH" and finding.kind == "reading_slip":
+            words = f"pH {text} meant"
+        else:
+            words = EXPLAINS[key].format(text) if key in EXPLAINS else f"{plain(str(key)).replace('_', ' ')} {text}"
         parts.append((text.lstrip("+−"), words))
     return parts
 

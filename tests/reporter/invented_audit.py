@@ -81,6 +81,7 @@ def build(n: int = N, settings: Settings | None = None, with_findings: bool = Tr
     late = np.arange(n) >= n // 2
     on_meter = (meter == METERS[1]) & late
     fault[on_meter] += 0.14
+    decided = np.flatnonzero(on_meter)[:2]  # readings whose place in their limits hangs on the step
     lot_of_solution = np.array([s % 3 for s in range(n // 2)])
     on_lot = (lot_of_solution == 2).repeat(2)
     fault[on_lot] -= 0.11
@@ -95,7 +96,7 @@ def build(n: int = N, settings: Settings | None = None, with_findings: bool = Tr
             "temperature": 22.0 + (i % 5) * 0.5,
             "ph": observed[i],
             "low_limit": np.round(predicted[i] - 0.15, 2),
-            "high_limit": np.round(predicted[i] + 0.15, 2),
+            "high_limit": np.round(predicted[i] + (0.1 if i in decided else 0.15), 2),
             "standing": "original",
             "stage": "final" if i % 2 else "in process",
             "resolution": 0.1 if meter[i] == METERS[2] else 0.01,

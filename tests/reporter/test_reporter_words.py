@@ -82,7 +82,7 @@ def test_a_section_says_nothing_twice(invented: Audit) -> None:
     assert [name for name, _ in words.unsaid(step)] == ["Log-likelihood gain"]
     terse = dataclasses.replace(step, text="Meter pH-2.", also=("probe E1",))
     assert [name for name, _ in words.unsaid(terse)] == [
-        "How large", "When", "The same for pH", "Family-wise p", "Log-likelihood gain",
+        "How large", "When", "Acts the same in pH", "Family-wise p", "Log-likelihood gain",
     ]  # fmt: skip
 
 

@@ -76,9 +76,14 @@ def figure(width: float = WIDTH, height: float = 3.4) -> Figure:
     return Figure(figsize=(width, height), layout="constrained")
 
 
+EMPTY = "empty"
+"""Label of a figure that only says why there is no picture; a caption would say what is not there."""
+
+
 def empty(text: str) -> Figure:
     """A picture that says why there is none."""
     drawn = figure(WIDTH, 0.6)
+    drawn.set_label(EMPTY)
     drawn.text(0.01, 0.5, text, va="center", color=GREY)
     return drawn
 

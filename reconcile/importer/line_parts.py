@@ -158,9 +158,14 @@ class LineReader:
             if taken.fault_place is not None:
                 return Problem(taken.fault.code, taken.fault_place, taken.fault.read, taken.fault.words)
             return self.problem(line, taken.fault, L.substance_column[line])
+        fault = None if L.problem[line] is not None else self._line_fault(line, basis)
+        code = L.problem[line].code if L.problem[line] is not None else fault.code if fault is not None else ""
+        if taken.form is not None and taken.form.name in MOST_SOLVENT and code in ("unit-unknown", "volume-of-what"):
+            # its volume in the solution is what nothing more could be made of
+            mixed = Fault("solvent-mixed", L.substance[line], (("bare", L.substance[line]),))
+            return self.problem(line, mixed, L.substance_column[line])
         if L.problem[line] is not None:
             return L.problem[line]  # type: ignore[no-any-return]
-        fault = self._line_fault(line, basis)
         if fault is not None:
             return self.problem(line, fault, L.column[line])
         value = float(L.value[line])

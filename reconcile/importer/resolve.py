@@ -22,6 +22,7 @@ WATER_NAMES = {
     for w in (
         "water", "purified water", "deionised water", "deionized water", "distilled water", "ultrapure water",
         "water for injection", "wfi", "di water", "h2o", "dh2o", "ddh2o", "process water", "high purity water",
+        "water blank", "blank water", "blank (water)",
     )
 }  # fmt: skip
 

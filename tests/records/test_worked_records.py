@@ -403,6 +403,15 @@ def test_what_cannot_be_predicted_says_so(way: str, tmp_path: Path) -> None:
     assert audit.evidence.tolist() == [False, False, False, True]
 
 
+@pytest.mark.parametrize(("amount", "unit"), [(50.0, "% v/v"), (300.0, "mL"), (400.0, "g/L")])
+def test_a_mixed_solvent_is_called_one_however_its_amount_is_stated(amount: float, unit: str, tmp_path: Path) -> None:
+    recipe = [RECIPE, *ACETATE, line("A-1", "methanol", None, amount, unit, to=1.0, to_unit="L")]
+    sheets = {"Readings": [("Batch", "pH"), ("A-1", 5.1), ("water blank", 6.0)], "Recipes": recipe}
+    records = read_as("workbook", tmp_path, sheets)
+    assert [(row.batch, row.code) for row in records.set_aside] == [("A-1", "solvent-mixed")]
+    assert records.readings["batch"].tolist() == ["water blank"]
+
+
 def test_a_declared_substance_costs_its_allowance(tmp_path: Path) -> None:
     settings = Settings.from_sections({"substances": {"without_effect": ["marker protein", "aluminium hydroxide gel"]}})
     audit = audit_as("workbook", tmp_path, ODD, settings)

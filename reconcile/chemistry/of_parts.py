@@ -3,18 +3,21 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from reconcile.chemistry.notices import Notice, notices
 from reconcile.chemistry.predict import predict_ph
-from reconcile.chemistry.trail import Trail, trail
 from reconcile.chemistry.water import DENSITY_20C, HIGH_C, LOW_C
 from reconcile.records.parts import Composition
 from reconcile.records.places import Place
 from reconcile.records.problems import InputProblems, Problem
 from reconcile.records.results import Prediction
 from reconcile.records.settings import Settings
+
+if TYPE_CHECKING:
+    from reconcile.chemistry.trail import Trail
 
 
 @dataclass(frozen=True)
@@ -42,6 +45,8 @@ class PredictedParts:
         """The calculation behind it, for a reviewer; None where no pH was reached."""
         if str(self.prediction.status[0]) == "not_solved":
             return None
+        from reconcile.chemistry.trail import trail
+
         forms = [part.form for part in self.composition.parts]
         return trail(forms, self.molality, float(self.prediction.temperature_c[0]), self.settings)
 

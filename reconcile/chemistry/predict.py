@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Any
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
 from zlib import crc32
 
 import numpy as np
@@ -15,9 +16,7 @@ from reconcile.chemistry.composition import Contents, form_table
 from reconcile.chemistry.drawn import u_drawn
 from reconcile.chemistry.engine import Ragged, run
 from reconcile.chemistry.monte_carlo import Errors
-from reconcile.chemistry.of_records import predict_records
 from reconcile.chemistry.prediction import assemble, regrouped, triplets, u_of_model
-from reconcile.chemistry.repredict import repredictor
 from reconcile.chemistry.solve import rows_alike
 from reconcile.chemistry.uncertainty import ROOT3, of_independent
 from reconcile.chemistry.water import DENSITY_20C, co2_solubility
@@ -26,7 +25,20 @@ from reconcile.records.results import Prediction
 from reconcile.records.settings import Settings
 from reconcile.records.substances import Form, catalogue
 
+if TYPE_CHECKING:
+    from reconcile.chemistry.of_records import predict_records
+    from reconcile.chemistry.repredict import repredictor
+
 __all__ = ["dissolved_co2", "predict_ph", "predict_records", "repredictor"]
+_LATE = {"predict_records": "of_records", "repredictor": "repredict"}
+
+
+def __getattr__(name: str) -> Any:
+    """What concerns records, loaded when first asked for: the prediction of one solution starts without it."""
+    if name in _LATE:
+        return getattr(import_module(f"reconcile.chemistry.{_LATE[name]}"), name)
+    raise AttributeError(f"module {__name__!r} has no attribute {name!r}")
+
 
 UNITS = ("mol/L", "mol/kg")
 

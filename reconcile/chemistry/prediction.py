@@ -134,11 +134,11 @@ def assemble(
     budget["carbon dioxide"] = gas[which]
     with np.errstate(divide="ignore", invalid="ignore"):
         capacity = 1.0 / answers.d_titrant
-    met = np.unique(answers.constants.column)
+    met = np.flatnonzero(np.bincount(answers.constants.column, minlength=len(acids.rows)))
     place = np.zeros(len(acids.rows), np.intp)
     place[met] = np.arange(len(met))
     constants = regrouped(answers.constants, which)
-    acid_met = np.unique(answers.degree.column)
+    acid_met = np.flatnonzero(np.bincount(answers.degree.column, minlength=len(acids.names)))
     acid_place = np.zeros(len(acids.names), np.intp)
     acid_place[acid_met] = np.arange(len(acid_met))
     degree = regrouped(answers.degree, which)

@@ -128,6 +128,8 @@ def rows_alike(keys: FloatArray) -> tuple[IntArray, IntArray]:
     first row; a row that merely shares the hash is kept as a set of its own.
     """
     n, k = keys.shape
+    if n < 2:
+        return np.arange(n), np.arange(n)
     bits = np.ascontiguousarray(keys, float).view(np.uint64).reshape(n, k)
     odd = np.random.default_rng(_HASH_SEED).integers(0, 2**63, k, np.uint64) * np.uint64(2) + np.uint64(1)
     mixed = np.empty(n, np.uint64)

@@ -55,7 +55,7 @@ def predict(
     the hazard words recorded for each substance.
     """
     from reconcile import pipeline
-    from reconcile.cli import show_prediction, show_trail
+    from reconcile.cli import show_prediction
     from reconcile.records.parts import parse_temperature
 
     temperature = parse_temperature(at) if at else pipeline.DEFAULT_TEMPERATURE_C
@@ -66,6 +66,8 @@ def predict(
 
         document = show_prediction.document(predicted)
         if laid_open is not None:
+            from reconcile.cli import show_trail
+
             document["trail"] = show_trail.document(laid_open)
         print_json(document)
     else:
@@ -74,6 +76,8 @@ def predict(
         say(f"No --at was given; predicted at {temperature:g} °C.", quiet or bool(at))
         show_prediction.show(predicted)
         if laid_open is not None:
+            from reconcile.cli import show_trail
+
             show_trail.show(laid_open, predicted)
     raise typer.Exit(exit_code(flagged=str(predicted.prediction.status[0]) != "ok", strict=strict))
 

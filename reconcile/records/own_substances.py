@@ -15,16 +15,18 @@ import csv
 import errno
 import hashlib
 import os
-import tomllib
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
 from functools import cache, cached_property
 from pathlib import Path
+from typing import TYPE_CHECKING
 
-from reconcile.records.own_checks import Checks, OwnStep
 from reconcile.records.places import Place
 from reconcile.records.problems import InputProblems, Problem
 from reconcile.records.substances import Form, package_forms
+
+if TYPE_CHECKING:
+    from reconcile.records.own_checks import OwnStep
 
 BESIDE = "substances.toml"
 """Name of the file beside a record's first file."""
@@ -99,6 +101,10 @@ def parse(
     InputProblems
         With everything that is wrong with the file.
     """
+    import tomllib  # no run without such a file waits for these
+
+    from reconcile.records.own_checks import Checks
+
     checks = Checks(shown or name)
     try:
         tree = tomllib.loads(content.decode("utf-8-sig"))

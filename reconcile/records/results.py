@@ -10,12 +10,12 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from reconcile.records.arrays import BoolArray, FloatArray, IntArray, TextArray, TimeArray, Triplets
-from reconcile.records.book import BatchRecords
 from reconcile.records.settings import Settings
 
 if TYPE_CHECKING:
     import pandas as pd
 
+    from reconcile.records.book import BatchRecords
     from reconcile.records.over_time import Before
 
 

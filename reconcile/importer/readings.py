@@ -8,6 +8,7 @@ import numpy as np
 
 from reconcile.importer.blocks import label_of
 from reconcile.importer.cells import Fault, Parsed, as_text, blanks, parse_numbers
+from reconcile.importer.limits import fill_limits
 from reconcile.importer.lines import text_column
 from reconcile.importer.tables import TableCells, covered
 from reconcile.records.arrays import AnyArray, IntArray, TextArray
@@ -59,6 +60,7 @@ def read_readings(table: TableCells, groups: IntArray, settings: Settings) -> tu
         parsed = table.columns.get(c.name)
         columns[c.name] = parsed.values if parsed is not None else missing_column("readings", c.name, n)
     _stated_by_headings(table, columns, settings, notes)
+    _limits_in_one_cell(table, columns, settings, notes)
     problem = np.full(n, None, object)
     for i, why in table.whole_row.items():
         problem[i] = why
@@ -106,6 +108,21 @@ def _stated_by_headings(
             notes.append(Problem("cell-not-used", place, parsed.bad[first].read, words))
         holds = (stages == heading_key(stage)) & ~np.isnan(parsed.values)
         columns[name] = np.where(holds, parsed.values, columns[name])
+
+
+def _limits_in_one_cell(
+    table: TableCells, columns: dict[str, AnyArray], settings: Settings, notes: list[Problem]
+) -> None:
+    """Both limits where one cell states them: "4.5 - 4.8"."""
+    if "limits" not in table.columns:
+        return
+    low, high = columns["low_limit"].copy(), columns["high_limit"].copy()
+    texts = columns["limits"].tolist()
+    bad = fill_limits(texts, low, high, settings["reading.decimal"])
+    columns["low_limit"], columns["high_limit"] = low, high
+    if bad:
+        words = (("count", str(len(bad))), ("name", column("readings", "limits").title))
+        notes.append(Problem("cell-not-used", table.place(bad[0], "limits"), texts[bad[0]], words))
 
 
 def _label(table: TableCells, row_number: int) -> str:

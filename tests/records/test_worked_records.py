@@ -419,3 +419,28 @@ def test_a_declared_substance_costs_its_allowance(tmp_path: Path) -> None:
     assert u["B-1"] == u["B-3"] == pytest.approx(np.hypot(u["B-6"], 0.02))
     assert audit.prediction.budget["declared without effect"].tolist()[0] == 0.02
     assert replace(audit).records.without_effect == ("marker protein", "aluminium hydroxide gel")
+
+
+@pytest.mark.parametrize("way", WAYS)
+def test_limits_in_one_cell(way: str, tmp_path: Path) -> None:
+    said = [
+        "4.5 - 4.8",
+        "4,5–4,8",
+        "pH 4.50 to 4.80",
+        "4.7 ± 0.1",
+        "NLT 4.5",
+        "not more than 4.8",
+        "> 4.5",
+        "see SOP",
+        None,
+    ]
+    rows: list[Any] = [("Batch", "Meter", "Temperature (°C)", "pH", "Specification")]
+    rows += [("A-1", "M-1", 25.0, 4.66, text) for text in said]
+    records = read_as(way, tmp_path, {"Readings": rows, "Recipes": [RECIPE, *ACETATE]})
+    nan = np.nan
+    low, high = records.readings["low_limit"], records.readings["high_limit"]
+    assert low.tolist() == pytest.approx([4.5, 4.5, 4.5, 4.6, 4.5, nan, 4.5, nan, nan], nan_ok=True)
+    assert high.tolist() == pytest.approx([4.8, 4.8, 4.8, 4.8, nan, 4.8, nan, nan, nan], nan_ok=True)
+    (note,) = [n for n in records.notes if n.code == "cell-not-used"]
+    assert note.read == "see SOP"
+    assert len(records.readings) == len(said)

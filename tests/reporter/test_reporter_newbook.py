@@ -175,7 +175,7 @@ def test_the_filled_example_is_read_without_a_notice_and_nothing_is_found(tmp_pa
     path = write_newbook(tmp_path / "example.xlsx", filled=True)
     records = reconcile.read(path)
     check_all_used(records, len(EXAMPLE["readings"]))
-    assert {c for r in EXAMPLE["readings"] for c in r} | {"reference_temperature"} == {
+    assert {c for r in EXAMPLE["readings"] for c in r} | {"reference_temperature", "limits"} == {
         c.name for c in BY_SHEET["readings"]
     }
     for kind in BY_SHEET:

@@ -96,6 +96,16 @@ def test_nothing_scrolls_sideways_but_inside_its_box(browser: Chromium, any_page
     assert over == []
 
 
+def test_at_desktop_width_no_table_is_cut_by_its_box(browser: Chromium, any_page: Path) -> None:
+    """But for the residuals of the invented record, which fills every column there is."""
+    browser.open(any_page, 1280)
+    cut = browser.value(
+        "Array.from(document.querySelectorAll('.box')).filter(b => b.scrollWidth > b.clientWidth + 1)"
+        ".map(b => [b.getAttribute('aria-labelledby'), b.scrollWidth - b.clientWidth])"
+    )
+    assert [one for one in cut if one[0] != "residuals-caption"] == []
+
+
 CONTRAST = """
 (() => {
   const channel = v => { v /= 255; return v <= 0.04045 ? v / 12.92 : Math.pow((v + 0.055) / 1.055, 2.4); };

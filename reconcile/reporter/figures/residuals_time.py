@@ -133,16 +133,15 @@ def _dated_marks(axes: Axes, meter: str, audit: Audit, line: Timeline, half: flo
     for i in chosen[:MOST_EVENTS].tolist():
         axes.axvline(float(at[i]), color=INK, linewidth=0.8, linestyle=(0, (1, 2)), zorder=2)
         drew.add("event")
-        if at[i] < low + 0.2 * (high - low):
-            continue  # the strip's own title stands there
+        early = at[i] < low + 0.2 * (high - low)  # the strip's own title stands above: inside the strip then
         late = at[i] > low + 0.8 * (high - low)
         axes.annotate(
             label(str(events["what"][i]), 30),
             (float(at[i]), half),
-            xytext=(0, 1),
+            xytext=(2, -1) if early else (0, 1),
             textcoords="offset points",
             ha="right" if late else "left",
-            va="bottom",
+            va="top" if early else "bottom",
             fontsize=6.5,
         )
     return drew

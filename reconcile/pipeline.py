@@ -7,6 +7,7 @@ from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, TypeAlias
 
+from reconcile.records.limits import timed
 from reconcile.records.settings import Settings
 
 if TYPE_CHECKING:
@@ -135,8 +136,8 @@ def audit(
     from reconcile.chemistry.predict import repredictor
     from reconcile.chemistry.shortcuts import shortcut_values
 
-    say = progress or (lambda doing, share: None)
     chosen = settings_of(settings)
+    say = timed(progress, chosen)
     say("reading the record", 0.0)
     records = _record(source, chosen, columns)
     say("predicting every reading", 0.2)
@@ -191,11 +192,11 @@ def meters(
     """
     from reconcile.auditor.meter_history import meter_history
 
-    say = progress or (lambda doing, share: None)
     chosen = settings_of(settings)
+    say = timed(progress, chosen)
     say("reading the record", 0.0)
     records = _record(source, chosen, columns)
-    audited = audit(records, settings=chosen, progress=progress) if len(records.readings) else None
+    audited = audit(records, settings=chosen, progress=say) if len(records.readings) else None
     return meter_history(records, audited, chosen, progress=lambda doing: say(doing, None))
 
 
@@ -234,7 +235,7 @@ def fit_pka(
 
     chosen, question = settings_of(settings), PkaQuestion(acid, **about)
     names = understood(question, chosen, own_of_source(source)).names
-    return fit(_record(source, chosen, columns, names), question, chosen, progress)
+    return fit(_record(source, chosen, columns, names), question, chosen, timed(progress, chosen))
 
 
 DEFAULT_TEMPERATURE_C = 25.0

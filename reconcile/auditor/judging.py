@@ -17,6 +17,7 @@ from reconcile.auditor.relinearised import relinearised
 from reconcile.auditor.retrial import Retrial, Supposed
 from reconcile.auditor.scoring import Candidate, Pool, Scores, pool_of, score, without
 from reconcile.records.arrays import FloatArray
+from reconcile.records.limits import beyond
 from reconcile.records.settings import Settings
 
 AGAIN, AGAIN_FROM, AGAIN_READINGS = 3, 2.0, 3
@@ -116,6 +117,8 @@ class Judge:
         model = self.model(components, candidates)
         taken = {(c.alarm_class, c.subject) for c in candidates if c.alarm_class in ONE_EACH}
         pool = pool_of(Context(self.layout, self.settings, model, self.retrial), self.kinds)
+        if len(pool) > (most := int(self.settings["limits.candidates"])):
+            raise beyond("limit-candidates", len(pool), most)
         self.tried += len(pool)
         scores = self.recomputed(pool, model, pool.scores(model), candidates)
         return pool, model, without(scores, pool.concerning(taken)) if taken else scores

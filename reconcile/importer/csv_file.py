@@ -10,6 +10,7 @@ from itertools import zip_longest
 import numpy as np
 
 from reconcile.importer.raw import RawSheet
+from reconcile.records.limits import beyond, check_size
 from reconcile.records.places import Place
 from reconcile.records.problems import InputProblems, Problem, shown
 from reconcile.records.settings import AUTO, Settings
@@ -26,7 +27,7 @@ def read_csv(content: bytes, file: str, sha256: str, settings: Settings) -> RawS
     if declared:
         notes.append(Problem("delimiter-declared", Place(file, "", 1), f"sep={declared}"))
     delimiter = _delimiter(text, file, settings["reading.delimiter"], declared)
-    rows, numbers = _records(text, delimiter, file, 1 if declared else 0)
+    rows, numbers = _records(text, delimiter, file, 1 if declared else 0, settings)
     if len(rows) in (65536, 1048576):
         notes.append(Problem("file-maybe-cut", Place(file), str(len(rows))))
     widths = np.array([len(r) for r in rows], np.intp)
@@ -123,10 +124,13 @@ def _headings_recognised(text: str, delimiter: str) -> int:
     return max((heading_matches(r) for _, r in zip(range(60), lines, strict=False)), default=0)
 
 
-def _records(text: str, delimiter: str, file: str, offset: int) -> tuple[list[list[str]], list[int]]:
-    """Records with the number of the line on which each begins."""
+def _records(
+    text: str, delimiter: str, file: str, offset: int, settings: Settings
+) -> tuple[list[list[str]], list[int]]:
+    """Records with the number of the line on which each begins; raises InputProblems over a limit."""
     reader = csv.reader(io.StringIO(text, newline=""), delimiter=delimiter, strict=True)
-    csv.field_size_limit(max(csv.field_size_limit(), 131072))
+    most, longest = int(settings["limits.rows"]), int(settings["limits.cell_chars"])
+    before = csv.field_size_limit(longest)
     rows: list[list[str]] = []
     numbers: list[int] = []
     begin = 1
@@ -135,9 +139,16 @@ def _records(text: str, delimiter: str, file: str, offset: int) -> tuple[list[li
             rows.append(row)
             numbers.append(begin + offset)
             begin = reader.line_num + 1
+            if len(rows) > most:
+                raise beyond("limit-rows", f"over {most:,}", most, Place(file))
     except csv.Error as error:
+        if "field limit" in str(error):
+            raise beyond("limit-cell", f"over {longest:,}", longest, Place(file, "", begin + offset)) from None
         line = text.splitlines()[begin - 1] if begin <= len(text.splitlines()) else ""
         raise InputProblems(
             [Problem("csv-quote", Place(file, "", begin + offset), shown(line, 60), (("error", str(error)),))]
         ) from None
+    finally:
+        csv.field_size_limit(before)
+    check_size(0, max(map(len, rows), default=0), settings, Place(file))
     return rows, numbers

@@ -25,7 +25,10 @@ def read_file(path: Path, settings: Settings) -> list[RawSheet]:
     name = path.name
     if not path.exists():
         raise refuse("file-missing", name)
+    cap = int(settings["limits.inflated_mib"])
     try:
+        if path.stat().st_size > cap << 20:
+            raise refuse("file-too-large", name, f"{path.stat().st_size >> 20} MiB")
         content = path.read_bytes()
     except OSError as error:
         raise refuse("file-unreadable", name, error.strerror or "unreadable") from None

@@ -17,14 +17,15 @@ from reconcile.importer.hidden import add_what_values_hide
 from reconcile.importer.raw import RawSheet, sheet_of_rows
 from reconcile.importer.sheet_xml import SheetXml, raised_digits
 from reconcile.importer.styles import Styles
-from reconcile.records.places import Place
+from reconcile.records.limits import beyond, check_size
+from reconcile.records.places import Place, column_letters
 from reconcile.records.problems import InputProblems, Problem
 from reconcile.records.settings import Settings
 
 _CHUNK = 1 << 20
 _FULL_SHEETS = (65536, 1048576)
-_WIDEST = 20_000_000
-"""Cells of the rectangle that a sheet spans; beyond this a reader that lays out the rectangle takes gigabytes."""
+_IN_PLACE = re.compile(rb't="(?:inlineStr|str)"')
+"""A text that stands in the sheet itself, not among the shared ones."""
 
 
 def read_workbook(content: bytes, file: str, sha256: str, settings: Settings) -> list[RawSheet]:
@@ -40,6 +41,8 @@ def read_workbook(content: bytes, file: str, sha256: str, settings: Settings) ->
     epoch_1904 = re.search(rb'date1904\s*=\s*"(1|true)"', book) is not None
     sheets: list[RawSheet] = []
     values = _opened(content, file)
+    longest = int(settings["limits.cell_chars"])
+    long_shared = re.search(rb"[^<>]{%d}" % min(longest + 1, 65535), parts.get("xl/sharedStrings.xml", b"")) is not None
     raised = raised_digits(parts.get("xl/sharedStrings.xml", b""))
     for name, part, hidden in _sheets(book, parts.get("xl/_rels/workbook.xml.rels", b"")):
         if b"worksheet" not in parts.get(part, b"")[:2048]:
@@ -47,10 +50,15 @@ def read_workbook(content: bytes, file: str, sha256: str, settings: Settings) ->
         xml = SheetXml(parts[part])
         if xml.bad_reference:
             raise InputProblems([Problem("file-damaged", Place(file, name), f"a cell is called {xml.bad_reference}")])
-        last_row, last_column = xml.bounds(_WIDEST)
-        if last_row * last_column > _WIDEST:
+        widest = int(settings["limits.sheet_cells"])
+        last_row, last_column = xml.bounds(widest)
+        if last_row * last_column > widest:
             raise InputProblems([Problem("sheet-too-wide", Place(file, name), f"{last_row} x {last_column}")])
-        sheet = sheet_of_rows(file, name, _values(values, file, name), sha256)
+        rows = _values(values, file, name)
+        check_size(len(rows), len(rows[0]) if rows else 0, settings, Place(file, name))
+        if long_shared or _IN_PLACE.search(parts[part]):
+            _check_cells(rows, longest, Place(file, name))
+        sheet = sheet_of_rows(file, name, rows, sha256)
         sheet.epoch_1904 = epoch_1904
         sheet.hidden = hidden
         add_what_values_hide(sheet, xml, styles, raised)
@@ -61,6 +69,15 @@ def read_workbook(content: bytes, file: str, sha256: str, settings: Settings) ->
     if epoch_1904 and sheets:
         sheets[0].notes.append(Problem("epoch-1904", Place(file)))
     return sheets
+
+
+def _check_cells(rows: list[list[Any]], longest: int, place: Place) -> None:
+    """Refuse a sheet with a text longer than the limit; raises InputProblems at the first."""
+    for r, row in enumerate(rows, 1):
+        for c, value in enumerate(row):
+            if isinstance(value, str) and len(value) > longest:
+                cell = Place(place.file, place.sheet, r, column_letters(c))
+                raise beyond("limit-cell", len(value), longest, cell)
 
 
 def _declares(data: bytes) -> bool:

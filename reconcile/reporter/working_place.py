@@ -119,9 +119,11 @@ def _settle(lock: Path) -> None:
 
 def _finish_swap(place: Path) -> None:
     """Put a report where the journal says it belongs, if none stands there: the new one, or else the old one."""
+    if not (place / JOURNAL).exists():
+        return
     try:
         name = json.loads((place / JOURNAL).read_text(encoding="utf-8"))["report"]
-    except (FileNotFoundError, ValueError, KeyError, TypeError):
+    except (ValueError, KeyError, TypeError):
         return  # no swap was begun: the journal is whole on the disk before the first rename
     if not isinstance(name, str) or Path(name).name != name:
         return

@@ -223,9 +223,8 @@ def set_aside_view(result: Reported) -> View:
 
     for one in aside[:MOST_SET_ASIDE]:
         elsewhere = (one.cause.file, one.cause.sheet, one.cause.row) != (one.place.file, one.place.sheet, one.place.row)
-        names = [
-            f"{what} {plain(n)}" for what, n in (("batch", one.batch), ("meter", one.meter), ("lot", one.lot)) if n
-        ]
+        lots = "lots" if "; " in one.lot else "lot"
+        names = [f"{what} {plain(n)}" for what, n in (("batch", one.batch), ("meter", one.meter), (lots, one.lot)) if n]
         rows.append(
             Row(
                 "",

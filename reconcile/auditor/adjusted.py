@@ -50,6 +50,21 @@ def with_anchors(records: BatchRecords, speaks: BoolArray) -> BoolArray:
     return whole
 
 
+def felt_shift(layout: Layout, x: sparse.csc_array, amplitude: float) -> tuple[IntArray, FloatArray]:
+    """Evidence rows (k,) that an effect moves, and how far [pH] (k,), each against its own prediction.
+
+    x : (n, 1), effect at amplitude 1. A solution that was adjusted on one meter has a prediction that follows the
+    reading it was adjusted by: that reading moves nowhere, later ones by what the effect does to them less what it
+    did to it.
+    """
+    whole = np.asarray(x.toarray(), float).ravel() * amplitude
+    adjusted = np.flatnonzero(layout.anchor >= 0)
+    if len(adjusted):
+        whole[adjusted] = whole[adjusted] - whole[layout.anchor[adjusted]]
+    rows = np.flatnonzero(whole != 0.0).astype(np.intp)
+    return rows, whole[rows]
+
+
 def contrast_variance(layout: Layout, variance: FloatArray, own: FloatArray, g: FloatArray) -> FloatArray:
     """Variance of every residual (n,) [pH^2], that of adjusted solutions against the reading they were adjusted by.
 

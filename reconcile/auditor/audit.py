@@ -10,7 +10,7 @@ import numpy as np
 from reconcile.auditor.adjusted import only_adjusted
 from reconcile.auditor.components import Components, Model, noise_of
 from reconcile.auditor.faults import KINDS
-from reconcile.auditor.findings import build
+from reconcile.auditor.findings import build, error_of
 from reconcile.auditor.impact import with_impact
 from reconcile.auditor.layout import Layout, build_layout, evidence
 from reconcile.auditor.next_check import next_check
@@ -62,9 +62,9 @@ def audit(
     ]
     said = record_values(records, prediction, shortcuts)
     found_spreads = spreads(layout, state.components, len(records.readings))
-    together = sorted(
-        [*with_impact(records, checked, found_spreads.noise), *said], key=lambda f: -f.log_likelihood_gain
-    )
+    errors = [error_of(layout, *candidates[0]) for _, candidates in pairs]
+    concerned = with_impact(records, checked, found_spreads.noise, errors)
+    together = sorted([*concerned, *said], key=lambda f: -f.log_likelihood_gain)
     findings = [replace(finding, id=f"F{i + 1}") for i, finding in enumerate(together)]
     say("working out what could not be seen")
     pool, bare, _ = search.scored(state.components, [])

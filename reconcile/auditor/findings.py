@@ -11,6 +11,7 @@ import numpy as np
 from scipy import sparse
 
 from reconcile.auditor import laws
+from reconcile.auditor.adjusted import felt_shift
 from reconcile.auditor.alarm import Alarm, score_df
 from reconcile.auditor.components import Model
 from reconcile.auditor.estimates import critical_score, given_selected
@@ -19,7 +20,7 @@ from reconcile.auditor.layout import Layout
 from reconcile.auditor.scoring import Candidate, Pool, Scores
 from reconcile.auditor.search import Search, State
 from reconcile.auditor.wording import detail_of, name_of, of_subject, since_words, support_words
-from reconcile.records.arrays import IntArray
+from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.results import COULD_ALSO_BE, Finding
 
 MOST_RIVALS = 8
@@ -27,11 +28,6 @@ INSEPARABLE = 1.0
 """Squared distance of two supposed effects in spreads of the readings: half a unit of log-likelihood is expected."""
 ONSET_DROP = 1.92
 """Half the 95 % point of chi-squared with one degree of freedom: dates closer than this to the best."""
-
-
-def rows_of(candidate: Candidate) -> IntArray:
-    """Evidence rows a candidate touches."""
-    return np.sort(candidate.x.indices.astype(np.intp))
 
 
 def distinct(
@@ -88,6 +84,12 @@ def onset_interval(
     return (min(times), max(times)) if times else None
 
 
+def error_of(layout: Layout, candidate: Candidate, amplitude: float) -> tuple[IntArray, FloatArray]:
+    """Readings (of the record) that a candidate touches, and by how much each is moved [pH]."""
+    rows = np.sort(candidate.x.indices.astype(np.intp))
+    return layout.reading[rows], np.asarray(candidate.x[rows].toarray(), float).ravel() * amplitude
+
+
 def described(
     search: Search,
     layout: Layout,
@@ -105,7 +107,7 @@ def described(
         scale = told.scale or float
         low, high = sorted((scale(interval[0]), scale(interval[1])))
         ends = (low, high)
-    rows = rows_of(candidate)
+    rows, shift = felt_shift(layout, candidate.x, amplitude)
     total = told.would_explain.get("total") if told.would_explain else None
     detail = told.detail
     if candidate.kind == "lot_identity" and told.would_explain:
@@ -136,7 +138,7 @@ def described(
         since_interval95=between if told.since is not None else None,
         would_explain=told.would_explain,
         also=told.also,
-        shift=np.asarray(candidate.x[rows].toarray()).ravel() * amplitude,
+        shift=shift,
     )
 
 
@@ -192,7 +194,7 @@ def build(
             between = onset_interval(layout, pool, scores, other, float(scores.gain[k]))
             rival = described(search, layout, other, size, ends, support.gain, support.p, between)
             told.append(also_with(rival, with_it.get(k, [])))
-        batches = len({int(b) for b in layout.batch[rows_of(one.candidate)]})
+        batches = len({int(b) for b in layout.batch[felt_shift(layout, one.candidate.x, 1.0)[0]]})
         words = [finding.text, support_words(one.p, len(finding.readings), batches, len(told))]
         if told:
             names = "; ".join(name_of(c, a) for c, a in tried[1:4])

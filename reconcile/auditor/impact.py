@@ -20,9 +20,13 @@ GUARD = 1.645
 MOST_NAMED = 6
 
 
-def touched(records: BatchRecords, finding: Finding) -> tuple[IntArray, FloatArray]:
+Error = tuple[IntArray, FloatArray]
+"""Readings (k,) that a fault makes wrong and by how much [pH] (k,)."""
+
+
+def touched(records: BatchRecords, finding: Finding, error: Error) -> Error:
     """Readings that a finding makes wrong, and by how much [pH]; those that are no evidence included."""
-    rows, shift = np.asarray(finding.readings, np.intp), np.asarray(finding.shift, float)
+    rows, shift = error
     if finding.kind not in EVERYWHERE or finding.estimate is None:
         return rows, shift
     table = records.readings
@@ -44,7 +48,9 @@ def places(
     return np.asarray(inside, bool), np.asarray(outside, bool)
 
 
-def impact_of(records: BatchRecords, finding: Finding, noise: FloatArray) -> tuple[IntArray, IntArray]:
+def impact_of(
+    records: BatchRecords, finding: Finding, noise: FloatArray, error: Error
+) -> tuple[IntArray, IntArray]:
     """Readings whose place would change if a finding holds, and those for which it is not sure on which side they lie.
 
     Notes
@@ -60,7 +66,7 @@ def impact_of(records: BatchRecords, finding: Finding, noise: FloatArray) -> tup
     nothing = np.zeros(0, np.intp)
     if finding.subject_type not in READING_ERRORS:
         return nothing, nothing
-    rows, shift = touched(records, finding)
+    rows, shift = touched(records, finding, error)
     table = records.readings
     low, high, observed = table["low_limit"][rows], table["high_limit"][rows], table["ph"][rows]
     relative = 0.0
@@ -75,11 +81,16 @@ def impact_of(records: BatchRecords, finding: Finding, noise: FloatArray) -> tup
     return rows[changed], rows[unsure]
 
 
-def with_impact(records: BatchRecords, findings: Sequence[Finding], noise: FloatArray) -> list[Finding]:
-    """Findings with the readings whose place against their limits hangs on them, and words for them."""
+def with_impact(
+    records: BatchRecords, findings: Sequence[Finding], noise: FloatArray, errors: Sequence[Error]
+) -> list[Finding]:
+    """Findings with the readings whose place against their limits hangs on them, and words for them.
+
+    errors : what each finding makes of the readings themselves; a residual may move where its reading is right
+    """
     out = []
-    for finding in findings:
-        changed, unsure = impact_of(records, finding, noise)
+    for finding, error in zip(findings, errors, strict=True):
+        changed, unsure = impact_of(records, finding, noise, error)
         said, rivals, named = finding.text.partition(f" {COULD_ALSO_BE}")
         text = f"{said}{_words(records, changed, unsure)}{rivals}{named}"
         out.append(replace(finding, impact=changed, impact_open=unsure, text=text))

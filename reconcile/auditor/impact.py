@@ -48,9 +48,7 @@ def places(
     return np.asarray(inside, bool), np.asarray(outside, bool)
 
 
-def impact_of(
-    records: BatchRecords, finding: Finding, noise: FloatArray, error: Error
-) -> tuple[IntArray, IntArray]:
+def impact_of(records: BatchRecords, finding: Finding, noise: FloatArray, error: Error) -> tuple[IntArray, IntArray]:
     """Readings whose place would change if a finding holds, and those for which it is not sure on which side they lie.
 
     Notes

@@ -20,7 +20,7 @@ from reconcile.records.arrays import FloatArray
 from reconcile.records.limits import beyond
 from reconcile.records.settings import Settings
 
-AGAIN, AGAIN_FROM, AGAIN_READINGS = 3, 2.0, 3
+AGAIN, AGAIN_FROM, AGAIN_READINGS = 3, 1.0, 3
 """How many candidates of a round are judged again, from which marginal gain and number of readings on."""
 RECOMPUTED_BLOCKS = 3
 """Subjects whose suppositions are recomputed in a round, best first: one of them is chosen."""

@@ -51,6 +51,46 @@ class Check:
     probe: str = ""
 
 
+@dataclass(frozen=True)
+class Plan:
+    """The most telling check, and what it would show under each of e explanations.
+
+    names : e names, "" for the absence of the fault; means, spreads : FloatArray (e,) pH it would read, and their u
+    d : smallest separation of two explanations; wrong : chance of a wrong choice by one reading
+    repeats : how many readings would decide, 1 where one does, 0 where none would
+    """
+
+    check: Check
+    names: tuple[str, ...]
+    means: FloatArray
+    spreads: FloatArray
+    d: float
+    wrong: float
+    repeats: int
+
+    def words(self) -> str:
+        """The sentence of a report."""
+        outcomes = ", ".join(
+            f"pH {m:.2f} (u {u:.2f}) {f'for {name}' if name else 'otherwise'}"
+            for name, m, u in zip(self.names, self.means, self.spreads, strict=True)
+        )
+        shown = significant(self.d, 2 if self.d >= 1 else 1)
+        apart = f"Separation d = {shown}, chance of a wrong choice {chance_words(self.wrong)}."
+        reading = f"{self.check.solution} on meter {self.check.meter}"
+        if self.repeats == 1:
+            return f"Read {reading}. Expected: {outcomes}. {apart} {CAUTION}"
+        if self.repeats:
+            return (
+                f"Read {self.check.solution} {self.repeats} times on meter {self.check.meter}. "
+                f"Expected: {outcomes}. {apart} "
+                f"One such reading would not settle it; the mean of {self.repeats} would. {CAUTION}"
+            )
+        return (
+            f"No practicable reading of what already stands would settle it. The most telling, {reading}, is expected "
+            f"at {outcomes}. {apart}"
+        )
+
+
 def practicable(
     layout: Layout,
     noise: FloatArray,
@@ -58,10 +98,12 @@ def practicable(
     also: Sequence[int] = (),
     on: Sequence[int] | None = None,
     most: int = MOST_BATCHES,
+    session: float = 0.0,
 ) -> list[Check]:
     """Every standing solution and standard buffer on every meter, the most recently read solutions first.
 
     also : evidence rows whose batches count even if they were not read recently (a suspect entry); on : meters
+    session : variance between days or calibrations of one meter [pH^2]; a reading to come is of a new one
     """
     recent = most_recent(layout, np.arange(len(layout)), most)
     meters, spans, sessions = (layout.effects[name] for name in ("meter", "span", "session"))
@@ -90,14 +132,14 @@ def practicable(
                 site = Site(ph, STANDARD_TEMPERATURE, "known solution")
                 row = on_meter(np.zeros(z.shape[1]), ph)
                 label = f"the {name} standard buffer (pH {ph:.3f} at 25 °C)"
-                checks.append(Check(label, "", meter, ph, site, -1, row, 0.0, u**2, own_noise, probe))
+                checks.append(Check(label, "", meter, ph, site, -1, row, 0.0, u**2 + session, own_noise, probe))
         for template in dict.fromkeys([*also, *recent]):
             ph = float(layout.ph[template])
             family = layout.families[layout.family[template]]
             site = Site(ph, float(layout.temperature[template]), family)
             row = on_meter(z[[template]].toarray().ravel(), ph)
             batch = layout.batches[layout.batch[template]]
-            sd, other = float(batch_sd[template]), float(layout.other[template])
+            sd, other = float(batch_sd[template]), float(layout.other[template]) + session
             label = f"the known solution {batch}" if family == "known solution" else f"batch {batch}"
             checks.append(Check(label, batch, meter, ph, site, template, row, sd, other, own_noise, probe))
     return checks
@@ -201,8 +243,8 @@ def separation(means: FloatArray, variances: FloatArray) -> FloatArray:
     return smallest
 
 
-def next_check(search: Search, state: State, j: int, candidates: Sequence[tuple[Candidate, float]]) -> str:
-    """The sentence that names the next check for the j-th finding.
+def plan(search: Search, state: State, j: int, candidates: Sequence[tuple[Candidate, float]]) -> Plan | None:
+    """The most telling check for the j-th finding; None where the record names no meter.
 
     candidates : with their amplitudes, its own first, then its rivals.
 
@@ -211,6 +253,7 @@ def next_check(search: Search, state: State, j: int, candidates: Sequence[tuple[
     layout = search.layout
     others = [c.candidate for i, c in enumerate(state.chosen) if i != j]
     model = search.model(state.components, [])
+    session = model.components.session
     suspect = int(candidates[0][0].x.indices[0]) if candidates[0][0].alarm_class == "reading" else -1
     tried = candidates[:MOST_EXPLANATIONS]
     also = [suspect] if suspect >= 0 else []
@@ -218,11 +261,11 @@ def next_check(search: Search, state: State, j: int, candidates: Sequence[tuple[
         touched = np.unique(np.concatenate([c.x.indices for c, _ in tried])).astype(np.intp)
         also += most_recent(layout, touched, LONG_BATCHES)
         on = most_read_meters(layout, [str(c.subject) for c, _ in tried], LONG_METERS)
-        checks = practicable(layout, model.noise, model.batch_sd(), also, on, LONG_BATCHES)
+        checks = practicable(layout, model.noise, model.batch_sd(), also, on, LONG_BATCHES, session)
     else:
-        checks = practicable(layout, model.noise, model.batch_sd(), also)
+        checks = practicable(layout, model.noise, model.batch_sd(), also, session=session)
     if not checks:
-        return "No check can be named: the record names no meter."
+        return None
     names = [name_of(c, amplitude) for c, amplitude in tried]
     predicted = [expected(search, state, [*others, c], checks) for c, _ in tried]
     if len(tried) == 1:
@@ -232,27 +275,22 @@ def next_check(search: Search, state: State, j: int, candidates: Sequence[tuple[
     noise = np.array([check.noise for check in checks])
     d = separation(means, fixed_part + noise)
     best = int(np.nanargmax(np.where(np.isfinite(d), d, -1.0)))
-    check = checks[best]
-    spread = np.sqrt(fixed_part[:, best] + noise[best])
-    outcomes = ", ".join(
-        f"pH {m:.2f} (u {u:.2f}) {f'for {name}' if name else 'otherwise'}"
-        for name, m, u in zip(names, means[:, best], spread, strict=True)
+    enough = d[best] >= ENOUGH
+    return Plan(
+        check=checks[best],
+        names=tuple(names),
+        means=means[:, best],
+        spreads=np.asarray(np.sqrt(fixed_part[:, best] + noise[best])),
+        d=float(d[best]),
+        wrong=float(special.ndtr(-d[best] / 2.0)),
+        repeats=1 if enough else repeats(means[:, [best]], fixed_part[:, [best]], float(noise[best])),
     )
-    wrong = chance_words(float(special.ndtr(-d[best] / 2.0)))
-    apart = f"Separation d = {significant(d[best], 2 if d[best] >= 1 else 1)}, chance of a wrong choice {wrong}."
-    reading = f"{check.solution} on meter {check.meter}"
-    if d[best] >= ENOUGH:
-        return f"Read {reading}. Expected: {outcomes}. {apart} {CAUTION}"
-    needed = repeats(means[:, [best]], fixed_part[:, [best]], float(noise[best]))
-    if needed:
-        return (
-            f"Read {check.solution} {needed} times on meter {check.meter}. Expected: {outcomes}. {apart} "
-            f"One such reading would not settle it; the mean of {needed} would. {CAUTION}"
-        )
-    return (
-        f"No practicable reading of what already stands would settle it. The most telling, {reading}, is expected at "
-        f"{outcomes}. {apart}"
-    )
+
+
+def next_check(search: Search, state: State, j: int, candidates: Sequence[tuple[Candidate, float]]) -> str:
+    """The sentence that names the next check for the j-th finding; candidates as `plan` takes them."""
+    found = plan(search, state, j, candidates)
+    return "No check can be named: the record names no meter." if found is None else found.words()
 
 
 def repeats(means: FloatArray, fixed_part: FloatArray, noise: float) -> int:

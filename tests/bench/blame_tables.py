@@ -62,7 +62,7 @@ MAIN = (
 FURTHER = tuple(name for name in FAULTS if name not in MAIN)
 
 
-def _share(count: int, of: int) -> str:
+def share(count: int, of: int) -> str:
     """A share in per cent with its 95 % interval (Wilson 1927, J. Am. Stat. Assoc. 22, 209)."""
     if not of:
         return "      -         "
@@ -87,7 +87,7 @@ def clean(options: argparse.Namespace) -> None:
         results = run_all([Case(seed, room=ROOMS[name]) for seed in _seeds(options)], options.processes)
         kinds = Counter(told.kind for r in results for told in r.stray)
         listed = ", ".join(f"{kind} {n}" for kind, n in kinds.most_common()) or "none"
-        print(f"{name:22} {_share(sum(bool(r.stray) for r in results), len(results))}   {listed}", flush=True)
+        print(f"{name:22} {share(sum(bool(r.stray) for r in results), len(results))}   {listed}", flush=True)
 
 
 def _row(name: str, results: list[Result]) -> str:
@@ -97,7 +97,7 @@ def _row(name: str, results: list[Result]) -> str:
     kinds = Counter(told.kind for r in results for told in r.stray)
     listed = ", ".join(f"{kind} {n}" for kind, n in kinds.most_common(3))
     n = len(outcomes)
-    return f"{name:20} {_share(named, n)}   {_share(reached, n)}   {_share(stray, len(results))}   {listed}"
+    return f"{name:20} {share(named, n)}   {share(reached, n)}   {share(stray, len(results))}   {listed}"
 
 
 HEAD = f"{'planted':20} {'named, %':18} {'named or rival':18} {'any stray':18} strays"
@@ -128,34 +128,40 @@ def two(options: argparse.Namespace) -> None:
     print(_row("each of two", results))
     both = sum("missed" not in r.outcomes for r in results)
     named = sum(set(r.outcomes) == {"named"} for r in results)
-    print(f"both named or rival: {_share(both, len(results))} %;  both named: {_share(named, len(results))} %")
+    print(f"both named or rival: {share(both, len(results))} %;  both named: {share(named, len(results))} %")
 
 
-def cover(options: argparse.Namespace) -> None:
-    """Intervals that hold the truth, right signs and mean bias, of planted faults that were found.
+def size_ratios(results: Sequence[Result]) -> tuple[int, int, list[float]]:
+    """How many intervals hold the truth, how many signs are right, and found over true size, of faults that were found.
 
     A preparation error counts where the finding has the component right: of two in a buffer either may explain it.
     """
+    held = signed = 0
+    ratio: list[float] = []
+    for result in results:
+        planted, told = result.truth[0], result.told[0]
+        true = planted.size if planted.size is not None else planted.detail.get("factor")
+        if told is None or told.estimate is None or told.interval is None or true is None:
+            continue
+        if told.component != planted.detail.get("component", told.component):
+            continue
+        held += told.interval[0] <= true <= told.interval[1]
+        factor = (planted.unit == "-" and planted.subject_type in ("lot", "batch")) or planted.size is None
+        a, b = (np.log(told.estimate), np.log(true)) if factor else (told.estimate, true)
+        signed += bool(np.sign(a) == np.sign(b))
+        ratio.append(float(a / b))
+    return held, signed, ratio
+
+
+def cover(options: argparse.Namespace) -> None:
+    """Intervals that hold the truth, right signs and mean bias, of planted faults that were found."""
     print(f"{'planted':20} {'found':>6}   {'interval holds, %':18} {'sign right, %':18} {'bias, % of size':>15}")
     for name in _kept([*MAIN, *FURTHER], options):
         results = run_all([Case(seed, (name,)) for seed in _seeds(options)], options.processes)
-        held = signed = 0
-        ratio: list[float] = []
-        for result in results:
-            planted, told = result.truth[0], result.told[0]
-            true = planted.size if planted.size is not None else planted.detail.get("factor")
-            if told is None or told.estimate is None or told.interval is None or true is None:
-                continue
-            if told.component != planted.detail.get("component", told.component):
-                continue
-            held += told.interval[0] <= true <= told.interval[1]
-            factor = (planted.unit == "-" and planted.subject_type in ("lot", "batch")) or planted.size is None
-            a, b = (np.log(told.estimate), np.log(true)) if factor else (told.estimate, true)
-            signed += bool(np.sign(a) == np.sign(b))
-            ratio.append(float(a / b))
+        held, signed, ratio = size_ratios(results)
         bias = f"{100 * (np.mean(ratio) - 1):+.1f}" if ratio else "-"
         n = len(ratio)
-        print(f"{name:20} {n:6d}   {_share(held, n)}   {_share(signed, n)}   {bias:>15}", flush=True)
+        print(f"{name:20} {n:6d}   {share(held, n)}   {share(signed, n)}   {bias:>15}", flush=True)
 
 
 def power(options: argparse.Namespace) -> None:
@@ -170,7 +176,7 @@ def power(options: argparse.Namespace) -> None:
         oracle = ""
         if options.kind not in DECIDED_BY_DISPLAY:
             sure = sum(consult(seed, options.kind, size).gain >= options.gain for seed in _seeds(options))
-            oracle = _share(sure, options.seeds)
+            oracle = share(sure, options.seeds)
         print(f"{size:8g}   {told[:60]}   {oracle}   {told[63:]}", flush=True)
 
 

@@ -13,6 +13,7 @@ from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
+from scipy import linalg, optimize
 
 from reconcile.records.arrays import FloatArray
 from tests.simulated import chemistry_of_truth as chemistry
@@ -33,6 +34,8 @@ STILL: Mapping[str, Any] = {
 }
 """A room without any spread: what is left of a record is chemistry and the planted fault."""
 STEP = 1e-3
+NOISE_FLOOR = 0.005
+"""Least reading noise that the settings state [pH]."""
 DECIDED_BY_DISPLAY = frozenset({"reading_slip", "meter_stuck"})
 """Faults whose shape depends on the numbers shown, so that a room without spread does not have the same one."""
 
@@ -71,21 +74,40 @@ def _slope(world: World, base: FloatArray) -> tuple[FloatArray, FloatArray]:
     return lots, squares
 
 
-def covariance(seed: int, **room: Any) -> FloatArray:
-    """Covariance of the residuals of a clean record of this seed and room [pH²], (n, n)."""
+@dataclass(frozen=True)
+class Parts:
+    """What the covariance of a clean record is made of [pH²], (n, n) each.
+
+    known : instruments, lots, constants, temperature and display, with the room's spreads
+    alike : 1 where two readings share a meter and a day; prepared : slopes of a preparation error
+    noise, day, preparation : the room's own variances of the three that a record must be asked for
+    """
+
+    known: FloatArray
+    alike: FloatArray
+    prepared: FloatArray
+    noise: float
+    day: float
+    preparation: float
+
+    def whole(self, noise: float, day: float, preparation: float) -> FloatArray:
+        """The covariance with given variances of noise, meter-day and preparation."""
+        return self.known + noise * np.eye(len(self.known)) + day * self.alike + preparation * self.prepared
+
+
+def parts(seed: int, **room: Any) -> Parts:
+    """The parts of the covariance of a clean record of this seed and room."""
     full = simulate(seed, **room).world.room
     world = simulate(seed, **{**room, **STILL}).world
     base, k = world.true_ph(), full.spread
     lots, prepared = _slope(world, base)
     n = len(base)
-    v = np.eye(n) * ((full.noise * k) ** 2 + full.resolution**2 / 12.0)
+    v = np.eye(n) * full.resolution**2 / 12.0
     meter = (world.meter[:, None] == world.meter[None, :]).astype(float)
     v += meter * (full.accuracy * k / ROOT3) ** 2
     v += meter * np.outer(base - 7.0, base - 7.0) * (full.span_percent / 100.0 * k / ROOT3) ** 2
-    v += meter * (np.floor(world.day)[:, None] == np.floor(world.day)[None, :]) * full.meter_day_sd**2
     v += meter * ((world.day // 7)[:, None] == (world.day // 7)[None, :]) * full.session_sd**2
     v += lots @ lots.T * (full.lot_percent / 100.0 * k / ROOT3) ** 2
-    v += prepared * (full.preparation_percent / 100.0 * k / ROOT3) ** 2
     kept = world.celsius_true
     world.celsius_true = kept + 0.1
     v += np.diag((world.true_ph() - base) / 0.1 * full.temperature_k * k / ROOT3) ** 2
@@ -95,7 +117,15 @@ def covariance(seed: int, **room: Any) -> FloatArray:
         slope = (world.true_ph() - base) / STEP
         world.pka_shift[acid, step] = value
         v += np.outer(slope, slope) * (chemistry.acids()[acid].u[step - 1] * full.pka_u * k) ** 2
-    return v
+    alike = meter * (np.floor(world.day)[:, None] == np.floor(world.day)[None, :])
+    preparation = (full.preparation_percent / 100.0 * k / ROOT3) ** 2
+    return Parts(v, alike, prepared, (full.noise * k) ** 2, full.meter_day_sd**2, preparation)
+
+
+def covariance(seed: int, **room: Any) -> FloatArray:
+    """Covariance of the residuals of a clean record of this seed and room [pH²], (n, n)."""
+    of = parts(seed, **room)
+    return of.whole(of.noise, of.day, of.preparation)
 
 
 @dataclass(frozen=True)
@@ -112,10 +142,40 @@ class Oracle:
 
 
 def consult(seed: int, fault: str, size: float | None = None, **room: Any) -> Oracle:
-    """The oracle's test of the fault that `simulate(seed, [fault], ...)` plants."""
+    """The oracle's test of the fault that `simulate(seed, [fault], ...)` plants, all spreads known to it."""
+    d, r, of = _asked(seed, fault, size, room)
+    weighted = np.linalg.solve(of.whole(of.noise, of.day, of.preparation), d)
+    mean = float(np.sqrt(d @ weighted))
+    return Oracle(float(weighted @ r) / mean, mean)
+
+
+def consult_without_spreads(seed: int, fault: str, size: float | None = None, **room: Any) -> Oracle:
+    """The same test by one who knows the candidate but must ask the record for noise, meter-day and preparation.
+
+    The three variances are those of greatest restricted likelihood beside the candidate (Patterson and Thompson 1971,
+    Biometrika 58:545), none below what the room's papers state; `mean` is the one under the variances found.
+    """
+    d, r, of = _asked(seed, fault, size, room)
+
+    def test(log_variances: FloatArray) -> tuple[float, float, float]:
+        noise, day, preparation = np.exp(log_variances)
+        root = linalg.cho_factor(of.whole(noise, day, preparation), lower=True)
+        wd, wr = linalg.cho_solve(root, d), linalg.cho_solve(root, r)
+        size = float(d @ wd)
+        half_log_det = float(np.log(np.diag(root[0])).sum())
+        likelihood = -half_log_det - 0.5 * np.log(size) - 0.5 * (float(r @ wr) - float(d @ wr) ** 2 / size)
+        return likelihood, float(d @ wr) / size**0.5, size**0.5
+
+    least = np.log([NOISE_FLOOR**2, 1e-8, of.preparation])
+    start = np.log([max(of.noise, NOISE_FLOOR**2) * 1.2, 2e-5, of.preparation * 2.0])
+    bounds = [(low, low + 12.0) for low in least]
+    found = optimize.minimize(lambda v: -test(v)[0], start, method="L-BFGS-B", bounds=bounds)
+    _, value, mean = test(found.x)
+    return Oracle(value, mean)
+
+
+def _asked(seed: int, fault: str, size: float | None, room: Mapping[str, Any]) -> tuple[FloatArray, FloatArray, Parts]:
+    """Shape of the fault and residuals of the record that has it, (n,) [pH] each, and the parts of the covariance."""
     simulated = simulate(seed, [fault], None if size is None else {fault: size}, **room)
     settings = {name: getattr(simulated.world.room, name) for name in simulated.world.room.__dataclass_fields__}
-    d = signature(seed, fault, size, **room)
-    weighted = np.linalg.solve(covariance(seed, **settings), d)
-    mean = float(np.sqrt(d @ weighted))
-    return Oracle(float(weighted @ residuals(simulated)) / mean, mean)
+    return signature(seed, fault, size, **room), residuals(simulated), parts(seed, **settings)

@@ -19,10 +19,11 @@ from multiprocessing import get_context
 
 import numpy as np
 
+from reconcile.auditor.check_plan import Plan
 from reconcile.auditor.faults import KINDS
 from reconcile.auditor.findings import build
 from reconcile.auditor.layout import build_layout, evidence
-from reconcile.auditor.next_check import Plan, plan
+from reconcile.auditor.next_check import plan
 from reconcile.auditor.retrial import Retrial
 from reconcile.auditor.search import Search
 from reconcile.chemistry.predict import predict_records, repredictor

@@ -67,7 +67,8 @@ def run_at(kind: str, size: float, seeds: Sequence[int], processes: int) -> list
     return run_all([Case(seed, (kind,), {kind: size}) for seed in seeds], processes)
 
 
-def _critical(task: tuple[int, str, float]) -> float:
+def critical_of(task: tuple[int, str, float]) -> float:
+    """Gain that the true candidate of (seed, kind, size) needs in the auditor's eyes."""
     seed, kind, size = task
     simulated = simulate(seed, [kind], {kind: size})
     records, settings = simulated.records, simulated.settings
@@ -89,7 +90,7 @@ def critical_gains(kind: str, size: float, seeds: Sequence[int], processes: int)
     """Gain that the true candidate of each record needs in the auditor's eyes, (seeds,)."""
     tasks = [(seed, kind, size) for seed in seeds]
     with get_context("fork").Pool(max(processes, 1)) as pool:
-        return np.array(pool.map(_critical, tasks, chunksize=4))
+        return np.array(pool.map(critical_of, tasks, chunksize=4))
 
 
 def sizes_for(value: FloatArray, mean: FloatArray, critical: FloatArray) -> list[float]:

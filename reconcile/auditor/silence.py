@@ -42,7 +42,7 @@ def _of_meters(layout: Layout) -> Iterator[Silence]:
     for index, meter in enumerate(layout.meters):
         rows = np.flatnonzero(layout.meter == index)
         if len(rows) < FEW:
-            yield Silence("meter_offset", meter, "meter", f"only {len(rows)} usable readings")
+            yield Silence("meter_offset", meter, "meter", f"only {len(rows)} usable reading{'s' * (len(rows) != 1)}")
             continue
         spread = float(np.ptp(layout.ph[rows]))
         if spread < LEAST_SPREAD:

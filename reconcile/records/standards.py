@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import csv
+import re
 from collections.abc import Mapping
 from dataclasses import dataclass
 from functools import cache
@@ -58,7 +59,7 @@ def standards() -> Mapping[str, StandardBuffer]:
 
 def _bare(text: str) -> str:
     """A buffer's name as it is compared: without the words that only say that it is a buffer."""
-    words = [w for w in name_key(text).replace("(", " ").replace(")", " ").split() if w not in _SAYS_NOTHING]
+    words = [w for w in re.sub(r"[(),;]", " ", name_key(text)).split() if w not in _SAYS_NOTHING]
     return " ".join(words)
 
 
@@ -72,7 +73,21 @@ def _names() -> Mapping[str, StandardBuffer]:
 
 def find_standard(name: str) -> StandardBuffer | None:
     """The standard buffer that a name, synonym or formula means, or None."""
-    return _names().get(_bare(name))
+    bare = _bare(name)
+    return _names().get(bare) or _named_twice(bare)
+
+
+def _named_twice(bare: str) -> StandardBuffer | None:
+    """The buffer that both a name and a pH mean: "borax ph 9.18", "ph 6.86 phosphate"; None where they disagree."""
+    words = bare.split()
+    numbers = [w for w in words if re.fullmatch(r"\d{1,2}\.\d{1,3}", w)]
+    rest = " ".join(w for w in words if w not in (*numbers, "ph"))
+    if len(numbers) != 1 or not rest:
+        return None
+    by_ph, by_name = _names().get(f"ph {numbers[0]}"), _names().get(rest)
+    if by_ph is None or by_name is None:
+        return None
+    return by_ph if by_ph.name.split()[0] == by_name.name.split()[0] else None
 
 
 def standard_ph(name: str, temperature_c: float) -> tuple[float, float] | None:

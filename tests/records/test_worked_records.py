@@ -76,6 +76,25 @@ def test_built_in_standards_agree_with_their_tables() -> None:
             assert found[0] == pytest.approx(float(ph), abs=0.005)
 
 
+@pytest.mark.parametrize(
+    ("name", "ph"),
+    # at 25 °C, of the certificates' usual names: Bates 1962, Staples and Bates 1969, from memory
+    [("pH 9.18 borax", 9.180), ("Borax buffer, pH 9.18", 9.180), ("pH 6.86 (phosphate)", 6.865),
+     ("phosphate pH 7.41", 7.413), ("Phthalate standard 4.01", 4.005), ("carbonate buffer pH 10.01", 10.012)],
+)  # fmt: skip
+def test_a_standard_may_be_named_by_substance_and_ph(name: str, ph: float) -> None:
+    found = reconcile.records.standards.standard_ph(name, 25.0)
+    assert found is not None
+    assert found[0] == pytest.approx(ph, abs=0.002)
+
+
+@pytest.mark.parametrize(
+    "name", ["borax pH 6.86", "phosphate pH 7.00", "acetate pH 4.01", "pH 7.00", "phthalate 25.00"]
+)
+def test_what_is_no_standard_is_none(name: str) -> None:
+    assert reconcile.records.standards.standard_ph(name, 25.0) is None
+
+
 # -- stocks from stocks ---------------------------------------------------------------------------------------------
 
 NESTED = {

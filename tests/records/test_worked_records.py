@@ -235,9 +235,9 @@ def test_temperatures(way: str, tmp_path: Path) -> None:
     # "0.06 pH for Tris at 2 °C, nothing for acetate": a half-width of 2 K at 0.028 a kelvin, over root 3
     assert audit.prediction.budget["temperature"][2:] == pytest.approx([0.056 / 3**0.5, 0.0], abs=0.002)
     codes = {note.code: note for note in audit.records.notes}
-    assert "2 readings have no temperature" in codes["temperature-missing"].message()
+    assert "readings without a temperature: 2," in codes["temperature-missing"].message()
     assert "22 °C" in codes["temperature-missing"].message()
-    assert "1 readings are stated at" in codes["temperature-reference"].message()
+    assert "readings stated at a reference temperature: 1" in codes["temperature-reference"].message()
 
 
 def test_room_temperature_in_words_is_no_temperature_in_particular(tmp_path: Path) -> None:

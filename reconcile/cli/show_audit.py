@@ -20,8 +20,10 @@ def show(audit: Audit, folder: Path) -> None:
     if short:
         heading("Incomplete")
         columns([(text,) for text in short])
-    heading("Hazard words")
-    columns([text.rsplit(": ", 1) for text in hazard_lines(audit)])
+    hazards = [text.rsplit(": ", 1) for text in hazard_lines(audit)]
+    if hazards:
+        heading("Hazard words")
+        columns(hazards)
     heading("Cautions")
     columns([(text,) for text in caution_lines()])
     line()

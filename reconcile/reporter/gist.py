@@ -6,6 +6,8 @@ import math
 from collections import Counter
 from dataclasses import dataclass
 
+import numpy as np
+
 from reconcile.records.results import Audit, Finding
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.plain import plain
@@ -62,6 +64,10 @@ def _distinct(values: object) -> int:
 
 def _checked(audit: Audit, lookups: Lookups) -> str:
     readings = audit.records.readings
+    if not len(readings):
+        count = len(audit.records.calibrations)
+        held = f": the record holds {counted(count, 'calibration')}, which reconcile meters shows" if count else ""
+        return f"No reading was compared with a prediction{held}."
     batches = _distinct(readings["batch"].tolist())
     parts = [counted(len(readings), "reading")]
     if batches:
@@ -74,20 +80,30 @@ def _checked(audit: Audit, lookups: Lookups) -> str:
     if lookups.period:
         first, last = (moment(t)[:10] for t in lookups.period)
         text += f"; {first} to {last}" if first != last else f"; {first}"
-    return f"{text}. Each was compared with the pH that its recipe predicts."
+    known = int(np.isfinite(audit.records.solutions.known_ph[audit.records.readings_solution]).sum())
+    if not known:
+        return f"{text}. Each was compared with the pH that its recipe predicts."
+    if known == len(readings):
+        return f"{text}. Each was compared with the certified pH of its known solution."
+    return (
+        f"{text}. Each was compared with the pH that its recipe predicts, {known:,} of known solutions with the "
+        "certified pH."
+    )
 
 
 def _stands_out(audit: Audit, lookups: Lookups) -> Line:
     outstanding = int((audit.status == "stands_out").sum())
     left = (
         f"{counted(outstanding, 'reading')} {'stands' if outstanding == 1 else 'stand'} out without a finding that "
-        f"explains {'it' if outstanding == 1 else 'them'}."
+        f"explains {'it' if outstanding == 1 else 'them'}.{_of_known_solutions(audit)}"
     )
     wrong = len(lookups.calculations)
     calculated = (
         f"{counted(wrong, 'calculated pH', 'calculated pHs')} in the record {'is' if wrong == 1 else 'are'} off."
     )
-    after = [left] * bool(outstanding) + [calculated] * bool(wrong)
+    odd = int(audit.records.solved.odd.sum())
+    implied = f"{counted(odd, 'implied amount')} of titrant {'is' if odd == 1 else 'are'} odd, which is a lead."
+    after = [left] * bool(outstanding) + [calculated] * bool(wrong) + [implied] * bool(odd)
     none = "No fault is supported by the readings" + ("." if outstanding else ", and no reading stands out by itself.")
     faults = [finding for _, finding in lookups.faults]
     if not faults:
@@ -99,6 +115,21 @@ def _stands_out(audit: Audit, lookups: Lookups) -> Line:
     named = "; ".join(" ".join(item) for item in items)
     lead = f"{number}, most supported first." if len(shown) > 1 else f"{number}."
     return Line("stands_out", "What stands out", f"{number}: {named}. {rest}".strip(), f"{lead} {rest}".strip(), items)
+
+
+def _of_known_solutions(audit: Audit) -> str:
+    """Known solutions of which half of the readings or more stand out, three at least: the certificate may be wrong."""
+    readings = audit.records.readings
+    named = zip(readings["known"].tolist(), readings["known_lot"].tolist(), readings["batch"].tolist(), strict=True)
+    names = [f"{name}, lot {lot}" if lot else name for name, lot, batch in named if not batch]
+    out = audit.status[[i for i, batch in enumerate(readings["batch"].tolist()) if not batch]] == "stands_out"
+    of_all, of_out = Counter(names), Counter(name for name, is_out in zip(names, out.tolist(), strict=True) if is_out)
+    words = [
+        f"{n:,} of the {of_all[name]:,} readings of the known solution {plain(name)}"
+        for name, n in sorted(of_out.items())
+        if name and n >= 3 and 2 * n >= of_all[name]
+    ]
+    return f" Among them are {listed(words, 3)}: its certificate or its bottle may be at fault." if words else ""
 
 
 def in_few_words(finding: Finding) -> str:

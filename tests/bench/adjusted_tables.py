@@ -20,7 +20,7 @@ os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")
 from reconcile.auditor.audit import audit
 from reconcile.chemistry.adjusted import with_adjustments
 from reconcile.chemistry.predict import predict_records, repredictor
-from tests.bench.blame_tables import _share
+from tests.bench.blame_tables import share
 from tests.simulated.half_adjusted import half_adjusted
 from tests.simulated.matching import match
 from tests.simulated.simulator import simulate
@@ -74,10 +74,10 @@ def main() -> None:
         any_found = sum(1 for *_, kinds in mine if kinds)
         meters = sum(1 for *_, kinds in mine if sum(k.endswith(" meter") for k in kinds) >= 3)
         print(name)
-        print(f"  any finding {_share(any_found, len(mine))} %, three meters or more {_share(meters, len(mine))} %")
+        print(f"  any finding {share(any_found, len(mine))} %, three meters or more {share(meters, len(mine))} %")
         for outcome in ("named", "rival", "missed"):
             if outcomes:
-                print(f"  {outcome:7s} {_share(outcomes[outcome], len(mine))} %")
+                print(f"  {outcome:7s} {share(outcomes[outcome], len(mine))} %")
         print("  findings:", ", ".join(f"{k} {n}" for k, n in Counter(k for *_, ks in mine for k in ks).most_common(6)))
 
 

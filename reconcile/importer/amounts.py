@@ -11,7 +11,7 @@ import numpy as np
 
 from reconcile.importer.cells import Fault, Parsed, decimal_mark, number_of, parse_numbers, tidy_number
 from reconcile.records.arrays import TextArray
-from reconcile.records.units import find_unit
+from reconcile.records.units import UNITS, find_unit
 
 _SPLIT = re.compile(r"([+-]?(?:\d[\d.,]*|[.,]\d+)(?:[eE][+-]?\d{1,3})?)\s*([^\d\s.,+-].*)", re.DOTALL)
 _FILL = re.compile(
@@ -26,6 +26,8 @@ _ADJUST = re.compile(
     r"adjust.*|ph\s*(?:to\s*)?[\d.,]+|titrate.*|drop\s?wise|a\.?r\.?|a\.\s?n\.|qs ph",
     re.IGNORECASE,
 )
+_DILUTED = re.compile(r"1\s*(in|\+)\s*(\d{1,4})", re.IGNORECASE)
+"""A dilution that can mean one thing only: 1 in 10, 1 + 9; "1:10" may mean either of two."""
 _STATED_PH = re.compile(r"ph\D{0,4}(\d[\d.,]*)", re.IGNORECASE)
 
 
@@ -88,6 +90,9 @@ def _with_unit(text: str, bare: str, how: str, rest: str, mark: str) -> Fault | 
         stated = _STATED_PH.search(bare)
         number = number_of(stated.group(1).rstrip(".,"), mark) if stated else None
         return (number[0] if number else np.nan), "", "adjust"
+    diluted = _DILUTED.fullmatch(bare)
+    if diluted:
+        return float(diluted.group(2)) + (diluted.group(1) == "+"), UNITS["x"].name, ""
     if _FILL_ONLY.fullmatch(bare):
         return np.nan, "", "fill"
     split = _SPLIT.fullmatch(rest)

@@ -48,6 +48,8 @@ class Composer:
         self.open = OpenList()
         self._stocks: dict[tuple[str, str], list[tuple[Part, float]] | Problem] = {}
         self._open: list[str] = []
+        self.per_kilo: set[str] = set()
+        """Stocks that were weighed together and have no density: what a gram of them holds is known all the same."""
 
     def fault(self, line: int, code: str, **words: str) -> Problem:
         """A fault of a line's amount, quoting it as stated."""
@@ -103,11 +105,13 @@ class Composer:
             return contents
         L, u = self.lines, self.reader.u_volume
         unit = UNITS[L.unit[line]]
+        if stock.lot in self.per_kilo and unit.measures != "mass":
+            return Problem("unit-needs", stock.place, "mol/kg", (("name", "the density of the lot"),))
         x, twice = float(L.value[line]) * unit.factor, float(np.hypot(u, u))
         if unit.measures == "volume":
             how, factor = "taken", x / 1000.0
-        elif unit.measures == "mass" and not np.isnan(stock.density):
-            how, factor = "taken", x / stock.density / 1000.0
+        elif unit.measures == "mass" and not (np.isnan(stock.density) and stock.lot not in self.per_kilo):
+            how, factor = "taken", x / (1.0 if stock.lot in self.per_kilo else stock.density) / 1000.0
         elif unit.measures == "times" and (fraction := fraction_of(stock, x)) is not None:
             how, factor, u = "molar", fraction, twice
         else:
@@ -134,7 +138,7 @@ class Composer:
         return parts
 
     def contents(self, stock: Stock) -> list[tuple[Part, float]] | Problem:
-        """Parts of a stock with their concentration [mol/L] in it."""
+        """Parts of a stock with their concentration [mol/L] in it; [mol/kg] of it where its lot is in per_kilo."""
         key = (stock.lot, stock.batch)
         if key in self._stocks:
             return self._stocks[key]
@@ -151,10 +155,10 @@ class Composer:
             return mixture.problem
         scale = 1.0
         if mixture.per_kg_water:
-            if np.isnan(stock.density):
-                return Problem("unit-needs", stock.place, "mol/kg", (("name", "the density of the lot"),))
             grams = sum(a * anhydrous_mass(p.form, self.resolver.catalogue.by_name) for p, a, _ in mixture.parts)
-            scale = stock.density / (1.0 + grams / 1000.0)
+            scale = (1.0 if np.isnan(stock.density) else stock.density) / (1.0 + grams / 1000.0)
+            if np.isnan(stock.density):
+                self.per_kilo.add(stock.lot)
         contents = settled_contents(self, stock, [(replace(p, u=u), a * scale) for p, a, u in mixture.parts])
         self._stocks[key] = contents
         return contents
@@ -194,7 +198,7 @@ class Composer:
             line = next(p.line for p in parts if p.how != "molar")
             return Mixture(problem=self.fault(line, "litre-and-kilogram"))
         if by_mass:
-            return self._in_water(replace(self._per_kilogram(parts, total), without_effect=declared))
+            return self._in_water(replace(self.per_kilogram(parts, total), without_effect=declared))
         u = self.reader.u_volume
         whole = Mixture(
             False,
@@ -223,7 +227,7 @@ class Composer:
             return False
         return not self.reader.basis(L.substance[line], L.lot[line], L.unit[line]).nothing
 
-    def _per_kilogram(self, parts: list[Part], total: float) -> Mixture:
+    def per_kilogram(self, parts: list[Part], total: float) -> Mixture:
         """mol per kg of water.
 
         Per kilogram of solution: solutes taken or stated by mass weigh s [kg]; solutes stated per kg of water weigh m

@@ -123,6 +123,8 @@ def _unit_parts(
         contents = composer.contents(stock)
         if isinstance(contents, Problem):
             return contents
+        if stock.lot in composer.per_kilo:
+            return Problem("unit-needs", stock.place, "mol/kg", (("name", "the density of the lot"),))
         if any(part.open >= 0 for part, _ in contents):
             return _unwritten(composer, line)
         how, unit = ("taken", "mL") if measure else ("molar", "mL/L")

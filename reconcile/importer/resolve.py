@@ -105,6 +105,8 @@ class Resolver:
         if not substance and len(stocks) == 1 and stocks[0].form is not None:
             form, fault = stocks[0].form, None
         if form is None:
+            if not substance and lot and not stocks:
+                return Taken(None, fault=Fault("lot-unknown", lot))
             if not substance and len(stocks) > 1:
                 return Taken(None, fault=Fault("substance-missing", ""))
             return Taken(None, fault=fault)

@@ -106,6 +106,41 @@ def test_an_assay_of_the_dried_substance_and_its_water(tmp_path: Path) -> None:
     assert found["W", "Tris base"] == pytest.approx(0.1 * 0.995, rel=1e-4)
 
 
+@pytest.mark.parametrize("way", WAYS)
+def test_what_was_weighed_together_needs_no_density_to_be_weighed_out(way: str, tmp_path: Path) -> None:
+    stocks = [("M", None, "MB"), ("G", None, "GONE")]
+    recipes = [
+        ("MB", "acetic acid", None, 30.026, "g"),
+        ("MB", "sodium acetate", None, 41.017, "g"),
+        ("MB", "water", None, "q.s. to 1 kg"),
+        ("W", None, "M", 100.0, "g", 1.0, "kg"),
+        ("V", None, "M", 100.0, "mL", 1.0, "L"),
+        ("N", None, "X-404", 100.0, "mL", 1.0, "L"),
+        ("A", "Tris base", None, 50.0, "mM"),
+        ("A", None, "M", "to pH 7.4"),
+    ]
+    records = read_as(way, tmp_path, sheets(["W", "V", "N", "A"], recipes, stocks))
+    # half a mole in a kilogram, a tenth of it: 0.05 mol in 1000 - 3.0026 - 4.1017 g of water
+    assert held(records)["W", "acetic acid"] == pytest.approx(0.05 / 0.9928957, rel=1e-5)
+    assert {row.batch: row.code for row in records.set_aside} == {
+        "V": "unit-needs", "N": "lot-unknown", "A": "unit-needs",
+    }  # fmt: skip
+
+
+@pytest.mark.parametrize(("said", "share"), [("1 in 10", 0.1), ("1 + 9", 0.1), ("10x", 0.1), ("1 in 25", 0.04)])
+def test_dilutions_in_words(said: str, share: float, tmp_path: Path) -> None:
+    stocks = [("X10", None, "X")]
+    recipes = [("B", None, "X10", said), ("X", "sodium acetate", None, 500.0, "mM")]
+    found = held(read_as("workbook", tmp_path, sheets(["B"], recipes, stocks)))
+    assert found["B", "sodium acetate"] == pytest.approx(0.5 * share, rel=1e-6)
+
+
+def test_a_dilution_that_may_mean_two_things_is_not_guessed(tmp_path: Path) -> None:
+    recipes = [("B", None, "X10", "1:10"), ("X", "sodium acetate", None, 500.0, "mM")]
+    (aside,) = read_as("workbook", tmp_path, sheets(["B"], recipes, [("X10", None, "X")])).set_aside
+    assert (aside.code, aside.cause.cell) == ("amount-not-a-number", "D2")
+
+
 def test_a_bought_lot_needs_no_batch(tmp_path: Path) -> None:
     """A stock room in which one lot of many was made as a batch asks no question about the others."""
     stocks: list[tuple[Any, ...]] = [("X10", None, "X")]

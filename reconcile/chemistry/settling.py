@@ -8,6 +8,8 @@ import numpy as np
 
 from reconcile.records.arrays import BoolArray, IntArray
 from reconcile.records.book import BatchRecords
+from reconcile.records.columns import heading_key
+from reconcile.records.stages import FINAL, IN_PROCESS, rank_of
 
 _LAST = np.datetime64("9999-12-31", "s")
 
@@ -64,7 +66,8 @@ def jobs_of(records: BatchRecords) -> list[Job]:
     """Every open amount that a pH settles, with that pH.
 
     A batch is settled by its first reading that holds the titrant: by the last one of that sitting, since solutions are
-    read while they are adjusted. A titrant of a later step is settled by the first reading of that later stage.
+    read while they are adjusted. A titrant of a later step is settled by the first reading of that later stage, and a
+    reading whose stage bears the step's own name goes before others; one in process, or after sterilising, after them.
     """
     opens = records.open_amounts
     own, inside = own_opens(records), all_opens(records)
@@ -83,9 +86,12 @@ def jobs_of(records: BatchRecords) -> list[Job]:
             new = tuple(sorted(some - settled))
             if not new:
                 continue
-            first = next(i for i in rows if own[solution[i]] == some)
-            sitting = [i for i in rows if solution[i] == solution[first] and same_sitting(records, first, i)]
-            reading = sitting[-1]
+            holding = [i for i in rows if own[solution[i]] == some]
+            steps = {heading_key(str(opens.step[k])) for k in new} - {""}
+            named = [i for i in holding if heading_key(str(records.readings["stage"][i])) in steps]
+            done = named or [i for i in holding if not _in_process(records, i)] or holding
+            sitting = [i for i in done if same_sitting(records, done[0], i)]
+            reading = ([i for i in sitting if not _later(records, i)] or sitting)[-1]
             settled.update(new)
             jobs.append(Job(new, reading, inside[solution[reading]] - set(new)))
     stated = [k for k in range(len(opens)) if k not in settled and np.isfinite(opens.stated_ph[k])]
@@ -103,7 +109,8 @@ def jobs_of(records: BatchRecords) -> list[Job]:
 def anchors(records: BatchRecords, jobs: list[Job]) -> tuple[IntArray, BoolArray]:
     """For every reading the one that its solution was adjusted by (-1: none), and whether it says only that.
 
-    A solution adjusted in several steps follows the last of them.
+    A solution adjusted in several steps follows the last of them. What was read in process, where no step is called
+    that, may have been read before the last drop.
     """
     n = len(records.readings)
     anchor, adjusted = np.full(n, -1, np.intp), np.zeros(n, bool)
@@ -116,8 +123,20 @@ def anchors(records: BatchRecords, jobs: list[Job]) -> tuple[IntArray, BoolArray
     for i, s in enumerate(records.readings_solution.tolist()):
         if last.get(s, -1) >= 0:
             anchor[i] = last[s]
-            adjusted[i] = same_sitting(records, last[s], i)
+            steps = {heading_key(str(records.open_amounts.step[k])) for k in own[s]}
+            before = _in_process(records, i) and heading_key(str(records.readings["stage"][i])) not in steps
+            adjusted[i] = before or (same_sitting(records, last[s], i) and not _later(records, i))
     return anchor, adjusted
+
+
+def _in_process(records: BatchRecords, reading: int) -> bool:
+    """Whether a reading is of a stage that may come before the last drop of titrant."""
+    return rank_of(str(records.readings["stage"][reading])) == IN_PROCESS
+
+
+def _later(records: BatchRecords, reading: int) -> bool:
+    """Whether a reading is of a stage at which adjusting is long over, such as after sterilising."""
+    return (rank_of(str(records.readings["stage"][reading])) or 0) > FINAL
 
 
 def _moment(records: BatchRecords, reading: int) -> tuple[np.datetime64, int]:

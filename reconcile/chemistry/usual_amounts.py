@@ -56,9 +56,12 @@ def usual_amounts(
 
 
 def impossible(solved: Solved) -> BoolArray:
-    """Whether an implied amount lies below nothing by more than its uncertainty explains, (k,)."""
+    """Whether an amount added until a reading lies below nothing by more than its uncertainty explains, (k,).
+
+    The counter-ion of a stock counts from what its label says, and may well be less than that.
+    """
     with np.errstate(invalid="ignore"):
-        return np.asarray(solved.amount < -FAR * np.nan_to_num(solved.u), bool)
+        return np.asarray((solved.reading >= 0) & (solved.amount < -FAR * np.nan_to_num(solved.u)), bool)
 
 
 def _goals(records: BatchRecords, solved: Solved) -> FloatArray:

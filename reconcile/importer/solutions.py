@@ -14,11 +14,12 @@ from reconcile.importer.lines import Recipes
 from reconcile.importer.open_amounts import unsettled
 from reconcile.importer.resolve import WATER_NAMES
 from reconcile.importer.series import SeriesList
+from reconcile.importer.stages import up_to_stage
 from reconcile.records.arrays import AnyArray, IntArray
-from reconcile.records.columns import heading_key
 from reconcile.records.places import Place
 from reconcile.records.problems import Problem
 from reconcile.records.settings import Settings
+from reconcile.records.stages import is_before
 from reconcile.records.substances import name_key
 
 
@@ -110,11 +111,11 @@ class Assigner:
             solution[lost] = -1
 
     def _recipe(self, group: int, batch: str, stage: str) -> int | Problem:
-        partial = stage != "" and group in self.stepped
+        partial = stage != "" and (group in self.stepped or is_before(stage))
         if self.plain.plain[group] and not partial:
             return self.made.new(batch, stage, group)
         lines = self.composer.by_group.get(group, [])
-        mixture = self.composer.mixture(_up_to_stage(self.composer, lines, stage) if partial else lines)
+        mixture = self.composer.mixture(up_to_stage(self.composer, lines, stage) if partial else lines)
         if mixture.problem is not None:
             return mixture.problem
         index = self.made.new(batch or self.recipes.batch[group], stage)
@@ -169,14 +170,3 @@ class Assigner:
             self.blanks[name] = self.made.new(name, "")
             self.made.mixtures[self.blanks[name]] = Mixture()
         return self.blanks[name]
-
-
-def _up_to_stage(composer: Composer, lines: list[int], stage: str) -> list[int]:
-    """Lines added up to and with the step that a stage names; all of them where no step bears its name."""
-    keys = [heading_key(composer.lines.step[i]) for i in lines]
-    steps = list(dict.fromkeys(keys))
-    wanted = heading_key(stage)
-    if wanted not in steps:
-        return lines
-    upto = set(steps[: steps.index(wanted) + 1]) | {""}
-    return [i for i, key in zip(lines, keys, strict=True) if key in upto]

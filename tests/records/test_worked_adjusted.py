@@ -230,3 +230,53 @@ def test_less_than_nothing_of_a_titrant_is_a_lead(tmp_path: Path) -> None:
     assert 'no amount of sodium hydroxide gives T-1 its pH of "7.40"' in note.message()
     assert "A lead" in note.message()
     assert adjusted_table(audit).data["odd"][0] == "less than nothing; a lead"
+
+
+@pytest.mark.parametrize("way", WAYS)
+@pytest.mark.parametrize("step", [None, "trim", "final"])
+def test_a_reading_before_the_adjustment_holds_no_titrant(way: str, step: str | None, tmp_path: Path) -> None:
+    before, after = ("in process", "final") if step == "final" else ("before adjustment", step or "after adjustment")
+    readings = [
+        READ,
+        (at(0, 9), "W-1", "M-1", 25.0, 8.14, before),
+        (at(0, 10), "W-1", "M-1", 25.0, 7.40, after),
+        (at(1, 10), "W-1", "M-2", 25.0, 7.41, after),
+    ]
+    recipes = [
+        RECIPE,
+        ("W-1", "Tris base", "TB", 50.0, "mM", None, None, None),
+        ("W-1", "hydrochloric acid", "HC", 25.0, "mM", None, None, None),
+        ("W-1", "hydrochloric acid", "HC", "as needed", None, None, None, step),
+    ]
+    audit = audit_as(way, tmp_path, {**RECORD, "Readings": readings, "Recipes": recipes})
+    # half neutralised 8.07 + 0.07; then 0.849 of 50 mmol/L, of which 25 stand written
+    near(table(audit), [("W-1", before, "as_predicted", 8.14), ("W-1", after, "adjusted", 7.40),
+                        ("W-1", after, "as_predicted", 7.40)], 0.015)  # fmt: skip
+    assert audit.records.solved.amount[0] == pytest.approx(0.0425 - 0.025, abs=0.0006)
+
+
+def test_a_stock_labelled_as_its_salt_holds_less_counter_ion_without_a_lead(tmp_path: Path) -> None:
+    stocks = [STOCK, ("TS", "Tris hydrochloride", None, 1.0, "M", 8.0, 25.0)]
+    recipes = [RECIPE, ("D-1", "Tris hydrochloride", "TS", 50.0, "mL", 1.0, "L", None)]
+    sheets = {"Readings": [READ, (at(0), "D-1", "M-1", 25.0, 7.9, None)], "Recipes": recipes, "Stocks": stocks}
+    records = with_adjustments(read_as("workbook", tmp_path, sheets), Settings())
+    assert records.solved.amount[0] < -0.3
+    assert not records.solved.odd.any()
+    assert [note.code for note in records.notes if note.code.startswith("amount")] == []
+
+
+@pytest.mark.parametrize("way", WAYS)
+def test_the_final_reading_settles_what_was_read_in_process_and_after_sterilising_too(way: str, tmp_path: Path) -> None:
+    readings = [
+        READ,
+        (at(0, 9), "T-1", "M-1", 25.0, 7.61, "in process"),
+        (at(0, 10), "T-1", "M-1", 25.0, 7.40, "final"),
+        (at(0, 15), "T-1", "M-1", 25.0, 7.43, "after sterilising"),
+        (at(1, 10), "T-1", "M-2", 25.0, 7.41, "final"),
+    ]
+    recipes = [RECIPE, *[row for row in RECORD["Recipes"] if row[0] == "T-1"]]
+    audit = audit_as(way, tmp_path, {**RECORD, "Readings": readings, "Recipes": recipes})
+    near(table(audit), [("T-1", "in process", "adjusted", 7.40), ("T-1", "final", "adjusted", 7.40),
+                        ("T-1", "after sterilising", "as_predicted", 7.40), ("T-1", "final", "as_predicted", 7.40)],
+         0.005)  # fmt: skip
+    assert audit.records.solved.ph[0] == 7.40

@@ -53,7 +53,13 @@ def draw_all(audit: Audit, lookups: Lookups, progress: Callable[[str, float], No
             words = _alt(audit, lookups, finding)
             found.append(
                 Drawn(
-                    finding_stem(finding, i), f"evidence for {plain(finding.id)}", _caption(finding), words, png, svg, i
+                    finding_stem(finding, i),
+                    f"evidence for {plain(finding.id)}",
+                    caption_of(finding, lookups),
+                    words,
+                    png,
+                    svg,
+                    i,
                 )
             )
     return found
@@ -64,10 +70,26 @@ def finding_stem(finding: Finding, index: int) -> str:
     return f"finding_{finding.id if re.fullmatch(r'F[0-9]{1,6}', finding.id) else f'F{index + 1}'}"
 
 
-def _caption(finding: Finding) -> str:
-    return (
+def caption_of(finding: Finding, lookups: Lookups) -> str:
+    """Caption of a finding's picture; says why readings of other meters are in that of a meter."""
+    text = (
         f"Residuals of {subject_words(finding)}, with {plain(finding.id)} left in and taken out, on one scale. "
         "The band is twice the spread of a clean record."
+    )
+    if finding.subject_type != "meter":
+        return text
+    meters = lookups.audit.records.readings["meter"][np.asarray(finding.readings, np.intp)]
+    elsewhere = int((meters != finding.subject).sum())
+    if not elsewhere:
+        return text
+    if elsewhere == 1:
+        return (
+            f"{text} One of the readings was made on another meter, of a solution that was adjusted on this one; it "
+            "carries its error with the opposite sign."
+        )
+    return (
+        f"{text} {elsewhere:,} of the readings were made on other meters, of solutions that were adjusted on this one; "
+        "they carry its error with the opposite sign."
     )
 
 

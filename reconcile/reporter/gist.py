@@ -103,7 +103,9 @@ def _stands_out(audit: Audit, lookups: Lookups) -> Line:
     )
     odd = int(audit.records.solved.odd.sum())
     implied = f"{counted(odd, 'implied amount')} of titrant {'is' if odd == 1 else 'are'} odd, which is a lead."
-    after = [left] * bool(outstanding) + [calculated] * bool(wrong) + [implied] * bool(odd)
+    if not outstanding:
+        left = "No other reading stands out." if lookups.faults else ""
+    after = [left] * bool(left) + [calculated] * bool(wrong) + [implied] * bool(odd)
     none = "No fault is supported by the readings" + ("." if outstanding else ", and no reading stands out by itself.")
     faults = [finding for _, finding in lookups.faults]
     if not faults:

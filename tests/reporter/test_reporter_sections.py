@@ -13,7 +13,7 @@ from invented_audit import build
 import reconcile
 from reconcile.records.book import SheetSource
 from reconcile.records.results import Audit, Silence
-from reconcile.reporter.drawn import draw_all
+from reconcile.reporter.drawn import caption_of, draw_all
 from reconcile.reporter.gist import gist
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.page_findings import overview, sections
@@ -103,6 +103,24 @@ def test_without_findings_the_gist_says_whether_readings_stand_out() -> None:
     assert texts[0].endswith("and no reading stands out by itself.")
     assert texts[1].startswith("No fault is supported by the readings. 1 reading stands out")
     assert overview(Lookups(calm)) is None
+
+
+def test_with_findings_the_gist_says_that_nothing_else_stands_out(invented: Audit) -> None:
+    calm = replace(invented, status=np.where(invented.status == "stands_out", "as_predicted", invented.status))
+    loud = replace(calm, status=np.where(np.arange(len(calm.status)) == 0, "stands_out", calm.status))
+    leads = [next(x.lead for x in gist(one) if x.key == "stands_out") for one in (calm, loud)]
+    assert leads[0].endswith("No other reading stands out.")
+    assert leads[1].endswith("1 reading stands out without a finding that explains it.")
+
+
+def test_a_caption_says_why_readings_of_other_meters_are_in_the_picture(invented: Audit) -> None:
+    lookups, step = Lookups(invented), invented.findings[0]
+    elsewhere = np.flatnonzero(invented.records.readings["meter"] != step.subject)[:2]
+    felt = replace(
+        step, readings=np.r_[step.readings, elsewhere], shift=np.r_[step.shift, np.full(len(elsewhere), -0.14)]
+    )
+    assert "2 of the readings were made on other meters" in caption_of(felt, lookups)
+    assert "other meters" not in caption_of(step, lookups)
 
 
 def test_names_of_settings_are_not_broken(invented: Audit) -> None:

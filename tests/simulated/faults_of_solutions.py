@@ -48,6 +48,22 @@ def lot_strength(world: World, size: float = 1.2) -> Planted:
     return Planted("lot_strength", world.lot_name[lot], "lot", factor, "-", "lot_strength", {}, rows)
 
 
+def lot_used_once(world: World, size: float = 1.5) -> Planted:
+    """The strength of a bottle used in one batch only: pH cannot tell it from a fault of that preparation."""
+    before = world.true_ph()
+    for index in world.rng.permutation(np.flatnonzero(np.bincount(world.lot) == 1)).tolist():
+        kept = world.lot_factor.copy()
+        factor = float(size ** _sign(world))
+        world.lot_factor[index] = factor
+        rows = _rows(world, np.flatnonzero(world.lot == index))
+        if np.abs(world.true_ph() - before)[list(rows)].min() > 0.1:
+            batch = world.batch_name(int(world.solution[world.lot == index][0]))
+            detail = {"batch": batch}
+            return Planted("lot_strength", world.lot_name[index], "lot", factor, "-", "lot_strength", detail, rows)
+        world.lot_factor = kept
+    raise LookupError("no bottle used once shows in any reading")
+
+
 def _near(one: str, other: str, within: float = 0.1) -> bool:
     """Two acids whose pKa between 1.5 and 12.5 agree within a tolerance, step by step."""
     a, b = (chemistry.acids()[name].pka for name in (one, other))

@@ -29,6 +29,7 @@ FAULTS: Mapping[str, Plant] = {
     "calibration_buffer": meters.calibration_buffer,
     "reading_slip": meters.reading_slip,
     "lot_strength": solutions.lot_strength,
+    "lot_used_once": solutions.lot_used_once,
     "lot_identity": solutions.lot_identity,
     "lot_hydrate": solutions.lot_hydrate,
     "batch_preparation": solutions.batch_preparation,
@@ -40,6 +41,7 @@ FAULTS: Mapping[str, Plant] = {
 }
 """Every fault by name; its own size is the default of its second argument."""
 NEEDS: Mapping[str, Mapping[str, Any]] = {
+    "lot_used_once": {"single_use_lots": 8},
     "meter_temperature": {"temperature_low": 15.0, "temperature_high": 37.0},
     "probe_matrix": {"shares": (("Tris", 3.0),)},
     "calibration_buffer": {"calibrations": True},

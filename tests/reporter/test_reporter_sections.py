@@ -14,6 +14,8 @@ import reconcile
 from reconcile.records.book import SheetSource
 from reconcile.records.results import Audit, Silence
 from reconcile.reporter.drawn import caption_of, draw_all
+from reconcile.reporter.figures.residuals_time import residuals_time
+from reconcile.reporter.figures.timeline import day
 from reconcile.reporter.gist import gist
 from reconcile.reporter.lookups import Lookups
 from reconcile.reporter.page_findings import overview, sections
@@ -121,6 +123,25 @@ def test_a_caption_says_why_readings_of_other_meters_are_in_the_picture(invented
     )
     assert "2 of the readings were made on other meters" in caption_of(felt, lookups)
     assert "other meters" not in caption_of(step, lookups)
+
+
+def test_the_course_before_an_onset_ends_there(invented: Audit) -> None:
+    """A later reading that the finding does not rest on (the solution was adjusted by it) belongs to neither part."""
+    step = invented.findings[0]
+    fewer = replace(step, readings=step.readings[:-1], shift=step.shift[:-1])
+    audit = replace(invented, findings=(fewer, *invented.findings[1:]))
+    drawn = residuals_time(audit, Lookups(audit))
+    assert step.since is not None
+    courses = [
+        np.asarray(one.get_xdata(), float)
+        for axes in drawn.axes
+        if axes.get_title().startswith(str(step.subject))
+        for one in axes.lines
+        if one.get_linewidth() == 1.3
+    ]
+    assert len(courses) == 2
+    inside, before = courses
+    assert before.max() < day(step.since) <= inside.min()
 
 
 def test_names_of_settings_are_not_broken(invented: Audit) -> None:

@@ -99,8 +99,11 @@ def _course(axes: Axes, finding: Finding, line: Timeline, values: FloatArray, ro
         part = np.full(len(values), np.nan)
         part[own] = finding.shift
         if finding.kind in FROM_BEFORE:
-            part[rows & np.isnan(part)] = 0.0
-            part += float(np.median((values - part)[rows]))
+            before = rows & np.isnan(part)
+            if line.dated and finding.since is not None:  # a later one that it does not rest on was adjusted by
+                before &= line.x < day(finding.since)
+            part[before] = 0.0
+            part += float(np.nanmedian((values - part)[rows]))
         placed = np.flatnonzero(np.isfinite(part) & line.placed & rows)
         inside = np.isin(placed, own)
         for chosen in (placed[inside], placed[~inside]):

@@ -19,6 +19,7 @@ from reconcile.auditor.judging import Chosen
 from reconcile.auditor.layout import Layout
 from reconcile.auditor.scoring import Candidate, Pool, Scores
 from reconcile.auditor.search import Search, State
+from reconcile.auditor.through_time import courses, moment
 from reconcile.auditor.wording import detail_of, name_of, of_subject, since_words, support_words
 from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.results import COULD_ALSO_BE, Finding
@@ -74,14 +75,22 @@ def onset_interval(
     layout: Layout, pool: Pool, scores: Scores, best: Candidate, gain: float
 ) -> tuple[datetime, datetime] | None:
     """Earliest and latest onset nearly as good as the best, among candidates of the same kind and subject."""
-    times = []
+    times: list[datetime] = []
     for k in np.flatnonzero(scores.gain > gain - ONSET_DROP).tolist():
         other = pool.candidate(k)
         if (other.kind, other.subject) == (best.kind, best.subject):
-            since = other.tell(float(scores.amplitude[k])).since
-            if since is not None:
-                times.append(since)
+            times += around(layout, other, float(scores.amplitude[k]))
     return (min(times), max(times)) if times else None
+
+
+def around(layout: Layout, candidate: Candidate, amplitude: float) -> list[datetime]:
+    """Onset of a candidate; of a step, the readings between which it lies, since any moment between them fits alike."""
+    since = candidate.tell(amplitude).since
+    if since is None or candidate.kind != "meter_step":
+        return [] if since is None else [since]
+    course = next(course for course in courses(layout) if course.meter == candidate.subject)
+    first = len(course.day) - len(candidate.x.indices)
+    return [moment(layout, float(day)) for day in course.day[first - 1 : first + 1]]
 
 
 def error_of(layout: Layout, candidate: Candidate, amplitude: float) -> tuple[IntArray, FloatArray]:

@@ -12,6 +12,7 @@ from reconcile.auditor import laws
 from reconcile.auditor.alarm import Alarm, score_df, score_needed
 from reconcile.auditor.components import Model
 from reconcile.auditor.estimates import critical_score
+from reconcile.auditor.faults.meter_offset import LEAST, told_of
 from reconcile.auditor.faults.meter_span import LEAST_SPREAD
 from reconcile.auditor.faults.meter_temperature import LEAST_SPREAD_K
 from reconcile.auditor.layout import Layout, matrix, one_hot
@@ -20,7 +21,6 @@ from reconcile.auditor.scoring import Pool
 from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.results import Silence
 
-FEW = 3
 BLIND = 0.01
 """dpH/d ln amount below which a common error of all amounts is not seen: 10 % then moves pH by 0.001."""
 
@@ -41,7 +41,7 @@ def _of_record(layout: Layout) -> Iterator[Silence]:
 def _of_meters(layout: Layout) -> Iterator[Silence]:
     for index, meter in enumerate(layout.meters):
         rows = np.flatnonzero(layout.meter == index)
-        if len(rows) < FEW:
+        if len(rows) < LEAST:
             yield Silence("meter_offset", meter, "meter", f"only {len(rows)} usable reading{'s' * (len(rows) != 1)}")
             continue
         spread = float(np.ptp(layout.ph[rows]))
@@ -84,8 +84,15 @@ def _of_buffers(layout: Layout) -> Iterator[Silence]:
 def smallest_detectable(layout: Layout, model: Model, pool: Pool, power: float, rate: float) -> tuple[Silence, ...]:
     """Smallest offset of each meter and smallest strength error of each lot that is found with the given power."""
     found = []
+    meters = told_of(layout)
     for kind, subject_type, unit, names, x in (
-        ("meter_offset", "meter", "pH", layout.meters, one_hot(layout.meter, len(layout.meters))),
+        (
+            "meter_offset",
+            "meter",
+            "pH",
+            tuple(layout.meters[i] for i in meters),
+            one_hot(layout.meter, len(layout.meters))[:, meters],
+        ),
         (
             "lot_strength",
             "lot",
@@ -96,7 +103,7 @@ def smallest_detectable(layout: Layout, model: Model, pool: Pool, power: float, 
     ):
         if not names:
             continue
-        own = np.arange(len(names)) + layout.effects[subject_type].first
+        own = (meters if unit == "pH" else np.arange(len(names))) + layout.effects[subject_type].first
         needed = _critical(model, pool, kind, names, x, own, rate)
         information = model.information(x, np.full(len(names), np.inf), own)
         with np.errstate(divide="ignore"):

@@ -33,7 +33,8 @@ def _cells(column: Column, values: Any) -> list[str]:
     if not isinstance(values, np.ndarray):
         return ["" if v is None else six_digits(v) for v in values]
     different, which = np.unique(values, return_inverse=True)  # limits, temperatures, readings come again and again
-    return np.array([six_digits(v) for v in different.tolist()], object)[which].tolist()
+    texts = [six_digits(v) for v in different.tolist()]
+    return [texts[i] for i in which.tolist()]
 
 
 def table_csv(table: Table) -> bytes:

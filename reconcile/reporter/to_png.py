@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import io
 import warnings
+from typing import Any
 
 import matplotlib as mpl
 from matplotlib.backends.backend_agg import FigureCanvasAgg
@@ -18,11 +19,13 @@ def images(drawn: Figure) -> tuple[bytes, bytes]:
     which is no reason to warn on the terminal.
     """
     png, svg = io.BytesIO(), io.BytesIO()
+    raster: Any = FigureCanvasAgg(drawn)
+    vector: Any = FigureCanvasSVG(drawn)
     with warnings.catch_warnings():
         warnings.filterwarnings("ignore", message="Glyph .* missing from")
         warnings.filterwarnings("ignore", message=".*constrained_layout not applied.*")
         drawn.set_dpi(mpl.rcParams["savefig.dpi"])
-        FigureCanvasAgg(drawn).print_png(png, metadata={"Software": None})
+        raster.print_png(png, metadata={"Software": None})
         drawn.set_layout_engine("none")  # it stands: laid out once, for both
-        FigureCanvasSVG(drawn).print_svg(svg, metadata={"Date": None, "Creator": None})
+        vector.print_svg(svg, metadata={"Date": None, "Creator": None})
     return png.getvalue(), svg.getvalue()

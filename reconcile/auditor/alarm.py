@@ -15,8 +15,9 @@ from reconcile.records.arrays import BoolArray, FloatArray, IntArray
 
 PRIOR_DF = 30.0
 """Degrees of freedom behind a stated accuracy or tolerance: reliable to about 13 % (JCGM 100:2008, G.4.2, eq. G.3)."""
-CONSTANT_DF = 6.0
-"""The same behind a tabulated constant's uncertainty, which is reliable to about 29 %; tables differ by more than u."""
+OTHER_DF = {"meter": 60.0, "span": 8.0, "constant": 6.0}
+"""The same by effect: an accuracy that the maker states for one instrument, reliable to 9 %; a span's, which few state,
+to 25 %; a tabulated constant's uncertainty to 29 %, since tables differ by more than u."""
 NOISE_DF_TIMES = 4.0
 """The noise is estimated from the readings it judges, which bounds their scores: the tails of a score are then lighter
 than those of a t law with the plain degrees of freedom (internal studentization; Cook and Weisberg 1982, from memory).
@@ -37,8 +38,9 @@ def score_df(model: Model, x: sparse.csc_array, own: IntArray | None = None) -> 
     shares = model.shares(x, own)
     share = shares.noise
     df_known = np.full(len(model.g), PRIOR_DF)
-    constants = model.layout.effects["constant"]
-    df_known[constants.first : constants.last] = CONSTANT_DF
+    for sort, df in OTHER_DF.items():
+        effects = model.layout.effects[sort]
+        df_known[effects.first : effects.last] = df
     df_known = df_known[model.columns]
     kurtosis = 6.0 * share**2 / max(NOISE_DF_TIMES * model.components.noise_df - 4.0, 2.0)
     kurtosis += 6.0 * (shares.known**2 / (df_known - 4.0)[:, None]).sum(axis=0)

@@ -59,7 +59,7 @@ def lot_used_once(world: World, size: float = 1.5) -> Planted:
         if np.abs(world.true_ph() - before)[list(rows)].min() > 0.1:
             batch = world.batch_name(int(world.solution[world.lot == index][0]))
             detail = {"batch": batch}
-            return Planted("lot_strength", world.lot_name[index], "lot", factor, "-", "lot_strength", detail, rows)
+            return Planted("lot_strength", world.lot_name[index], "lot", factor, "-", "lot_used_once", detail, rows)
         world.lot_factor = kept
     raise LookupError("no bottle used once shows in any reading")
 

@@ -26,6 +26,7 @@ SAME_MEANING: Mapping[str, tuple[str, ...]] = {
     "calibration_buffer": ("calibration_buffer",),
     "reading_slip": ("reading_slip",),
     "lot_strength": ("lot_strength",),
+    "lot_used_once": ("lot_strength",),
     "lot_identity": ("lot_identity",),
     "lot_hydrate": ("lot_identity", "lot_strength"),
     "batch_preparation": ("batch_preparation", "recipe_slip"),

@@ -72,7 +72,8 @@ class Problem:
     def reason(self) -> str:
         """What is wrong, and what was expected."""
         says = self._fill(self.kind.says)
-        return f"{says}. Expected {self._fill(self.kind.expected)}." if self.kind.expected else f"{says}."
+        ended = says if says.endswith("?") else f"{says}."
+        return f"{ended} Expected {self._fill(self.kind.expected)}." if self.kind.expected else ended
 
     @property
     def advice(self) -> str:

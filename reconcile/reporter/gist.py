@@ -166,7 +166,7 @@ def _not_checked(audit: Audit) -> str:
     statuses = Counter(s for s in audit.status.tolist() if s in NO_EVIDENCE)
     if statuses:
         words = [f"{counted(n, 'reading')} {STATUSES[s]}" for s, n in statuses.most_common()]
-        parts.append(f"Shown but no evidence: {listed(words, 6)}.")
+        parts.append(f"Shown, but no evidence by themselves: {listed(words, 6)}.")
     parts.append("pH cannot see a fault that leaves pH unchanged, such as both halves of a buffer off together.")
     parts.append(silence_in_numbers(audit))
     return " ".join(filter(None, parts))

@@ -11,7 +11,7 @@ from reconcile.reporter.tables import Column, Table
 BATCHES: tuple[Column, ...] = (
     Column("batch", "Batch", width=18),
     Column("readings", "Readings", "integer", 0),
-    Column("stand_out", "Stand out", "integer", 0),
+    Column("stand_out", "Unexplained", "integer", 0),
     Column("explained", "Explained", "integer", 0),
     Column("mean_residual", "Mean residual (pH)", "number", 3, signed=True),
     Column("largest_residual", "Largest residual (pH)", "number", 3, signed=True),

@@ -5,17 +5,15 @@ from __future__ import annotations
 import base64
 from dataclasses import dataclass
 
-import numpy as np
-
-from reconcile.records.book import Table as Records
 from reconcile.records.results import Audit, Finding
 from reconcile.reporter.drawn import Drawn
 from reconcile.reporter.lookups import Lookups
+from reconcile.reporter.page_limits import moved, unmoved
 from reconcile.reporter.page_tables import Cell, Row, View, anchor, row_id, shown_rows, text_cell
 from reconcile.reporter.plain import plain
 from reconcile.reporter.stocks import Stock, stocks
 from reconcile.reporter.words import (
-    counted,
+    TIMELESS,
     explains_words,
     half_up,
     interval,
@@ -25,14 +23,12 @@ from reconcile.reporter.words import (
     moment,
     quantity,
     rival_words,
-    signed,
     since_words,
     title,
     unsaid,
 )
 
 MOST_LINKS = 30
-MOST_IMPACT = 40
 MOST_CALCULATIONS = 200
 MOST_SECTIONS = 100
 """Findings that get a section; the overview lists all."""
@@ -61,8 +57,10 @@ class Section:
     readings: list[tuple[str, list[tuple[str, str]]]]
     more_readings: str
     rivals: View | None
+    alone: str
     next_check: str
     impact: View | None
+    unmoved: str
     picture: Picture | None
 
 
@@ -120,8 +118,10 @@ def _section(
         list(by_batch.items()),
         f"and {more:,} more; filter the residuals for {plain(finding.id)}." if more > 0 else "",
         _rivals(finding, name),
+        _alone(finding),
         plain(finding.next_check),
-        _impact(audit, lookups, finding, name, on_page),
+        moved(audit, lookups, finding, name, on_page),
+        unmoved(audit, finding),
         own,
     )
 
@@ -159,63 +159,12 @@ def _rivals(finding: Finding, name: str) -> View | None:
     return View(f"{name}-rivals", f"What else it could be, instead of {plain(finding.id)}", headings, rows, tool=False)
 
 
-def _impact(audit: Audit, lookups: Lookups, finding: Finding, name: str, on_page: set[int]) -> View | None:
-    chosen = sorted(int(i) for i in finding.impact)
-    if not chosen:
-        return None
-    readings = audit.records.readings
-    shift = dict(zip(np.asarray(finding.readings).tolist(), finding.shift.tolist(), strict=False))
-
-    def digits(value: float, i: int) -> str:
-        return minus(half_up(float(value), int(max(lookups.decimals[i], 2))))
-
-    rows = []
-    for i in chosen[:MOST_IMPACT]:
-        where = lookups.place_words(i)
-        target = ((where, row_id(i)),) if i in on_page else ()
-        share = shift.get(i, finding.estimate or np.nan)
-        rows.append(
-            Row(
-                "",
-                False,
-                [
-                    Cell(where, "", target),
-                    text_cell(str(lookups.batch[i])),
-                    text_cell(str(lookups.meter[i])),
-                    Cell(minus(half_up(float(readings["ph"][i]), int(lookups.decimals[i]))), "n"),
-                    Cell(digits(readings["low_limit"][i], i), "n"),
-                    Cell(digits(readings["high_limit"][i], i), "n"),
-                    Cell(signed(half_up(share, 3)), "n"),
-                    Cell(_place(readings, i, 0.0), "s"),
-                    Cell(_place(readings, i, share), "s"),
-                ],
-            )
-        )
-    headings = [
-        ("Reading", ""),
-        ("Batch", ""),
-        ("Meter", ""),
-        ("pH observed", "n"),
-        ("Low limit (pH)", "n"),
-        ("High limit (pH)", "n"),
-        ("Share of the finding (pH)", "n"),
-        ("As read", ""),
-        ("Without that share", ""),
-    ]
-    more = len(chosen) - MOST_IMPACT
-    note = f"and {counted(more, 'more reading')} in findings.json" if more > 0 else ""
-    caption = f"Readings that would change their place in or out of limits if {plain(finding.id)} holds"
-    return View(f"{name}-impact", caption, headings, rows, note, tool=False)
-
-
-def _place(readings: Records, i: int, share: float) -> str:
-    """Where a reading lies against its limits, less what a finding accounts for [pH]."""
-    value = float(readings["ph"][i]) - share
-    if not np.isfinite(value):
-        return "–"
-    if value < float(readings["low_limit"][i]):
-        return "below"
-    return "above" if value > float(readings["high_limit"][i]) else "inside"
+def _alone(finding: Finding) -> str:
+    """What stands in place of rivals."""
+    if not finding.also:
+        return "No other explanation comes within reach of this one."
+    alike = listed([plain(a) for a in finding.also], 8)
+    return f"pH cannot tell it from {alike}. No further explanation comes within reach."
 
 
 def _without_blank(headings: list[tuple[str, str]], rows: list[Row]) -> tuple[list[tuple[str, str]], list[Row]]:
@@ -242,7 +191,7 @@ def overview(lookups: Lookups) -> View | None:
                     text_cell(title(finding)),
                     text_cell(quantity(finding) or "–"),
                     Cell(interval(finding) or "–", "s"),
-                    Cell(moment(finding.since)[:10] or "–", "s"),
+                    Cell(_since(finding), "s"),
                     Cell(f"{len(finding.readings):,}", "n"),
                     Cell(f"{len(solutions):,}", "n"),
                     Cell(f"{len(finding.impact):,}", "n"),
@@ -258,11 +207,18 @@ def overview(lookups: Lookups) -> View | None:
         ("Since", ""),
         ("Readings", "n"),
         ("Solutions", "n"),
-        ("Limits concerned", "n"),
+        ("Would change place in limits", "n"),
         ("What else it could be", ""),
     ]
     headings, rows = _without_blank(headings, rows)
     return View("findings-table", "Findings, most supported first", headings, rows, tool=len(rows) > 8)
+
+
+def _since(finding: Finding) -> str:
+    """The day of the onset; a meter's or a probe's fault without one holds from the beginning."""
+    if finding.since is None:
+        return "–" if finding.subject_type in TIMELESS else "whole record"
+    return moment(finding.since)[:10]
 
 
 def calculated(lookups: Lookups) -> View | None:

@@ -50,7 +50,7 @@ METERS: tuple[Column, ...] = (
     Column("last", "Last reading", "time", width=17),
     Column("mean_residual", "Mean residual (pH)", "number", 3, signed=True),
     Column("sd_residual", "SD of residuals (pH)", "number", 3),
-    Column("stand_out", "Stand out", "integer", 0),
+    Column("stand_out", "Unexplained", "integer", 0),
     Column("smallest_offset", "Smallest detectable offset (pH)", "number", 3),
     Column("findings", "Findings", width=12),
 )

@@ -9,6 +9,10 @@ from reconcile.auditor import laws
 from reconcile.auditor.alarm import Alarm, block_p, score_needed
 from reconcile.records.arrays import BoolArray, FloatArray
 
+NEAREST = 0.3
+"""Least distance of an estimate above the size it had to reach, in spreads: that size rests on spreads known to about
+8 % and on simulated probabilities, and an estimate taken to lie exactly on it would say nothing."""
+
 
 def critical_z(
     correlation: FloatArray, root: FloatArray, one_sided: BoolArray, trials: int, rate: float, seed: int
@@ -53,7 +57,7 @@ def given_selected(estimate: float, u: float, cut: float, levels: tuple[float, .
     """
     sign = 1.0 if estimate >= 0 else -1.0
     x = abs(estimate) / u
-    limit = min(cut / u, x)
+    limit = min(cut / u, x - NEAREST)
     values = []
     for level in levels:
 

@@ -27,7 +27,8 @@ class MeterSpan:
                 columns.append((rows, layout.ph[rows] - pivot))
                 subject.append(meter)
                 pivots.append(float(pivot))
-                own.append(layout.own("span", index) + (layout.own("meter", index) if pivot != 7.0 else ()))
+                # the meter's own offset stays: the true pivot lies between those tried
+                own.append(layout.own("span", index))
                 # half of the prior on the isopotential point of glass electrodes, pH 7 (common practice, no source)
                 log_prior.append(np.log(0.5 if pivot == 7.0 else 0.5 / (len(PIVOTS) - 1)))
 

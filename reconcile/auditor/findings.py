@@ -20,7 +20,7 @@ from reconcile.auditor.layout import Layout
 from reconcile.auditor.scoring import Candidate, Pool, Scores
 from reconcile.auditor.search import Search, State
 from reconcile.auditor.through_time import courses, moment
-from reconcile.auditor.wording import detail_of, name_of, of_subject, since_words, support_words
+from reconcile.auditor.wording import as_probe, detail_of, name_of, sentence, since_words, support_words
 from reconcile.records.arrays import FloatArray, IntArray
 from reconcile.records.results import COULD_ALSO_BE, Finding
 
@@ -121,8 +121,7 @@ def described(
     detail = told.detail
     if candidate.kind == "lot_identity" and told.would_explain:
         detail = str(told.would_explain["substance"])
-    text = of_subject(
-        candidate.subject_type,
+    words = sentence(
         candidate.kind,
         candidate.subject,
         told.estimate,
@@ -131,6 +130,7 @@ def described(
         detail,
         float(total) if total is not None else None,
     )
+    text = as_probe(words, candidate.subject) if candidate.subject_type == "probe" else words
     return Finding(
         kind=candidate.kind,
         subject=candidate.subject,
@@ -203,7 +203,7 @@ def build(
             between = onset_interval(layout, pool, scores, other, float(scores.gain[k]))
             rival = described(search, layout, other, size, ends, support.gain, support.p, between)
             told.append(also_with(rival, with_it.get(k, [])))
-        batches = len({int(b) for b in layout.batch[felt_shift(layout, one.candidate.x, 1.0)[0]]})
+        batches = len(np.unique(layout.batch[np.isin(layout.reading, finding.readings)]))
         words = [finding.text, support_words(one.p, len(finding.readings), batches, len(told))]
         if told:
             names = "; ".join(name_of(c, a) for c, a in tried[1:4])

@@ -119,21 +119,6 @@ def as_probe(words: str, subject: str | tuple[str, ...]) -> str:
     return words.replace(f"Meter {subject}", f"Probe {subject}").replace(f"meter {subject}", f"probe {subject}")
 
 
-def of_subject(
-    subject_type: str,
-    kind: str,
-    subject: str | tuple[str, ...],
-    estimate: float | None,
-    interval: tuple[float, float] | None,
-    since: str,
-    detail: str,
-    total: float | None,
-) -> str:
-    """What a finding says of its subject; a fault of a meter that went with a probe is said of the probe."""
-    words = sentence(kind, subject, estimate, interval, since, detail, total)
-    return as_probe(words, subject) if subject_type == "probe" else words
-
-
 def sentence(
     kind: str,
     subject: str | tuple[str, ...],

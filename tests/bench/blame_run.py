@@ -13,11 +13,15 @@ os.environ.setdefault("OMP_NUM_THREADS", "1")  # two processes on two cores: one
 os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")
 
 from reconcile.auditor.audit import audit
+from reconcile.auditor.faults import KINDS
+from reconcile.auditor.layout import build_layout, evidence
+from reconcile.auditor.retrial import Retrial
+from reconcile.auditor.search import Search
 from reconcile.chemistry.predict import predict_records, repredictor
 from reconcile.chemistry.shortcuts import shortcut_values
 from tests.simulated.matching import match, says
 from tests.simulated.planted import Planted
-from tests.simulated.simulator import simulate
+from tests.simulated.simulator import Simulated, simulate
 
 
 @dataclass(frozen=True)
@@ -70,6 +74,14 @@ def _told(finding: Any) -> Told:
         rivals,
         component,
     )
+
+
+def search_of(simulated: Simulated) -> Search:
+    """The auditor's search over a simulated record, not yet run."""
+    records, settings = simulated.records, simulated.settings
+    prediction = predict_records(records, settings)
+    layout = build_layout(records, prediction, settings, evidence(records, prediction))
+    return Search(layout, settings, Retrial(layout, repredictor(records, settings)), KINDS)
 
 
 def run(case: Case) -> Result:

@@ -20,14 +20,10 @@ from multiprocessing import get_context
 import numpy as np
 
 from reconcile.auditor.check_plan import Plan
-from reconcile.auditor.faults import KINDS
 from reconcile.auditor.findings import build
-from reconcile.auditor.layout import build_layout, evidence
 from reconcile.auditor.next_check import plan
-from reconcile.auditor.retrial import Retrial
-from reconcile.auditor.search import Search
-from reconcile.chemistry.predict import predict_records, repredictor
 from reconcile.records.arrays import FloatArray
+from tests.bench.blame_run import search_of
 from tests.simulated.matching import says
 from tests.simulated.planted import Planted
 from tests.simulated.simulator import simulate
@@ -95,14 +91,11 @@ def tried(task: tuple[str, float, int]) -> list[tuple[str, int, float, float]]:
     """(kind, explanations, claimed, share of draws that chose the planted one) of each check in one record."""
     kind, size, seed = task
     simulated = simulate(seed, [kind], {kind: size})
-    records, settings = simulated.records, simulated.settings
-    prediction = predict_records(records, settings)
-    layout = build_layout(records, prediction, settings, evidence(records, prediction))
-    search = Search(layout, settings, Retrial(layout, repredictor(records, settings)), KINDS)
-    state = search.run()
+    search = search_of(simulated)
+    state, layout, reach = search.run(), search.layout, float(simulated.settings["audit.reach"])
     rng = np.random.default_rng([seed, 77])
     found = []
-    for j, (finding, candidates) in enumerate(build(search, state, layout, float(settings["audit.reach"]))):
+    for j, (finding, candidates) in enumerate(build(search, state, layout, reach)):
         told = [finding, *finding.rivals][: len(candidates)]
         chosen = plan(search, state, j, candidates)
         if chosen is None:

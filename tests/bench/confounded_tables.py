@@ -29,8 +29,8 @@ def said(finding: Finding) -> list[Finding]:
     return [finding, *finding.rivals]
 
 
-def _one_meter(planted: Planted, findings: Sequence[Finding]) -> Verdict:
-    """A small step: where the meter is found, the step is the finding or a rival of it."""
+def _truth_listed(planted: Planted, findings: Sequence[Finding]) -> Verdict:
+    """Where the subject is found, what was planted is the finding or a rival of it."""
     mine = [f for f in findings if any(one.subject == planted.subject for one in said(f))]
     return len(mine), sum(any(says(one, planted) for one in said(f)) for f in mine)
 
@@ -48,10 +48,10 @@ def _one_bottle(planted: Planted, findings: Sequence[Finding]) -> Verdict:
 
 
 SITUATIONS: Mapping[str, tuple[str, dict[str, float], Callable[[Planted, Sequence[Finding]], Verdict]]] = {
-    "small step, or drift": ("meter_step", {"meter_step": 0.045}, _one_meter),
-    "slow drift, or step": ("meter_drift", {"meter_drift": 0.08}, _one_meter),
+    "small step, or drift": ("meter_step", {"meter_step": 0.045}, _truth_listed),
+    "slow drift, or step": ("meter_drift", {"meter_drift": 0.08}, _truth_listed),
     "bottle used once, or preparation": ("lot_used_once", {}, _one_bottle),
-    "another acid, or one of equal pKa": ("lot_identity", {}, _one_meter),
+    "another acid, or one of equal pKa": ("lot_identity", {}, _truth_listed),
 }
 
 

@@ -21,15 +21,10 @@ import numpy as np
 
 from reconcile.auditor.alarm import Alarm, score_df
 from reconcile.auditor.estimates import critical_score
-from reconcile.auditor.faults import KINDS
-from reconcile.auditor.layout import build_layout, evidence
-from reconcile.auditor.retrial import Retrial
-from reconcile.auditor.search import Search
-from reconcile.chemistry.predict import predict_records, repredictor
 from reconcile.records.arrays import FloatArray
-from tests.bench.blame_run import Case, Result, run_all
+from tests.bench.blame_run import Case, Result, run_all, search_of
 from tests.bench.blame_tables import share, size_ratios
-from tests.simulated.oracle import consult, consult_without_spreads
+from tests.simulated.oracle import ask
 from tests.simulated.simulator import FAULTS, simulate
 
 POWERS = (0.50, 0.80, 0.95)
@@ -40,8 +35,9 @@ SIZED = (*FACTORS, "meter_offset", "meter_span", "meter_drift", "meter_step", "p
 
 def _consult(task: tuple[int, str, float]) -> tuple[float, float, float]:
     seed, kind, size = task
-    oracle = consult(seed, kind, size)
-    return oracle.value, oracle.mean, consult_without_spreads(seed, kind, size).value
+    asked = ask(seed, kind, size)
+    oracle = asked.with_spreads()
+    return oracle.value, oracle.mean, asked.without_spreads().value
 
 
 def consulted(
@@ -71,10 +67,7 @@ def critical_of(task: tuple[int, str, float]) -> float:
     """Gain that the true candidate of (seed, kind, size) needs in the auditor's eyes."""
     seed, kind, size = task
     simulated = simulate(seed, [kind], {kind: size})
-    records, settings = simulated.records, simulated.settings
-    prediction = predict_records(records, settings)
-    layout = build_layout(records, prediction, settings, evidence(records, prediction))
-    search = Search(layout, settings, Retrial(layout, repredictor(records, settings)), KINDS)
+    search = search_of(simulated)
     pool, _, scores = search.scored(search.components([]), [])
     planted = simulated.truth[0]
     told = [(k, pool.candidate(k)) for k in range(len(pool))]

@@ -141,41 +141,53 @@ class Oracle:
         return 0.5 * self.value**2
 
 
-def consult(seed: int, fault: str, size: float | None = None, **room: Any) -> Oracle:
-    """The oracle's test of the fault that `simulate(seed, [fault], ...)` plants, all spreads known to it."""
-    d, r, of = _asked(seed, fault, size, room)
-    weighted = np.linalg.solve(of.whole(of.noise, of.day, of.preparation), d)
-    mean = float(np.sqrt(d @ weighted))
-    return Oracle(float(weighted @ r) / mean, mean)
+@dataclass(frozen=True)
+class Asked:
+    """What the oracle is shown: shape of the fault and residuals (n,) [pH], and the parts of their covariance."""
+
+    shape: FloatArray
+    residuals: FloatArray
+    parts: Parts
+
+    def with_spreads(self) -> Oracle:
+        """The test by one who knows all spreads."""
+        of = self.parts
+        weighted = np.linalg.solve(of.whole(of.noise, of.day, of.preparation), self.shape)
+        mean = float(np.sqrt(self.shape @ weighted))
+        return Oracle(float(weighted @ self.residuals) / mean, mean)
+
+    def without_spreads(self) -> Oracle:
+        """The same test by one who must ask the record for noise, meter-day and preparation.
+
+        The three variances are those of greatest restricted likelihood beside the candidate (Patterson and Thompson
+        1971, Biometrika 58:545), none below what the room's papers state; `mean` is the one under the variances found.
+        """
+        d, r, of = self.shape, self.residuals, self.parts
+
+        def test(log_variances: FloatArray) -> tuple[float, float, float]:
+            noise, day, preparation = np.exp(log_variances)
+            root = linalg.cho_factor(of.whole(noise, day, preparation), lower=True)
+            wd, wr = linalg.cho_solve(root, d), linalg.cho_solve(root, r)
+            size = float(d @ wd)
+            half_log_det = float(np.log(np.diag(root[0])).sum())
+            likelihood = -half_log_det - 0.5 * np.log(size) - 0.5 * (float(r @ wr) - float(d @ wr) ** 2 / size)
+            return likelihood, float(d @ wr) / size**0.5, size**0.5
+
+        least = np.log([NOISE_FLOOR**2, 1e-8, of.preparation])
+        start = np.log([max(of.noise, NOISE_FLOOR**2) * 1.2, 2e-5, of.preparation * 2.0])
+        bounds = [(low, low + 12.0) for low in least]
+        found = optimize.minimize(lambda v: -test(v)[0], start, method="L-BFGS-B", bounds=bounds)
+        _, value, mean = test(found.x)
+        return Oracle(value, mean)
 
 
-def consult_without_spreads(seed: int, fault: str, size: float | None = None, **room: Any) -> Oracle:
-    """The same test by one who knows the candidate but must ask the record for noise, meter-day and preparation.
-
-    The three variances are those of greatest restricted likelihood beside the candidate (Patterson and Thompson 1971,
-    Biometrika 58:545), none below what the room's papers state; `mean` is the one under the variances found.
-    """
-    d, r, of = _asked(seed, fault, size, room)
-
-    def test(log_variances: FloatArray) -> tuple[float, float, float]:
-        noise, day, preparation = np.exp(log_variances)
-        root = linalg.cho_factor(of.whole(noise, day, preparation), lower=True)
-        wd, wr = linalg.cho_solve(root, d), linalg.cho_solve(root, r)
-        size = float(d @ wd)
-        half_log_det = float(np.log(np.diag(root[0])).sum())
-        likelihood = -half_log_det - 0.5 * np.log(size) - 0.5 * (float(r @ wr) - float(d @ wr) ** 2 / size)
-        return likelihood, float(d @ wr) / size**0.5, size**0.5
-
-    least = np.log([NOISE_FLOOR**2, 1e-8, of.preparation])
-    start = np.log([max(of.noise, NOISE_FLOOR**2) * 1.2, 2e-5, of.preparation * 2.0])
-    bounds = [(low, low + 12.0) for low in least]
-    found = optimize.minimize(lambda v: -test(v)[0], start, method="L-BFGS-B", bounds=bounds)
-    _, value, mean = test(found.x)
-    return Oracle(value, mean)
-
-
-def _asked(seed: int, fault: str, size: float | None, room: Mapping[str, Any]) -> tuple[FloatArray, FloatArray, Parts]:
-    """Shape of the fault and residuals of the record that has it, (n,) [pH] each, and the parts of the covariance."""
+def ask(seed: int, fault: str, size: float | None = None, **room: Any) -> Asked:
+    """What `simulate(seed, [fault], ...)` shows the oracle."""
     simulated = simulate(seed, [fault], None if size is None else {fault: size}, **room)
     settings = {name: getattr(simulated.world.room, name) for name in simulated.world.room.__dataclass_fields__}
-    return signature(seed, fault, size, **room), residuals(simulated), parts(seed, **settings)
+    return Asked(signature(seed, fault, size, **room), residuals(simulated), parts(seed, **settings))
+
+
+def consult(seed: int, fault: str, size: float | None = None, **room: Any) -> Oracle:
+    """The oracle's test of the fault that `simulate(seed, [fault], ...)` plants, all spreads known to it."""
+    return ask(seed, fault, size, **room).with_spreads()

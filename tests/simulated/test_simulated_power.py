@@ -10,7 +10,7 @@ import numpy as np
 from tests.bench.blame_run import Case, run
 from tests.bench.check_tables import tried
 from tests.bench.power_tables import critical_of
-from tests.simulated.oracle import consult, consult_without_spreads
+from tests.simulated.oracle import ask
 
 SEEDS = range(24)
 SIZE = {"meter_offset": 0.07, "lot_strength": 1.1}
@@ -20,15 +20,16 @@ def test_faults_near_the_threshold_are_covered_as_often_as_the_best_test_finds_t
     oracle = covered = 0
     for seed in SEEDS:
         needed = critical_of((seed, "lot_strength", 1.08))
-        oracle += consult_without_spreads(seed, "lot_strength", 1.08).gain >= needed
+        oracle += ask(seed, "lot_strength", 1.08).without_spreads().gain >= needed
         covered += run(Case(seed, ("lot_strength",), {"lot_strength": 1.08})).outcomes[0] != "missed"
     assert 6 < oracle < 24  # the size is near the threshold, or the comparison says nothing
     assert covered >= oracle - 2
 
 
 def test_estimating_the_spreads_costs_the_best_test_little():
-    known = np.array([consult(seed, "meter_step", 0.06).value for seed in SEEDS])
-    asked = np.array([consult_without_spreads(seed, "meter_step", 0.06).value for seed in SEEDS])
+    shown = [ask(seed, "meter_step", 0.06) for seed in SEEDS]
+    known = np.array([one.with_spreads().value for one in shown])
+    asked = np.array([one.without_spreads().value for one in shown])
     assert np.corrcoef(known, asked)[0, 1] > 0.6
     assert abs(np.median(asked / known) - 1.0) < 0.1
 
